@@ -1,0 +1,121 @@
+"""Axes: a scalar circuit field given as one value, a list of values or a range.
+
+Numbers are decimal: a range expands exactly (0.13, 0.14, …), and every number is normalized to twelve significant
+digits, the very number the kernel samples with.
+"""
+
+from collections.abc import Callable
+from decimal import Context, Decimal
+from typing import Annotated, Any, Literal, TypeVar
+
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
+from pydantic_core import PydanticCustomError
+
+SIGNIFICANT_DIGITS = 12
+LONGEST_RANGE = 100_000
+_CONTEXT = Context(prec=SIGNIFICANT_DIGITS)
+
+T = TypeVar("T")
+
+
+def normal_number(number: float) -> float:
+    """``number`` at twelve significant digits; -0 becomes 0. Raises ValueError for a number that is not finite."""
+    decimal = Decimal(repr(number)) if isinstance(number, float) else Decimal(number)
+    if not decimal.is_finite():
+        raise ValueError(f"a number must be finite, got {number}")
+    rounded = _CONTEXT.plus(decimal)
+    if rounded == rounded.to_integral_value() and abs(rounded) < 2**53:
+        return int(rounded)
+    return float(rounded)
+
+
+def _strict_number(value: Any) -> Any:
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise PydanticCustomError("number", "must be a number, got {value}", {"value": repr(value)})
+    try:
+        return normal_number(value)
+    except (ValueError, OverflowError):
+        raise PydanticCustomError("number", "must be a finite number, got {value}", {"value": repr(value)}) from None
+
+
+def _strict_integer(value: Any) -> Any:
+    """Integers may be spelled 64 or 64.0 (JSON does not tell them apart), nothing else."""
+    if isinstance(value, bool) or not isinstance(value, int | float) or value != value or value % 1:
+        raise PydanticCustomError("integer", "must be an integer, got {value}", {"value": repr(value)})
+    return int(value)
+
+
+Number = Annotated[float, BeforeValidator(_strict_number)]
+Integer = Annotated[int, BeforeValidator(_strict_integer)]
+
+
+class NumberRange(BaseModel):
+    """``{from, to, points}`` or ``{from, to, step}``, both ends included, expanded in decimal arithmetic."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid", strict=True, populate_by_name=True)
+
+    first: Number = Field(alias="from")
+    last: Number = Field(alias="to")
+    points: Annotated[Integer, Field(ge=1, le=LONGEST_RANGE)] | None = None
+    step: Annotated[Number, Field(gt=0)] | None = None
+
+    def expand(self) -> tuple[float, ...]:
+        """The values, in order. Raises ValueError for a range that does not say how to run from end to end."""
+        first, last = Decimal(str(self.first)), Decimal(str(self.last))
+        if (self.points is None) == (self.step is None):
+            raise ValueError("a range has either 'points' or 'step'")
+        if last < first:
+            raise ValueError(f"a range runs upwards: from {first} to {last} does not")
+        if self.points is not None:
+            return self._by_points(first, last, self.points)
+        return self._by_step(first, last, Decimal(str(self.step)))
+
+    @staticmethod
+    def _by_points(first: Decimal, last: Decimal, points: int) -> tuple[float, ...]:
+        if points == 1 and first != last:
+            raise ValueError("one point needs 'from' equal to 'to'")
+        return tuple(normal_number(float(first + (last - first) * i / max(points - 1, 1))) for i in range(points))
+
+    @staticmethod
+    def _by_step(first: Decimal, last: Decimal, step: Decimal) -> tuple[float, ...]:
+        steps, rest = divmod(last - first, step)
+        if rest:
+            raise ValueError(f"step {step} does not lead from {first} to {last}: the last value would be {first + steps * step}")
+        if steps >= LONGEST_RANGE:
+            raise ValueError(f"a range has at most {LONGEST_RANGE} values")
+        return tuple(normal_number(float(first + step * i)) for i in range(int(steps) + 1))
+
+
+def _shape(value: Any) -> Literal["list", "range", "value"]:
+    if isinstance(value, list | tuple):
+        return "list"
+    return "range" if isinstance(value, NumberRange) or (isinstance(value, dict) and "from" in value) else "value"
+
+
+# The tags appear in pydantic's error locations; `faults.py` drops them by these names.
+SHAPE_TAGS = frozenset({"axis-value", "axis-list", "axis-range"})
+
+
+def _tag(value: Any) -> str:
+    return f"axis-{_shape(value)}"
+
+
+NumberAxis = Annotated[
+    Annotated[Number, Tag("axis-value")]
+    | Annotated[tuple[Number, ...], Field(min_length=1, strict=False), Tag("axis-list")]
+    | Annotated[NumberRange, Tag("axis-range")],
+    Discriminator(_tag),
+]
+IntegerAxis = Annotated[
+    Annotated[Integer, Tag("axis-value")]
+    | Annotated[tuple[Integer, ...], Field(min_length=1, strict=False), Tag("axis-list")]
+    | Annotated[NumberRange, Tag("axis-range")],
+    Discriminator(_tag),
+]
+
+
+def values_of(axis: Any, convert: Callable[[Any], T]) -> tuple[T, ...]:
+    """All values of a field in the order written; ``convert`` raises ValueError for a value that does not fit."""
+    if isinstance(axis, NumberRange):
+        return tuple(convert(value) for value in axis.expand())
+    return tuple(convert(value) for value in (axis if isinstance(axis, tuple) else (axis,)))

@@ -1,0 +1,222 @@
+"""Bodies of the HTTP interface, shared by the service that writes them and the client that reads them."""
+
+from typing import Any, Literal
+
+from pydantic import BaseModel, ConfigDict, Field
+
+SweepState = Literal["waiting", "sampling", "settled", "withdrawn", "stuck"]
+MetBy = Literal["error", "cap"]
+Scalar = int | float | str
+
+
+class Message(BaseModel):
+    """Base of all bodies: unknown fields are ignored, so that an older client reads a newer service."""
+
+    model_config = ConfigDict(frozen=True, extra="ignore")
+
+
+class Request(Message):
+    """One owner's wish for a sweep."""
+
+    owner: str
+    label: str | None = None
+    priority: int = 0
+    at: float = Field(description="Submission time, seconds since 1970-01-01 UTC")
+    core_seconds: float = Field(0.0, description="Core-seconds charged to this request")
+
+
+class SweepStatus(Message):
+    """A sweep with its progress."""
+
+    key: str
+    state: SweepState
+    reason: str | None = Field(None, description="Why a stuck sweep cannot proceed")
+    families: list[str]
+    axes: list[str]
+    names: list[str] = Field(description="Names of the observations")
+    requests: list[Request]
+    ensembles: int
+    settled: int = Field(description="Ensembles that met the stopping rule")
+    trajectories: int = Field(description="Contiguous trajectories sampled, summed over ensembles")
+    trajectories_cap: int = Field(description="The same if every ensemble ran to its cap")
+    core_seconds: float
+    budget: float | None = None
+    created_at: float
+    commit: int = Field(description="Commit counter: grows with every change of progress")
+    seconds_left: float | None = Field(None, description="Predicted time to settle on the current pool")
+
+
+class SweepList(Message):
+    """One page of sweeps, newest first."""
+
+    sweeps: list[SweepStatus]
+    next: str | None = Field(None, description="Value of `after` for the next page")
+
+
+class EnsembleProgress(Message):
+    """Progress of one ensemble within a sweep."""
+
+    ordinal: int
+    ensemble: str
+    parameters: dict[str, Scalar]
+    trajectories: int
+    cap: int
+    met_by: MetBy | None = None
+    reason: str | None = Field(None, description="Why a stuck ensemble cannot proceed")
+    changed: int = Field(description="Sweep commit counter at the last change")
+
+
+class ProgressPage(Message):
+    """Per-ensemble progress, in the order of the table."""
+
+    sweep: str
+    commit: int
+    ensembles: list[EnsembleProgress]
+    next: int | None = Field(None, description="Value of `after` for the next page")
+
+
+class Submitted(Message):
+    """Answer to a submission: the sweep, and how much of it was there already."""
+
+    key: str
+    created: bool = Field(description="False if the sweep was there already")
+    status: SweepStatus
+    sampled_ensembles: int = Field(description="Ensembles with every observation sampled to the cap already")
+    sampled_trajectories: int = Field(description="Trajectories of the sweep that were there already")
+    revisions: dict[str, int] = Field(description="Family and quantity revisions of the server")
+
+
+class Amendment(Message):
+    """Changes to one's own request; absent fields stay as they are."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    label: str | None = Field(None, max_length=200)
+    priority: int | None = Field(None, ge=-10, le=10)
+
+
+class Estimate(Message):
+    """What a sweep would cost; nothing is stored."""
+
+    key: str
+    ensembles: int
+    trajectories_cap: int
+    sampled_ensembles: int
+    sampled_trajectories: int
+    core_seconds: float = Field(description="Predicted core-seconds still to spend if every ensemble runs to its cap")
+    core_seconds_from: Literal["measured", "default", "mixed"] = Field(
+        description="Whether the prediction rests on measured batches of these ensembles or on default costs"
+    )
+    cores: int
+    seconds: float | None = Field(None, description="Predicted duration on the current pool, if it were free")
+    accumulator_bytes: int = Field(description="Size of all totals of the sweep")
+
+
+class BatchRecord(Message):
+    """Provenance of one stored batch."""
+
+    observation: str
+    first: int
+    count: int
+    digest: str
+    seconds: float
+    worker: str
+    versions: dict[str, str]
+    at: float
+
+
+class FaultRecord(Message):
+    """A batch that failed."""
+
+    first: int
+    count: int
+    attempt: int
+    kind: str
+    message: str
+    traceback: str
+    worker: str
+    at: float
+
+
+class ObservationRecord(Message):
+    """What is stored of one observation of an ensemble."""
+
+    key: str
+    observation: dict[str, Any]
+    trajectories: int = Field(description="Length of the contiguous prefix")
+    digest: str
+
+
+class EnsembleRecord(Message):
+    """One ensemble: parameters, counts and provenance."""
+
+    key: str
+    family: str
+    parameters: dict[str, Scalar]
+    revision: int
+    reason: str | None = None
+    observations: list[ObservationRecord]
+    batches: int
+    core_seconds: float
+    latest: list[BatchRecord] = Field(description="The latest batches, newest first (at most 100)")
+    faults: list[FaultRecord]
+
+
+class TrajectoryValue(Message):
+    """Values of one observation on one trajectory."""
+
+    observation: dict[str, Any]
+    values: list[dict[str, Any]] = Field(
+        description="One entry per coordinate: layer, position, value (or numerator and denominator)"
+    )
+
+
+class Trajectory(Message):
+    """One trajectory, recomputed on demand."""
+
+    ensemble: str
+    trajectory: int
+    parameters: dict[str, Scalar]
+    observations: list[TrajectoryValue]
+    versions: dict[str, str]
+
+
+class WorkerStatus(Message):
+    """One worker process and what it is computing."""
+
+    name: str
+    address: str
+    threads: int
+    computing: list[str] = Field(description="Tasks as ensemble:first+count, ensemble keys shortened")
+
+
+class PoolStatus(Message):
+    """The pool as the dispatcher sees it."""
+
+    ready: bool
+    reason: str | None = Field(None, description="Why nothing is dispatched, if so")
+    workers: list[WorkerStatus]
+    cores: int
+    in_flight: int
+    window: int
+    batches_committed: int
+    trajectories_per_second: float
+    busy_fraction: float = Field(description="Core-seconds of sampling per core and second, over the last minute")
+
+
+class Problem(Message):
+    """RFC 9457 problem document."""
+
+    type: str = "about:blank"
+    title: str
+    status: int
+    detail: str
+    instance: str | None = None
+    faults: list[dict[str, str]] = Field(default_factory=list, description="Every fault: path and message")
+
+
+class Table(Message):
+    """The aggregated table, one list per column; `metadata` names keys, ranges of trajectories and digests."""
+
+    columns: dict[str, list[Any]]
+    metadata: dict[str, Any]

@@ -1,0 +1,26 @@
+"""Revisions of what the keys stand for.
+
+A number is raised whenever the same key would give other values, so that old and new results never mix.
+"""
+
+FAMILY_REVISIONS: dict[str, int] = {"hybrid-clifford": 1}
+
+QUANTITY_REVISIONS: dict[str, int] = {
+    "entropy": 1,
+    "global-entropy": 1,
+    "mutual-information": 1,
+    "outcome-randomness": 1,
+    "record-bits": 1,
+    "tripartite-information": 1,
+}
+
+
+def all_revisions() -> dict[str, int]:
+    """Family and quantity revisions in one table, families prefixed with ``family:``."""
+    families = {f"family:{name}": number for name, number in FAMILY_REVISIONS.items()}
+    return families | {f"quantity:{name}": number for name, number in QUANTITY_REVISIONS.items()}
+
+
+def results_revision() -> str:
+    """One line that changes with any revision: compared between a service and its pool."""
+    return ",".join(f"{name}={number}" for name, number in sorted(all_revisions().items()))
