@@ -1,0 +1,140 @@
+"""The totals behind a table, in table order, read in short transactions."""
+
+import hashlib
+from collections.abc import Iterator
+from typing import Any, NamedTuple
+
+from sqlalchemy import Connection, Engine, Row, case, func, select, tuple_
+
+from sweepmill_service.schema import mark, sweep, sweep_ensemble, sweep_observation, total
+from sweepmill_service.store.errors import UnknownKey
+
+PAGE = 250  # totals held in memory at once
+
+
+class TableEntry(NamedTuple):
+    """Total of one ensemble and observation; ``accumulator`` is None where nothing was sampled yet."""
+
+    ordinal: int
+    ensemble_key: str
+    observation_key: str
+    trajectories: int
+    accumulator: bytes | None
+    digest: str | None
+    met_by: str | None
+    frozen: bool
+
+
+class _Member(NamedTuple):
+    ordinal: int
+    ensemble: str
+    trajectories: int | None
+    met_by: str | None
+
+
+def table_entries(engine: Engine, key: str) -> Iterator[TableEntry]:
+    """Every entry ordered by (ordinal, observation in the order of the sweep); raises UnknownKey at once."""
+    with engine.connect() as connection:
+        observations = sweep_observations(connection, key)
+    return _pages(engine, key, observations)
+
+
+def sweep_observations(connection: Connection, key: str) -> list[str]:
+    """Keys of the sweep's observations in its order, each once; raises UnknownKey."""
+    statement = select(sweep_observation.c.observation).where(sweep_observation.c.sweep == key)
+    keys = connection.scalars(statement.order_by(sweep_observation.c.ordinal)).all()
+    if not keys:
+        raise UnknownKey("sweep", key)
+    return list(dict.fromkeys(keys))
+
+
+def _pages(engine: Engine, key: str, observations: list[str]) -> Iterator[TableEntry]:
+    size = max(1, PAGE // len(observations))
+    last = -1
+    while True:
+        with engine.connect() as connection:
+            members = _members(connection, key, last, size)
+            totals = _totals(connection, members, observations)
+            frozen = _frozen(connection, members, observations)
+        for member in members:
+            yield from _entries(member, observations, totals if member.met_by is None else frozen)
+        if len(members) < size:
+            return
+        last = members[-1].ordinal
+
+
+def _members(connection: Connection, key: str, last: int, size: int) -> list[_Member]:
+    columns = sweep_ensemble.c
+    statement = select(columns.ordinal, columns.ensemble, columns.trajectories, columns.met_by)
+    where = (columns.sweep == key, columns.ordinal > last)
+    rows = connection.execute(statement.where(*where).order_by(columns.ordinal).limit(size))
+    return [_Member(*row) for row in rows]
+
+
+def _totals(
+    connection: Connection, members: list[_Member], observations: list[str]
+) -> dict[tuple[str, str], Row[Any]]:
+    keys = [member.ensemble for member in members if member.met_by is None]
+    if not keys:
+        return {}
+    statement = select(total).where(total.c.ensemble.in_(keys), total.c.observation.in_(observations))
+    return {(row.ensemble, row.observation): row for row in connection.execute(statement)}
+
+
+def _frozen(
+    connection: Connection, members: list[_Member], observations: list[str]
+) -> dict[tuple[str, str], Row[Any]]:
+    pairs = [(member.ensemble, member.trajectories) for member in members if member.met_by is not None]
+    if not pairs:
+        return {}
+    where = (tuple_(mark.c.ensemble, mark.c.trajectories).in_(pairs), mark.c.observation.in_(observations))
+    return {(row.ensemble, row.observation): row for row in connection.execute(select(mark).where(*where))}
+
+
+def _entries(
+    member: _Member, observations: list[str], totals: dict[tuple[str, str], Row[Any]]
+) -> Iterator[TableEntry]:
+    for observation in observations:
+        row = totals.get((member.ensemble, observation))
+        yield TableEntry(
+            ordinal=member.ordinal,
+            ensemble_key=member.ensemble,
+            observation_key=observation,
+            trajectories=0 if row is None else row.trajectories,
+            accumulator=None if row is None else row.accumulator,
+            digest=None if row is None else row.digest,
+            met_by=member.met_by,
+            frozen=member.met_by is not None,
+        )
+
+
+def table_version(connection: Connection, key: str) -> str:
+    """Digest over the N of every ensemble and observation: equal versions mean equal tables."""
+    members = sweep_ensemble.c
+    number = case(
+        (members.met_by.is_(None), func.coalesce(total.c.trajectories, 0)), else_=members.trajectories
+    )
+    statement = (
+        select(members.ordinal, sweep_observation.c.ordinal, number, members.met_by)
+        .join(sweep_observation, sweep_observation.c.sweep == members.sweep)
+        .outerjoin(
+            total,
+            (total.c.ensemble == members.ensemble) & (total.c.observation == sweep_observation.c.observation),
+        )
+        .where(members.sweep == key)
+        .order_by(members.ordinal, sweep_observation.c.ordinal)
+    )
+    digest = hashlib.sha256(key.encode())
+    for row in connection.execute(statement):
+        digest.update(f"\n{row[0]}:{row[1]}:{row[2]}:{row[3]}".encode())
+    return digest.hexdigest()
+
+
+def frozen_digests(connection: Connection, key: str) -> dict[str, str]:
+    """Digest of every settled ensemble of a sweep, by ensemble key."""
+    if connection.scalar(select(sweep.c.key).where(sweep.c.key == key)) is None:
+        raise UnknownKey("sweep", key)
+    columns = sweep_ensemble.c
+    statement = select(columns.ensemble, columns.digest)
+    rows = connection.execute(statement.where(columns.sweep == key, columns.digest.is_not(None)))
+    return {row.ensemble: row.digest for row in rows}
