@@ -4,18 +4,15 @@ Numbers are decimal: a range expands exactly (0.13, 0.14, …), and every number
 digits, the very number the kernel samples with.
 """
 
-from collections.abc import Callable
 from decimal import Context, Decimal
-from typing import Annotated, Any, Literal, TypeVar
+from typing import Annotated, Any
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
 from pydantic_core import PydanticCustomError
 
 SIGNIFICANT_DIGITS = 12
 LONGEST_RANGE = 100_000
 _CONTEXT = Context(prec=SIGNIFICANT_DIGITS)
-
-T = TypeVar("T")
 
 
 def normal_number(number: float) -> float:
@@ -78,44 +75,55 @@ class NumberRange(BaseModel):
 
     @staticmethod
     def _by_step(first: Decimal, last: Decimal, step: Decimal) -> tuple[float, ...]:
+        if (last - first) / step >= LONGEST_RANGE:
+            raise ValueError(f"a range has at most {LONGEST_RANGE} values")
         steps, rest = divmod(last - first, step)
         if rest:
-            raise ValueError(f"step {step} does not lead from {first} to {last}: the last value would be {first + steps * step}")
-        if steps >= LONGEST_RANGE:
-            raise ValueError(f"a range has at most {LONGEST_RANGE} values")
+            reached = first + steps * step
+            raise ValueError(f"step {step} does not lead from {first} to {last}: it stops at {reached}")
         return tuple(normal_number(float(first + step * i)) for i in range(int(steps) + 1))
 
 
-def _shape(value: Any) -> Literal["list", "range", "value"]:
-    if isinstance(value, list | tuple):
-        return "list"
-    return "range" if isinstance(value, NumberRange) or (isinstance(value, dict) and "from" in value) else "value"
+def nonempty(values: Any) -> Any:
+    """A list with nothing in it is refused (pydantic's own check would also count items refused already)."""
+    if not values:
+        raise PydanticCustomError("empty", "needs at least one item")
+    return values
 
 
 # The tags appear in pydantic's error locations; `faults.py` drops them by these names.
 SHAPE_TAGS = frozenset({"axis-value", "axis-list", "axis-range"})
 
 
-def _tag(value: Any) -> str:
-    return f"axis-{_shape(value)}"
+def shape_tag(value: Any) -> str:
+    """How an axis is written: the tag of the union member that parses it."""
+    if isinstance(value, list | tuple):
+        return "axis-list"
+    is_range = isinstance(value, NumberRange) or (isinstance(value, dict) and ("from" in value or "to" in value))
+    return "axis-range" if is_range else "axis-value"
 
 
 NumberAxis = Annotated[
     Annotated[Number, Tag("axis-value")]
-    | Annotated[tuple[Number, ...], Field(min_length=1, strict=False), Tag("axis-list")]
+    | Annotated[tuple[Number, ...], AfterValidator(nonempty), Tag("axis-list")]
     | Annotated[NumberRange, Tag("axis-range")],
-    Discriminator(_tag),
+    Discriminator(shape_tag),
 ]
 IntegerAxis = Annotated[
     Annotated[Integer, Tag("axis-value")]
-    | Annotated[tuple[Integer, ...], Field(min_length=1, strict=False), Tag("axis-list")]
+    | Annotated[tuple[Integer, ...], AfterValidator(nonempty), Tag("axis-list")]
     | Annotated[NumberRange, Tag("axis-range")],
-    Discriminator(_tag),
+    Discriminator(shape_tag),
 ]
 
 
-def values_of(axis: Any, convert: Callable[[Any], T]) -> tuple[T, ...]:
-    """All values of a field in the order written; ``convert`` raises ValueError for a value that does not fit."""
+def located_values(axis: Any, path: str) -> list[tuple[str, Any]]:
+    """All values of a field in the order written, each with its path (list items carry their index).
+
+    Raises ValueError for a range that cannot be expanded.
+    """
     if isinstance(axis, NumberRange):
-        return tuple(convert(value) for value in axis.expand())
-    return tuple(convert(value) for value in (axis if isinstance(axis, tuple) else (axis,)))
+        return [(path, value) for value in axis.expand()]
+    if isinstance(axis, tuple):
+        return [(f"{path}[{i}]", value) for i, value in enumerate(axis)]
+    return [(path, axis)]

@@ -6,6 +6,7 @@ SweepmillError
 ├── AccumulatorMismatch    totals of different shapes cannot be merged
 ├── MissingExtra           an optional dependency is not installed
 ├── BadSettings            an address, token or owner that cannot be used
+├── NotAKey                what stands for a key is not 8 to 64 hexadecimal digits
 ├── Unreachable            no service answers, or the connection broke: worth another try
 ├── TimedOut               the service took the request and did not answer in time
 ├── UnexpectedAnswer       what answered does not speak as a Sweepmill service does
@@ -67,6 +68,13 @@ class BadSettings(SweepmillError):
     """The address, token or owner given to the client cannot be used."""
 
 
+class NotAKey(SweepmillError):
+    """What stands for a key cannot be one."""
+
+    def __init__(self, key: str) -> None:
+        super().__init__(f"{key!r} is not a key: a key is 64 hexadecimal digits, or at least the first 8 of them")
+
+
 class Unreachable(SweepmillError):
     """No service answers at the address, or the connection broke."""
 
@@ -103,7 +111,8 @@ class ServiceError(SweepmillError):
         self.title = title
         self.detail = detail
         self.faults = tuple(faults)
-        lines = [detail or title, *map(str, self.faults)]
+        said = detail or title
+        lines = [said, *(str(fault) for fault in self.faults if fault.message not in said)]
         super().__init__("\n".join(lines))
 
 

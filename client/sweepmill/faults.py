@@ -1,0 +1,68 @@
+"""From pydantic's validation errors to faults with the paths and words of a specification."""
+
+from collections.abc import Mapping
+from typing import Any
+
+from pydantic import ValidationError
+
+from sweepmill.axes import SHAPE_TAGS
+from sweepmill.errors import Fault
+from sweepmill.observation import QUANTITIES, REGION_TAGS
+from sweepmill.times import AT_TAGS
+
+# Names of union members: pydantic puts them into locations, a reader never wrote them
+_TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | set(QUANTITIES)
+_UNION_MARKS = ("function-", "int", "PerSite")
+
+
+def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
+    """Every fault of a validation error, once each, with its path in the specification as written."""
+    single = isinstance(raw.get("circuit"), Mapping)
+    found: dict[Fault, None] = {}
+    for item in error.errors(include_url=False):
+        found[Fault(path_of(item["loc"], single), _message(item))] = None
+    return list(found)
+
+
+def path_of(location: tuple[int | str, ...], single_circuit: bool) -> str:
+    """``("circuit", 0, "sites", "axis-list", 2)`` as ``circuit.sites[2]``."""
+    path = ""
+    for depth, part in enumerate(location):
+        if isinstance(part, int):
+            path += "" if single_circuit and depth == 1 and location[0] == "circuit" else f"[{part}]"
+        elif part not in _TAGS and not part.startswith(_UNION_MARKS):
+            path += f".{part}" if path else part
+    return path
+
+
+def _message(item: Any) -> str:
+    kind, given, context = item["type"], item.get("input"), item.get("ctx", {})
+    if kind == "missing":
+        return "is missing"
+    if kind == "extra_forbidden":
+        return "unknown field"
+    if kind == "literal_error":
+        return f"must be {context['expected']}, got {given!r}"
+    if kind == "union_tag_invalid":
+        return _bad_tag(context, given)
+    if kind == "union_tag_not_found":
+        return f"needs a field {context['discriminator']}"
+    if kind in ("number", "integer", "layers", "duplicate", "empty"):
+        return str(item["msg"])
+    wanted = item["msg"].replace("Input should", "must").replace("a valid tuple", "a list")
+    return f"{_decapitalized(wanted)}, got {_short(given)}"
+
+
+def _bad_tag(context: Mapping[str, Any], given: Any) -> str:
+    if context.get("discriminator") == "'quantity'":
+        return f"unknown quantity {context['tag']!r}: one of {', '.join(QUANTITIES)}"
+    return f"must be a value or a list of values, got {_short(given)}"
+
+
+def _decapitalized(text: str) -> str:
+    return text[:1].lower() + text[1:]
+
+
+def _short(value: Any) -> str:
+    text = repr(value)
+    return text if len(text) <= 80 else text[:77] + "..."

@@ -1,0 +1,49 @@
+"""Limits a server sets on sweeps: a refusal names the limit and what would pass."""
+
+from pydantic import BaseModel, ConfigDict, Field
+
+from sweepmill.coordinates import accumulator_bytes
+from sweepmill.errors import Fault
+from sweepmill.sweep import Point, Sweep
+
+
+class Limits(BaseModel):
+    """Largest values accepted; all are settings of the server."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    sites: int = Field(1024, ge=2, description="Sites of one ensemble")
+    layers: int = Field(100_000, ge=1, description="Layers of one ensemble")
+    ensembles: int = Field(20_000, ge=1, description="Ensembles of one sweep")
+    trajectories: int = Field(10_000_000, ge=1, description="Cap of one ensemble")
+    accumulator_bytes: int = Field(1_048_576, ge=1024, description="Size of one total")
+
+
+def check_limits(sweep: Sweep, limits: Limits) -> list[Fault]:
+    """Every limit the sweep exceeds, once each with the worst offender."""
+    points = sweep.points
+    faults = [
+        _beyond("circuit.sites", max(p.ensemble.sites for p in points), limits.sites, "sites per ensemble"),
+        _beyond("circuit.layers", max(p.ensemble.layers for p in points), limits.layers, "layers per ensemble"),
+        _beyond("circuit", len(points), limits.ensembles, "ensembles per sweep"),
+        _beyond("stop.trajectories", max(p.cap for p in points), limits.trajectories, "trajectories per ensemble"),
+        *(_size_fault(sweep, index, points, limits) for index in range(len(sweep.observe))),
+    ]
+    return [fault for fault in faults if fault is not None]
+
+
+def _beyond(path: str, value: int, limit: int, what: str) -> Fault | None:
+    return Fault(path, f"this server takes at most {limit} {what}, got {value}") if value > limit else None
+
+
+def _size_fault(sweep: Sweep, index: int, points: tuple[Point, ...], limits: Limits) -> Fault | None:
+    item = sweep.observe[index]
+    shapes = {(p.ensemble.sites, p.ensemble.layers): p.ensemble for p in points}
+    size, largest = max((accumulator_bytes(e, item), e.sites) for e in shapes.values())
+    if size <= limits.accumulator_bytes:
+        return None
+    return Fault(
+        f"observe[{index}]",
+        f"its total takes {size} bytes at {largest} sites, this server keeps at most {limits.accumulator_bytes}: "
+        "read fewer layers or cuts",
+    )

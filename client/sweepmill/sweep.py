@@ -1,0 +1,202 @@
+"""The sweep specification: what a user submits. One strict model; TOML, JSON and Python objects alike."""
+
+import json
+import tomllib
+from collections.abc import Iterable, Mapping
+from functools import cached_property
+from pathlib import Path
+from typing import Annotated, Any, NamedTuple
+
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
+
+from sweepmill.axes import Integer, located_values, nonempty
+from sweepmill.circuits import CircuitBlock, PerSite, resolved_layers
+from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
+from sweepmill.errors import Fault, SpecificationError
+from sweepmill.faults import faults_of
+from sweepmill.identity import canonical, key_of
+from sweepmill.observation import Observation
+from sweepmill.stop import Stop
+from sweepmill.times import as_tuple
+
+MOST_FAULTS = 100
+
+
+class Point(NamedTuple):
+    """One ensemble of a sweep and its cap."""
+
+    ensemble: Ensemble
+    cap: int
+
+
+class NamedObservation(NamedTuple):
+    """An observation under the name it has in its sweep."""
+
+    name: str
+    observation: Observation
+
+
+def _blocks(value: Any) -> Any:
+    return (value,) if isinstance(value, Mapping | CircuitBlock) else as_tuple(value)
+
+
+class Sweep(BaseModel):
+    """Circuits whose fields may be axes, observations and a stopping rule.
+
+    Raises :class:`SpecificationError` with every fault, each with its path; an instance is always valid.
+    """
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    circuit: Annotated[tuple[CircuitBlock, ...], BeforeValidator(_blocks), AfterValidator(nonempty)]
+    observe: Annotated[tuple[Observation, ...], BeforeValidator(as_tuple), AfterValidator(nonempty)]
+    stop: Stop
+    label: Annotated[str, Field(max_length=200)] | None = None
+    priority: Annotated[Integer, Field(ge=-10, le=10)] = 0
+
+    def __init__(self, **fields: Any) -> None:
+        try:
+            super().__init__(**fields)
+        except ValidationError as error:
+            raise SpecificationError(faults_of(error, fields)) from None
+        if faults := self._misfits(isinstance(fields["circuit"], Mapping | CircuitBlock)):
+            raise SpecificationError(faults[:MOST_FAULTS])
+
+    @classmethod
+    def parse(cls, specification: Mapping[str, Any]) -> "Sweep":
+        """A sweep from plain data."""
+        if not isinstance(specification, Mapping):
+            raise SpecificationError([Fault("", "a specification is a table of fields")])
+        if bad := [name for name in specification if not isinstance(name, str)]:
+            raise SpecificationError([Fault(str(name), "field names are strings") for name in bad])
+        return cls(**specification)
+
+    @classmethod
+    def read(cls, path: str | Path) -> "Sweep":
+        """A sweep from a .toml or .json file. Raises OSError for a file that cannot be read."""
+        path = Path(path)
+        text = path.read_text(encoding="utf-8")
+        try:
+            data = json.loads(text) if path.suffix == ".json" else tomllib.loads(text)
+        except ValueError as error:
+            raise SpecificationError([Fault("", f"{path.name} cannot be parsed: {error}")]) from None
+        return cls.parse(data)
+
+    @property
+    def key(self) -> str:
+        """SHA-256 of the canonical normal form; label, priority and owner are not part of it."""
+        return self._key
+
+    @cached_property
+    def _key(self) -> str:
+        return key_of(self.normalized())
+
+    def canonical(self) -> str:
+        """The normal form as RFC 8785 text."""
+        return canonical(self.normalized())
+
+    def normalized(self) -> dict[str, Any]:
+        """Axes expanded, ``per_site`` resolved where there is one size, defaults omitted, observations sorted."""
+        return {
+            "circuit": [_normal_block(block) for block in self.circuit],
+            "observe": [_normal_observation(item) for item in self.observations],
+            "stop": self.stop.normal_form(),
+        }
+
+    @cached_property
+    def observations(self) -> tuple[NamedObservation, ...]:
+        """Observations sorted by name."""
+        named = (NamedObservation(_name(item), item.model_copy(update={"name": None})) for item in self.observe)
+        return tuple(sorted(named, key=lambda item: item.name))
+
+    @cached_property
+    def points(self) -> tuple[Point, ...]:
+        """Every ensemble once, in table order: blocks as written, fields in the family's order, values as written."""
+        points: dict[str, Point] = {}
+        for block in self.circuit:
+            for _, ensemble in block.ensembles("", []):
+                points.setdefault(ensemble.key, Point(ensemble, block.trajectories or self.stop.trajectories))
+        return tuple(points.values())
+
+    @cached_property
+    def axes(self) -> tuple[str, ...]:
+        """Circuit fields that take more than one value; ``layers`` only where the others do not fix it."""
+        names = list(dict.fromkeys(name for point in self.points for name in point.ensemble.parameters))
+        several = [n for n in names if len({point.ensemble.parameters.get(n) for point in self.points}) > 1]
+        if "layers" in several and self._fixed_by(n for n in several if n != "layers"):
+            several.remove("layers")
+        families = {point.ensemble.family for point in self.points}
+        return (*(("family",) if len(families) > 1 else ()), *several)
+
+    def _fixed_by(self, names: Iterable[str]) -> bool:
+        """Whether these fields tell all ensembles apart."""
+        fields = ("family", *names)
+        rows = {
+            tuple({"family": p.ensemble.family, **p.ensemble.parameters}.get(n) for n in fields) for p in self.points
+        }
+        return len(rows) == len(self.points)
+
+    def _misfits(self, single: bool) -> list[Fault]:
+        """Faults between fields, found once every field by itself is valid."""
+        faults: list[Fault] = []
+        self._check_circuits(single, faults)
+        names: set[str] = set()
+        for index, item in enumerate(self.observe):
+            if _name(item) in names:
+                faults.append(Fault(f"observe[{index}].name", f"{_name(item)!r} names another observation already"))
+            names.add(_name(item))
+        return faults + self.stop.faults(names)
+
+    def _check_circuits(self, single: bool, faults: list[Fault]) -> None:
+        caps: dict[str, int] = {}
+        shapes: set[tuple[int, int, bool]] = set()
+        for index, block in enumerate(self.circuit):
+            path = "circuit" if single else f"circuit[{index}]"
+            own: set[str] = set()
+            for where, ensemble in block.ensembles(path, faults):
+                cap = block.trajectories or self.stop.trajectories
+                if ensemble.key in own:
+                    faults.append(Fault(f"{path}.layers", "two values give the same number of layers at one size"))
+                elif caps.setdefault(ensemble.key, cap) != cap:
+                    faults.append(Fault(f"{path}.trajectories", "an earlier block gives the same ensemble another cap"))
+                own.add(ensemble.key)
+                shape = (ensemble.sites, ensemble.layers, ensemble.periodic)
+                if shape not in shapes:
+                    shapes.add(shape)
+                    self._check_observations(ensemble, where, faults)
+                if len(faults) > MOST_FAULTS:
+                    return
+
+    def _check_observations(self, ensemble: Ensemble, where: str, faults: list[Fault]) -> None:
+        for index, item in enumerate(self.observe):
+            if fault := item.fault(ensemble):
+                faults.append(Fault(f"observe[{index}].{fault[0]}", f"{fault[1]} ({where})"))
+
+
+def _name(item: Observation) -> str:
+    return item.name if item.name is not None else item.quantity
+
+
+def _normal_observation(item: NamedObservation) -> dict[str, Any]:
+    form = {field: value for field, value in item.observation.normal_form().items() if field != "revision"}
+    return form if item.name == item.observation.quantity else form | {"name": item.name}
+
+
+def _normal_block(block: CircuitBlock) -> dict[str, Any]:
+    form: dict[str, Any] = {"family": block.family}
+    sites = [int(value) for _, value in located_values(block.sites, "")]
+    for name, default in FAMILY_PARAMETERS[block.family].items():
+        values = [value for _, value in located_values(getattr(block, name), "")]
+        if name == "layers":
+            values = [_normal_layers(value, sites) for value in values]
+        if values != [default]:
+            form[name] = values[0] if len(values) == 1 else values
+    if block.trajectories is not None:
+        form["trajectories"] = block.trajectories
+    return form
+
+
+def _normal_layers(value: int | PerSite, sites: list[int]) -> int | dict[str, float]:
+    if not isinstance(value, PerSite):
+        return int(value)
+    return resolved_layers(value, sites[0]) if len(sites) == 1 else {"per_site": value.per_site}

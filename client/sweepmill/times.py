@@ -1,0 +1,148 @@
+"""When an observation is read: the field ``at`` and the layers it stands for.
+
+A unit cell is two consecutive layers; it is named by its last layer. Layers count from 1 to the ensemble's ``layers``.
+"""
+
+import itertools
+from typing import Annotated, Any, Literal, NamedTuple
+
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
+from pydantic_core import PydanticCustomError
+
+from sweepmill.axes import Integer, Number, nonempty
+
+
+class Strict(BaseModel):
+    """Frozen, unknown fields refused."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+
+class Every(Strict):
+    """A series of unit-cell means (or single layers) at n, 2n, 3n, …"""
+
+    every: Annotated[Integer, Field(ge=1)]
+    single_layers: bool = False
+
+
+class LogSpaced(Strict):
+    """A series of at most n unit cells (or single layers), evenly spaced in the logarithm of the layer."""
+
+    log_spaced: Annotated[Integer, Field(ge=2)]
+    single_layers: bool = False
+
+
+class Window(Strict):
+    """The unit cells in the last part of the layers, one every so many layers."""
+
+    last: Annotated[Number, Field(gt=0, le=1)] = 0.5
+    every: Annotated[Integer, Field(ge=2)] = 2
+
+
+class AverageOver(Strict):
+    """The mean over late unit cells: one number per trajectory."""
+
+    average_over: Window
+
+
+def as_tuple(value: Any) -> Any:
+    """Lists become tuples, so that models stay hashable."""
+    return tuple(value) if isinstance(value, list) else value
+
+
+def distinct_sorted(values: tuple[int, ...]) -> tuple[int, ...]:
+    """Ascending order, which means the same; a value given twice is refused."""
+    ordered = tuple(sorted(values))
+    for first, second in itertools.pairwise(ordered):
+        if first == second:
+            raise PydanticCustomError("duplicate", "{value} stands twice in this list", {"value": first})
+    return ordered
+
+
+def _form(value: Any) -> str:
+    if isinstance(value, str):
+        return "at-word"
+    if isinstance(value, list | tuple):
+        return "at-layers"
+    keys = value.keys() if isinstance(value, dict) else type(value).model_fields.keys()
+    if "log_spaced" in keys:
+        return "at-log-spaced"
+    return "at-average" if "average_over" in keys else "at-every"
+
+
+AT_TAGS = frozenset({"at-word", "at-layers", "at-every", "at-log-spaced", "at-average"})
+
+LayerList = Annotated[
+    tuple[Annotated[Integer, Field(ge=1)], ...],
+    BeforeValidator(as_tuple),
+    AfterValidator(nonempty),
+    AfterValidator(distinct_sorted),
+]
+At = Annotated[
+    Annotated[Literal["last-cell", "end"], Tag("at-word")]
+    | Annotated[LayerList, Tag("at-layers")]
+    | Annotated[Every, Tag("at-every")]
+    | Annotated[LogSpaced, Tag("at-log-spaced")]
+    | Annotated[AverageOver, Tag("at-average")],
+    Discriminator(_form),
+]
+
+
+class Reading(NamedTuple):
+    """One time coordinate: its name in the table (None where the time is not a coordinate) and the layers averaged."""
+
+    layer: int | None
+    layers: tuple[int, ...]
+
+
+def readings(at: Any, layers: int) -> tuple[Reading, ...]:
+    """The time coordinates of ``at`` in a circuit of ``layers`` layers. Raises ValueError saying what would pass."""
+    if at == "end":
+        return (Reading(None, (layers,)),)
+    if at == "last-cell":
+        _need(layers >= 2, "'last-cell' averages two layers and the circuit has one: use at = \"end\"")
+        return (Reading(None, (layers - 1, layers)),)
+    if isinstance(at, tuple):
+        _need(at[-1] <= layers, f"layer {at[-1]} is beyond the last layer, {layers}")
+        return tuple(Reading(n, (n,)) for n in at)
+    if isinstance(at, AverageOver):
+        return (Reading(None, _window(at.average_over, layers)),)
+    if isinstance(at, LogSpaced):
+        return _series(_log_spaced(at.log_spaced, 1 if at.single_layers else 2, layers), at.single_layers)
+    _need(at.single_layers or at.every >= 2, "unit cells overlap below every = 2: use single_layers = true")
+    _need(at.every <= layers, f"every = {at.every} is beyond the last layer, {layers}")
+    return _series(tuple(range(at.every, layers + 1, at.every)), at.single_layers)
+
+
+def _need(condition: bool, message: str) -> None:
+    if not condition:
+        raise ValueError(message)
+
+
+def _series(ends: tuple[int, ...], single_layers: bool) -> tuple[Reading, ...]:
+    return tuple(Reading(n, (n,) if single_layers else (n - 1, n)) for n in ends)
+
+
+def _window(window: Window, layers: int) -> tuple[int, ...]:
+    # twelve-digit decimals: the product rounded at nine places is the exact border where it is an integer
+    border = round(layers * (1 - window.last), 9)
+    ends = [end for end in range(layers, 1, -window.every) if end - 1 > border]
+    _need(bool(ends), f"the last {window.last} of {layers} layers holds no whole unit cell")
+    return tuple(sorted(n for end in ends for n in (end - 1, end)))
+
+
+def _log_spaced(points: int, first: int, layers: int) -> tuple[int, ...]:
+    _need(layers > first, f"a log-spaced series needs more than {first} layers, the circuit has {layers}")
+    power = points - 1
+    return tuple(sorted({_root(first ** (power - i) * layers**i, power) for i in range(points)}))
+
+
+def _root(value: int, power: int) -> int:
+    """Largest integer whose ``power`` is at most ``value``: exact, so that every machine reads the same layers."""
+    low, high = 1, 1
+    while high**power <= value:
+        low, high = high, 2 * high
+    while high - low > 1:
+        middle = (low + high) // 2
+        low, high = (middle, high) if middle**power <= value else (low, middle)
+    return low
