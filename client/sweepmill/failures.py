@@ -12,7 +12,8 @@ from sweepmill.retry import retry_after
 
 # HTTPError, RequestError and TransportError are left out: a new kind of failure directly below them is
 # to be noticed (a test walks them) and judged, not swept along.
-HTTPX_FAILURES: dict[type[Exception], type[errors.Unreachable | errors.TimedOut | errors.UnexpectedAnswer]] = {
+Kind = type[errors.Unreachable | errors.TimedOut | errors.UnexpectedAnswer]
+HTTPX_FAILURES: dict[type[Exception], Kind] = {
     httpx.ConnectTimeout: errors.Unreachable,
     httpx.NetworkError: errors.Unreachable,
     httpx.ProxyError: errors.Unreachable,
@@ -60,7 +61,8 @@ def refusal(response: httpx.Response, url: str) -> errors.SweepmillError:
     problem = _problem(response)
     if status in _TEMPORARY:
         detail = problem.detail if problem else f"the service at {url} is not available ({status})"
-        return errors.Unavailable(status, "unavailable", detail, retry_after(response.headers.get("Retry-After")))
+        advice = retry_after(response.headers.get("Retry-After"))
+        return errors.Unavailable(status, "unavailable", detail, advice)
     if problem is None:
         return errors.UnexpectedAnswer(url, f"status {status} without a problem document")
     faults = [errors.Fault(fault.get("path", ""), fault.get("message", "")) for fault in problem.faults]

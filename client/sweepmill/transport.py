@@ -18,8 +18,8 @@ Body = TypeVar("Body", bound=BaseModel)
 class Transport:
     """One HTTP connection pool to one service.
 
-    Every call of the interface is idempotent (submitting too: a sweep's key is the hash of its content), so each is
-    repeated after a lost connection or a 502, 503 or 504.
+    Every call of the interface is idempotent (submitting too: a sweep's key is the hash of its content), so
+    each is repeated after a lost connection or a 502, 503 or 504.
     """
 
     def __init__(
@@ -45,7 +45,7 @@ class Transport:
         try:
             return kind.model_validate_json(response.content)
         except ValidationError as error:
-            raise UnexpectedAnswer(self._url(path), f"the body is no {kind.__name__}: {error}") from error
+            raise UnexpectedAnswer(self.connection.url + path, f"the body is no {kind.__name__}: {error}") from error
 
     def call(self, method: str, path: str, **options: Any) -> httpx.Response:
         """Call and return a successful response, its body read."""
@@ -58,12 +58,13 @@ class Transport:
         return response
 
     @contextmanager
-    def stream(
-        self, path: str, headers: Mapping[str, str], timeout: float | None = None
-    ) -> Iterator[httpx.Response]:
-        """A successful response whose body is still to be read; not repeated. `timeout` is for each read, seconds."""
+    def stream(self, path: str, headers: Mapping[str, str], timeout: float | None = None) -> Iterator[httpx.Response]:
+        """A successful response whose body is still to be read; not repeated. `timeout` per read, seconds."""
         extra: dict[str, Any] = {} if timeout is None else {"timeout": httpx.Timeout(timeout, connect=10.0)}
-        with translating(self.connection.url), self.http.stream("GET", path, headers=headers, **extra) as response:
+        with (
+            translating(self.connection.url),
+            self.http.stream("GET", path, headers=headers, **extra) as response,
+        ):
             if not response.is_success:
                 response.read()
             self._check(response)
@@ -75,6 +76,3 @@ class Transport:
             raise UnexpectedAnswer(self.connection.url, f"it redirects to {target}; use that address instead")
         if not response.is_success:
             raise refusal(response, self.connection.url)
-
-    def _url(self, path: str) -> str:
-        return self.connection.url + path

@@ -1,0 +1,103 @@
+"""A sweep at the service."""
+
+import os
+import sys
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any
+
+from sweepmill import messages
+from sweepmill.follow import follow
+from sweepmill.messages import Amendment, EnsembleProgress, ProgressPage, Submitted, SweepStatus
+from sweepmill.progress import Show, shown
+from sweepmill.table import Table
+from sweepmill.table_files import MEDIA_TYPES, media_type
+from sweepmill.text import short
+from sweepmill.transport import Transport
+
+
+class RemoteSweep:
+    """A sweep at the service, by its key; made by `Client.submit` and `Client.sweep`."""
+
+    def __init__(self, transport: Transport, key: str, submitted: Submitted | None = None) -> None:
+        self._transport = transport
+        self.key = key
+        self.submitted = submitted  # what the service said at submission: whether new, and how much was there
+
+    def __repr__(self) -> str:
+        return f"<sweep {short(self.key)} at {self._transport.connection.url}>"
+
+    @property
+    def _path(self) -> str:
+        return f"/v1/sweeps/{self.key}"
+
+    def status(self) -> SweepStatus:
+        """State and progress now."""
+        return self._transport.fetch(SweepStatus, "GET", self._path)
+
+    def wait(self, progress: bool | Show = True, timeout: float | None = None) -> SweepStatus:
+        """Wait until the sweep settles; a lost connection is taken up again.
+
+        `progress`: a display in the terminal, notebook or log; or a function called with every status; or
+        False. `timeout` in seconds. Raises SweepStuck, SweepWithdrawn, WaitTimeout, and Unreachable after ten
+        minutes without the service. An interrupt ends the waiting, not the sweep.
+        """
+        try:
+            with shown(progress) as show:
+                for status in follow(self._transport, self.key, timeout):
+                    show(status)
+        except KeyboardInterrupt:
+            key = short(self.key)
+            print(f"sweep {key} goes on unwatched; to watch it again: sweepmill watch {key}", file=sys.stderr)
+            raise
+        return status
+
+    def ensembles(self, since: int | None = None) -> Iterator[EnsembleProgress]:
+        """Progress of every ensemble in table order; `since` (a commit counter): what changed after it."""
+        query: dict[str, Any] = {} if since is None else {"since": since}
+        while True:
+            page = self._transport.fetch(ProgressPage, "GET", f"{self._path}/ensembles", params=query)
+            yield from page.ensembles
+            if page.next is None:
+                return
+            query["after"] = page.next
+
+    def table(self) -> Table:
+        """The table as it is now; once settled, the same for ever."""
+        headers = {"Accept": MEDIA_TYPES[".json"]}
+        body = self._transport.fetch(messages.Table, "GET", f"{self._path}/table", headers=headers)
+        return Table(body.columns, body.metadata)
+
+    def download(self, path: str | Path) -> Path:
+        """Write the table to a file whose suffix gives the format: .csv, .json, .parquet or .arrow.
+
+        The file appears complete or not at all. Raises ValueError for another suffix.
+        """
+        path = Path(path)
+        accept = {"Accept": media_type(path)}
+        self._transport.retry.run(lambda: self._write(path, accept))
+        return path
+
+    def _write(self, path: Path, headers: dict[str, str]) -> None:
+        partial = path.with_name(f".{path.name}.{os.getpid()}.part")
+        try:
+            with (
+                self._transport.stream(f"{self._path}/table", headers) as response,
+                partial.open("wb") as file,
+            ):
+                for chunk in response.iter_bytes():
+                    file.write(chunk)
+                file.flush()
+                os.fsync(file.fileno())
+            partial.replace(path)
+        finally:
+            partial.unlink(missing_ok=True)
+
+    def withdraw(self) -> None:
+        """Withdraw one's own request; nothing that was sampled is deleted."""
+        self._transport.call("DELETE", self._path)
+
+    def amend(self, label: str | None = None, priority: int | None = None) -> SweepStatus:
+        """Change label or priority (-10 to 10) of one's own request; what is not given stays."""
+        changes = Amendment(label=label, priority=priority).model_dump(exclude_none=True)
+        return self._transport.fetch(SweepStatus, "PATCH", self._path, json=changes)

@@ -1,0 +1,167 @@
+"""The table of a sweep: one row per ensemble, observation and coordinate."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Self
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sweepmill.errors import SharedTrajectories
+from sweepmill.text import aligned, html, short
+
+if TYPE_CHECKING:
+    import pandas
+    import xarray
+
+# Columns that every table has, in this order, after the axes.
+PLACE = ("name", "quantity", "region", "layer", "position")
+RESULTS = ("trajectories", "mean", "standard_error", "variance", "minimum", "maximum", "met_by")
+INTEGERS = ("layer", "position", "trajectories")
+REALS = ("mean", "standard_error", "variance", "minimum", "maximum")
+_SHOWN = ("name", "layer", "position", "trajectories", "mean", "standard_error", "met_by")
+_HEAD = 10
+
+
+class Table:
+    """Columns of equal length and metadata; immutable by convention.
+
+    Means, standard errors and the rest are in the units of their quantity (entropies in bits). `layer` and
+    `position` are None where they have no meaning. The metadata names every ensemble with its key, its range
+    of trajectories and its digest.
+    """
+
+    def __init__(self, columns: Mapping[str, Sequence[Any]], metadata: Mapping[str, Any] | None = None) -> None:
+        self._columns = {name: list(values) for name, values in columns.items()}
+        self.metadata: dict[str, Any] = dict(metadata or {})
+        if len({len(values) for values in self._columns.values()}) > 1:
+            raise ValueError("the columns of a table must be equally long")
+
+    @classmethod
+    def read(cls, path: str | Path) -> Self:
+        """Read a file that `download` wrote: .json, or .csv, .parquet and .arrow with the extra `analysis`."""
+        from sweepmill.table_files import read_columns
+
+        return cls(*read_columns(Path(path)))
+
+    @property
+    def columns(self) -> tuple[str, ...]:
+        """Names of the columns, the axes first."""
+        return tuple(self._columns)
+
+    @property
+    def axes(self) -> tuple[str, ...]:
+        """Names of the columns that are axes of the sweep."""
+        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS))
+
+    @property
+    def ensembles(self) -> list[dict[str, Any]]:
+        """Key, range of trajectories and digest of every ensemble the table rests on."""
+        return list(self.metadata.get("ensembles", []))
+
+    def __len__(self) -> int:
+        return len(next(iter(self._columns.values()), []))
+
+    def __contains__(self, name: object) -> bool:
+        return name in self._columns
+
+    def __getitem__(self, name: str) -> NDArray[Any]:
+        """One column as an array of shape [rows]: floats with nan for what is absent, integers, or objects."""
+        values = self.values(name)
+        if name in REALS:
+            return np.array([math.nan if v is None else v for v in values], dtype=np.float64)
+        plain = all(isinstance(v, int | float) for v in values) and bool(values)
+        return np.array(values) if plain else np.array(values, dtype=object)
+
+    def values(self, name: str) -> list[Any]:
+        """One column as stored: a list of int, float, str or None. Raises KeyError."""
+        if name not in self._columns:
+            raise KeyError(f"no column {name!r}; the columns are {', '.join(self._columns)}")
+        return self._columns[name]
+
+    def rows(self) -> Iterator[dict[str, Any]]:
+        """One dictionary per row."""
+        for values in zip(*self._columns.values(), strict=True):
+            yield dict(zip(self._columns, values, strict=True))
+
+    def where(self, **conditions: Any) -> Self:
+        """Rows whose columns have the given values; a list, set or range means any of its members.
+
+        Raises KeyError for a column that is not there.
+        """
+        keep = range(len(self))
+        for name, wanted in conditions.items():
+            column = self.values(name)
+            keep = [i for i in keep if _matches(column[i], wanted)]  # type: ignore[assignment]
+        return self._taken(keep)
+
+    def _taken(self, rows: Sequence[int]) -> Self:
+        return type(self)({n: [values[i] for i in rows] for n, values in self._columns.items()}, self.metadata)
+
+    def to_pandas(self) -> pandas.DataFrame:
+        """A data frame with the same columns; the metadata is in its `attrs`. Needs the extra `analysis`."""
+        from sweepmill.table_convert import to_pandas
+
+        return to_pandas(self)
+
+    def to_xarray(self) -> dict[str, xarray.Dataset]:
+        """One dataset per observation name; needs the extra `analysis`.
+
+        Dimensions are the axes, and `layer` and `position` where they vary; combinations that the sweep does
+        not have are nan. Raises ValueError if two rows fall on one place.
+        """
+        from sweepmill.table_convert import to_xarray
+
+        return to_xarray(self)
+
+    def to_arrow(self) -> Any:
+        """A `pyarrow.Table` with the metadata in its schema. Needs the extra `analysis`."""
+        from sweepmill.table_convert import to_arrow
+
+        return to_arrow(self)
+
+    def _caption(self) -> str:
+        sweep = self.metadata.get("sweep")
+        of_sweep = f" of sweep {short(str(sweep))}" if sweep else ""
+        axes = f", axes {' × '.join(self.axes)}" if self.axes else ""
+        return f"Table{of_sweep}: {len(self)} rows{axes}"
+
+    def _shown(self) -> tuple[list[str], list[list[Any]]]:
+        names = [n for n in (*self.axes, *_SHOWN) if n in self and any(v is not None for v in self.values(n))]
+        return names, [[self.values(name)[i] for name in names] for i in range(min(len(self), _HEAD))]
+
+    def __repr__(self) -> str:
+        names, rows = self._shown()
+        more = [f"… and {len(self) - _HEAD} more"] if len(self) > _HEAD else []
+        return "\n".join([self._caption(), aligned(names, rows), *more])
+
+    def _repr_html_(self) -> str:
+        names, rows = self._shown()
+        more = f"; the first {_HEAD} of them" if len(self) > _HEAD else ""
+        return html(names, rows, self._caption() + more)
+
+
+def require_independent(*tables: Table) -> None:
+    """Refuse tables that share ensembles: the same trajectories in both are not two measurements.
+
+    Raises SharedTrajectories.
+    """
+    seen: set[str] = set()
+    shared: set[str] = set()
+    for table in tables:
+        keys = {str(ensemble["key"]) for ensemble in table.ensembles}
+        shared |= seen & keys
+        seen |= keys
+    if shared:
+        raise SharedTrajectories(sorted(shared))
+
+
+def _matches(value: Any, wanted: Any) -> bool:
+    if isinstance(wanted, list | tuple | set | frozenset | range | np.ndarray):
+        return any(_matches(value, one) for one in wanted)
+    if isinstance(value, float) and isinstance(wanted, int | float | np.number):
+        return math.isclose(value, wanted, rel_tol=1e-11)  # axis values have 12 significant digits
+    return bool(value == wanted)
