@@ -1,0 +1,148 @@
+"""The pure core: ``sample`` depends on nothing but its arguments.
+
+No database, no network, no clock in the result, no global state. Trajectory k draws all its randomness from
+(ensemble key, k), so any split into batches accumulates the same integers.
+"""
+
+import platform
+import time
+from collections.abc import Mapping, Sequence
+from decimal import Decimal
+from importlib.metadata import version
+from typing import Any
+
+from sweepmill.accumulate import Accumulator, merged
+from sweepmill.coordinates import coordinates
+from sweepmill.ensemble import Ensemble
+from sweepmill.observation import observation_from_normal_form
+from sweepmill.revisions import FAMILY_REVISIONS, results_revision
+from sweepmill.times import Reading, readings
+
+from sweepmill_worker.batch import Batch
+from sweepmill_worker.clifford.engine import HybridChain, run
+from sweepmill_worker.observables.regions import RegionPlan, plan_regions
+from sweepmill_worker.observables.values import Values, values_of
+
+BLOCK_BYTES = 16_000_000  # working memory for the readings of one block of trajectories
+
+
+def sample(ensemble: Ensemble, observations: Sequence[Any], first: int, count: int) -> Batch:
+    """Sample trajectories [first, first + count) and accumulate every observation exactly.
+
+    Raises ValueError for a range that is empty or negative, for an ensemble of another family revision and for an
+    observation the ensemble does not have.
+    """
+    _check(ensemble, observations, first, count)
+    plan = plan_regions(ensemble.sites, tuple(observations))
+    block = _block_size(ensemble, observations, plan)
+    parts: list[list[Accumulator]] = [[] for _ in observations]
+    for start in range(first, first + count, block):
+        stop = min(start + block, first + count)
+        for part, values in zip(parts, _read(ensemble, observations, plan, start, stop - start), strict=True):
+            part.append(Accumulator.from_values(values.raw, start, values.single))
+    accumulators = {item.key: merged(part) for item, part in zip(observations, parts, strict=True)}
+    return Batch(ensemble.key, first, count, accumulators)
+
+
+def sample_plain(
+    ensemble_form: Mapping[str, Any], observation_forms: Sequence[Mapping[str, Any]], first: int, count: int
+) -> dict[str, Any]:
+    """``sample`` with plain values in and out: what the pool runs, imported by name.
+
+    ``seconds`` is the CPU time this process spent, in seconds.
+    """
+    started = time.process_time()
+    observations = [observation_from_normal_form(form) for form in observation_forms]
+    batch = sample(Ensemble.from_normal_form(ensemble_form), observations, first, count)
+    return {
+        "ensemble": batch.ensemble,
+        "first": first,
+        "count": count,
+        "accumulators": {key: item.to_bytes() for key, item in batch.accumulators.items()},
+        "digests": {key: item.digest for key, item in batch.accumulators.items()},
+        "seconds": time.process_time() - started,
+        "versions": versions(),
+        "results_revision": results_revision(),
+    }
+
+
+def trajectory_values(ensemble: Ensemble, observations: Sequence[Any], k: int) -> list[dict[str, Any]]:
+    """Values of one trajectory, recomputed: per observation and coordinate a value, or numerator and denominator."""
+    _check(ensemble, observations, k, 1)
+    plan = plan_regions(ensemble.sites, tuple(observations))
+    return [
+        {"observation": item.normal_form(), "values": _coordinate_values(ensemble, item, values)}
+        for item, values in zip(observations, _read(ensemble, observations, plan, k, 1), strict=True)
+    ]
+
+
+def versions() -> dict[str, str]:
+    """Versions of everything that could change a result, for provenance."""
+    names = ("sweepmill", "numpy", "numba")
+    return {"python": platform.python_version(), **{name: version(name) for name in names}}
+
+
+def _check(ensemble: Ensemble, observations: Sequence[Any], first: int, count: int) -> None:
+    if first < 0 or count < 1:
+        raise ValueError(f"a batch starts at 0 or later and has at least one trajectory, got {first} and {count}")
+    if not observations:
+        raise ValueError("a batch needs at least one observation")
+    if ensemble.revision != FAMILY_REVISIONS[ensemble.family]:
+        current = FAMILY_REVISIONS[ensemble.family]
+        raise ValueError(f"{ensemble.family} has revision {current} here, the ensemble {ensemble.revision}")
+    for item in observations:
+        if fault := item.fault(ensemble):
+            raise ValueError(f"{item.quantity}.{fault[0]}: {fault[1]}")
+
+
+def _chain(ensemble: Ensemble) -> HybridChain:
+    rate = Decimal(repr(ensemble.parameters["measurement_rate"]))
+    return HybridChain(
+        sites=ensemble.sites,
+        layers=ensemble.layers,
+        periodic=ensemble.periodic,
+        mixed=ensemble.parameters["initial_state"] == "mixed",
+        threshold=int(rate * 2**32),
+    )
+
+
+def _times(ensemble: Ensemble, observations: Sequence[Any]) -> list[tuple[Reading, ...]]:
+    return [readings(item.at, ensemble.layers) for item in observations]
+
+
+def _read_layers(times: Sequence[tuple[Reading, ...]], plan: RegionPlan) -> list[int]:
+    """Layers at which entropies are read; outcome counts come for every layer anyway."""
+    needed = [when for when, indices in zip(times, plan.indices, strict=True) if indices is not None]
+    return sorted({n for when in needed for reading in when for n in reading.layers})
+
+
+def _read(ensemble: Ensemble, observations: Sequence[Any], plan: RegionPlan, first: int, count: int) -> list[Values]:
+    times = _times(ensemble, observations)
+    layers = _read_layers(times, plan)
+    counts = run(_chain(ensemble), ensemble.key_words, first, count, layers, plan.regions)
+    index = {n: i for i, n in enumerate(layers)}
+    return [
+        values_of(item, counts, when, index, indices, signs)
+        for item, when, indices, signs in zip(observations, times, plan.indices, plan.signs, strict=True)
+    ]
+
+
+def _block_size(ensemble: Ensemble, observations: Sequence[Any], plan: RegionPlan) -> int:
+    """Trajectories per block: their readings, and the values made of them, fit the working memory."""
+    times = _times(ensemble, observations)
+    layers = len(_read_layers(times, plan))
+    terms = sum(i.size * len(when) for i, when in zip(plan.indices, times, strict=True) if i is not None)
+    per_trajectory = 4 * layers * len(plan.regions) + 16 * terms + 16 * ensemble.layers
+    return max(1, BLOCK_BYTES // per_trajectory)
+
+
+def _coordinate_values(ensemble: Ensemble, item: Any, values: Values) -> list[dict[str, Any]]:
+    rows = []
+    for place, raw in zip(coordinates(ensemble, item), values.raw[0].tolist(), strict=True):
+        row: dict[str, Any] = {"layer": place.layer, "position": place.position}
+        if item.COMPONENTS == 2:
+            row |= {"numerator": raw[0], "denominator": raw[1]}
+        else:
+            row["value"] = raw / place.scale
+        rows.append(row)
+    return rows
