@@ -7,8 +7,9 @@ from pathlib import Path
 from typing import Any
 
 from sweepmill import messages
+from sweepmill.errors import UnknownKey
 from sweepmill.follow import follow
-from sweepmill.messages import Amendment, EnsembleProgress, ProgressPage, Submitted, SweepStatus
+from sweepmill.messages import EnsembleProgress, ProgressPage, Submitted, SweepStatus
 from sweepmill.progress import Show, shown
 from sweepmill.table import Table
 from sweepmill.table_files import MEDIA_TYPES, media_type
@@ -64,8 +65,15 @@ class RemoteSweep:
 
     def table(self) -> Table:
         """The table as it is now; once settled, the same for ever."""
+        return self._fetched("table")
+
+    def histograms(self) -> Table:
+        """Exact histograms of the observations that keep one: a row for each value that occurred."""
+        return self._fetched("histograms")
+
+    def _fetched(self, what: str) -> Table:
         headers = {"Accept": MEDIA_TYPES[".json"]}
-        body = self._transport.fetch(messages.Table, "GET", f"{self._path}/table", headers=headers)
+        body = self._transport.fetch(messages.Table, "GET", f"{self._path}/{what}", headers=headers)
         return Table(body.columns, body.metadata)
 
     def download(self, path: str | Path) -> Path:
@@ -93,11 +101,20 @@ class RemoteSweep:
         finally:
             partial.unlink(missing_ok=True)
 
-    def withdraw(self) -> None:
-        """Withdraw one's own request; nothing that was sampled is deleted."""
-        self._transport.call("DELETE", self._path)
+    def withdraw(self) -> SweepStatus:
+        """Withdraw one's own request; nothing that was sampled is deleted. Raises UnknownKey if there is none."""
+        owner = self._transport.connection.owner
+        requested = any(request.owner == owner for request in self.status().requests)
+        try:
+            return self._transport.fetch(SweepStatus, "DELETE", self._path)
+        except UnknownKey:
+            if not requested:
+                raise
+            return self.status()  # an attempt whose answer was lost has done it already
 
     def amend(self, label: str | None = None, priority: int | None = None) -> SweepStatus:
-        """Change label or priority (-10 to 10) of one's own request; what is not given stays."""
-        changes = Amendment(label=label, priority=priority).model_dump(exclude_none=True)
+        """Change one's own request; None leaves as it is, an empty label removes it, priorities are -10 to 10."""
+        changes: dict[str, Any] = {} if label is None else {"label": label or None}
+        if priority is not None:
+            changes["priority"] = priority
         return self._transport.fetch(SweepStatus, "PATCH", self._path, json=changes)

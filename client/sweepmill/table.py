@@ -129,17 +129,21 @@ class Table:
         axes = f", axes {' × '.join(self.axes)}" if self.axes else ""
         return f"Table{of_sweep}: {len(self)} rows{axes}"
 
-    def _shown(self) -> tuple[list[str], list[list[Any]]]:
+    def _shown(self, most: int) -> tuple[list[str], list[list[Any]]]:
         names = [n for n in (*self.axes, *_SHOWN) if n in self and any(v is not None for v in self.values(n))]
-        return names, [[self.values(name)[i] for name in names] for i in range(min(len(self), _HEAD))]
+        return names, [[self.values(name)[i] for name in names] for i in range(min(len(self), most))]
+
+    def text(self, most: int | None = None) -> str:
+        """The columns people look at first, aligned, with all rows or the first `most`."""
+        most = len(self) if most is None else most
+        more = [f"… and {len(self) - most} more"] if len(self) > most else []
+        return "\n".join([self._caption(), aligned(*self._shown(most)), *more])
 
     def __repr__(self) -> str:
-        names, rows = self._shown()
-        more = [f"… and {len(self) - _HEAD} more"] if len(self) > _HEAD else []
-        return "\n".join([self._caption(), aligned(names, rows), *more])
+        return self.text(_HEAD)
 
     def _repr_html_(self) -> str:
-        names, rows = self._shown()
+        names, rows = self._shown(_HEAD)
         more = f"; the first {_HEAD} of them" if len(self) > _HEAD else ""
         return html(names, rows, self._caption() + more)
 

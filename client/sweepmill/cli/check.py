@@ -1,0 +1,66 @@
+"""sweepmill check"""
+
+from typing import Annotated
+
+import typer
+
+from sweepmill import messages
+from sweepmill.cli.options import Specification, Url
+from sweepmill.client import Client
+from sweepmill.errors import Unreachable
+from sweepmill.retry import Retry
+from sweepmill.sweep import Sweep
+from sweepmill.text import count, duration
+
+
+def check(
+    file: Specification,
+    ensembles: Annotated[bool, typer.Option("--ensembles", help="List every ensemble with its key.")] = False,
+    url: Url = None,
+) -> None:
+    """Validate a specification, expand it, and estimate its cost.
+
+    Faults are printed one per line as `path: message`, and the exit code is 1. The estimate needs a service;
+    without one the check is local.
+
+    Example: sweepmill check transition.toml
+    """
+    sweep = Sweep.read(file)
+    print(_expanded(sweep))
+    if ensembles:
+        for point in sweep.points:
+            parameters = ", ".join(f"{name} = {value}" for name, value in point.ensemble.parameters.items())
+            print(f"{point.ensemble.key}  {parameters}")
+    with Client(url, retry=Retry(attempts=1)) as client:
+        try:
+            print(_estimated(client.estimate(sweep)))
+        except Unreachable as error:
+            print(f"checked locally only, without an estimate: no service answers at {error.url}")
+
+
+def _expanded(sweep: Sweep) -> str:
+    names = (observation.name for observation in sweep.observations)
+    cap = sum(point.cap for point in sweep.points)
+    return "\n".join(
+        [
+            f"sweep         {sweep.key}",
+            f"axes          {' × '.join(sweep.axes) or 'none'}",
+            f"ensembles     {count(len(sweep.points))}",
+            f"observations  {', '.join(names)}",
+            f"trajectories  {count(cap)} at most",
+        ]
+    )
+
+
+def _estimated(estimate: messages.Estimate) -> str:
+    cores = f"{estimate.cores} core{'s' if estimate.cores != 1 else ''}"
+    time = f", {duration(estimate.seconds)} on {cores}" if estimate.seconds is not None else ""
+    return "\n".join(
+        [
+            f"sampled       {count(estimate.sampled_trajectories)} of {count(estimate.trajectories_cap)} trajectories"
+            f" already, {count(estimate.sampled_ensembles)} ensembles completely",
+            f"work left     {estimate.core_seconds / 3600:.3g} core-hours at most"
+            f" ({estimate.core_seconds_from} costs){time}",
+            f"totals        {estimate.accumulator_bytes / 1e6:.3g} MB",
+        ]
+    )
