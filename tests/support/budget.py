@@ -1,0 +1,34 @@
+"""The false-alarm budget of the statistical tests.
+
+All statistical tests of the suite together fail by chance with probability at most 1e-3 (seeds are fixed, so this is
+the probability that a correct program was given an unlucky seed).  Each test spends one named share, divided evenly
+among its comparisons (Bonferroni's inequality, common practice).
+"""
+
+from typing import Final
+
+from scipy.stats import chi2, norm
+
+TOTAL: Final = 1e-3
+
+SHARES: Final[dict[str, float]] = {
+    "exact-chains": 1e-4,
+    "purification": 1e-4,
+    "purity-recursion": 1e-4,
+    "page-law": 1e-4,
+    "monte-carlo": 1e-4,
+    "word-frequencies": 5e-5,
+    "pulls": 1e-4,
+    "sample": 1e-4,
+    "spare": 1e-4,
+}
+
+
+def z_limit(share: str, comparisons: int) -> float:
+    """Largest |z| that passes when `comparisons` normal deviates are compared under one share."""
+    return float(norm.isf(SHARES[share] / comparisons / 2))
+
+
+def chi_square_limit(share: str, comparisons: int, degrees: int) -> float:
+    """Largest chi-square with so many degrees of freedom that passes under one share."""
+    return float(chi2.isf(SHARES[share] / comparisons, degrees))

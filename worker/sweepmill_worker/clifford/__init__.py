@@ -1,0 +1,1 @@
+"""The sign-free stabilizer engine; its public face is `engine`."""

@@ -1,0 +1,142 @@
+"""What happens to a state: a layer of gates, and the measurement of Z on a site."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sweepmill_worker.clifford.state import (
+    Halves,
+    Lanes,
+    State,
+    address,
+    bit_of,
+    column_chunk,
+    erase,
+    insert,
+    rows_per_chunk,
+    write_one_hot,
+)
+from sweepmill_worker.clifford.vectors import any_bit, choose, load, nonzero, one_hot, splat, splat_half, store
+from sweepmill_worker.clifford.windows import grow, smallest, unite
+from sweepmill_worker.jit import part
+
+
+@part
+def image(masks: Halves, at: int, x_left, z_left, x_right, z_right, lanes: Lanes):  # type: ignore[no-untyped-def]
+    """One new column of a gate: the sum of the old ones that the class's masks select."""
+    return (
+        (x_left & splat_half(masks[at], lanes))
+        ^ (z_left & splat_half(masks[at + 1], lanes))
+        ^ (x_right & splat_half(masks[at + 2], lanes))
+        ^ (z_right & splat_half(masks[at + 3], lanes))
+    )
+
+
+@part
+def gate(state: State, chunk: int, left: int, right: int, masks: Halves, at: int, lanes: Lanes) -> None:
+    """Apply the class whose masks start at `at` to two sites: a 4 x 4 map of four columns, free of branches."""
+    to_left = address(state, chunk, 2 * left, lanes)
+    to_right = address(state, chunk, 2 * right, lanes)
+    a, b = load(state.columns, to_left, lanes), load(state.columns, to_left + len(lanes), lanes)
+    c, d = load(state.columns, to_right, lanes), load(state.columns, to_right + len(lanes), lanes)
+    x_left = image(masks, at, a, b, c, d, lanes)
+    z_left = image(masks, at + 4, a, b, c, d, lanes)
+    x_right = image(masks, at + 8, a, b, c, d, lanes)
+    z_right = image(masks, at + 12, a, b, c, d, lanes)
+    store(state.columns, to_left, x_left)
+    store(state.columns, to_left + len(lanes), z_left)
+    store(state.columns, to_right, x_right)
+    store(state.columns, to_right + len(lanes), z_right)
+
+
+@part
+def gate_layer(
+    state: State, parity: int, classes: NDArray[np.int64], bonds: int, periodic: bool, masks: Halves, lanes: Lanes
+) -> None:
+    """Apply gates to the bonds (parity, parity + 1), (parity + 2, parity + 3), ...; chunk by chunk for the cache."""
+    for chunk in range(state.chunks):
+        for bond in range(bonds):
+            left = 2 * bond + parity
+            right = left + 1 if left + 1 < state.sites else 0
+            gate(state, chunk, left, right, masks, 16 * classes[bond], lanes)
+    grow(state, parity, periodic)
+
+
+@part
+def measure(state: State, site: int, lanes: Lanes) -> bool:
+    """Measure Z of a site; was the outcome random?
+
+    Rows that anticommute with Z have a bit in the X column.  A stabilizer among them: random, the rank stays.  Only
+    logical rows: Z is new information, random, and the rank of the group grows.  None: Z is in the group already.
+    """
+    column = 2 * site
+    pivot = smallest(state, column, state.stabilizer_groups, state.reach, lanes)
+    if pivot >= 0:
+        replace(state, site, pivot, lanes)
+        return True
+    pivot = smallest(state, column, state.logical_groups, state.reach, lanes)
+    if pivot >= 0:
+        replace(state, site, pivot, lanes)
+        promote(state, pivot, lanes)
+        return True
+    return False
+
+
+@part
+def replace(state: State, site: int, pivot: int, lanes: Lanes) -> None:
+    """Multiply the pivot into all anticommuting rows, itself included, and put Z of the site in its slot.
+
+    The pivot is the anticommuting row with the shortest window: that alone keeps rows short, and no gauge has to
+    be maintained between measurements.
+    """
+    start, reach = int(state.start[pivot]), int(state.reach[pivot])
+    unite(state, site, pivot, lanes)
+    for chunk in range(state.chunks):
+        if chunk != pivot // rows_per_chunk(lanes):
+            multiply(state, chunk, site, start, reach, pivot, lanes)
+    multiply(state, pivot // rows_per_chunk(lanes), site, start, reach, pivot, lanes)  # last: erases the pivot's bits
+    write_one_hot(state, 2 * site, -1, lanes)
+    write_one_hot(state, 2 * site + 1, pivot, lanes)
+
+
+@part
+def multiply(state: State, chunk: int, site: int, start: int, reach: int, pivot: int, lanes: Lanes) -> None:
+    """One chunk of: rows in the X column of the site ^= pivot row, over the pivot's window."""
+    rows = column_chunk(state, chunk, 2 * site, lanes)
+    if state.chunks > 1 and not any_bit(rows):
+        return
+    beyond = start + reach + 1
+    add_pivot(state, chunk, rows, 2 * start, 2 * min(beyond, state.sites), pivot, lanes)
+    add_pivot(state, chunk, rows, 0, 2 * (beyond - state.sites), pivot, lanes)
+
+
+@part
+def add_pivot(state: State, chunk: int, rows, first: int, beyond: int, pivot: int, lanes: Lanes) -> None:  # type: ignore[no-untyped-def]
+    """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit."""
+    bit, nothing = bit_of(pivot, lanes), splat(np.uint64(0), lanes)
+    to = address(state, chunk, 0, lanes)
+    source = address(state, pivot // rows_per_chunk(lanes), 0, lanes) + ((pivot >> 6) & (len(lanes) - 1))
+    for column in range(first, beyond):
+        here = to + column * len(lanes)
+        word = splat(state.columns[source + column * len(lanes)], lanes)
+        selected = choose(nonzero(word & bit), rows, nothing)
+        store(state.columns, here, load(state.columns, here, lanes) ^ selected)
+
+
+@part
+def promote(state: State, pivot: int, lanes: Lanes) -> None:
+    """The pivot was logical: its slot now holds a stabilizer, and its partner leaves.
+
+    The other pairs, multiplied by the pivot where they anticommuted, are the logical rows of the larger group.
+    """
+    partner = state.partner[pivot]
+    erase(state.logicals, pivot)
+    erase(state.logicals, partner)
+    insert(state.stabilizers, pivot)
+    chunk = partner // rows_per_chunk(lanes)
+    bit = one_hot(partner - chunk * rows_per_chunk(lanes), lanes)
+    for offset in range(state.reach[partner] + 1):
+        site = (state.start[partner] + offset) % state.sites
+        for column in (2 * site, 2 * site + 1):
+            kept = column_chunk(state, chunk, column, lanes)
+            store(state.columns, address(state, chunk, column, lanes), kept ^ (kept & bit))
+    state.reach[partner] = 0

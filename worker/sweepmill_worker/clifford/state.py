@@ -1,0 +1,162 @@
+"""The state of one trajectory: generators of a sign-free stabilizer group, stored by columns.
+
+Entropies and the number of random outcomes do not depend on signs, so only the symplectic part is kept.  Row r of the
+group is bit r of every column; site q has column 2q (X part) and 2q + 1 (Z part).  Rows come in groups of 32 (one
+vector of shorts for their windows), groups in chunks of 64 * len(lanes) rows (one vector of words per column).
+
+Invariants between layers:
+
+I1  The rows in use are independent; the stabilizers commute and generate the group modulo signs.
+I2  A row is the identity outside its window: the sites start, start + 1, ..., start + reach, modulo the ring.
+    Windows are bounds and need not be tight.
+
+A mixed state of rank r also keeps 2 (L - r) logical rows, in pairs that anticommute within the pair and commute with
+everything else.  They are the sites' part of a purification by L - r reference qubits, and they turn two questions
+into bit tests: a Pauli that commutes with all rows lies in the group; and every entropy is that of a pure state,
+S(A) = rank of the columns of A over all rows - |A|.
+"""
+
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sweepmill_worker.clifford.vectors import GROUP, load, one_hot, splat, store
+from sweepmill_worker.jit import part
+
+Words = NDArray[np.uint64]
+Halves = NDArray[np.uint32]
+Shorts = NDArray[np.int16]
+Lanes = tuple[int, ...]
+
+
+class State(NamedTuple):
+    """Arrays of one trajectory; `*_groups` are 32-bit views of the same memory."""
+
+    sites: int
+    chunks: int
+    stride: int
+    """Columns from one chunk to the next."""
+    columns: Words
+    column_groups: Halves
+    stabilizers: Words
+    """Bit r: row r is a stabilizer."""
+    stabilizer_groups: Halves
+    logicals: Words
+    """Bit r: row r is a logical row; its partner is row r ^ 1 at first, and `partner[r]` always."""
+    logical_groups: Halves
+    partner: NDArray[np.int32]
+    start: Shorts
+    reach: Shorts
+
+
+def aligned(shape: int, dtype: type[np.generic]) -> NDArray[np.generic]:
+    """Zeros whose first element starts a cache line."""
+    size = shape * np.dtype(dtype).itemsize
+    raw = np.zeros(size + 64, dtype=np.uint8)
+    begin = -raw.ctypes.data % 64
+    return raw[begin : begin + size].view(dtype)
+
+
+def lanes_for(rows: int) -> int:
+    """Words per vector: 1, 2, 4, or 8 with as many chunks as needed."""
+    return next((lanes for lanes in (1, 2, 4) if rows <= 64 * lanes), 8)
+
+
+def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
+    """Room for a state; its content is made by `reset`."""
+    rows = 2 * sites if mixed else sites
+    lanes = lanes_for(rows)
+    chunks = -(-rows // (64 * lanes))
+    stride = 2 * sites + (1 if chunks > 1 else 0)  # one odd column keeps chunks of a site in different cache sets
+    slots = 64 * lanes * chunks
+    columns = aligned(chunks * stride * lanes, np.uint64)
+    stabilizers, logicals = aligned(chunks * lanes, np.uint64), aligned(chunks * lanes, np.uint64)
+    state = State(
+        sites=sites,
+        chunks=chunks,
+        stride=stride,
+        columns=columns,  # type: ignore[arg-type]
+        column_groups=columns.view(np.uint32),
+        stabilizers=stabilizers,  # type: ignore[arg-type]
+        stabilizer_groups=stabilizers.view(np.uint32),
+        logicals=logicals,  # type: ignore[arg-type]
+        logical_groups=logicals.view(np.uint32),
+        partner=np.zeros(slots, dtype=np.int32),
+        start=aligned(slots, np.int16),  # type: ignore[arg-type]
+        reach=aligned(slots, np.int16),  # type: ignore[arg-type]
+    )
+    return state, (0,) * lanes
+
+
+@part
+def reset(state: State, mixed: bool, lanes: Lanes) -> None:
+    """All sites in |0> (row q is Z of site q), or maximally mixed (row c is logical, its only bit in column c)."""
+    state.start[:] = 0
+    state.reach[:] = 0
+    mark_first(state.stabilizers, 0 if mixed else state.sites)
+    mark_first(state.logicals, 2 * state.sites if mixed else 0)
+    for column in range(2 * state.sites):
+        row = column if mixed else (column >> 1 if column & 1 else -1)
+        write_one_hot(state, column, row, lanes)
+        if row >= 0:
+            state.start[row] = column >> 1
+            state.partner[row] = row ^ 1
+
+
+@part
+def mark_first(bits: Words, count: int) -> None:
+    """Set bits 0 .. count - 1, clear the others."""
+    for word in range(len(bits)):
+        inside = min(max(count - 64 * word, 0), 64)
+        bits[word] = np.uint64(0xFFFFFFFFFFFFFFFF) >> np.uint64(64 - inside) if inside else np.uint64(0)
+
+
+@part
+def address(state: State, chunk: int, column: int, lanes: Lanes) -> int:
+    """Index of the first word of a chunk of a column."""
+    return (chunk * state.stride + column) * len(lanes)
+
+
+@part
+def write_one_hot(state: State, column: int, row: int, lanes: Lanes) -> None:
+    """Column = the single bit `row` (nothing if row < 0), as whole vectors."""
+    for chunk in range(state.chunks):
+        bit = one_hot(row - 64 * len(lanes) * chunk, lanes)
+        store(state.columns, address(state, chunk, column, lanes), bit)
+
+
+@part
+def erase(bits: Words, row: int) -> None:
+    """Clear bit `row`."""
+    bits[row >> 6] &= ~(np.uint64(1) << np.uint64(row & 63))
+
+
+@part
+def insert(bits: Words, row: int) -> None:
+    """Set bit `row`."""
+    bits[row >> 6] |= np.uint64(1) << np.uint64(row & 63)
+
+
+@part
+def groups_per_chunk(lanes: Lanes) -> int:
+    """Groups of 32 rows in one chunk."""
+    return 2 * len(lanes)
+
+
+@part
+def rows_per_chunk(lanes: Lanes) -> int:
+    """Rows in one chunk."""
+    return GROUP * groups_per_chunk(lanes)
+
+
+@part
+def column_chunk(state: State, chunk: int, column: int, lanes: Lanes):  # type: ignore[no-untyped-def]
+    """The vector of a chunk of a column."""
+    return load(state.columns, address(state, chunk, column, lanes), lanes)
+
+
+@part
+def bit_of(row: int, lanes: Lanes):  # type: ignore[no-untyped-def]
+    """Bit row % 64 in every lane."""
+    return splat(np.uint64(1) << np.uint64(row & 63), lanes)

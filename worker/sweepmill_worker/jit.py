@@ -1,0 +1,55 @@
+"""The compilation policy of all kernels: one decorator for entry points, one for their parts, one cache directory."""
+
+import hashlib
+import os
+from collections.abc import Callable
+from importlib.metadata import PackageNotFoundError, version
+from pathlib import Path
+from typing import Any, TypeVar
+
+import numba
+from numba.core import config as numba_config
+from platformdirs import user_cache_path
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+
+def _sources_digest() -> str:
+    """numba notices a change of an entry point's own file only, not of the parts it calls: hash them all."""
+    digest = hashlib.sha256()
+    for path in sorted(Path(__file__).parent.rglob("*.py")):
+        digest.update(path.read_bytes())
+    return digest.hexdigest()[:12]
+
+
+def cache_directory() -> Path:
+    """Where compiled kernels are kept: NUMBA_CACHE_DIR if set, else per user, version and kernel sources."""
+    chosen = os.environ.get("NUMBA_CACHE_DIR")
+    if chosen:
+        return Path(chosen)
+    try:
+        release = version("sweepmill")
+    except PackageNotFoundError:
+        release = "source"
+    return user_cache_path("sweepmill") / "kernels" / f"{release}-{_sources_digest()}"
+
+
+numba_config.CACHE_DIR = str(cache_directory())
+
+
+def entry(function: F) -> F:
+    """Compile a function called from Python: cached on disk, runs without the GIL."""
+    compiled: F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    return compiled
+
+
+def part(function: F) -> F:
+    """Compile a function called from kernels only: always inlined, so that vectors stay in registers."""
+    compiled: F = numba.njit(nogil=True, error_model="numpy", forceinline=True)(function)
+    return compiled
+
+
+def step(function: F) -> F:
+    """Compile a function called from kernels only, large or rare enough to stay a call of its own."""
+    compiled: F = numba.njit(nogil=True, error_model="numpy")(function)
+    return compiled
