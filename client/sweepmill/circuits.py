@@ -41,7 +41,7 @@ def _layers(value: Any) -> Any:
 def _plain_integer(value: Any) -> int:
     if isinstance(value, bool) or not isinstance(value, int | float) or value % 1:
         raise PydanticCustomError(
-            "layers", "must be an integer or {{ per_site = n }}, got {value}", {"value": repr(value)}
+            "layers", "must be an integer or {form}, got {value}", {"value": repr(value), "form": "{ per_site = n }"}
         )
     return int(value)
 

@@ -17,7 +17,6 @@ from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.revisions import FAMILY_REVISIONS, results_revision
 from sweepmill.times import Reading, readings
-
 from sweepmill_worker.batch import Batch
 from sweepmill_worker.clifford.engine import HybridChain, run
 from sweepmill_worker.observables.regions import RegionPlan, plan_regions

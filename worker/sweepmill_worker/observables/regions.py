@@ -6,6 +6,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+
 from sweepmill.coordinates import positions, translations
 from sweepmill.observation import Entropy, GlobalEntropy, MutualInformation, TripartiteInformation
 

@@ -5,9 +5,9 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+
 from sweepmill.observation import OutcomeRandomness, RecordBits, wants_histogram
 from sweepmill.times import Reading
-
 from sweepmill_worker.clifford.engine import Readings
 
 
