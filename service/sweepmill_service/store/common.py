@@ -2,7 +2,7 @@
 
 import json
 import time
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from itertools import islice
 from typing import Any, Literal, TypeVar
 
@@ -35,10 +35,7 @@ def chunks(items: Iterable[T], size: int = CHUNK) -> Iterator[list[T]]:
 
 def insert_missing(connection: Connection, table: Table) -> Insert:
     """INSERT that leaves rows alone whose primary key is there already."""
-    build: Callable[[Table], Any] = (
-        postgresql.insert if connection.dialect.name == "postgresql" else sqlite.insert
-    )
-    statement: Insert = build(table).on_conflict_do_nothing()
+    statement: Insert = _dialect_insert(connection, table).on_conflict_do_nothing()
     return statement
 
 
@@ -46,6 +43,20 @@ def insert_all(connection: Connection, table: Table, rows: Sequence[dict[str, An
     """Insert rows that are not there yet."""
     if rows:
         connection.execute(insert_missing(connection, table), rows)
+
+
+def replace_all(connection: Connection, table: Table, rows: Sequence[dict[str, Any]]) -> None:
+    """Insert rows, or overwrite those with the same primary key."""
+    if not rows:
+        return
+    statement = _dialect_insert(connection, table)
+    key = [column.name for column in table.primary_key]
+    changed = {name: statement.excluded[name] for name in rows[0] if name not in key}
+    connection.execute(statement.on_conflict_do_update(index_elements=key, set_=changed), rows)
+
+
+def _dialect_insert(connection: Connection, table: Table) -> Any:
+    return postgresql.insert(table) if connection.dialect.name == "postgresql" else sqlite.insert(table)
 
 
 def note_change(connection: Connection) -> None:

@@ -13,9 +13,7 @@ from sweepmill_service.store.common import chunks
 from sweepmill_service.store.status import commit_counter
 
 
-def progress(
-    connection: Connection, key: str, since: int | None, limit: int, after: int | None
-) -> ProgressPage:
+def progress(connection: Connection, key: str, since: int | None, limit: int, after: int | None) -> ProgressPage:
     """A page of ensembles in table order: those changed after commit ``since``, beyond ordinal ``after``."""
     counter = commit_counter(connection, key)
     conditions = [sweep_ensemble.c.sweep == key]
@@ -33,9 +31,7 @@ def progress(
     rows = connection.execute(statement).all()
     page = rows[:limit]
     following = page[-1].ordinal if len(rows) > limit else None
-    return ProgressPage(
-        sweep=key, commit=counter, ensembles=[_ensemble_progress(row) for row in page], next=following
-    )
+    return ProgressPage(sweep=key, commit=counter, ensembles=[_ensemble_progress(row) for row in page], next=following)
 
 
 def _ensemble_progress(row: Row[Any]) -> EnsembleProgress:

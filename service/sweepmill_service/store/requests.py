@@ -68,9 +68,7 @@ def withdraw(connection: Connection, key: str, owner: str) -> bool:
     return True
 
 
-def amend(
-    connection: Connection, key: str, owner: str, label: str | Unset | None, priority: int | Unset
-) -> bool:
+def amend(connection: Connection, key: str, owner: str, label: str | Unset | None, priority: int | Unset) -> bool:
     """Change label or priority of the owner's request; False if there is none."""
     values: dict[str, Any] = {}
     if label is not UNSET:

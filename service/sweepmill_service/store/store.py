@@ -1,6 +1,6 @@
 """The store: each method is one short transaction."""
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Collection, Iterator, Sequence
 from typing import Any
 
 from sqlalchemy import Engine, select
@@ -9,13 +9,27 @@ from sweepmill.sweep import Sweep
 
 from sweepmill_service import schema
 from sweepmill_service.database import writing
-from sweepmill_service.store import keys, progress, records, requests, status, tables
+from sweepmill_service.store import (
+    commits,
+    dispatching,
+    judging,
+    keys,
+    loading,
+    progress,
+    records,
+    requests,
+    sampled,
+    status,
+    tables,
+)
+from sweepmill_service.store.loading import LiveSweep, OpenEnsemble
 from sweepmill_service.store.requests import UNSET, Submission, Unset
+from sweepmill_service.store.results import BatchFault, BatchResult, Outcome, Start
 from sweepmill_service.store.tables import TableEntry
 
 
 class Store:
-    """What requests read and write. Raises UnknownKey for keys that are not there."""
+    """What requests and the dispatcher read and write. Raises UnknownKey for keys that are not there."""
 
     def __init__(self, engine: Engine) -> None:
         self.engine = engine
@@ -36,9 +50,7 @@ class Store:
         with self._writer.begin() as connection:
             return requests.withdraw(connection, key, owner)
 
-    def amend(
-        self, key: str, owner: str, label: str | Unset | None = UNSET, priority: int | Unset = UNSET
-    ) -> bool:
+    def amend(self, key: str, owner: str, label: str | Unset | None = UNSET, priority: int | Unset = UNSET) -> bool:
         """Change label or priority of the owner's request; False if there is none."""
         with self._writer.begin() as connection:
             return requests.amend(connection, key, owner, label, priority)
@@ -80,16 +92,12 @@ class Store:
         with self.engine.connect() as connection:
             return status.commit_counter(connection, key)
 
-    def progress(
-        self, key: str, since: int | None = None, limit: int = 500, after: int | None = None
-    ) -> ProgressPage:
+    def progress(self, key: str, since: int | None = None, limit: int = 500, after: int | None = None) -> ProgressPage:
         """A page of a sweep's ensembles in table order."""
         with self.engine.connect() as connection:
             return progress.progress(connection, key, since, limit, after)
 
-    def already_sampled(
-        self, ensembles: Sequence[str], observations: Sequence[str]
-    ) -> dict[tuple[str, str], int]:
+    def already_sampled(self, ensembles: Sequence[str], observations: Sequence[str]) -> dict[tuple[str, str], int]:
         """Length N of the sampled prefix of each (ensemble key, observation key) that has one."""
         with self.engine.connect() as connection:
             return progress.already_sampled(connection, ensembles, observations)
@@ -122,3 +130,64 @@ class Store:
         """Normal form of an ensemble and, by key, of the observations sampled of it."""
         with self.engine.connect() as connection:
             return records.normal_forms(connection, key)
+
+    def change_counter(self) -> int:
+        """Grows with every submission, withdrawal and amendment."""
+        with self.engine.connect() as connection:
+            return loading.change_counter(connection)
+
+    def live_sweeps(self) -> list[LiveSweep]:
+        """Sweeps that are requested and neither settled nor stuck, oldest first."""
+        with self.engine.connect() as connection:
+            return loading.live_sweeps(connection)
+
+    def open_ensembles(self, key: str) -> list[OpenEnsemble]:
+        """Ensembles of a sweep that are not settled, with what is stored of them."""
+        with self.engine.connect() as connection:
+            return loading.open_ensembles(connection, key)
+
+    def observation_forms(self, keys: Collection[str]) -> dict[str, dict[str, Any]]:
+        """Normal forms of observations by key."""
+        with self.engine.connect() as connection:
+            return loading.observation_forms(connection, keys)
+
+    def superseded(self, key: str) -> bool:
+        """Whether a sweep rests on other revisions than this code's."""
+        with self.engine.connect() as connection:
+            return loading.superseded(connection, key)
+
+    def due_ensembles(self, key: str) -> list[str]:
+        """Ensembles of a sweep that may be judged, after bringing its progress up to date."""
+        with self._writer.begin() as connection:
+            sampled.refresh_sampled(connection, key)
+            return loading.due_ensembles(connection, key)
+
+    def judge(self, ensembles: Collection[str]) -> Outcome:
+        """Judge every open member of these ensembles as far as its totals allow."""
+        with self._writer.begin() as connection:
+            return judging.judge(connection, ensembles)
+
+    def commit(self, results: Sequence[BatchResult]) -> Outcome:
+        """Store results, fold, judge and charge, all in one transaction; twice the same changes nothing."""
+        with self._writer.begin() as connection:
+            return commits.commit(connection, results)
+
+    def log_starts(self, starts: Sequence[Start], run: str) -> None:
+        """Note tasks before they are handed to the pool."""
+        with self._writer.begin() as connection:
+            dispatching.log_starts(connection, starts, run)
+
+    def record_fault(self, failed: BatchFault, attempts: int) -> int:
+        """Note a failed attempt and return its number; from ``attempts`` on the ensemble is stuck."""
+        with self._writer.begin() as connection:
+            return dispatching.record_fault(connection, failed, attempts)
+
+    def stick_sweep(self, key: str, reason: str) -> bool:
+        """Mark a sweep that cannot proceed as a whole; False if it is not under way."""
+        with self._writer.begin() as connection:
+            return dispatching.stick_sweep(connection, key, reason)
+
+    def stick_sweeps(self, keys: Collection[str]) -> list[str]:
+        """Mark those sweeps stuck whose ensembles are all settled or stuck; returns their keys."""
+        with self._writer.begin() as connection:
+            return dispatching.stick_sweeps(connection, keys)

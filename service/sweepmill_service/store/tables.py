@@ -71,9 +71,7 @@ def _members(connection: Connection, key: str, last: int, size: int) -> list[_Me
     return [_Member(*row) for row in rows]
 
 
-def _totals(
-    connection: Connection, members: list[_Member], observations: list[str]
-) -> dict[tuple[str, str], Row[Any]]:
+def _totals(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Row[Any]]:
     keys = [member.ensemble for member in members if member.met_by is None]
     if not keys:
         return {}
@@ -81,9 +79,7 @@ def _totals(
     return {(row.ensemble, row.observation): row for row in connection.execute(statement)}
 
 
-def _frozen(
-    connection: Connection, members: list[_Member], observations: list[str]
-) -> dict[tuple[str, str], Row[Any]]:
+def _frozen(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Row[Any]]:
     pairs = [(member.ensemble, member.trajectories) for member in members if member.met_by is not None]
     if not pairs:
         return {}
@@ -91,9 +87,7 @@ def _frozen(
     return {(row.ensemble, row.observation): row for row in connection.execute(select(mark).where(*where))}
 
 
-def _entries(
-    member: _Member, observations: list[str], totals: dict[tuple[str, str], Row[Any]]
-) -> Iterator[TableEntry]:
+def _entries(member: _Member, observations: list[str], totals: dict[tuple[str, str], Row[Any]]) -> Iterator[TableEntry]:
     for observation in observations:
         row = totals.get((member.ensemble, observation))
         yield TableEntry(
@@ -111,9 +105,7 @@ def _entries(
 def table_version(connection: Connection, key: str) -> str:
     """Digest over the N of every ensemble and observation: equal versions mean equal tables."""
     members = sweep_ensemble.c
-    number = case(
-        (members.met_by.is_(None), func.coalesce(total.c.trajectories, 0)), else_=members.trajectories
-    )
+    number = case((members.met_by.is_(None), func.coalesce(total.c.trajectories, 0)), else_=members.trajectories)
     statement = (
         select(members.ordinal, sweep_observation.c.ordinal, number, members.met_by)
         .join(sweep_observation, sweep_observation.c.sweep == members.sweep)

@@ -1,0 +1,1 @@
+"""What to sample next: pure, without database, pool or clock."""
