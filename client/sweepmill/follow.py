@@ -20,7 +20,7 @@ from sweepmill.messages import Message, SweepStatus
 from sweepmill.transport import Transport
 
 SILENCE = 45.0  # seconds without even a heartbeat after which a stream counts as lost
-PAUSE = 2.0  # seconds between questions where there is no stream
+PAUSE = 1.0  # seconds between questions where there is no stream
 FRUITLESS = 3  # streams in a row that brought nothing before asking takes over
 
 
@@ -47,6 +47,10 @@ class Deadline:
         if left <= 0:
             raise WaitTimeout(self.key, self.seconds or 0.0)
         return min(left, at_most)
+
+    def near(self) -> bool:
+        """Whether a single read of a stream could last beyond it."""
+        return self.end - time.monotonic() < SILENCE
 
 
 @dataclass
@@ -89,8 +93,8 @@ class Follower:
             self.sleep(self.deadline.left(PAUSE))
 
     def _streamed(self) -> Iterator[SweepStatus]:
-        """Statuses of one event stream until it ends or breaks."""
-        if self.fruitless >= FRUITLESS:
+        """Statuses of one event stream until it ends or breaks; none near the deadline, which a read could miss."""
+        if self.fruitless >= FRUITLESS or self.deadline.near():
             return
         self.fruitless += 1
         try:
@@ -100,16 +104,16 @@ class Follower:
 
     def _events(self) -> Iterator[SweepStatus]:
         headers = {"Accept": "text/event-stream"} | ({"Last-Event-ID": self.last_id} if self.last_id else {})
-        path, timeout = f"/v1/sweeps/{self.key}/events", self.deadline.left(SILENCE)
-        with self.transport.stream(path, headers, timeout) as response:
+        with self.transport.stream(f"/v1/sweeps/{self.key}/events", headers, SILENCE) as response:
             for event in parse_events(self._in_time(response.iter_lines())):
                 self.fruitless = 0
                 self.last_id = event.id
                 yield Progress.model_validate_json(event.data).status
 
     def _in_time(self, lines: Iterator[str]) -> Iterator[str]:
-        for line in lines:  # heartbeats too: without them a silent stream would outlast the deadline
-            self.deadline.left(0.0)
+        for line in lines:  # heartbeats too, so that a quiet stream ends as well
+            if self.deadline.near():
+                return
             yield line
 
 

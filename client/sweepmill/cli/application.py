@@ -5,7 +5,17 @@ from typing import Annotated
 
 import typer
 
-from sweepmill.cli import check, demo, dispatch, listing, pool, replay, serve, submit, table, watch, withdraw
+from sweepmill.cli.check import check
+from sweepmill.cli.demo import demo
+from sweepmill.cli.dispatch import dispatch
+from sweepmill.cli.listing import list_sweeps
+from sweepmill.cli.pool import pool
+from sweepmill.cli.replay import replay
+from sweepmill.cli.serve import serve
+from sweepmill.cli.submit import submit
+from sweepmill.cli.table import table
+from sweepmill.cli.watch import watch
+from sweepmill.cli.withdraw import withdraw
 
 app = typer.Typer(add_completion=False, no_args_is_help=True, rich_markup_mode=None, pretty_exceptions_enable=False)
 
@@ -29,14 +39,14 @@ def _options(
     """
 
 
-app.command()(check.check)
-app.command()(submit.submit)
-app.command("list")(listing.list_sweeps)
-app.command()(watch.watch)
-app.command()(table.table)
-app.command()(withdraw.withdraw)
-app.command()(replay.replay)
-app.command()(pool.pool)
-app.command()(demo.demo)
-app.command()(serve.serve)
-app.command()(dispatch.dispatch)
+app.command()(check)
+app.command()(submit)
+app.command("list")(list_sweeps)
+app.command()(watch)
+app.command()(table)
+app.command()(withdraw)
+app.command()(replay)
+app.command()(pool)
+app.command()(demo)
+app.command()(serve)
+app.command()(dispatch)

@@ -17,6 +17,6 @@ def demo(
 
     Example: sweepmill demo demo-output
     """
-    from sweepmill import demo as demonstration
+    from sweepmill.demo import run
 
-    demonstration.run(directory)
+    run(directory)

@@ -7,7 +7,8 @@ from sweepmill.extras import needing
 def dispatch(database: Database = None, workers: Workers = None, scheduler: Scheduler = None) -> None:
     """Run a dispatcher and its pool without a service.
 
-    It works beside services started with --no-dispatch, on the same database. On Postgres a second dispatcher waits until the first one ends. Needs the extra `server`.
+    It works beside services started with --no-dispatch, on the same database. On Postgres a second dispatcher
+    waits until the first one ends. Needs the extra `server`.
 
     Example: sweepmill dispatch --database postgresql+psycopg:///sweepmill --workers 8
     """

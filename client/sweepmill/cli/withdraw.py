@@ -8,7 +8,8 @@ from sweepmill.text import short
 def withdraw(key: Key, url: Url = None, owner: Owner = None) -> None:
     """Withdraw your request for a sweep.
 
-    Nothing that was sampled is deleted. The sweep goes on while somebody else requests it, and submitting it again restores it.
+    Nothing that was sampled is deleted. The sweep goes on while somebody else requests it, and submitting it again
+    restores it.
 
     Example: sweepmill withdraw 3b9f6c1e
     """
