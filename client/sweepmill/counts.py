@@ -64,16 +64,15 @@ def tally_of(values: NDArray[np.int64]) -> Tally:
 
 def histogram_of(readings: NDArray[np.int64], folds: NDArray[np.int64], fold_count: int) -> Rows:
     """Histogram rows [H, 2 + F] of single readings [n, C, m]: coordinate, value, occurrences in each fold."""
-    _, coordinates, _ = readings.shape
-    pieces = []
-    for fold in np.unique(folds):
-        part = readings[folds == fold]
-        rows = np.zeros((part.size, 2 + fold_count), dtype=np.int64)
-        rows[:, 0] = np.broadcast_to(np.arange(coordinates)[None, :, None], part.shape).ravel()
-        rows[:, 1] = part.ravel()
-        rows[:, 2 + fold] = 1
-        pieces.append(merge_rows(rows, 2))
-    return merge_rows(np.vstack(pieces), 2)
+    coordinates, lowest = readings.shape[1], int(readings.min())
+    span = int(readings.max()) - lowest + 1
+    bins = np.arange(coordinates)[None, :, None] * span + (readings - lowest)
+    codes, occurrences = np.unique(bins * fold_count + folds[:, None, None], return_counts=True)
+    used, row = np.unique(codes // fold_count, return_inverse=True)
+    rows = np.zeros((len(used), 2 + fold_count), dtype=np.int64)
+    rows[:, 0], rows[:, 1] = used // span, used % span + lowest
+    rows[row, 2 + codes % fold_count] = occurrences
+    return rows
 
 
 def _reduced(pairs: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -1,0 +1,51 @@
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from sweepmill.times import AverageOver, Every, LogSpaced, Reading, Window, readings
+
+
+def test_the_last_cell_is_the_last_two_layers() -> None:
+    assert readings("last-cell", 8) == (Reading(None, (7, 8)),)
+
+
+def test_the_end_is_the_last_layer() -> None:
+    assert readings("end", 8) == (Reading(None, (8,)),)
+
+
+def test_listed_layers_are_single_layers() -> None:
+    assert readings((1, 4), 8) == (Reading(1, (1,)), Reading(4, (4,)))
+
+
+def test_a_series_reads_unit_cells_unless_single_layers_are_asked_for() -> None:
+    assert readings(Every(every=4), 10) == (Reading(4, (3, 4)), Reading(8, (7, 8)))
+    assert readings(Every(every=4, single_layers=True), 10) == (Reading(4, (4,)), Reading(8, (8,)))
+
+
+def test_a_window_averages_cells_counted_from_the_end() -> None:
+    (reading,) = readings(AverageOver(average_over=Window(last=0.5, every=4)), 16)
+    assert reading == Reading(None, (11, 12, 15, 16))
+    (everything,) = readings(AverageOver(average_over=Window(last=1, every=2)), 8)
+    assert everything.layers == tuple(range(1, 9))
+
+
+def test_a_window_too_short_for_a_cell_is_refused() -> None:
+    with pytest.raises(ValueError, match="holds no whole unit cell"):
+        readings(AverageOver(average_over=Window(last=0.1)), 10)
+
+
+def test_a_log_spaced_series_runs_from_the_first_cell_to_the_last_layer() -> None:
+    ends = [reading.layer for reading in readings(LogSpaced(log_spaced=7), 128)]
+    assert ends == [2, 4, 8, 16, 32, 64, 128]
+    single = [reading.layer for reading in readings(LogSpaced(log_spaced=4, single_layers=True), 1000)]
+    assert single == [1, 10, 100, 1000]
+
+
+@given(st.integers(2, 60), st.integers(3, 100_000))
+def test_log_spaced_layers_are_distinct_and_inside_the_circuit(points: int, layers: int) -> None:
+    found = readings(LogSpaced(log_spaced=points), layers)
+    ends = [reading.layers[-1] for reading in found]
+    assert ends == sorted(set(ends))
+    assert ends[0] == 2
+    assert ends[-1] == layers
+    assert len(ends) <= points
