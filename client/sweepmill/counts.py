@@ -8,6 +8,8 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from sweepmill.errors import AccumulatorOverflow
+
 VARIED_FROM = 30  # trajectories that must differ from the most frequent value before a variance is trusted
 
 Rows = NDArray[np.int64]
@@ -63,9 +65,14 @@ def tally_of(values: NDArray[np.int64]) -> Tally:
 
 
 def histogram_of(readings: NDArray[np.int64], folds: NDArray[np.int64], fold_count: int) -> Rows:
-    """Histogram rows [H, 2 + F] of single readings [n, C, m]: coordinate, value, occurrences in each fold."""
+    """Histogram rows [H, 2 + F] of single readings [n, C, m]: coordinate, value, occurrences in each fold.
+
+    Raises AccumulatorOverflow for values spread over more than about 2^57.
+    """
     coordinates, lowest = readings.shape[1], int(readings.min())
     span = int(readings.max()) - lowest + 1
+    if coordinates * span * fold_count >= 2**63:
+        raise AccumulatorOverflow(f"a histogram of {coordinates} coordinates cannot span {span} values")
     bins = np.arange(coordinates)[None, :, None] * span + (readings - lowest)
     codes, occurrences = np.unique(bins * fold_count + folds[:, None, None], return_counts=True)
     used, row = np.unique(codes // fold_count, return_inverse=True)

@@ -45,9 +45,10 @@ def test_merging_does_not_depend_on_how_a_range_was_split_or_ordered(
     values: np.ndarray[Any, Any], data: st.DataObject
 ) -> None:
     cuts = sorted(data.draw(st.sets(st.integers(1, len(values) - 1) if len(values) > 1 else st.nothing())))
+    readings = values[:, :, :1] % 7
     edges = [0, *cuts, len(values)]
-    parts = [Accumulator.from_values(values[a:b], 100 + a, values[a:b, :, :1]) for a, b in itertools.pairwise(edges)]
-    whole = Accumulator.from_values(values, 100, values[:, :, :1])
+    parts = [Accumulator.from_values(values[a:b], 100 + a, readings[a:b]) for a, b in itertools.pairwise(edges)]
+    whole = Accumulator.from_values(values, 100, readings)
     assert merged(data.draw(st.permutations(parts))) == whole
     assert merged(parts).digest == whole.digest
 
@@ -55,7 +56,7 @@ def test_merging_does_not_depend_on_how_a_range_was_split_or_ordered(
 @settings(max_examples=100, deadline=None)
 @given(samples())
 def test_bytes_restore_the_same_accumulator(values: np.ndarray[Any, Any]) -> None:
-    total = Accumulator.from_values(values, 3, values[:, :, :1])
+    total = Accumulator.from_values(values, 3, values[:, :, :1] % 7)
     again = Accumulator.from_bytes(total.to_bytes())
     assert again == total
     assert again.merge(again).to_bytes() == total.merge(total).to_bytes()
@@ -129,6 +130,12 @@ def test_the_histogram_counts_every_reading_by_coordinate_value_and_fold() -> No
         (1, 5): 1,
     }
     assert (counts[0, 1][63], counts[0, 1][0], counts[0, -3][1]) == (2, 1, 1)
+
+
+def test_a_histogram_spread_over_all_integers_is_refused() -> None:
+    readings = np.array([[[-(2**62), 2**62]]])
+    with pytest.raises(AccumulatorOverflow, match="cannot span"):
+        Accumulator.from_values(readings.sum(axis=2), 0, readings)
 
 
 def test_an_average_from_folds_is_the_average_of_all() -> None:
