@@ -1,0 +1,1 @@
+"""Tables: from stored totals to columns, and from columns to JSON, CSV, Arrow and Parquet."""

@@ -1,0 +1,36 @@
+"""The HTTP answer with a table: format by Accept, a validator, and 304 for a copy that is current."""
+
+import hashlib
+from collections.abc import Callable
+from http import HTTPStatus
+from importlib.metadata import version
+
+from starlette.responses import Response, StreamingResponse
+
+from sweepmill.revisions import results_revision
+from sweepmill_service.export.content import Content
+from sweepmill_service.export.formats import WRITERS
+from sweepmill_service.negotiate import MEDIA_TYPES, choose_format, matches
+from sweepmill_service.store import Store
+
+Build = Callable[[Store, str], Content]
+
+
+def table_answer(store: Store, key: str, kind: str, build: Build, accept: str | None, held: str | None) -> Response:
+    """Raises Refusal (406) where no format is acceptable."""
+    form = choose_format(accept)
+    numbers = store.table_version(key)
+    etag = entity_tag(kind, key, numbers, form)
+    headers = {"ETag": etag, "Vary": "Accept", "Cache-Control": "private, no-cache"}
+    if matches(held, etag):
+        return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=headers)
+    content = build(store, key)
+    if store.table_version(key) != numbers:  # sampled on while it was read: the tag would promise too much
+        headers = {"Vary": "Accept", "Cache-Control": "no-store"}
+    return StreamingResponse(WRITERS[form](content), headers=headers, media_type=MEDIA_TYPES[form])
+
+
+def entity_tag(kind: str, key: str, numbers: str, form: str) -> str:
+    """Strong validator: a table is a function of the sweep, the N of each ensemble, the format and the code."""
+    parts = (kind, key, numbers, form, version("sweepmill"), results_revision())
+    return f'"{hashlib.sha256(chr(10).join(parts).encode()).hexdigest()[:32]}"'

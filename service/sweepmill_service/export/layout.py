@@ -1,0 +1,64 @@
+"""What the columns of a sweep's tables are, and which values its axes take on each ensemble."""
+
+from functools import lru_cache
+from typing import Any
+
+import pyarrow as pa
+
+from sweepmill.coordinates import Coordinate, coordinates
+from sweepmill.ensemble import Ensemble
+from sweepmill.observation import Observation
+from sweepmill.sweep import NamedObservation
+from sweepmill_service.stored import StoredSweep, expand
+
+PLACE = (
+    pa.field("name", pa.string()),
+    pa.field("quantity", pa.string()),
+    pa.field("region", pa.string()),
+    pa.field("layer", pa.int64()),
+    pa.field("position", pa.int64()),
+)
+
+
+class Layout:
+    """Columns common to the tables of one sweep."""
+
+    def __init__(self, sweep: StoredSweep, axes: tuple[str, ...]) -> None:
+        self.sweep = sweep
+        self.axes = axes
+        self.fields = [pa.field(axis, _type([self._value(e, axis) for e in sweep.ensembles])) for axis in axes]
+        self._coordinates: dict[tuple[str, int, int], tuple[Coordinate, ...]] = {}
+
+    @staticmethod
+    def _value(ensemble: Ensemble, axis: str) -> Any:
+        return ensemble.family if axis == "family" else ensemble.parameters.get(axis)
+
+    def axis_values(self, ordinal: int) -> list[Any]:
+        """Value of every axis on an ensemble; None where its family has no such parameter."""
+        ensemble = self.sweep.ensembles[ordinal]
+        return [self._value(ensemble, axis) for axis in self.axes]
+
+    def named(self, observation_key: str) -> list[NamedObservation]:
+        """The observations stored under a key: one may stand in a sweep under several names."""
+        return [item for item in self.sweep.observations if item.observation.key == observation_key]
+
+    def coordinates(self, ordinal: int, observation: Observation) -> tuple[Coordinate, ...]:
+        """Coordinates in the order of the accumulator, worked out once for each size and depth."""
+        ensemble = self.sweep.ensembles[ordinal]
+        key = (observation.key, ensemble.sites, ensemble.layers)
+        if key not in self._coordinates:
+            self._coordinates[key] = coordinates(ensemble, observation)
+        return self._coordinates[key]
+
+
+@lru_cache(maxsize=4)
+def layout_of(specification: str, axes: tuple[str, ...]) -> Layout:
+    """Layout for a sweep's canonical JSON."""
+    return Layout(expand(specification), axes)
+
+
+def _type(values: list[Any]) -> pa.DataType:
+    present = [value for value in values if value is not None]
+    if all(isinstance(value, int) for value in present):
+        return pa.int64()
+    return pa.float64() if all(isinstance(value, int | float) for value in present) else pa.string()

@@ -1,0 +1,1 @@
+"""The calls of the HTTP interface, one module for each noun."""

@@ -1,0 +1,146 @@
+"""Submitting, looking at, amending and withdrawing sweeps."""
+
+from http import HTTPStatus
+from typing import Annotated, Any
+
+from fastapi import APIRouter, Body, Query, Response
+
+from sweepmill.errors import Fault
+from sweepmill.messages import (
+    Amendment,
+    Estimate,
+    ProgressPage,
+    Submitted,
+    SweepList,
+    SweepState,
+    SweepStatus,
+)
+from sweepmill.revisions import all_revisions
+from sweepmill_service import examples
+from sweepmill_service.estimate import estimate, sampled
+from sweepmill_service.openapi import described, problems
+from sweepmill_service.problems import Refusal
+from sweepmill_service.routes.dependencies import KeyPrefix, Owner, RuntimeOf, StoreOf
+from sweepmill_service.specification import accepted
+
+router = APIRouter(prefix="/v1", tags=["sweeps"])
+Specification = Annotated[dict[str, Any], Body(openapi_examples=examples.SPECIFICATIONS)]
+
+
+@router.post(
+    "/sweeps",
+    status_code=HTTPStatus.CREATED,
+    responses={
+        201: described("A new sweep", examples.SUBMITTED),
+        200: described("The sweep was there; the request joined it", examples.SUBMITTED, Submitted),
+        **problems(400, 413, 415, 422, 503),
+    },
+)
+def submit_sweep(
+    specification: Specification, response: Response, runtime: RuntimeOf, store: StoreOf, owner: Owner = "local"
+) -> Submitted:
+    """Validate, expand and store a sweep; submitting the same again changes nothing but one's label and priority."""
+    sweep, _ = accepted(specification, store, runtime.settings.limits)
+    submission = store.submit(sweep, owner)
+    if not submission.created:
+        response.status_code = HTTPStatus.OK
+    there = sampled(sweep, store)
+    return Submitted(
+        key=submission.key,
+        created=submission.created,
+        status=store.sweep_status(submission.key),
+        sampled_ensembles=sum(item.missing == 0 for item in there),
+        sampled_trajectories=sum(item.trajectories for item in there),
+        revisions=all_revisions(),
+    )
+
+
+@router.post(
+    "/estimate",
+    responses={200: described("What the sweep would cost", examples.ESTIMATE), **problems(400, 413, 415, 422, 503)},
+)
+def estimate_sweep(specification: Specification, runtime: RuntimeOf, store: StoreOf) -> Estimate:
+    """What a sweep would cost; nothing is stored."""
+    sweep, costs = accepted(specification, store, runtime.settings.limits)
+    return estimate(sweep, costs, store, runtime.cores())
+
+
+@router.get(
+    "/sweeps",
+    responses={200: described("One page of sweeps, newest first", examples.SWEEP_LIST), **problems(422, 503)},
+)
+def list_sweeps(
+    store: StoreOf,
+    owner: Annotated[str | None, Query(description="Only sweeps this owner requests")] = None,
+    state: Annotated[SweepState | None, Query()] = None,
+    family: Annotated[str | None, Query(description="Only sweeps with circuits of this family")] = None,
+    limit: Annotated[int, Query(ge=1, le=500)] = 50,
+    after: Annotated[str | None, Query(description="`next` of the page before")] = None,
+) -> SweepList:
+    """Sweeps with their progress."""
+    return store.list_sweeps(owner=owner, state=state, family=family, limit=limit, after=after)
+
+
+@router.get(
+    "/sweeps/{key}",
+    responses={200: described("The sweep", examples.STATUS), **problems(404, 409, 422, 503)},
+)
+def read_sweep(key: KeyPrefix, store: StoreOf) -> SweepStatus:
+    """One sweep with its progress."""
+    return store.sweep_status(store.find_sweep(key))
+
+
+@router.get(
+    "/sweeps/{key}/ensembles",
+    responses={
+        200: described("One page, in the order of the table", examples.PROGRESS),
+        **problems(404, 409, 422, 503),
+    },
+)
+def read_progress(
+    key: KeyPrefix,
+    store: StoreOf,
+    since: Annotated[int | None, Query(ge=0, description="Only what changed after this commit")] = None,
+    after: Annotated[int | None, Query(description="`next` of the page before")] = None,
+    limit: Annotated[int, Query(ge=1, le=1000)] = 200,
+) -> ProgressPage:
+    """Progress of every ensemble of a sweep."""
+    return store.progress(store.find_sweep(key), since, limit, after)
+
+
+@router.patch(
+    "/sweeps/{key}",
+    responses={
+        200: described("The sweep, amended", examples.STATUS),
+        **problems(400, 404, 409, 413, 415, 422, 503),
+    },
+)
+def amend_sweep(
+    key: KeyPrefix,
+    amendment: Annotated[Amendment, Body(openapi_examples=examples.AMENDMENTS)],
+    store: StoreOf,
+    owner: Owner = "local",
+) -> SweepStatus:
+    """Change label or priority of one's own request; a label of null removes it."""
+    full = store.find_sweep(key)
+    if "priority" in amendment.model_fields_set and amendment.priority is None:
+        raise Refusal(HTTPStatus.UNPROCESSABLE_ENTITY, "a priority is a number", [Fault("body.priority", "is null")])
+    if not store.amend(full, owner, **amendment.model_dump(exclude_unset=True)):
+        raise _no_request(full, owner)
+    return store.sweep_status(full)
+
+
+@router.delete(
+    "/sweeps/{key}",
+    responses={200: described("The sweep without the request", examples.STATUS), **problems(404, 409, 422, 503)},
+)
+def withdraw_sweep(key: KeyPrefix, store: StoreOf, owner: Owner = "local") -> SweepStatus:
+    """Withdraw one's own request; what was sampled stays, and submitting again restores the sweep."""
+    full = store.find_sweep(key)
+    if not store.withdraw(full, owner):
+        raise _no_request(full, owner)
+    return store.sweep_status(full)
+
+
+def _no_request(key: str, owner: str) -> Refusal:
+    return Refusal(HTTPStatus.NOT_FOUND, f"{owner} does not request sweep {key}")

@@ -1,0 +1,50 @@
+"""Results: the aggregated table and the histograms of a sweep."""
+
+from typing import Annotated, Any
+
+from fastapi import APIRouter, Header
+from starlette.responses import Response
+
+from sweepmill_service import examples
+from sweepmill_service.export.answer import table_answer
+from sweepmill_service.export.histograms import histogram_content
+from sweepmill_service.export.tables import table_content
+from sweepmill_service.negotiate import MEDIA_TYPES
+from sweepmill_service.openapi import problems
+from sweepmill_service.routes.dependencies import KeyPrefix, StoreOf
+
+router = APIRouter(prefix="/v1", tags=["results"])
+Accept = Annotated[str | None, Header(description=f"One of {', '.join(MEDIA_TYPES.values())}; JSON by default")]
+IfNoneMatch = Annotated[str | None, Header(alias="If-None-Match", description="ETags of copies at hand")]
+
+
+def _responses(description: str, example: dict[str, Any]) -> dict[int | str, dict[str, Any]]:
+    binary: dict[str, Any] = {"schema": {"type": "string", "format": "binary"}}
+    content: dict[str, Any] = dict.fromkeys(MEDIA_TYPES.values(), binary)
+    content["application/json"] = {"schema": {"$ref": "#/components/schemas/Table"}, "example": example}
+    content["text/csv"] = {"schema": {"type": "string"}}
+    return {
+        200: {"description": description, "content": content},
+        304: {"description": "The copy at hand is current"},
+        **problems(404, 406, 409, 422, 503),
+    }
+
+
+@router.get(
+    "/sweeps/{key}/table",
+    response_class=Response,
+    responses=_responses("One row per ensemble, observation and coordinate", examples.TABLE),
+)
+def read_table(key: KeyPrefix, store: StoreOf, accept: Accept = None, held: IfNoneMatch = None) -> Response:
+    """The aggregated table, also of a sweep that is still being sampled; a settled one never changes again."""
+    return table_answer(store, store.find_sweep(key), "table", table_content, accept, held)
+
+
+@router.get(
+    "/sweeps/{key}/histograms",
+    response_class=Response,
+    responses=_responses("One row per ensemble, observation, coordinate and value that occurred", examples.HISTOGRAMS),
+)
+def read_histograms(key: KeyPrefix, store: StoreOf, accept: Accept = None, held: IfNoneMatch = None) -> Response:
+    """Exact histograms of the observations that ask for one."""
+    return table_answer(store, store.find_sweep(key), "histograms", histogram_content, accept, held)

@@ -1,0 +1,37 @@
+"""Whether this server takes a sweep: valid, within its limits, and of trajectories short enough."""
+
+from collections.abc import Mapping
+from typing import Any
+
+from sweepmill.errors import Fault, SpecificationError
+from sweepmill.limits import Limits, check_limits
+from sweepmill.sweep import Sweep
+from sweepmill_service.cost import Costs
+from sweepmill_service.counting import too_many
+from sweepmill_service.settings import ServerLimits
+from sweepmill_service.store import Store
+
+
+def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimits) -> tuple[Sweep, Costs]:
+    """The sweep and what its trajectories cost. Raises SpecificationError with every fault."""
+    if fault := too_many(specification, limits.ensembles):
+        raise SpecificationError([fault])
+    sweep = Sweep.parse(specification)
+    if faults := check_limits(sweep, Limits(**limits.model_dump(include=set(Limits.model_fields)))):
+        raise SpecificationError(faults)
+    costs = Costs.of([point.ensemble for point in sweep.points], store)
+    if fault := _slow(sweep, costs, limits.trajectory_seconds):
+        raise SpecificationError([fault])
+    return sweep, costs
+
+
+def _slow(sweep: Sweep, costs: Costs, limit: float) -> Fault | None:
+    slowest = max((point.ensemble for point in sweep.points), key=lambda ensemble: costs[ensemble.key].seconds)
+    seconds = costs[slowest.key].seconds
+    if seconds <= limit:
+        return None
+    return Fault(
+        "circuit",
+        f"one trajectory of {slowest.sites} sites and {slowest.layers} layers is predicted to take {seconds:.0f} s, "
+        f"this server takes at most {limit:g} s: fewer sites or layers",
+    )
