@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from bisect import bisect_left
 from collections.abc import Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Self
@@ -22,7 +23,8 @@ PLACE = ("name", "quantity", "region", "layer", "position")
 RESULTS = ("trajectories", "mean", "standard_error", "variance", "minimum", "maximum", "met_by")
 INTEGERS = ("layer", "position", "trajectories")
 REALS = ("mean", "standard_error", "variance", "minimum", "maximum")
-_SHOWN = ("name", "layer", "position", "trajectories", "mean", "standard_error", "met_by")
+COUNTS = ("value", "occurrences")  # in place of the results, in a table of histograms
+_SHOWN = ("name", "layer", "position", *COUNTS, "trajectories", "mean", "standard_error", "met_by")
 _HEAD = 10
 
 
@@ -55,11 +57,15 @@ class Table:
     @property
     def axes(self) -> tuple[str, ...]:
         """Names of the columns that are axes of the sweep."""
-        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS))
+        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS, *COUNTS))
 
     @property
     def ensembles(self) -> list[dict[str, Any]]:
-        """Key, range of trajectories and digest of every ensemble the table rests on."""
+        """Every ensemble the table rests on: its `key`, and what its numbers are made of.
+
+        `rows` is the half-open range of its rows; `observations` gives the half-open range of `trajectories` and
+        the digest of the total for every observation key.
+        """
         return list(self.metadata.get("ensembles", []))
 
     def __len__(self) -> int:
@@ -92,14 +98,15 @@ class Table:
 
         Raises KeyError for a column that is not there.
         """
-        keep = range(len(self))
+        keep: Sequence[int] = range(len(self))
         for name, wanted in conditions.items():
             column = self.values(name)
-            keep = [i for i in keep if _matches(column[i], wanted)]  # type: ignore[assignment]
+            keep = [i for i in keep if _matches(column[i], wanted)]
         return self._taken(keep)
 
     def _taken(self, rows: Sequence[int]) -> Self:
-        return type(self)({n: [values[i] for i in rows] for n, values in self._columns.items()}, self.metadata)
+        columns = {name: [values[i] for i in rows] for name, values in self._columns.items()}
+        return type(self)(columns, {**self.metadata, "ensembles": _still_used(self.ensembles, rows)})
 
     def to_pandas(self) -> pandas.DataFrame:
         """A data frame with the same columns; the metadata is in its `attrs`. Needs the extra `analysis`."""
@@ -161,6 +168,12 @@ def require_independent(*tables: Table) -> None:
         seen |= keys
     if shared:
         raise SharedTrajectories(sorted(shared))
+
+
+def _still_used(ensembles: list[dict[str, Any]], rows: Sequence[int]) -> list[dict[str, Any]]:
+    """Those that some of the rows, in ascending order, rest on; with the places of their rows among these."""
+    moved = ((one, [bisect_left(rows, edge) for edge in one["rows"]]) for one in ensembles)
+    return [{**one, "rows": [began, ended]} for one, (began, ended) in moved if began < ended]
 
 
 def _matches(value: Any, wanted: Any) -> bool:

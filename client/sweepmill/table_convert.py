@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sweepmill.extras import needing
-from sweepmill.table import INTEGERS, PLACE, REALS, RESULTS, Table
+from sweepmill.table import COUNTS, INTEGERS, PLACE, REALS, Table
 
 if TYPE_CHECKING:
     import pandas
@@ -24,7 +24,7 @@ def to_pandas(table: Table) -> pandas.DataFrame:
     with needing("to_pandas()", "analysis"):
         import pandas as pd
     frame = pd.DataFrame({name: table.values(name) for name in table.columns})
-    kinds = dict.fromkeys(INTEGERS, "Int64") | dict.fromkeys(REALS, "float64")
+    kinds = dict.fromkeys((*INTEGERS, *COUNTS), "Int64") | dict.fromkeys(REALS, "float64")
     frame = frame.astype({name: kind for name, kind in kinds.items() if name in frame})
     frame.attrs.update(table.metadata)
     return frame
@@ -34,7 +34,7 @@ def to_arrow(table: Table) -> Any:
     """A `pyarrow.Table`, typed by column, the metadata as JSON in its schema."""
     with needing("to_arrow()", "analysis"):
         import pyarrow as pa
-    kinds = {name: pa.int64() for name in INTEGERS} | {name: pa.float64() for name in REALS}
+    kinds = {name: pa.int64() for name in (*INTEGERS, *COUNTS)} | {name: pa.float64() for name in REALS}
     arrays = {name: pa.array(table.values(name), type=kinds.get(name)) for name in table.columns}
     return pa.table(arrays).replace_schema_metadata({ARROW_METADATA: json.dumps(table.metadata)})
 
@@ -48,11 +48,13 @@ def to_xarray(table: Table) -> dict[str, xarray.Dataset]:
 
 
 def _dataset(table: Table, kind: type[xarray.Dataset]) -> xarray.Dataset:
-    dimensions = [*table.axes, *(n for n in ("layer", "position") if len(set(table.values(n))) > 1)]
+    varying = [name for name in ("layer", "position", "value") if name in table and len(set(table.values(name))) > 1]
+    dimensions = [*table.axes, *varying]
     coordinates = {name: sorted(set(table.values(name)), key=_order) for name in dimensions}
     shape = tuple(map(len, coordinates.values()))
     places = _places(table, coordinates)
-    grids = {name: (dimensions, _grid(table.values(name), places, shape)) for name in RESULTS}
+    results = [name for name in table.columns if name not in (*dimensions, *PLACE)]
+    grids = {name: (dimensions, _grid(table.values(name), places, shape)) for name in results}
     dataset = kind(grids, coords=coordinates)
     constant = {name: table.values(name)[0] for name in PLACE if name not in dimensions}
     constant["sweep"] = table.metadata.get("sweep")

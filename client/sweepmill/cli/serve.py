@@ -1,7 +1,5 @@
 """sweepmill serve"""
 
-import json
-import sys
 from typing import Annotated
 
 import typer
@@ -38,10 +36,9 @@ def serve(
         scheduler=scheduler,
         dispatch=False if no_dispatch else None,
     )
-    if show_settings:
-        json.dump(settings.masked(), sys.stdout, indent=2)
-        print()
-        return
     with needing("sweepmill serve", "server"):
-        from sweepmill_service.serve import serve as run
-    run(settings)
+        from sweepmill_service import serve as service
+    if show_settings:
+        print(service.show_settings(settings))
+    else:
+        raise typer.Exit(service.serve(settings))
