@@ -105,7 +105,7 @@ def closing(directory: Path, database: str, key: str) -> str:
         "about 0.16, Phys. Rev. B 100, 134306 (2019) (values quoted from memory).\n\n"
         "To go on:\n"
         f"  sweepmill serve --database {database}\n"
-        f"  sweepmill table {key[:8]} -o {directory / 'again.csv'}   (in another terminal: the same table, from the store)\n"
+        f"  sweepmill table {key[:8]} -o {directory / 'again.csv'}   (in another terminal: the same table)\n"
         "  sweepmill check my-sweep.toml ; sweepmill submit my-sweep.toml --watch\n"
         "Run the demo again: nothing is sampled twice."
     )
