@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping
 from typing import NamedTuple
 
 from sweepmill.ensemble import Ensemble
+from sweepmill_service.plan.costs import default_seconds_per_trajectory
 from sweepmill_service.store import Store
 
 
@@ -43,23 +44,17 @@ class Nearest:
     def __init__(self, measured: Iterable[tuple[Ensemble, float]]) -> None:
         self._families: dict[str, list[tuple[float, float]]] = {}
         for ensemble, seconds in measured:
-            guess = math.log(guessed_seconds(ensemble))
+            guess = math.log(default_seconds_per_trajectory(ensemble))
             self._families.setdefault(ensemble.family, []).append((guess, math.log(max(seconds, 1e-9)) - guess))
         for known in self._families.values():
             known.sort()
 
     def cost(self, ensemble: Ensemble) -> Cost:
         """The guess times what the nearest one took over its guess."""
-        guess = math.log(guessed_seconds(ensemble))
+        guess = math.log(default_seconds_per_trajectory(ensemble))
         known = self._families.get(ensemble.family)
         if not known:
             return Cost(math.exp(guess), False)
         at = bisect_left(known, (guess, 0.0))
         _, excess = min(known[max(at - 1, 0) : at + 1], key=lambda item: abs(item[0] - guess))
         return Cost(math.exp(guess + excess), True)
-
-
-def guessed_seconds(ensemble: Ensemble) -> float:
-    """Measured on one core of a 3 GHz server, rounded up: 2 µs a layer at 64 sites, 25 µs at 512."""
-    sites = ensemble.sites
-    return ensemble.layers * (6e-7 + 2.2e-8 * sites * (1 + sites / 400))

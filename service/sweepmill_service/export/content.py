@@ -1,6 +1,6 @@
 """A table in memory: Arrow record batches, a fraction of the size of the totals they come from."""
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from typing import Any, NamedTuple
 
 import pyarrow as pa
@@ -25,21 +25,22 @@ class Rows:
         self.count = 0
         self._columns: list[list[Any]] = [[] for _ in schema]
 
-    def extend(self, constant: Sequence[Any], varying: Iterable[Sequence[Any]]) -> None:
+    def extend(self, constant: Sequence[Any], varying: Sequence[Sequence[Any]]) -> None:
         """Add rows that begin with the same values."""
-        before = len(self._columns[-1])
-        for column, values in zip(self._columns[len(constant) :], zip(*varying, strict=True), strict=True):
-            column.extend(values)
-        added = len(self._columns[-1]) - before
+        if not varying:
+            return
+        added = len(varying)
         for column, value in zip(self._columns, constant, strict=False):
             column.extend([value] * added)
+        for column, values in zip(self._columns[len(constant) :], zip(*varying, strict=True), strict=True):
+            column.extend(values)
         self.count += added
-        if len(self._columns[-1]) >= ROWS_PER_BATCH:
+        if len(self._columns[0]) >= ROWS_PER_BATCH:
             self._flush()
 
     def finished(self) -> list[pa.RecordBatch]:
         """All record batches."""
-        if self._columns[-1]:
+        if self._columns[0]:
             self._flush()
         return self.batches
 

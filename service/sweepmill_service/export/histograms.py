@@ -1,10 +1,10 @@
 """Exact histograms: one row per ensemble, observation, coordinate and value that occurred."""
 
-from typing import Any
-
 import pyarrow as pa
 
 from sweepmill.accumulate import Accumulator
+from sweepmill.counts import Rows as CountRows
+from sweepmill.sweep import NamedObservation
 from sweepmill_service.export.content import Content, Rows
 from sweepmill_service.export.layout import PLACE, Layout, layout_of
 from sweepmill_service.export.metadata import Provenance
@@ -24,24 +24,22 @@ def histogram_content(store: Store, key: str) -> Content:
     provenance = Provenance(key, layout, store.frozen_digests(key))
     for ordinal, entries in by_ensemble(store.table_entries(key)):
         began = rows.count
-        for item, _, accumulator in sampled(layout, entries):
-            _add(rows, layout, ordinal, item, accumulator)
+        for item, _, total in sampled(layout, entries):
+            _add(rows, layout, ordinal, item, Accumulator.from_bytes(total).histogram)
         provenance.note(ordinal, entries, began, rows.count)
     return Content(rows.schema, rows.finished(), provenance.metadata())
 
 
-def _add(rows: Rows, layout: Layout, ordinal: int, item: Any, accumulator: Accumulator) -> None:
-    counts = accumulator.histogram
+def _add(rows: Rows, layout: Layout, ordinal: int, item: NamedObservation, counts: CountRows | None) -> None:
     if counts is None:
         return
-    places = layout.coordinates(ordinal, item.observation)
-    observation = item.observation
-    constant = [*layout.axis_values(ordinal), item.name, observation.quantity, observation.region_label()]
+    places = layout.coordinates(ordinal, item)
+    constant = [*layout.axis_values(ordinal), *layout.labels[item.name]]
     occurrences = counts[:, 2:].sum(axis=1).tolist()
     rows.extend(
         constant,
-        (
+        [
             (places[place].layer, places[place].position, value, number)
             for (place, value), number in zip(counts[:, :2].tolist(), occurrences, strict=True)
-        ),
+        ],
     )

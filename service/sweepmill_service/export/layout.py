@@ -7,7 +7,6 @@ import pyarrow as pa
 
 from sweepmill.coordinates import Coordinate, coordinates
 from sweepmill.ensemble import Ensemble
-from sweepmill.observation import Observation
 from sweepmill.sweep import NamedObservation
 from sweepmill_service.stored import StoredSweep, expand
 
@@ -27,6 +26,8 @@ class Layout:
         self.sweep = sweep
         self.axes = axes
         self.fields = [pa.field(axis, _type([self._value(e, axis) for e in sweep.ensembles])) for axis in axes]
+        self.observation_keys = [(item, item.observation.key) for item in sweep.observations]
+        self.labels = {item.name: _labels(item) for item in sweep.observations}
         self._coordinates: dict[tuple[str, int, int], tuple[Coordinate, ...]] = {}
 
     @staticmethod
@@ -38,17 +39,18 @@ class Layout:
         ensemble = self.sweep.ensembles[ordinal]
         return [self._value(ensemble, axis) for axis in self.axes]
 
-    def named(self, observation_key: str) -> list[NamedObservation]:
-        """The observations stored under a key: one may stand in a sweep under several names."""
-        return [item for item in self.sweep.observations if item.observation.key == observation_key]
-
-    def coordinates(self, ordinal: int, observation: Observation) -> tuple[Coordinate, ...]:
+    def coordinates(self, ordinal: int, item: NamedObservation) -> tuple[Coordinate, ...]:
         """Coordinates in the order of the accumulator, worked out once for each size and depth."""
         ensemble = self.sweep.ensembles[ordinal]
-        key = (observation.key, ensemble.sites, ensemble.layers)
+        key = (item.name, ensemble.sites, ensemble.layers)
         if key not in self._coordinates:
-            self._coordinates[key] = coordinates(ensemble, observation)
+            self._coordinates[key] = coordinates(ensemble, item.observation)
         return self._coordinates[key]
+
+
+def _labels(item: NamedObservation) -> tuple[str, str, str]:
+    """Name, quantity and region."""
+    return item.name, item.observation.quantity, item.observation.region_label()
 
 
 @lru_cache(maxsize=4)

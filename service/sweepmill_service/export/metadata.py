@@ -37,7 +37,7 @@ class Provenance:
         return {
             "sweep": self.sweep,
             "axes": list(self.layout.axes),
-            "observations": {item.name: item.observation.key for item in self.layout.sweep.observations},
+            "observations": {item.name: key for item, key in self.layout.observation_keys},
             "folds": self._folds(),
             "version": version("sweepmill"),
             "revisions": all_revisions(),
@@ -48,7 +48,7 @@ class Provenance:
         """Numbers of folds each observation's totals keep; several where sizes differ in coordinates."""
         last = len(self.layout.sweep.ensembles)
         return {
-            item.name: sorted({folds_for(len(self.layout.coordinates(i, item.observation))) for i in range(last)})
+            item.name: sorted({folds_for(len(self.layout.coordinates(i, item))) for i in range(last)})
             for item in self.layout.sweep.observations
         }
 

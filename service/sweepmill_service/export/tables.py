@@ -1,13 +1,14 @@
 """The aggregated table: one row per ensemble, observation and coordinate."""
 
 from collections.abc import Iterator
-from typing import Any
 
 import pyarrow as pa
 
 from sweepmill.accumulate import Accumulator
 from sweepmill.statistics import summarize
+from sweepmill.sweep import NamedObservation
 from sweepmill_service.export.content import Content, Rows
+from sweepmill_service.export.heads import read_head
 from sweepmill_service.export.layout import PLACE, Layout, layout_of
 from sweepmill_service.export.metadata import Provenance
 from sweepmill_service.store import Store, TableEntry
@@ -26,8 +27,8 @@ def table_content(store: Store, key: str) -> Content:
     provenance = Provenance(key, layout, store.frozen_digests(key))
     for ordinal, entries in by_ensemble(store.table_entries(key)):
         began = rows.count
-        for name, entry, accumulator in sampled(layout, entries):
-            _add(rows, layout, name, entry, accumulator)
+        for item, entry, total in sampled(layout, entries):
+            _add(rows, layout, item, entry, read_head(total))
         provenance.note(ordinal, entries, began, rows.count)
     return Content(rows.schema, rows.finished(), provenance.metadata())
 
@@ -44,25 +45,21 @@ def by_ensemble(entries: Iterator[TableEntry]) -> Iterator[tuple[int, list[Table
         yield held[0].ordinal, held
 
 
-def sampled(layout: Layout, entries: list[TableEntry]) -> Iterator[tuple[Any, TableEntry, Accumulator]]:
-    """Named observations, in the order of the names, that have trajectories; totals shared by names are read once."""
-    found = {
-        entry.observation_key: (entry, Accumulator.from_bytes(entry.accumulator))
-        for entry in entries
-        if entry.accumulator is not None
-    }
-    for item in layout.sweep.observations:
-        if item.observation.key in found:
-            yield item, *found[item.observation.key]
+def sampled(layout: Layout, entries: list[TableEntry]) -> Iterator[tuple[NamedObservation, TableEntry, bytes]]:
+    """Named observations that have trajectories, in the order of the names, with their totals."""
+    found = {entry.observation_key: entry for entry in entries}
+    for item, key in layout.observation_keys:
+        entry = found[key]
+        if entry.accumulator is not None:
+            yield item, entry, entry.accumulator
 
 
-def _add(rows: Rows, layout: Layout, item: Any, entry: TableEntry, accumulator: Accumulator) -> None:
-    places = layout.coordinates(entry.ordinal, item.observation)
-    observation = item.observation
-    constant = [*layout.axis_values(entry.ordinal), item.name, observation.quantity, observation.region_label()]
+def _add(rows: Rows, layout: Layout, item: NamedObservation, entry: TableEntry, accumulator: Accumulator) -> None:
+    places = layout.coordinates(entry.ordinal, item)
+    constant = [*layout.axis_values(entry.ordinal), *layout.labels[item.name]]
     rows.extend(
         constant,
-        (
+        [
             (
                 place.layer,
                 place.position,
@@ -75,5 +72,5 @@ def _add(rows: Rows, layout: Layout, item: Any, entry: TableEntry, accumulator: 
                 entry.met_by,
             )
             for place, moments in zip(places, summarize(accumulator, places), strict=True)
-        ),
+        ],
     )
