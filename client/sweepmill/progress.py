@@ -81,7 +81,9 @@ def _terminal(stream: TextIO) -> Iterator[Show]:
 
     def line(status: SweepStatus) -> Text:
         parts = zip(bricks(status), (SETTLED, SAMPLED, OPEN), strict=True)
-        return Text.assemble(short(status.key), "  ", *parts, "  ", sentence(status))
+        drawn = Text.assemble(short(status.key), "  ", *parts, "  ", sentence(status))
+        drawn.no_wrap, drawn.overflow = True, "ellipsis"
+        return drawn
 
     with Live(console=Console(file=stream), refresh_per_second=4) as live:
         yield lambda status: live.update(line(status))

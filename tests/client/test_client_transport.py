@@ -7,8 +7,10 @@ from datetime import UTC, datetime
 import httpx
 import pytest
 
-from sweepmill import Client, Retry, errors
+from support.specs import small
+from sweepmill import Client, Retry, Sweep, errors
 from sweepmill.failures import HTTPX_FAILURES, HTTPX_ROOTS, translated
+from sweepmill.revisions import all_revisions
 
 FAST = Retry(attempts=3, first=0.0, obeyed=0.0)
 KEY = "5a0c77d2"
@@ -185,3 +187,33 @@ def test_requests_carry_owner_and_token_and_the_token_is_not_shown() -> None:
         assert "s3cret" not in repr(client._transport.connection)
     assert calls[0].headers["Authorization"] == "Bearer s3cret"
     assert calls[0].headers["Sweepmill-Owner"] == "mara"
+
+
+def test_another_key_than_the_local_one_is_reported_with_the_revisions_that_differ() -> None:
+    sweep = Sweep.parse(small())
+    status = {
+        "key": "c" * 64,
+        "state": "waiting",
+        "families": [],
+        "axes": [],
+        "names": [],
+        "requests": [],
+        "ensembles": 4,
+        "settled": 0,
+        "trajectories": 0,
+        "trajectories_cap": 1200,
+        "core_seconds": 0.0,
+        "created_at": 0.0,
+        "commit": 0,
+    }
+    answer = {
+        "key": "c" * 64,
+        "created": True,
+        "status": status,
+        "sampled_ensembles": 0,
+        "sampled_trajectories": 0,
+        "revisions": all_revisions() | {"quantity:entropy": 7},
+    }
+    with pytest.raises(errors.KeyMismatch, match="quantity:entropy is 1 here and 7 there") as caught:
+        client_of(httpx.Response(201, json=answer)).submit(sweep)
+    assert (caught.value.local, caught.value.remote) == (sweep.key, "c" * 64)
