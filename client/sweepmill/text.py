@@ -5,7 +5,6 @@ from html import escape
 from typing import Any
 
 SHORT_KEY = 12
-_THIN_SPACE = "\u202f"
 
 
 def short(key: str) -> str:
@@ -15,7 +14,7 @@ def short(key: str) -> str:
 
 def count(number: int) -> str:
     """An integer with its digits grouped in threes."""
-    return f"{number:,}".replace(",", _THIN_SPACE)
+    return f"{number:,}"
 
 
 def duration(seconds: float | None) -> str:
