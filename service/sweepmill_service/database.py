@@ -8,9 +8,7 @@ from sqlalchemy import Connection, Engine, create_engine, event
 from sqlalchemy.engine import URL, make_url
 
 WRITES = "sweepmill_writes"  # execution option of connections that are going to write
-NETWORK_FILE_SYSTEMS = frozenset(
-    {"nfs", "nfs4", "cifs", "smb3", "smbfs", "fuse.sshfs", "lustre", "gpfs", "afs", "9p"}
-)
+NETWORK_FILE_SYSTEMS = frozenset({"nfs", "nfs4", "cifs", "smb3", "smbfs", "fuse.sshfs", "lustre", "gpfs", "afs", "9p"})
 POSTGRES_SESSION = (
     "-c statement_timeout=60000 -c lock_timeout=15000 -c idle_in_transaction_session_timeout=60000 -c jit=off"
 )
@@ -30,9 +28,7 @@ def open_database(url: str) -> Engine:
         return _open_sqlite(parsed)
     if parsed.get_backend_name() in ("postgresql", "postgres"):
         return _open_postgres(parsed)
-    raise DatabaseUnusable(
-        f"database {parsed.get_backend_name()!r} is not supported: use sqlite or postgresql"
-    )
+    raise DatabaseUnusable(f"database {parsed.get_backend_name()!r} is not supported: use sqlite or postgresql")
 
 
 def writing(engine: Engine) -> Engine:
@@ -56,9 +52,7 @@ def _open_postgres(url: URL) -> Engine:
 
 def _open_sqlite(url: URL) -> Engine:
     if not url.database or url.database == ":memory:":
-        raise DatabaseUnusable(
-            "SQLite in memory keeps nothing: name a file, as in sqlite:///sweepmill.sqlite"
-        )
+        raise DatabaseUnusable("SQLite in memory keeps nothing: name a file, as in sqlite:///sweepmill.sqlite")
     path = Path(url.database).absolute()
     path.parent.mkdir(parents=True, exist_ok=True)
     kind = file_system(path.parent)

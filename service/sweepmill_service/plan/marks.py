@@ -39,8 +39,10 @@ def next_mark(rung: int, reaches: Iterable[Reach]) -> int:
     The rung itself, unless an observation was sampled beyond it for somebody else without keeping the total there.
     """
     known = list(reaches)
+    if all(reach.can_reach(rung) for reach in known):
+        return rung
     kept = {number for reach in known for number in (reach.prefix, *reach.marks) if number > rung}
-    for number in sorted({rung, *kept}):
+    for number in sorted(kept):
         if all(reach.can_reach(number) for reach in known):
             return number
     raise AssertionError("the longest prefix is always reachable")

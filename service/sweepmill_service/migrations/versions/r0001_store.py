@@ -69,9 +69,7 @@ def upgrade() -> None:
         sa.Column("versions", sa.Text(), nullable=False),
         sa.Column("at", sa.Double(), nullable=False),
         sa.ForeignKeyConstraint(["ensemble"], ["ensemble.key"], name=op.f("fk_batch_ensemble_ensemble")),
-        sa.ForeignKeyConstraint(
-            ["observation"], ["observation.key"], name=op.f("fk_batch_observation_observation")
-        ),
+        sa.ForeignKeyConstraint(["observation"], ["observation.key"], name=op.f("fk_batch_observation_observation")),
         sa.PrimaryKeyConstraint("ensemble", "observation", "first", name=op.f("pk_batch")),
     )
     op.create_index(op.f("ix_batch_ensemble_at"), "batch", ["ensemble", "at"], unique=False)
@@ -143,9 +141,7 @@ def upgrade() -> None:
         sa.Column("trajectories", sa.BigInteger(), nullable=True),
         sa.Column("digest", sa.String(length=64), nullable=True),
         sa.Column("changed", sa.BigInteger(), nullable=False),
-        sa.ForeignKeyConstraint(
-            ["ensemble"], ["ensemble.key"], name=op.f("fk_sweep_ensemble_ensemble_ensemble")
-        ),
+        sa.ForeignKeyConstraint(["ensemble"], ["ensemble.key"], name=op.f("fk_sweep_ensemble_ensemble_ensemble")),
         sa.ForeignKeyConstraint(["sweep"], ["sweep.key"], name=op.f("fk_sweep_ensemble_sweep_sweep")),
         sa.PrimaryKeyConstraint("sweep", "ensemble", name=op.f("pk_sweep_ensemble")),
         sa.UniqueConstraint("sweep", "ordinal", name=op.f("uq_sweep_ensemble_sweep_ordinal")),
@@ -171,9 +167,7 @@ def upgrade() -> None:
         sa.Column("accumulator", sa.LargeBinary(), nullable=False),
         sa.Column("digest", sa.String(length=64), nullable=False),
         sa.ForeignKeyConstraint(["ensemble"], ["ensemble.key"], name=op.f("fk_total_ensemble_ensemble")),
-        sa.ForeignKeyConstraint(
-            ["observation"], ["observation.key"], name=op.f("fk_total_observation_observation")
-        ),
+        sa.ForeignKeyConstraint(["observation"], ["observation.key"], name=op.f("fk_total_observation_observation")),
         sa.PrimaryKeyConstraint("ensemble", "observation", name=op.f("pk_total")),
     )
     op.create_table(

@@ -1,0 +1,48 @@
+"""Runs inside worker processes: ends them with the service, and says when a batch begins.
+
+Workers of a local pool must not outlive a killed service. The parent-death signal of Linux belongs to the thread
+that started the process, which is not the service's main thread, so the parent is watched instead.
+"""
+
+import os
+import threading
+from typing import Any
+
+from distributed.diagnostics.plugin import WorkerPlugin
+
+CHECK_SECONDS = 0.5
+STARTED_TOPIC = "sweepmill-started"
+
+
+class Lifeline(WorkerPlugin):
+    """Ends a worker process whose parent is not ``parent`` any more."""
+
+    name = "sweepmill-lifeline"
+
+    def __init__(self, parent: int) -> None:
+        self.parent = parent
+
+    def setup(self, worker: Any) -> None:
+        """Start to watch."""
+        threading.Thread(target=_watch, args=(self.parent,), name=self.name, daemon=True).start()
+
+
+class StartReporter(WorkerPlugin):
+    """Reports each task that begins to run: only these can have brought a worker down."""
+
+    name = "sweepmill-start-reporter"
+
+    def setup(self, worker: Any) -> None:
+        """Remember who reports."""
+        self.worker = worker
+
+    def transition(self, key: Any, start: str, finish: str, **_more: Any) -> None:
+        """Called by the worker at each change of a task's state."""
+        if finish == "executing":
+            self.worker.log_event(STARTED_TOPIC, str(key))
+
+
+def _watch(parent: int) -> None:
+    while os.getppid() == parent:
+        threading.Event().wait(CHECK_SECONDS)
+    os._exit(0)
