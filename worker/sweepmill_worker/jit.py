@@ -37,19 +37,24 @@ def cache_directory() -> Path:
 numba_config.CACHE_DIR = str(cache_directory())
 
 
+# No reference counts: kernels borrow every array from their caller and allocate none.  Counting cost more than the
+# work itself, an atomic operation per array and call.
+_OPTIONS = {"nogil": True, "error_model": "numpy", "_nrt": False}
+
+
 def entry(function: F) -> F:
-    """Compile a function called from Python: cached on disk, runs without the GIL."""
-    compiled: F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    """Compile a function called from Python: cached on disk, runs without the GIL, allocates nothing."""
+    compiled: F = numba.njit(cache=True, **_OPTIONS)(function)
     return compiled
 
 
 def part(function: F) -> F:
     """Compile a function called from kernels only: always inlined, so that vectors stay in registers."""
-    compiled: F = numba.njit(nogil=True, error_model="numpy", forceinline=True)(function)
+    compiled: F = numba.njit(forceinline=True, **_OPTIONS)(function)
     return compiled
 
 
 def step(function: F) -> F:
     """Compile a function called from kernels only, large or rare enough to stay a call of its own."""
-    compiled: F = numba.njit(nogil=True, error_model="numpy")(function)
+    compiled: F = numba.njit(**_OPTIONS)(function)
     return compiled

@@ -11,8 +11,8 @@ from typing import NamedTuple
 
 import numpy as np
 
-from sweepmill_worker.clifford.state import Lanes, State, Words, address, aligned, column_chunk, rows_per_chunk
-from sweepmill_worker.clifford.vectors import any_bit, choose, load, nonzero, splat, store, trailing_zeros
+from sweepmill_worker.clifford.state import Lanes, State, Words, address, aligned, bit_of, column_chunk, rows_per_chunk
+from sweepmill_worker.clifford.vectors import any_bit, choose, item, load, nonzero, splat, store, trailing_zeros
 from sweepmill_worker.jit import part
 
 
@@ -42,7 +42,7 @@ def add_outer(state: State, matrix: Matrix, of: int, added: int, lanes: Lanes) -
     for chunk in range(state.chunks):
         base = address(state, chunk, of, lanes)
         for word in range(len(lanes)):
-            bits = state.columns[base + word]
+            bits = item(state.columns, base + word)
             while bits != 0:
                 row = chunk * rows_per_chunk(lanes) + 64 * word + trailing_zeros(bits)
                 bits &= bits - np.uint64(1)
@@ -66,12 +66,12 @@ def half_rank(state: State, matrix: Matrix, lanes: Lanes) -> int:
     rank = 0
     for row in range(remaining):
         word = 0
-        while word < width and matrix.scratch[row * width + word] == 0:
+        while word < width and item(matrix.scratch, row * width + word) == 0:
             word += 1
         if word == width:
             continue
         rank += 1
-        position = trailing_zeros(matrix.scratch[row * width + word])
+        position = trailing_zeros(item(matrix.scratch, row * width + word))
         clear_below(state, matrix, row, remaining, word, position, lanes)
     return rank // 2
 
@@ -96,9 +96,9 @@ def clear_below(
 ) -> None:
     """Add scratch row `row` to the later rows that have its lowest bit."""
     width = state.chunks * len(lanes)
-    bit, nothing = splat(np.uint64(1) << np.uint64(position), lanes), splat(np.uint64(0), lanes)
+    bit, nothing = bit_of(state, position, lanes), splat(np.uint64(0), lanes)
     for other in range(row + 1, beyond):
-        here = nonzero(splat(matrix.scratch[other * width + word], lanes) & bit)
+        here = nonzero(splat(item(matrix.scratch, other * width + word), lanes) & bit)
         for chunk in range(word // len(lanes), state.chunks):
             to = other * width + chunk * len(lanes)
             pivot = load(matrix.scratch, row * width + chunk * len(lanes), lanes)

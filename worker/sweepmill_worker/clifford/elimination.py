@@ -20,14 +20,14 @@ from sweepmill_worker.clifford.state import (
 )
 from sweepmill_worker.clifford.vectors import any_bit, load, store
 from sweepmill_worker.clifford.windows import smallest
-from sweepmill_worker.jit import part
+from sweepmill_worker.jit import part, step
 
 
 class Desk(NamedTuple):
     """Work space of the readings."""
 
     copy: State
-    """Columns in linear order; `stabilizers` marks the rows that are not yet pivots."""
+    """Columns in linear order; `stabilizers` marks the rows that are not yet pivots, `start` stays zero."""
     ends: Shorts
     """Per row, the last position (in the direction of the sweep) where it may have support."""
     left: Shorts
@@ -45,7 +45,7 @@ def new_desk(copy: State) -> Desk:
     return Desk(copy, *spare, ranks=np.zeros(copy.sites + 1, dtype=np.int32))  # type: ignore[arg-type]
 
 
-@part
+@step
 def cut_open(state: State, desk: Desk, origin: int, lanes: Lanes) -> None:
     """Copy the columns in the order origin, origin + 1, ..., and bound the rows' ends."""
     copy, sites, width = desk.copy, state.sites, len(lanes)
@@ -57,10 +57,10 @@ def cut_open(state: State, desk: Desk, origin: int, lanes: Lanes) -> None:
             store(copy.columns, to + width, load(state.columns, source + width, lanes))
     for row in range(len(state.start)):
         begin = (state.start[row] - origin) % sites
-        desk.ends[row] = min(begin + state.reach[row], sites - 1)
+        desk.ends[row] = min(begin + state.end[row] - state.start[row], sites - 1)
 
 
-@part
+@step
 def sweep(desk: Desk, backward: bool, met: Shorts, lanes: Lanes) -> None:
     """Eliminate position by position: afterwards pivots that begin at one position are independent there.
 
@@ -72,7 +72,7 @@ def sweep(desk: Desk, backward: bool, met: Shorts, lanes: Lanes) -> None:
     for position in range(copy.sites):
         site = last - position if backward else position
         for column in (2 * site, 2 * site + 1):
-            pivot = smallest(copy, column, copy.stabilizer_groups, desk.ends, lanes)
+            pivot = smallest(copy, column, copy.stabilizer_groups, copy.start, desk.ends, lanes)
             if pivot < 0:
                 continue
             erase(copy.stabilizers, pivot)

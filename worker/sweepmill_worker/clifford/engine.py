@@ -11,7 +11,7 @@ from sweepmill_worker.clifford.classes import GATE_CLASSES, column_masks
 from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
 from sweepmill_worker.clifford.roads import Plan, Region, plan
-from sweepmill_worker.clifford.state import new_state
+from sweepmill_worker.clifford.state import aligned, new_state
 from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
 from sweepmill_worker.words import GATE, MEASURE, words
 
@@ -22,7 +22,8 @@ MAX_SITES: Final = 4096
 MAX_LAYERS: Final = 2**24
 """Far beyond any ensemble; layers are 32-bit counters of the random words."""
 
-_MASKS = column_masks()
+_MASKS = aligned(16 * len(GATE_CLASSES), np.uint32)
+_MASKS[:] = column_masks()
 
 
 @dataclass(frozen=True)

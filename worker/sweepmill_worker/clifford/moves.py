@@ -15,7 +15,17 @@ from sweepmill_worker.clifford.state import (
     rows_per_chunk,
     write_one_hot,
 )
-from sweepmill_worker.clifford.vectors import any_bit, choose, load, nonzero, one_hot, splat, splat_half, store
+from sweepmill_worker.clifford.vectors import (
+    any_bit,
+    choose,
+    item,
+    load,
+    nonzero,
+    one_hot,
+    splat,
+    splat_half,
+    store,
+)
 from sweepmill_worker.clifford.windows import grow, smallest, unite
 from sweepmill_worker.jit import part
 
@@ -24,10 +34,10 @@ from sweepmill_worker.jit import part
 def image(masks: Halves, at: int, x_left, z_left, x_right, z_right, lanes: Lanes):  # type: ignore[no-untyped-def]
     """One new column of a gate: the sum of the old ones that the class's masks select."""
     return (
-        (x_left & splat_half(masks[at], lanes))
-        ^ (z_left & splat_half(masks[at + 1], lanes))
-        ^ (x_right & splat_half(masks[at + 2], lanes))
-        ^ (z_right & splat_half(masks[at + 3], lanes))
+        (x_left & splat_half(item(masks, at), lanes))
+        ^ (z_left & splat_half(item(masks, at + 1), lanes))
+        ^ (x_right & splat_half(item(masks, at + 2), lanes))
+        ^ (z_right & splat_half(item(masks, at + 3), lanes))
     )
 
 
@@ -57,7 +67,7 @@ def gate_layer(
         for bond in range(bonds):
             left = 2 * bond + parity
             right = left + 1 if left + 1 < state.sites else 0
-            gate(state, chunk, left, right, masks, 16 * classes[bond], lanes)
+            gate(state, chunk, left, right, masks, 16 * item(classes, bond), lanes)
     grow(state, parity, periodic)
 
 
@@ -69,11 +79,11 @@ def measure(state: State, site: int, lanes: Lanes) -> bool:
     logical rows: Z is new information, random, and the rank of the group grows.  None: Z is in the group already.
     """
     column = 2 * site
-    pivot = smallest(state, column, state.stabilizer_groups, state.reach, lanes)
+    pivot = smallest(state, column, state.stabilizer_groups, state.start, state.end, lanes)
     if pivot >= 0:
         replace(state, site, pivot, lanes)
         return True
-    pivot = smallest(state, column, state.logical_groups, state.reach, lanes)
+    pivot = smallest(state, column, state.logical_groups, state.start, state.end, lanes)
     if pivot >= 0:
         replace(state, site, pivot, lanes)
         promote(state, pivot, lanes)
@@ -88,36 +98,35 @@ def replace(state: State, site: int, pivot: int, lanes: Lanes) -> None:
     The pivot is the anticommuting row with the shortest window: that alone keeps rows short, and no gauge has to
     be maintained between measurements.
     """
-    start, reach = int(state.start[pivot]), int(state.reach[pivot])
+    start, end = item(state.start, pivot), item(state.end, pivot)
     unite(state, site, pivot, lanes)
     for chunk in range(state.chunks):
         if chunk != pivot // rows_per_chunk(lanes):
-            multiply(state, chunk, site, start, reach, pivot, lanes)
-    multiply(state, pivot // rows_per_chunk(lanes), site, start, reach, pivot, lanes)  # last: erases the pivot's bits
+            multiply(state, chunk, site, start, end, pivot, lanes)
+    multiply(state, pivot // rows_per_chunk(lanes), site, start, end, pivot, lanes)  # last: erases the pivot's bits
     write_one_hot(state, 2 * site, -1, lanes)
     write_one_hot(state, 2 * site + 1, pivot, lanes)
 
 
 @part
-def multiply(state: State, chunk: int, site: int, start: int, reach: int, pivot: int, lanes: Lanes) -> None:
+def multiply(state: State, chunk: int, site: int, start: int, end: int, pivot: int, lanes: Lanes) -> None:
     """One chunk of: rows in the X column of the site ^= pivot row, over the pivot's window."""
     rows = column_chunk(state, chunk, 2 * site, lanes)
     if state.chunks > 1 and not any_bit(rows):
         return
-    beyond = start + reach + 1
-    add_pivot(state, chunk, rows, 2 * start, 2 * min(beyond, state.sites), pivot, lanes)
-    add_pivot(state, chunk, rows, 0, 2 * (beyond - state.sites), pivot, lanes)
+    add_pivot(state, chunk, rows, 2 * start, 2 * min(end + 1, state.sites), pivot, lanes)
+    add_pivot(state, chunk, rows, 0, 2 * (end + 1 - state.sites), pivot, lanes)
 
 
 @part
 def add_pivot(state: State, chunk: int, rows, first: int, beyond: int, pivot: int, lanes: Lanes) -> None:  # type: ignore[no-untyped-def]
     """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit."""
-    bit, nothing = bit_of(pivot, lanes), splat(np.uint64(0), lanes)
+    bit, nothing = bit_of(state, pivot, lanes), splat(np.uint64(0), lanes)
     to = address(state, chunk, 0, lanes)
     source = address(state, pivot // rows_per_chunk(lanes), 0, lanes) + ((pivot >> 6) & (len(lanes) - 1))
     for column in range(first, beyond):
         here = to + column * len(lanes)
-        word = splat(state.columns[source + column * len(lanes)], lanes)
+        word = splat(item(state.columns, source + column * len(lanes)), lanes)
         selected = choose(nonzero(word & bit), rows, nothing)
         store(state.columns, here, load(state.columns, here, lanes) ^ selected)
 
@@ -134,9 +143,10 @@ def promote(state: State, pivot: int, lanes: Lanes) -> None:
     insert(state.stabilizers, pivot)
     chunk = partner // rows_per_chunk(lanes)
     bit = one_hot(partner - chunk * rows_per_chunk(lanes), lanes)
-    for offset in range(state.reach[partner] + 1):
-        site = (state.start[partner] + offset) % state.sites
+    for position in range(state.start[partner], state.end[partner] + 1):
+        site = position % state.sites
         for column in (2 * site, 2 * site + 1):
             kept = column_chunk(state, chunk, column, lanes)
             store(state.columns, address(state, chunk, column, lanes), kept ^ (kept & bit))
-    state.reach[partner] = 0
+    state.end[partner] = state.start[partner]
+    erase(state.wrapping, partner)

@@ -7,7 +7,7 @@ from sweepmill_worker.clifford.commutators import Matrix, half_rank, toggle
 from sweepmill_worker.clifford.elimination import Desk, clip, read_prefixes, rows_inside
 from sweepmill_worker.clifford.roads import GENERAL, INTERVAL, PREFIX, TURNED, Plan
 from sweepmill_worker.clifford.state import Lanes, State
-from sweepmill_worker.jit import step
+from sweepmill_worker.jit import part, step
 
 
 @step
@@ -19,10 +19,19 @@ def read(state: State, desk: Desk, matrix: Matrix, plan: Plan, out: NDArray[np.i
     read_general(state, matrix, plan, out, lanes)
 
 
+@part
+def has_kind(plan: Plan, kind: int) -> bool:
+    """Is any region read by this kind of road?"""
+    found = False
+    for region in range(len(plan.kinds)):
+        found |= plan.kinds[region] == kind
+    return found
+
+
 @step
 def read_along(state: State, desk: Desk, plan: Plan, out: NDArray[np.int32], lanes: Lanes) -> None:
     """Regions [0, x)."""
-    if not np.any(plan.kinds == PREFIX):
+    if not has_kind(plan, PREFIX):
         return
     read_prefixes(state, desk, lanes)
     for region in range(len(out)):
@@ -36,7 +45,7 @@ def read_interval_kind(
     state: State, desk: Desk, plan: Plan, kind: int, origin: int, out: NDArray[np.int32], lanes: Lanes
 ) -> None:
     """Intervals of the chain cut open at the origin."""
-    if not np.any(plan.kinds == kind):
+    if not has_kind(plan, kind):
         return
     clip(state, desk, origin, lanes)
     for region in range(len(out)):
@@ -51,14 +60,13 @@ def read_general(state: State, matrix: Matrix, plan: Plan, out: NDArray[np.int32
     count = len(plan.toggle_ends)
     if count == 0:
         return
-    entropies = np.empty(count, dtype=np.int32)
     matrix.rows[:] = 0
     begin = 0
     for ordinal in range(count):
         for at in range(begin, plan.toggle_ends[ordinal]):
             toggle(state, matrix, plan.toggles[at], lanes)
         begin = plan.toggle_ends[ordinal]
-        entropies[ordinal] = half_rank(state, matrix, lanes)
+        plan.entropies[ordinal] = half_rank(state, matrix, lanes)
     for region in range(len(out)):
         if plan.kinds[region] == GENERAL:
-            out[region] = entropies[plan.firsts[region]]
+            out[region] = plan.entropies[plan.firsts[region]]

@@ -1,5 +1,6 @@
 """Which road answers which region: the cheapest that is allowed.  All roads give the same entropies."""
 
+from bisect import bisect_right
 from collections.abc import Sequence
 from enum import Enum
 from typing import Final, NamedTuple
@@ -36,6 +37,8 @@ class Plan(NamedTuple):
     toggle_ends: NDArray[np.int64]
     toggles: NDArray[np.int64]
     """Sites to add or remove from one region of the sequence to the next, up to each end."""
+    entropies: NDArray[np.int32]
+    """Room for the entropies of the sequence."""
 
 
 def plan(sites: int, mixed: bool, regions: Sequence[Region], allowed: frozenset[Road] = frozenset(Road)) -> Plan:
@@ -50,35 +53,46 @@ def plan(sites: int, mixed: bool, regions: Sequence[Region], allowed: frozenset[
         entries = [(INTERVAL, 0, first) if kind == PREFIX else (kind, first, n) for kind, first, n in entries]
     table = np.array(entries, dtype=np.int64).reshape(-1, 3)
     ends, toggles = _toggles(list(ordinals))
-    return Plan(*(np.ascontiguousarray(table[:, i]) for i in range(3)), ends, toggles)
+    kinds, firsts, lengths = (np.ascontiguousarray(table[:, i]) for i in range(3))
+    return Plan(kinds, firsts, lengths, ends, toggles, np.zeros(len(ends), dtype=np.int32))
 
 
 def _entry(
     sites: int, mixed: bool, region: Region, ordinals: dict[Region, int], allowed: frozenset[Road]
 ) -> tuple[int, int, int]:
-    choices = [region] if mixed else [region, _complement(sites, region)]
-    for choice in choices:
-        if Road.PREFIXES in allowed and choice == tuple(range(len(choice))):
-            return PREFIX, len(choice), len(choice)
+    arc = _arc(sites, region)
+    if arc is None or not allowed:
+        return GENERAL, ordinals.setdefault(_canonical(sites, mixed, region), len(ordinals)), 0
+    first, length = arc
+    arcs = [arc] if mixed else [arc, ((first + length) % sites, sites - length)]
+    if Road.PREFIXES in allowed:
+        for first, length in arcs:
+            if first == 0 or length in (0, sites):
+                return PREFIX, length, length
     if Road.INTERVALS in allowed:
-        for choice in choices:
-            if _is_interval(choice):
-                return INTERVAL, choice[0], len(choice)
-        turned = _turned(sites, region)
-        if _is_interval(turned):
-            return TURNED, turned[0], len(turned)
-    return GENERAL, ordinals.setdefault(min(choices, key=lambda choice: (len(choice), choice)), len(ordinals)), 0
+        for kind, origin in ((INTERVAL, 0), (TURNED, sites // 2)):
+            for first, length in arcs:
+                position = (first - origin) % sites
+                if position + length <= sites:
+                    return kind, position, length
+    return GENERAL, ordinals.setdefault(_canonical(sites, mixed, region), len(ordinals)), 0
 
 
-def _is_interval(region: Region) -> bool:
-    return len(region) > 0 and region[-1] - region[0] == len(region) - 1
+def _arc(sites: int, region: Region) -> tuple[int, int] | None:
+    """(first site, length) of a region contiguous on the ring, else None."""
+    length = len(region)
+    if length == 0 or region[-1] - region[0] == length - 1:
+        return (region[0] if region else 0), length
+    run = bisect_right(range(length), 0, key=lambda i: region[i] - i)  # the sites 0 .. run - 1 come first
+    if region[-1] == sites - 1 and region[-1] - region[run] == length - run - 1:
+        return region[run], length
+    return None
 
 
-def _turned(sites: int, region: Region) -> Region:
-    return tuple(sorted((site - sites // 2) % sites for site in region))
-
-
-def _complement(sites: int, region: Region) -> Region:
+def _canonical(sites: int, mixed: bool, region: Region) -> Region:
+    """In a pure state the smaller of a region and its complement (of two halves, the one with site 0)."""
+    if mixed or 2 * len(region) < sites or (2 * len(region) == sites and region[0] == 0):
+        return region
     inside = set(region)
     return tuple(site for site in range(sites) if site not in inside)
 

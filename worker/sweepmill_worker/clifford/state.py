@@ -7,8 +7,8 @@ vector of shorts for their windows), groups in chunks of 64 * len(lanes) rows (o
 Invariants between layers:
 
 I1  The rows in use are independent; the stabilizers commute and generate the group modulo signs.
-I2  A row is the identity outside its window: the sites start, start + 1, ..., start + reach, modulo the ring.
-    Windows are bounds and need not be tight.
+I2  A row is the identity outside its window, the sites start .. end modulo L, with 0 <= start < L and
+    start <= end < start + L.  Rows whose window wraps (end >= L) are marked.  Windows are bounds, not always tight.
 
 A mixed state of rank r also keeps 2 (L - r) logical rows, in pairs that anticommute within the pair and commute with
 everything else.  They are the sites' part of a purification by L - r reference qubits, and they turn two questions
@@ -21,7 +21,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from sweepmill_worker.clifford.vectors import GROUP, load, one_hot, splat, store
+from sweepmill_worker.clifford.vectors import GROUP, load, one_hot, store
 from sweepmill_worker.jit import part
 
 Words = NDArray[np.uint64]
@@ -47,7 +47,12 @@ class State(NamedTuple):
     logical_groups: Halves
     partner: NDArray[np.int32]
     start: Shorts
-    reach: Shorts
+    end: Shorts
+    wrapping: Words
+    """Bit r: the window of row r wraps around the ring."""
+    wrapping_groups: Halves
+    bit_vectors: Words
+    """64 vectors: bit b in every lane.  In memory, lest the compiler turn vector tests into scalar ones."""
 
 
 def aligned(shape: int, dtype: type[np.generic]) -> NDArray[np.generic]:
@@ -71,7 +76,9 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
     stride = 2 * sites + (1 if chunks > 1 else 0)  # one odd column keeps chunks of a site in different cache sets
     slots = 64 * lanes * chunks
     columns = aligned(chunks * stride * lanes, np.uint64)
-    stabilizers, logicals = aligned(chunks * lanes, np.uint64), aligned(chunks * lanes, np.uint64)
+    stabilizers, logicals, wrapping = (aligned(chunks * lanes, np.uint64) for _ in range(3))
+    bit_vectors = aligned(64 * lanes, np.uint64)
+    bit_vectors[:] = np.repeat(np.uint64(1) << np.arange(64, dtype=np.uint64), lanes)
     state = State(
         sites=sites,
         chunks=chunks,
@@ -84,7 +91,10 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
         logical_groups=logicals.view(np.uint32),
         partner=np.zeros(slots, dtype=np.int32),
         start=aligned(slots, np.int16),  # type: ignore[arg-type]
-        reach=aligned(slots, np.int16),  # type: ignore[arg-type]
+        end=aligned(slots, np.int16),  # type: ignore[arg-type]
+        wrapping=wrapping,  # type: ignore[arg-type]
+        wrapping_groups=wrapping.view(np.uint32),
+        bit_vectors=bit_vectors,  # type: ignore[arg-type]
     )
     return state, (0,) * lanes
 
@@ -93,7 +103,8 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
 def reset(state: State, mixed: bool, lanes: Lanes) -> None:
     """All sites in |0> (row q is Z of site q), or maximally mixed (row c is logical, its only bit in column c)."""
     state.start[:] = 0
-    state.reach[:] = 0
+    state.end[:] = 0
+    state.wrapping[:] = 0
     mark_first(state.stabilizers, 0 if mixed else state.sites)
     mark_first(state.logicals, 2 * state.sites if mixed else 0)
     for column in range(2 * state.sites):
@@ -101,6 +112,7 @@ def reset(state: State, mixed: bool, lanes: Lanes) -> None:
         write_one_hot(state, column, row, lanes)
         if row >= 0:
             state.start[row] = column >> 1
+            state.end[row] = column >> 1
             state.partner[row] = row ^ 1
 
 
@@ -157,6 +169,6 @@ def column_chunk(state: State, chunk: int, column: int, lanes: Lanes):  # type: 
 
 
 @part
-def bit_of(row: int, lanes: Lanes):  # type: ignore[no-untyped-def]
+def bit_of(state: State, row: int, lanes: Lanes):  # type: ignore[no-untyped-def]
     """Bit row % 64 in every lane."""
-    return splat(np.uint64(1) << np.uint64(row & 63), lanes)
+    return load(state.bit_vectors, (row & 63) * len(lanes), lanes)

@@ -11,6 +11,7 @@ from sweepmill_worker.clifford.moves import gate_layer, measure
 from sweepmill_worker.clifford.readings import read
 from sweepmill_worker.clifford.roads import Plan
 from sweepmill_worker.clifford.state import Halves, Lanes, State, reset
+from sweepmill_worker.clifford.vectors import item, put
 from sweepmill_worker.jit import entry, part
 from sweepmill_worker.words import GATE, MEASURE, counters, fill
 
@@ -71,8 +72,8 @@ def new_supply(sites: int) -> Supply:
 def draw_classes(supply: Supply, base: int, bonds: int) -> None:
     """Gate class of each bond of a layer."""
     for bond in range(bonds):
-        word = np.uint64(supply.words[base + bond])
-        supply.classes[bond] = np.int64((word * np.uint64(720)) >> np.uint64(32))
+        word = np.uint64(item(supply.words, base + bond))
+        put(supply.classes, bond, np.int64((word * np.uint64(720)) >> np.uint64(32)))
 
 
 @part
@@ -80,8 +81,8 @@ def draw_measured(supply: Supply, base: int, sites: int, threshold: int) -> int:
     """List the measured sites of a layer; how many?"""
     count = 0
     for site in range(sites):
-        supply.measured[count] = site
-        count += np.uint64(supply.words[base + site]) < np.uint64(threshold)
+        put(supply.measured, count, site)
+        count += np.uint64(item(supply.words, base + site)) < np.uint64(threshold)
     return count
 
 
@@ -100,7 +101,7 @@ def run_layer(state: State, circuit: Circuit, supply: Supply, parity: int, base:
     measured = draw_measured(supply, base + supply.gate_words, state.sites, circuit.threshold)
     random = 0
     for index in range(measured):
-        random += measure(state, supply.measured[index], lanes)
+        random += measure(state, item(supply.measured, index), lanes)
     return random, measured
 
 

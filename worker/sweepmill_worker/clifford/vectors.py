@@ -204,9 +204,9 @@ def choose(typing: Any, truth: Any, yes: Any, no: Any) -> Any:
     return yes(truth, yes, no), codegen
 
 
-def _extremum(relation: str, left: Any, right: Any) -> tuple[Any, Callable[..., Any]]:
+def _extremum(compare: str, relation: str, left: Any, right: Any) -> tuple[Any, Callable[..., Any]]:
     def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
-        return builder.select(builder.icmp_signed(relation, *arguments), *arguments)
+        return builder.select(getattr(builder, compare)(relation, *arguments), *arguments)
 
     return left(left, right), codegen
 
@@ -214,25 +214,78 @@ def _extremum(relation: str, left: Any, right: Any) -> tuple[Any, Callable[..., 
 @intrinsic  # type: ignore[untyped-decorator]
 def lower(typing: Any, left: Any, right: Any) -> Any:
     """Signed minimum per lane."""
-    return _extremum("<", left, right)
+    return _extremum("icmp_signed", "<", left, right)
 
 
 @intrinsic  # type: ignore[untyped-decorator]
 def higher(typing: Any, left: Any, right: Any) -> Any:
     """Signed maximum per lane."""
-    return _extremum(">", left, right)
+    return _extremum("icmp_signed", ">", left, right)
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def lower_unsigned(typing: Any, left: Any, right: Any) -> Any:
+    """Unsigned minimum per lane."""
+    return _extremum("icmp_unsigned", "<", left, right)
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def tagged(typing: Any, shorts: Any, tag: Any) -> Any:
+    """Per lane: 16 * value + tag, for values of 12 bits and tags of 4."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        vector = _llvm(SHORTS)
+        kind = ir.FunctionType(vector, [vector, vector, vector])
+        funnel = cgutils.get_or_insert_function(builder.module, kind, "llvm.fshl.v32i16")
+        high = _splat(builder, builder.shl(arguments[1], ir.IntType(64)(12)), SHORTS)
+        return builder.call(funnel, [arguments[0], high, ir.Constant(vector, [4] * GROUP)])
+
+    return shorts(shorts, types.int64), codegen
 
 
 @intrinsic  # type: ignore[untyped-decorator]
 def least(typing: Any, shorts: Any) -> Any:
-    """The smallest of 32 non-negative shorts."""
+    """The smallest of 32 unsigned shorts."""
 
     def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
         kind = ir.FunctionType(ir.IntType(16), [_llvm(SHORTS)])
         reduce = cgutils.get_or_insert_function(builder.module, kind, "llvm.vector.reduce.umin.v32i16")
-        return builder.sext(builder.call(reduce, arguments), ir.IntType(64))
+        return builder.zext(builder.call(reduce, arguments), ir.IntType(64))
 
     return types.int64(shorts), codegen
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def bits(typing: Any, truth: Any) -> Any:
+    """32 truth values as the bits of a word: the inverse of `truths`."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        return builder.bitcast(arguments[0], ir.IntType(GROUP))
+
+    return types.uint32(truth), codegen
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def item(typing: Any, array: Any, index: Any) -> Any:
+    """array[index] for index >= 0: spares the selects by which numba serves negative indices."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        data = context.make_array(array)(context, builder, arguments[0]).data
+        return builder.load(builder.gep(data, [arguments[1]]))
+
+    return array.dtype(array, types.int64), codegen
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def put(typing: Any, array: Any, index: Any, value: Any) -> Any:
+    """array[index] = value for index >= 0."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        data = context.make_array(array)(context, builder, arguments[0]).data
+        builder.store(arguments[2], builder.gep(data, [arguments[1]]))
+        return context.get_dummy_value()
+
+    return types.void(array, types.int64, array.dtype), codegen
 
 
 @intrinsic  # type: ignore[untyped-decorator]

@@ -2,108 +2,160 @@
 
 import numpy as np
 
-from sweepmill_worker.clifford.state import Halves, Lanes, Shorts, State, address, groups_per_chunk
+from sweepmill_worker.clifford.state import (
+    Halves,
+    Lanes,
+    Shorts,
+    State,
+    address,
+    column_chunk,
+    groups_per_chunk,
+    rows_per_chunk,
+)
 from sweepmill_worker.clifford.vectors import (
     GROUP,
+    any_bit,
+    bits,
     choose,
     element,
     first_true,
     higher,
+    item,
     least,
+    load,
     load_shorts,
     lower,
+    lower_unsigned,
+    put,
     splat_short,
     store,
+    tagged,
     truths,
 )
-from sweepmill_worker.jit import part, step
+from sweepmill_worker.jit import part
 
-NEVER = 32767
-"""A key larger than that of any row."""
+NOBODY = 65535
+"""A tagged key above that of any row."""
+LONGEST = 4094
+"""Keys saturate here, so that with any tag they stay below NOBODY."""
 
 
 @part
-def wrapped(site, ring: int):  # type: ignore[no-untyped-def]
-    """Sites of -ring .. ring - 1, brought into 0 .. ring - 1."""
-    zero = splat_short(0)
-    return site + choose(site < zero, splat_short(ring), zero)
-
-
-@step
 def grow(state: State, parity: int, periodic: bool) -> None:
     """Extend every window to the boundaries of the bricks (parity, parity + 1), (parity + 2, parity + 3), ..."""
     one, offset, furthest = splat_short(1), splat_short(parity), splat_short(state.sites - 1)
     lowest = splat_short(-1 if periodic else 0)
-    highest = splat_short(NEVER if periodic else state.sites - 1)
-    for at in range(0, len(state.start), GROUP):
-        start = load_shorts(state.start, at)
-        end = start + load_shorts(state.reach, at)
+    highest = splat_short(32767 if periodic else state.sites - 1)
+    for group in range(len(state.start) // GROUP):
+        start, end = load_shorts(state.start, GROUP * group), load_shorts(state.end, GROUP * group)
         start = higher(start - ((start ^ offset) & one), lowest)
         end = lower(end + (((end ^ offset) & one) ^ one), highest)
-        store(state.reach, at, lower(end - start, furthest))
-        store(state.start, at, wrapped(start, state.sites))
+        keep(state, group, start, lower(end, start + furthest))
 
 
 @part
-def smallest(state: State, column: int, permitted: Halves, keys: Shorts, lanes: Lanes) -> int:
-    """Among the permitted rows with a bit in the column, one with the smallest key; -1 if there are none.
+def keep(state: State, group: int, start, end) -> None:  # type: ignore[no-untyped-def]
+    """Store the windows of a group, with starts from -L on brought into 0 .. L - 1, and mark those that wrap."""
+    zero = splat_short(0)
+    turn = choose(start < zero, splat_short(state.sites), zero)
+    start, end = start + turn, end + turn
+    store(state.start, GROUP * group, start)
+    store(state.end, GROUP * group, end)
+    put(state.wrapping_groups, group, bits(splat_short(state.sites - 1) < end))
+
+
+@part
+def smallest(state: State, column: int, permitted: Halves, starts: Shorts, ends: Shorts, lanes: Lanes) -> int:
+    """Among the permitted rows with a bit in the column, one with the smallest end - start; -1 if there are none.
 
     Dense and free of data-dependent branches within a chunk; empty chunks are skipped where there are several.
+    A key carries the number of its group, so that a minimum per lane tells the row.
     """
-    best, home = splat_short(NEVER), splat_short(0)
+    best, home = splat_short(NOBODY), splat_short(0)
     for chunk in range(state.chunks):
         base = 2 * address(state, chunk, column, lanes)
         first = chunk * groups_per_chunk(lanes)
-        if state.chunks > 1 and not occupied(state.column_groups, base, permitted, first, lanes):
+        if state.chunks > 1 and not occupied(state, base, permitted, first, lanes):
             continue
+        here = splat_short(NOBODY)
         for group in range(groups_per_chunk(lanes)):
-            rows = truths(state.column_groups[base + group] & permitted[first + group])
-            key = load_shorts(keys, GROUP * (first + group))
-            better = (key < best) & rows
-            best = choose(better, key, best)
-            home = choose(better, splat_short(first + group), home)
+            rows = truths(item(state.column_groups, base + group) & item(permitted, first + group))
+            at = GROUP * (first + group)
+            length = lower(load_shorts(ends, at) - load_shorts(starts, at), splat_short(LONGEST))
+            here = choose(rows, lower_unsigned(here, tagged(length, group)), here)
+        home = choose(lower_unsigned(here, best) == best, home, splat_short(chunk))
+        best = lower_unsigned(here, best)
     key = least(best)
-    if key == NEVER:
+    if key == NOBODY:
         return -1
     lane = first_true(best == splat_short(key))
-    return GROUP * element(home, lane) + lane
+    chunk = element(home, lane) if state.chunks > 1 else 0
+    return chunk * rows_per_chunk(lanes) + GROUP * (key & 15) + lane
 
 
 @part
-def occupied(groups: Halves, base: int, permitted: Halves, first: int, lanes: Lanes) -> bool:
+def occupied(state: State, base: int, permitted: Halves, first: int, lanes: Lanes) -> bool:
     """Has the chunk of a column any permitted row?"""
     found = np.uint32(0)
     for group in range(groups_per_chunk(lanes)):
-        found |= groups[base + group] & permitted[first + group]
+        found |= item(state.column_groups, base + group) & item(permitted, first + group)
     return found != 0
 
 
 @part
 def unite(state: State, site: int, pivot: int, lanes: Lanes) -> None:
-    """Windows of the rows that anticommute with Z of the site: union with the pivot's.  The pivot's: the site.
-
-    All these windows contain the site, so a union is the larger extent to its left and the larger to its right.
-    """
-    pivot_left = site - state.start[pivot]
-    pivot_left += state.sites if pivot_left < 0 else 0
-    least_left, least_right = splat_short(pivot_left), splat_short(state.reach[pivot] - pivot_left)
-    here, furthest = splat_short(site), splat_short(state.sites - 1)
+    """Windows of the rows that anticommute with Z of the site: union with the pivot's.  The pivot's: the site."""
+    around = False
     for chunk in range(state.chunks):
-        base = 2 * address(state, chunk, 2 * site, lanes)
-        first = chunk * groups_per_chunk(lanes)
-        if state.chunks > 1 and not occupied(state.column_groups, base, state.column_groups, base, lanes):
+        wrapping = load(state.wrapping, chunk * len(lanes), lanes)
+        around |= any_bit(column_chunk(state, chunk, 2 * site, lanes) & wrapping)
+    if around:
+        unite_around(state, site, state.start[pivot], state.end[pivot], lanes)
+    else:
+        unite_straight(state, site, item(state.start, pivot), item(state.end, pivot), lanes)
+    shrink(state, site, pivot, around)
+
+
+@part
+def unite_straight(state: State, site: int, pivot_start: int, pivot_end: int, lanes: Lanes) -> None:
+    """Where no window wraps."""
+    start_bound, end_bound = splat_short(pivot_start), splat_short(pivot_end)
+    for chunk in range(state.chunks):
+        if state.chunks > 1 and not any_bit(column_chunk(state, chunk, 2 * site, lanes)):
             continue
+        base = 2 * address(state, chunk, 2 * site, lanes)
         for group in range(groups_per_chunk(lanes)):
-            rows = truths(state.column_groups[base + group])
-            replaced = truths(
-                np.uint32(1) << np.uint32(pivot & 31) if first + group == pivot >> 5 else np.uint32(0)
-            )
-            at = GROUP * (first + group)
-            start, reach = load_shorts(state.start, at), load_shorts(state.reach, at)
-            left = wrapped(here - start, state.sites)
-            right = higher(reach - left, least_right)
-            left = higher(left, least_left)
-            new_start = choose(rows, wrapped(here - left, state.sites), start)
-            new_reach = choose(rows, lower(left + right, furthest), reach)
-            store(state.start, at, choose(replaced, here, new_start))
-            store(state.reach, at, choose(replaced, splat_short(0), new_reach))
+            rows = truths(item(state.column_groups, base + group))
+            at = GROUP * (chunk * groups_per_chunk(lanes) + group)
+            start, end = load_shorts(state.start, at), load_shorts(state.end, at)
+            store(state.start, at, choose(rows, lower(start, start_bound), start))
+            store(state.end, at, choose(rows, higher(end, end_bound), end))
+
+
+@part
+def unite_around(state: State, site: int, pivot_start: int, pivot_end: int, lanes: Lanes) -> None:
+    """Where some windows wrap: first turn all so that start <= site <= end."""
+    zero, ring, here = splat_short(0), splat_short(state.sites), splat_short(site)
+    turn = state.sites if pivot_start > site else 0
+    start_bound, end_bound = splat_short(pivot_start - turn), splat_short(pivot_end - turn)
+    for group in range(len(state.start) // GROUP):
+        chunk, within = group // groups_per_chunk(lanes), group % groups_per_chunk(lanes)
+        rows = truths(item(state.column_groups, 2 * address(state, chunk, 2 * site, lanes) + within))
+        start, end = load_shorts(state.start, GROUP * group), load_shorts(state.end, GROUP * group)
+        turned = choose(here < start, ring, zero)
+        new_start = lower(start - turned, start_bound)
+        new_end = lower(higher(end - turned, end_bound), new_start + splat_short(state.sites - 1))
+        keep(state, group, choose(rows, new_start, start), choose(rows, new_end, end))
+
+
+@part
+def shrink(state: State, site: int, pivot: int, around: bool) -> None:
+    """The pivot's window: the site.  Whole vectors, so that later loads find them in the store buffer."""
+    group = pivot >> 5
+    row, here = truths(np.uint32(1) << np.uint32(pivot & 31)), splat_short(site)
+    start = choose(row, here, load_shorts(state.start, GROUP * group))
+    end = choose(row, here, load_shorts(state.end, GROUP * group))
+    store(state.start, GROUP * group, start)
+    store(state.end, GROUP * group, end)
+    if around:
+        put(state.wrapping_groups, group, bits(splat_short(state.sites - 1) < end))
