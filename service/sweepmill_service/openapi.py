@@ -70,6 +70,17 @@ def document(app: FastAPI) -> Callable[[], dict[str, Any]]:
     return made
 
 
+def _describe_specifications(schema: dict[str, Any]) -> None:
+    """Bodies that `Sweep.parse` reads: one circuit block may stand without its list."""
+    sweep = schema["components"]["schemas"]["Sweep"]
+    sweep["description"] = "Circuits whose fields may be axes, observations and a stopping rule."
+    blocks = sweep["properties"]["circuit"]
+    sweep["properties"]["circuit"] = {"title": "Circuit", "anyOf": [blocks["items"], blocks]}
+    for path in ("/v1/sweeps", "/v1/estimate"):
+        content = schema["paths"][path]["post"]["requestBody"]["content"]["application/json"]
+        content["schema"] = {"$ref": _REFERENCE.format(model="Sweep")}
+
+
 def _complete(schema: dict[str, Any]) -> dict[str, Any]:
     _, extra = models_json_schema([(model, "validation") for model in _BY_HAND], ref_template=_REFERENCE)
     components = schema["components"]["schemas"]
@@ -77,6 +88,7 @@ def _complete(schema: dict[str, Any]) -> dict[str, Any]:
         components.setdefault(name, definition)
     for name in ("HTTPValidationError", "ValidationError"):
         components.pop(name, None)
+    _describe_specifications(schema)
     for path in schema["paths"].values():
         for operation in path.values():
             for status, description in _EVERYWHERE.items():

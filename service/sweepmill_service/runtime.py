@@ -3,6 +3,7 @@
 import logging
 import threading
 
+from alembic.util import CommandError
 from sqlalchemy import Engine
 from sqlalchemy.exc import SQLAlchemyError
 
@@ -78,17 +79,17 @@ class Runtime:
 
     def _open(self) -> None:
         try:
-            engine = open_database(self.settings.database)
-            migrate(engine)
-        except (DatabaseUnusable, SQLAlchemyError, OSError) as error:
+            self._engine = open_database(self.settings.database)
+            migrate(self._engine)
+            self._store = Store(self._engine)
+        except (DatabaseUnusable, SQLAlchemyError, OSError, CommandError) as error:
             self.failure = failure_line(self.settings, error)
             log.error("%s", self.failure)
-            return
-        self._engine = engine
-        self._store = Store(engine)
 
 
 def failure_line(settings: Settings, error: Exception) -> str:
     """One line that names the database, without its password, and the reason."""
     reason = str(getattr(error, "orig", None) or error).splitlines()[0]
+    if isinstance(error, CommandError):
+        reason = f"its schema is of a later release than this code ({reason})"
     return f"the database {masked_url(settings.database)} cannot be used: {reason}"

@@ -9,6 +9,7 @@ import socket
 from collections.abc import Iterator
 
 import uvicorn
+from fastapi import FastAPI
 
 from sweepmill.errors import SweepmillError
 from sweepmill_service.app import create_app
@@ -54,6 +55,17 @@ def address(listener: socket.socket) -> str:
     return f"http://[{host}]:{port}" if ":" in host else f"http://{host}:{port}"
 
 
+def server_configuration(app: FastAPI, settings: Settings) -> uvicorn.Config:
+    """How uvicorn serves the application: one process, logs as configured, no advertisement of itself."""
+    return uvicorn.Config(
+        app,
+        log_config=None,
+        access_log=settings.log_level == "debug",
+        server_header=False,
+        timeout_graceful_shutdown=CONNECTIONS_WAIT_SECONDS,
+    )
+
+
 class Server(uvicorn.Server):
     """A server that a signal stops for good: uvicorn's own would raise the signal again afterwards."""
 
@@ -79,14 +91,7 @@ class Server(uvicorn.Server):
 async def _serve(settings: Settings, listener: socket.socket) -> None:
     app = create_app(settings)
     runtime: Runtime = app.state.runtime
-    config = uvicorn.Config(
-        app,
-        log_config=None,
-        access_log=settings.log_level == "debug",
-        server_header=False,
-        timeout_graceful_shutdown=CONNECTIONS_WAIT_SECONDS,
-    )
-    server = Server(config, runtime)
+    server = Server(server_configuration(app, settings), runtime)
     log.warning("no tokens are configured: the service is open to everyone who can log in to this machine")
     announcing = asyncio.create_task(_announce(server, address(listener)))
     await server.serve(sockets=[listener])

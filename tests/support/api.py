@@ -14,6 +14,7 @@ import uvicorn
 from sweepmill.sweep import Sweep
 from sweepmill_service.app import create_app
 from sweepmill_service.runtime import Runtime
+from sweepmill_service.serve import server_configuration
 from sweepmill_service.settings import Settings
 from sweepmill_service.store import Store
 from sweepmill_service.store.results import BatchResult
@@ -54,7 +55,7 @@ def eventually(condition: Callable[[], Any], what: str) -> Any:
 def serving(settings: Settings) -> Iterator[Api]:
     """Serve an application until the end of the block; its database is open when the block begins."""
     app = create_app(settings)
-    server = uvicorn.Server(uvicorn.Config(app, log_config=None, access_log=False, timeout_graceful_shutdown=5))
+    server = uvicorn.Server(server_configuration(app, settings))
     runtime: Runtime = app.state.runtime
     with socket.create_server(("127.0.0.1", 0)) as listener:
         thread = threading.Thread(target=server.run, args=([listener],))
