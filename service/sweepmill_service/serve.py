@@ -4,6 +4,7 @@ import asyncio
 import contextlib
 import json
 import logging
+import os
 import signal
 import socket
 from collections.abc import Iterator
@@ -15,9 +16,11 @@ from sweepmill.errors import SweepmillError
 from sweepmill_service.app import create_app
 from sweepmill_service.logs import configure_logs
 from sweepmill_service.runtime import Runtime
-from sweepmill_service.settings import Settings
+from sweepmill_service.settings import Settings, masked_url
 
 READY_POLL_SECONDS = 0.05
+DISPATCH_POLL_SECONDS = 0.2
+STOP_SIGNALS = (signal.SIGTERM, signal.SIGINT)
 CONNECTIONS_WAIT_SECONDS = 5
 log = logging.getLogger(__name__)
 
@@ -33,8 +36,29 @@ def serve(settings: Settings) -> int:
         listener = listen(settings.host, settings.port)
     except OSError as error:
         raise CannotServe(f"cannot listen on {settings.host}:{settings.port}: {error.strerror}") from error
-    with listener:
-        asyncio.run(_serve(settings, listener))
+    runtime = asyncio.run(_serve(settings, listener))
+    return _outcome(runtime)
+
+
+def dispatch(settings: Settings) -> int:
+    """Dispatch without HTTP until SIGTERM or SIGINT; returns 0 after a clean stop. Raises CannotServe."""
+    configure_logs(settings)
+    runtime = Runtime(settings.model_copy(update={"dispatch": True}))
+    for kind in STOP_SIGNALS:
+        signal.signal(kind, lambda *_: os._exit(1) if runtime.stopping.is_set() else runtime.stopping.set())
+    runtime.start()
+    announced = False
+    while not runtime.stopping.wait(DISPATCH_POLL_SECONDS) and runtime.failure is None:
+        if not announced and runtime.is_ready():
+            print(f"Sweepmill dispatches from {masked_url(settings.database)}", flush=True)
+            announced = True
+    runtime.stop()
+    return _outcome(runtime)
+
+
+def _outcome(runtime: Runtime) -> int:
+    if runtime.failure is not None:
+        raise CannotServe(runtime.failure)
     return 0
 
 
@@ -75,29 +99,30 @@ class Server(uvicorn.Server):
 
     @contextlib.contextmanager
     def capture_signals(self) -> Iterator[None]:
-        """Stop at the first signal, at once at the second."""
+        """Both signals stop the server."""
         loop = asyncio.get_running_loop()
-        for kind in (signal.SIGTERM, signal.SIGINT):
+        for kind in STOP_SIGNALS:
             loop.add_signal_handler(kind, self.stop)
         yield
 
     def stop(self) -> None:
-        """End event streams, then connections, then the pool."""
-        self.force_exit = self.should_exit
+        """End event streams, then connections, then the pool; the second time end at once."""
+        if self.should_exit:
+            os._exit(1)  # whatever is lost thereby is sampled again: nothing half done is ever stored
         self.should_exit = True
         self.runtime.stopping.set()
 
 
-async def _serve(settings: Settings, listener: socket.socket) -> None:
+async def _serve(settings: Settings, listener: socket.socket) -> Runtime:
     app = create_app(settings)
     runtime: Runtime = app.state.runtime
     server = Server(server_configuration(app, settings), runtime)
     log.warning("no tokens are configured: the service is open to everyone who can log in to this machine")
     announcing = asyncio.create_task(_announce(server, address(listener)))
-    await server.serve(sockets=[listener])
+    with listener:
+        await server.serve(sockets=[listener])
     announcing.cancel()
-    if runtime.failure is not None:
-        raise CannotServe(runtime.failure)
+    return runtime
 
 
 async def _announce(server: Server, url: str) -> None:

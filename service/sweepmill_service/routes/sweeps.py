@@ -48,7 +48,7 @@ def submit_sweep(
     return Submitted(
         key=submission.key,
         created=submission.created,
-        status=store.sweep_status(submission.key),
+        status=runtime.forecast(store.sweep_status(submission.key)),
         sampled_ensembles=sum(item.missing == 0 for item in there),
         sampled_trajectories=sum(item.trajectories for item in there),
         revisions=all_revisions(),
@@ -85,9 +85,9 @@ def list_sweeps(
     "/sweeps/{key}",
     responses={200: described("The sweep", examples.STATUS), **problems(404, 409, 422, 503)},
 )
-def read_sweep(key: KeyPrefix, store: StoreOf) -> SweepStatus:
+def read_sweep(key: KeyPrefix, runtime: RuntimeOf, store: StoreOf) -> SweepStatus:
     """One sweep with its progress."""
-    return store.sweep_status(store.find_sweep(key))
+    return runtime.forecast(store.sweep_status(store.find_sweep(key)))
 
 
 @router.get(
