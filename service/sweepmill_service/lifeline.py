@@ -5,6 +5,7 @@ that started the process, which is not the service's main thread, so the parent 
 """
 
 import os
+import platform
 import threading
 from typing import Any
 
@@ -14,7 +15,7 @@ CHECK_SECONDS = 0.5
 STARTED_TOPIC = "sweepmill-started"
 
 
-class Lifeline(WorkerPlugin):
+class Lifeline(WorkerPlugin):  # type: ignore[misc]  # Dask is not typed
     """Ends a worker process whose parent is not ``parent`` any more."""
 
     name = "sweepmill-lifeline"
@@ -27,7 +28,7 @@ class Lifeline(WorkerPlugin):
         threading.Thread(target=_watch, args=(self.parent,), name=self.name, daemon=True).start()
 
 
-class StartReporter(WorkerPlugin):
+class StartReporter(WorkerPlugin):  # type: ignore[misc]
     """Reports each task that begins to run: only these can have brought a worker down."""
 
     name = "sweepmill-start-reporter"
@@ -35,11 +36,12 @@ class StartReporter(WorkerPlugin):
     def setup(self, worker: Any) -> None:
         """Remember who reports."""
         self.worker = worker
+        self.where = f"{platform.node()} {worker.address}"
 
     def transition(self, key: Any, start: str, finish: str, **_more: Any) -> None:
         """Called by the worker at each change of a task's state."""
         if finish == "executing":
-            self.worker.log_event(STARTED_TOPIC, str(key))
+            self.worker.log_event(STARTED_TOPIC, {"task": str(key), "worker": self.where})
 
 
 def _watch(parent: int) -> None:

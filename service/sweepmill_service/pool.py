@@ -30,9 +30,7 @@ CONFIGURATION: dict[str, Any] = {
     "distributed.scheduler.no-workers-timeout": "60s",
     "distributed.worker.daemon": True,
     "distributed.worker.profile.enabled": False,
-    "distributed.nanny.pre-spawn-environ": SINGLE_THREADED,
-    "distributed.admin.log-format": "%(levelname)s %(name)s %(message)s",
-    "distributed.logging": {"distributed": "error", "distributed.nanny": "error", "tornado": "error"},
+    "distributed.nanny.pre-spawn-environ": SINGLE_THREADED | {"DASK_LOGGING__DISTRIBUTED": "critical"},
 }
 
 
@@ -74,8 +72,8 @@ class Pool(Protocol):
     def gather(self, futures: list[Future]) -> list[Any]:
         """Results of finished tasks."""
 
-    def started(self, key: str) -> bool:
-        """Whether a task was seen to begin."""
+    def started(self, key: str) -> str | None:
+        """The worker on which a task was seen to begin."""
 
 
 class _DaskPool:
@@ -83,7 +81,7 @@ class _DaskPool:
 
     def __init__(self) -> None:
         self._client: Client | None = None
-        self._started: set[str] = set()
+        self._started: dict[str, str] = {}
         self._checked: dict[str, str | None] = {}  # address -> what differs
 
     @property
@@ -101,7 +99,7 @@ class _DaskPool:
         """Usable workers, as the scheduler knows them now."""
         found = self._identities()
         self._check_versions(set(found))
-        assigned = self.client.processing()
+        assigned = self._call(self.client.processing)
         return [
             WorkerInfo(str(one["name"]), address, int(one["nthreads"]), tuple(map(str, assigned.get(address, ()))))
             for address, one in found.items()
@@ -121,22 +119,24 @@ class _DaskPool:
 
     def gather(self, futures: list[Future]) -> list[Any]:
         """Results of finished tasks, in order."""
-        results: list[Any] = self.client.gather(futures, asynchronous=False)
+        results: list[Any] = self._call(self.client.gather, futures)
         return results
 
-    def started(self, key: str) -> bool:
-        """Whether a task was seen to begin; asking forgets it."""
-        known = key in self._started
-        self._started.discard(key)
-        return known
+    def started(self, key: str) -> str | None:
+        """The worker on which a task was seen to begin; asking forgets it."""
+        return self._started.pop(key, None)
+
+    def _call(self, function: Callable[..., Any], *arguments: Any, **options: Any) -> Any:
+        """Call a method of the client that may wait, but not for ever. Raises TimeoutError."""
+        return self.client.sync(function, *arguments, callback_timeout=WAIT_SECONDS, **options)
 
     def _connect(self, target: Any, security: Security | None = None) -> None:
         self._client = Client(target, timeout=WAIT_SECONDS, set_as_default=False, security=security)
         self._client.register_plugin(StartReporter())
         self._client.subscribe_topic(STARTED_TOPIC, self._note_start)
 
-    def _note_start(self, event: tuple[float, str]) -> None:
-        self._started.add(event[1])
+    def _note_start(self, event: tuple[float, dict[str, str]]) -> None:
+        self._started[event[1]["task"]] = event[1]["worker"]
 
     def _disconnect(self) -> None:
         client, self._client = self._client, None
@@ -147,14 +147,14 @@ class _DaskPool:
                 client.close(timeout=2)
 
     def _identities(self) -> dict[str, Mapping[str, Any]]:
-        workers: dict[str, Mapping[str, Any]] = self.client.scheduler_info(n_workers=-1)["workers"]
+        workers: dict[str, Mapping[str, Any]] = self._call(self.client.scheduler.identity, n_workers=-1)["workers"]
         return workers
 
     def _check_versions(self, addresses: set[str]) -> None:
         self._checked = {address: why for address, why in self._checked.items() if address in addresses}
         fresh = sorted(addresses - self._checked.keys())
         if fresh:
-            answers = self.client.run(worker_versions, workers=fresh, on_error="return")
+            answers = self._call(self.client.run, worker_versions, workers=fresh, on_error="return")
             self._checked.update((address, difference(answer)) for address, answer in answers.items())
 
 
@@ -186,6 +186,13 @@ class LocalPool(_DaskPool):
         self._warm()
         dask.config.set(CONFIGURATION)
         quiet()
+        try:
+            self._start()
+        except (OSError, TimeoutError, RuntimeError) as error:
+            self.close()
+            raise PoolUnavailable(f"local workers cannot be started: {error}") from error
+
+    def _start(self) -> None:
         self._cluster = LocalCluster(
             n_workers=self._number,
             threads_per_worker=1,
@@ -194,9 +201,9 @@ class LocalPool(_DaskPool):
             dashboard_address=None,
             worker_dashboard_address=None,
             silence_logs=logging.CRITICAL,
-            plugins=[Lifeline(os.getpid())],
         )
         self._connect(self._cluster)
+        self.client.register_plugin(Lifeline(os.getpid()))
 
     def close(self) -> None:
         """End the worker processes."""

@@ -1,5 +1,7 @@
 """Storing results, against a model that merges the values themselves."""
 
+from typing import Any
+
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
@@ -24,7 +26,7 @@ def test_a_batch_extends_the_prefix_and_drops_its_accumulators(store: Store) -> 
     store.submit(sweep, "ada")
     (one, *_), observations = keys_of(sweep)
     outcome = store.commit([result(one, observations, 0, 10, sweep.key)])
-    assert outcome.prefixes == {(one, key): 10 for key in observations}
+    assert {pair: reach.prefix for pair, reach in outcome.reaches.items()} == {(one, key): 10 for key in observations}
     for key in observations:
         assert totals(store, one)[key] == (10, accumulator(one, key, 0, 10).to_bytes())
     with store.engine.connect() as connection:
@@ -186,7 +188,7 @@ def _check_prefixes(store: Store, replicate: int, tasks: list[Task]) -> None:
     assert store.sweep_status(sweep.key).trajectories == min(model.prefix for model in models.values())
 
 
-def _replicated(form: dict[str, list[dict[str, object]]], replicate: int) -> dict[str, object]:
+def _replicated(form: dict[str, Any], replicate: int) -> dict[str, Any]:
     return form | {"circuit": [block | {"replicate": replicate} for block in form["circuit"]]}
 
 
@@ -197,5 +199,3 @@ def _commit(store: Store, group: list[BatchResult], models: dict[str, Model]) ->
     if group:
         store.commit(group)
     group.clear()
-
-    yield

@@ -39,6 +39,7 @@ class Plan:
         self.sweeps: dict[str, PlanSweep] = {}
         self.entries: dict[str, Entry] = {}
         self.under_way: dict[str, Task] = {}
+        self.stuck: set[str] = set()
         self.share = FairShare()
         self._numbers = count(1)  # of versions of entries and of tasks: none ever returns
 
@@ -171,6 +172,7 @@ class Plan:
         """An ensemble cannot proceed."""
         if (entry := self.entries.get(ensemble)) is not None:
             entry.stuck = True
+            self.stuck.add(ensemble)
             self._refresh(entry)
 
     def over_budget(self) -> list[str]:
@@ -179,7 +181,7 @@ class Plan:
 
     def with_stuck(self) -> set[str]:
         """Sweeps that contain an ensemble that cannot proceed."""
-        return {key for entry in self.entries.values() if entry.stuck for key in entry.members}
+        return {key for one in self.stuck for key in self.entries[one].members}
 
     def seconds_left(self, sweep: str, threads: int) -> float | None:
         """Predicted seconds until a sweep settles if the pool were its own; None without a pool or a sweep."""
@@ -194,6 +196,7 @@ class Plan:
         if entry is None:
             entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds)
         entry.stuck = one.stuck
+        (self.stuck.add if one.stuck else self.stuck.discard)(one.key)
         entry.faults = dict(one.faults)
         for observation, reach in one.reaches.items():
             entry.track(observation).set_reach(reach)
@@ -217,6 +220,7 @@ class Plan:
             self._refresh(entry)
         else:
             del self.entries[ensemble]
+            self.stuck.discard(ensemble)
 
     def _refresh_all(self, keys: Collection[str]) -> None:
         for key in keys:

@@ -31,11 +31,10 @@ def commit(connection: Connection, results: Sequence[BatchResult]) -> Outcome:
     ranges = classify(connection, results, known, outcome)
     chains = fold(connection, ranges, wanted_marks(members, known))
     _insert_batches(connection, ranges, chains)
-    outcome.prefixes = {pair: one.prefix for pair, one in ranges.items()}
     new = [result for result in results if _is_new(result, ranges)]
     _update_ensembles(connection, new, locked, outcome)
     _charge(connection, new, sweeps)
-    after = reaches(connection, keys)
+    after = outcome.reaches = reaches(connection, keys)
     advance(connection, members, after)
     judge_locked(connection, members, after, outcome)
     save_sweeps(connection, sweeps.values())

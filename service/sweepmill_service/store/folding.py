@@ -6,8 +6,8 @@ from dataclasses import dataclass, field
 from typing import Any
 
 from sqlalchemy import Connection, bindparam, select, tuple_, update
-from sweepmill.accumulate import Accumulator
 
+from sweepmill.accumulate import Accumulator
 from sweepmill_service.schema import batch, mark, total
 from sweepmill_service.store.classify import Pair, Ranges
 from sweepmill_service.store.common import chunks, insert_all, replace_all

@@ -6,12 +6,12 @@ from collections.abc import Collection, Iterator, Sequence
 from typing import Any, Literal, NamedTuple
 
 from sqlalchemy import Connection, bindparam, delete, exists, select, tuple_
+
 from sweepmill.accumulate import Accumulator
 from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.statistics import needed_trajectories, rule_met
-
 from sweepmill_service.schema import ensemble, mark, observation, sweep, sweep_ensemble, total
 from sweepmill_service.store.common import WITHDRAWN, chunks, insert_missing
 from sweepmill_service.store.members import (
@@ -49,7 +49,7 @@ def judge(connection: Connection, ensembles: Collection[str]) -> Outcome:
     outcome = Outcome()
     lock_ensembles(connection, ensembles)
     members, sweeps = open_members(connection, ensembles)
-    known = reaches(connection, ensembles)
+    known = outcome.reaches = reaches(connection, ensembles)
     advance(connection, members, known)
     judge_locked(connection, members, known, outcome)
     save_sweeps(connection, sweeps.values())

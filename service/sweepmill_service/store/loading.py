@@ -7,8 +7,8 @@ from dataclasses import dataclass, field
 from typing import Any, NamedTuple
 
 from sqlalchemy import Connection, Select, func, select
-from sweepmill.revisions import FAMILY_REVISIONS, QUANTITY_REVISIONS
 
+from sweepmill.revisions import FAMILY_REVISIONS, QUANTITY_REVISIONS
 from sweepmill_service.plan.marks import Reach
 from sweepmill_service.schema import (
     batch,
@@ -23,7 +23,9 @@ from sweepmill_service.schema import (
     sweep_observation,
     total,
 )
+from sweepmill_service.store.classify import unfolded
 from sweepmill_service.store.common import SAMPLING, WAITING
+from sweepmill_service.store.members import reaches
 
 
 class LiveRequest(NamedTuple):
@@ -130,6 +132,13 @@ def observation_forms(connection: Connection, keys: Iterable[str]) -> dict[str, 
     """Normal forms of observations by key."""
     statement = select(observation.c.key, observation.c.normal_form).where(observation.c.key.in_(list(keys)))
     return {row.key: json.loads(row.normal_form) for row in connection.execute(statement)}
+
+
+def ranges(connection: Connection, key: str) -> tuple[dict[str, Reach], dict[str, dict[int, int]]]:
+    """By observation, how far an ensemble is and which batches wait beyond that."""
+    reached = reaches(connection, [key])
+    islands = unfolded(connection, [key])
+    return {pair[1]: one for pair, one in reached.items()}, {pair[1]: one for pair, one in islands.items()}
 
 
 def _open(key: str) -> tuple[Any, Any]:

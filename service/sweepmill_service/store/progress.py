@@ -5,9 +5,9 @@ from collections.abc import Sequence
 from typing import Any
 
 from sqlalchemy import Connection, Row, select
+
 from sweepmill.ensemble import Ensemble
 from sweepmill.messages import EnsembleProgress, ProgressPage
-
 from sweepmill_service.schema import ensemble, sweep_ensemble, total
 from sweepmill_service.store.common import chunks
 from sweepmill_service.store.status import commit_counter

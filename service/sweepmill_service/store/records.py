@@ -4,9 +4,9 @@ import json
 from typing import Any
 
 from sqlalchemy import Connection, Row, func, select
+
 from sweepmill.ensemble import Ensemble
 from sweepmill.messages import BatchRecord, EnsembleRecord, FaultRecord, ObservationRecord
-
 from sweepmill_service.schema import batch, ensemble, fault, observation, total
 from sweepmill_service.store.errors import UnknownKey
 

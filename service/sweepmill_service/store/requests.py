@@ -5,8 +5,8 @@ from enum import Enum
 from typing import Any, Final, Literal, NamedTuple
 
 from sqlalchemy import Connection, delete, func, insert, select, update
-from sweepmill.sweep import Sweep
 
+from sweepmill.sweep import Sweep
 from sweepmill_service.schema import ensemble, observation, request, sweep, sweep_ensemble, sweep_observation
 from sweepmill_service.store.common import (
     SAMPLING,

@@ -4,6 +4,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Literal, NamedTuple
 
+from sweepmill_service.plan.marks import Reach
+
 
 @dataclass(frozen=True)
 class BatchResult:
@@ -73,9 +75,9 @@ class Refused:
 
 @dataclass
 class Outcome:
-    """What a commit changed: prefixes by (ensemble, observation), verdicts, refusals, ensembles now stuck."""
+    """What a commit changed: how far each (ensemble, observation) is, verdicts, refusals, ensembles now stuck."""
 
-    prefixes: dict[tuple[str, str], int] = field(default_factory=dict)
+    reaches: dict[tuple[str, str], Reach] = field(default_factory=dict)
     verdicts: list[Verdict] = field(default_factory=list)
     refused: list[Refused] = field(default_factory=list)
     stuck: dict[str, str] = field(default_factory=dict)

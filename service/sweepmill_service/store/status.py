@@ -6,8 +6,8 @@ from collections.abc import Sequence
 from typing import Any
 
 from sqlalchemy import ColumnElement, Connection, Row, and_, or_, select
-from sweepmill.messages import Request, SweepList, SweepStatus
 
+from sweepmill.messages import Request, SweepList, SweepStatus
 from sweepmill_service.schema import request, sweep, sweep_observation
 from sweepmill_service.store.errors import UnknownKey
 

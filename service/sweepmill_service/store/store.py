@@ -4,11 +4,12 @@ from collections.abc import Collection, Iterator, Sequence
 from typing import Any
 
 from sqlalchemy import Engine, select
+
 from sweepmill.messages import EnsembleRecord, ProgressPage, SweepList, SweepStatus
 from sweepmill.sweep import Sweep
-
 from sweepmill_service import schema
 from sweepmill_service.database import writing
+from sweepmill_service.plan.marks import Reach
 from sweepmill_service.store import (
     commits,
     dispatching,
@@ -145,6 +146,11 @@ class Store:
         """Ensembles of a sweep that are not settled, with what is stored of them."""
         with self.engine.connect() as connection:
             return loading.open_ensembles(connection, key)
+
+    def ranges(self, key: str) -> tuple[dict[str, Reach], dict[str, dict[int, int]]]:
+        """By observation key, how far an ensemble is and which batches (first -> count) wait beyond that."""
+        with self.engine.connect() as connection:
+            return loading.ranges(connection, key)
 
     def observation_forms(self, keys: Collection[str]) -> dict[str, dict[str, Any]]:
         """Normal forms of observations by key."""

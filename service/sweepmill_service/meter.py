@@ -1,0 +1,38 @@
+"""Throughput over the last minute."""
+
+import time
+from collections import deque
+from collections.abc import Callable
+
+WINDOW = 60.0
+
+
+class Meter:
+    """Sums of what landed within the window."""
+
+    def __init__(self, clock: Callable[[], float] = time.monotonic) -> None:
+        self._clock = clock
+        self._since = clock()
+        self._landed: deque[tuple[float, float, int]] = deque()
+        self.batches = 0
+
+    def note(self, seconds: float, trajectories: int) -> None:
+        """A batch of so many core-seconds and trajectories was stored."""
+        self.batches += 1
+        self._landed.append((self._clock(), seconds, trajectories))
+
+    def trajectories_per_second(self) -> float:
+        """Mean over the window."""
+        return sum(count for _, _, count in self._recent()) / self._span()
+
+    def busy_fraction(self, cores: int) -> float:
+        """Core-seconds of sampling per core and second, over the window."""
+        return sum(seconds for _, seconds, _ in self._recent()) / self._span() / cores if cores else 0.0
+
+    def _recent(self) -> deque[tuple[float, float, int]]:
+        while self._landed and self._landed[0][0] < self._clock() - WINDOW:
+            self._landed.popleft()
+        return self._landed
+
+    def _span(self) -> float:
+        return max(min(WINDOW, self._clock() - self._since), 1e-3)
