@@ -3,25 +3,31 @@
 Expanding first and counting then would let a line of text ask for a trillion ensembles.
 """
 
-import math
 from collections.abc import Mapping, Sequence
+from decimal import Decimal
 from typing import Any
 
 from sweepmill.errors import Fault
+
+COUNTED = 10**12  # beyond this it is "or more"
 
 
 def too_many(specification: Mapping[str, Any], limit: int) -> Fault | None:
     """The fault of a specification that expands beyond ``limit``. What is malformed counts as one value."""
     circuit = specification.get("circuit")
     blocks = circuit if isinstance(circuit, Sequence) else [circuit]
-    count = sum(_combinations(block) for block in blocks if isinstance(block, Mapping))
+    count = min(sum(_combinations(block) for block in blocks if isinstance(block, Mapping)), COUNTED)
     if count <= limit:
         return None
-    return Fault("circuit", f"this server takes at most {limit} ensembles per sweep, the axes multiply to {count}")
+    number = f"{count}" if count < COUNTED else f"{COUNTED} or more"
+    return Fault("circuit", f"this server takes at most {limit} ensembles per sweep, the axes multiply to {number}")
 
 
 def _combinations(block: Mapping[str, Any]) -> int:
-    return math.prod(max(_length(value), 1) for value in block.values())
+    count = 1
+    for value in block.values():
+        count = min(count * max(_length(value), 1), COUNTED)
+    return count
 
 
 def _length(value: Any) -> int:
@@ -31,11 +37,17 @@ def _length(value: Any) -> int:
 
 
 def _range_length(value: Mapping[str, Any]) -> int:
-    points, step = value.get("points"), value.get("step")
+    points = value.get("points")
     if isinstance(points, int):
         return points
-    numbers = (value.get("from"), value.get("to"), step)
-    if not all(isinstance(number, int | float) and math.isfinite(number) for number in numbers) or not step:
+    first, last, step = (_decimal(value.get(name)) for name in ("from", "to", "step"))
+    if first is None or last is None or not step:
         return 1
-    first, last, step = map(float, numbers)  # type: ignore[arg-type]
-    return int((last - first) / step) + 1 if step > 0 else 1
+    return int(min((last - first) / step, Decimal(COUNTED))) + 1
+
+
+def _decimal(number: Any) -> Decimal | None:
+    if isinstance(number, bool) or not isinstance(number, int | float):
+        return None
+    exact = Decimal(repr(number)) if isinstance(number, float) else Decimal(number)
+    return exact if exact.is_finite() else None

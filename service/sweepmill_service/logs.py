@@ -29,6 +29,5 @@ def configure_logs(settings: Settings) -> None:
     text = logging.Formatter("%(asctime)s %(levelname)s %(name)s: %(message)s")
     handler.setFormatter(JsonLines() if settings.log_format == "json" else text)
     logging.basicConfig(level=logging.WARNING, handlers=[handler], force=True)
-    for name in ("sweepmill_service", "sweepmill_worker", "uvicorn.error"):
+    for name in ("sweepmill_service", "sweepmill_worker", *(("uvicorn",) if settings.log_level == "debug" else ())):
         logging.getLogger(name).setLevel(settings.log_level.upper())
-    logging.getLogger("uvicorn.access").disabled = settings.log_level != "debug"

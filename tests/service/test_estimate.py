@@ -1,0 +1,104 @@
+"""Predicted costs, and counting ensembles before expanding them."""
+
+from typing import Any
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from support.specs import small, transition
+from sweepmill.ensemble import Ensemble
+from sweepmill.sweep import Sweep
+from sweepmill_service.cost import Costs
+from sweepmill_service.counting import too_many
+from sweepmill_service.estimate import Sampled, sampled
+from sweepmill_service.plan.costs import default_seconds_per_trajectory
+from sweepmill_service.store import Store
+from sweepmill_service.stored import expand
+
+
+def chain(sites: int, rate: float = 0.1) -> Ensemble:
+    return Ensemble.of("hybrid-clifford", sites=sites, measurement_rate=rate, layers=4 * sites)
+
+
+def test_a_measured_cost_is_taken_as_it_is_and_scales_the_others() -> None:
+    ensembles = [chain(64), chain(128), chain(512)]
+    small_one, middle, large = ensembles
+    costs = Costs(ensembles, {small_one.key: 1.0, large.key: 700.0})
+    assert costs[small_one.key] == (1.0, True)
+    ratio = default_seconds_per_trajectory(middle) / default_seconds_per_trajectory(small_one)
+    assert costs[middle.key].seconds == pytest.approx(ratio)  # 128 is nearer to 64 than to 512
+    assert costs[middle.key].measured
+
+
+def test_without_measurements_the_default_is_taken() -> None:
+    one = chain(64)
+    cost = Costs([one], {})[one.key]
+    assert cost.seconds == pytest.approx(default_seconds_per_trajectory(one))
+    assert not cost.measured
+
+
+def test_what_is_sampled_counts_with_every_observation(store: Store) -> None:
+    sweep = Sweep.parse(small(stop={"trajectories": 20}))
+    store.submit(sweep, "ada")
+    assert sampled(sweep, store) == [Sampled(0, 20)] * 4
+
+
+@pytest.mark.parametrize(
+    "circuit",
+    [
+        {"sites": [8, 16], "measurement_rate": {"from": 0.1, "to": 0.2, "points": 7}},
+        {"sites": {"from": 4, "to": 16, "step": 4}, "measurement_rate": 0.1, "replicate": [0, 1, 2]},
+        {"sites": 8, "measurement_rate": {"from": 0.1, "to": 0.4, "step": 0.1}, "boundary": ["open", "periodic"]},
+        {"sites": 8, "measurement_rate": 0.1},
+    ],
+)
+def test_counting_agrees_with_expanding(circuit: dict[str, Any]) -> None:
+    body = {"circuit": {"family": "hybrid-clifford", **circuit}, "observe": [{"quantity": "entropy"}]}
+    count = len(Sweep.parse(body | {"stop": {"trajectories": 1}}).points)
+    assert too_many(body, count) is None
+    assert too_many(body, count - 1) is not None
+
+
+def test_blocks_add_up() -> None:
+    block = {"family": "hybrid-clifford", "sites": [8, 16], "measurement_rate": 0.1}
+    fault = too_many({"circuit": [block, block]}, 3)
+    assert fault is not None
+    assert "multiply to 4" in fault.message
+
+
+@pytest.mark.parametrize(
+    "axis",
+    [
+        {"from": -1e308, "to": 1e308, "step": 1e-308},
+        {"from": 0, "to": 10**400, "step": 1},
+        {"from": 0, "to": 1, "points": 10**4000},
+        {"from": float("-inf"), "to": 0, "step": 1},
+        {"from": 1, "to": 0, "step": 1e-300},
+    ],
+)
+def test_ranges_beyond_counting_are_counted_as_many(axis: dict[str, Any]) -> None:
+    fault = too_many({"circuit": {"sites": axis, "replicate": axis}}, 100)
+    assert fault is None or "or more" in fault.message
+
+
+anything = st.recursive(
+    st.none() | st.booleans() | st.integers() | st.floats() | st.text(max_size=3),
+    lambda inner: (
+        st.lists(inner, max_size=3) | st.dictionaries(st.sampled_from(["from", "to", "step", "points"]), inner)
+    ),
+    max_leaves=8,
+)
+
+
+@given(st.dictionaries(st.sampled_from(["circuit", "observe"]), st.dictionaries(st.text(max_size=3), anything)))
+def test_counting_takes_whatever_comes(body: dict[str, Any]) -> None:
+    too_many(body, 100)
+
+
+@pytest.mark.parametrize("body", [small(), transition()])
+def test_a_stored_specification_expands_to_what_was_submitted(body: dict[str, Any]) -> None:
+    sweep = Sweep.parse(body)
+    stored = expand(sweep.canonical())
+    assert stored.ensembles == tuple(point.ensemble for point in sweep.points)
+    assert stored.observations == sweep.observations
