@@ -26,7 +26,6 @@ class Service:
     """A running service; ``settings`` become SWEEPMILL_* variables."""
 
     def __init__(self, database: str, workers: int, **settings: str) -> None:
-        self.log: list[str] = []
         variables = {f"SWEEPMILL_{name.upper()}": value for name, value in settings.items()}
         options = ["--port", "0", "--database", database, "--workers", str(workers)]
         self.process = subprocess.Popen(
@@ -56,13 +55,19 @@ class Service:
         """SIGKILL, nothing else; returns the processes that were its family."""
         family = self.family()
         self.process.kill()
-        self.process.wait()
+        self._wait()
         return family
 
     def stop(self) -> int:
         """SIGTERM and wait; returns the exit code."""
         self.process.send_signal(signal.SIGTERM)
-        return self.process.wait(timeout=60)
+        return self._wait()
+
+    def _wait(self) -> int:
+        code = self.process.wait(timeout=60)
+        if self.process.stdout is not None:
+            self.process.stdout.close()
+        return code
 
 
 def _maps(process: psutil.Process) -> str:
