@@ -7,7 +7,7 @@ one sees fewer and larger steps and holds up nobody.
 import logging
 import threading
 import time
-from collections.abc import AsyncIterator, Iterator
+from collections.abc import AsyncIterator, Callable, Iterator
 
 import anyio
 import anyio.to_thread
@@ -25,6 +25,7 @@ HEARTBEAT = b": still here\n\n"
 RETRY = b"retry: 2000\n\n"
 # Streams share few threads, so that many of them leave the others to the requests.
 _THREADS = 4
+Forecast = Callable[[SweepStatus], SweepStatus]
 log = logging.getLogger(__name__)
 
 
@@ -38,8 +39,9 @@ class ProgressEvent(Message):
 class Feed:
     """What one reader has seen of a sweep, and what is new to it. Reads the database: not for the event loop."""
 
-    def __init__(self, store: Store, key: str, seen: int | None) -> None:
+    def __init__(self, store: Store, key: str, seen: int | None, forecast: Forecast = lambda status: status) -> None:
         self.store = store
+        self.forecast = forecast
         self.key = key
         self.seen = seen
         self.finished = False
@@ -50,7 +52,7 @@ class Feed:
         commit = self.store.commit_counter(self.key)
         if self._started and commit == self.seen:
             return
-        status = self.store.sweep_status(self.key)
+        status = self.forecast(self.store.sweep_status(self.key))
         if self.seen is not None and self.seen > status.commit:
             self.seen = None  # an id of another database: show everything
         yield from self._pages(status)

@@ -84,7 +84,11 @@ class Runtime:
         """The status with the time the sweep would still take if the pool were its own."""
         if self._dispatcher is None:
             return status
-        return status.model_copy(update={"seconds_left": self._dispatcher.seconds_left(status.key)})
+        try:
+            seconds = self._dispatcher.seconds_left(status.key)
+        except KeyError:  # it settled at this moment
+            seconds = None
+        return status.model_copy(update={"seconds_left": seconds})
 
     def _open(self) -> None:
         try:

@@ -38,5 +38,5 @@ async def follow_sweep(
     limiter = request.app.state.stream_threads
     full = await anyio.to_thread.run_sync(store.find_sweep, key, limiter=limiter)
     resumed = int(last_event_id) if last_event_id and last_event_id.isdecimal() else after
-    events = stream(Feed(store, full, resumed), runtime.stopping, limiter)
+    events = stream(Feed(store, full, resumed, runtime.forecast), runtime.stopping, limiter)
     return StreamingResponse(events, media_type="text/event-stream", headers=_HEADERS)
