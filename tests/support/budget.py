@@ -13,6 +13,7 @@ TOTAL: Final = 1e-3
 
 SHARES: Final[dict[str, float]] = {
     "exact-chains": 1e-4,
+    "tripartite": 5e-5,
     "purification": 1e-4,
     "purity-recursion": 1e-4,
     "page-law": 1e-4,

@@ -39,7 +39,8 @@ numba_config.CACHE_DIR = str(cache_directory())
 
 # No reference counts: kernels borrow every array from their caller and allocate none.  Counting cost more than the
 # work itself, an atomic operation per array and call.
-_OPTIONS = {"nogil": True, "error_model": "numpy", "_nrt": False}
+_OPTIONS = {"nogil": True, "error_model": "numpy", "_nrt": False, "no_cfunc_wrapper": True}
+_INNER = {**_OPTIONS, "no_cpython_wrapper": True}
 
 
 def entry(function: F) -> F:
@@ -50,11 +51,11 @@ def entry(function: F) -> F:
 
 def part(function: F) -> F:
     """Compile a function called from kernels only: always inlined, so that vectors stay in registers."""
-    compiled: F = numba.njit(forceinline=True, **_OPTIONS)(function)
+    compiled: F = numba.njit(forceinline=True, **_INNER)(function)
     return compiled
 
 
 def step(function: F) -> F:
     """Compile a function called from kernels only, large or rare enough to stay a call of its own."""
-    compiled: F = numba.njit(**_OPTIONS)(function)
+    compiled: F = numba.njit(**_INNER)(function)
     return compiled

@@ -72,7 +72,7 @@ def sweep(desk: Desk, backward: bool, met: Shorts, lanes: Lanes) -> None:
     for position in range(copy.sites):
         site = last - position if backward else position
         for column in (2 * site, 2 * site + 1):
-            pivot = smallest(copy, column, copy.stabilizer_groups, copy.start, desk.ends, lanes)
+            pivot = smallest(copy, column, copy.stabilizers, copy.start, desk.ends, lanes)
             if pivot < 0:
                 continue
             erase(copy.stabilizers, pivot)

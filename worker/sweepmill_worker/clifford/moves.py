@@ -79,11 +79,11 @@ def measure(state: State, site: int, lanes: Lanes) -> bool:
     logical rows: Z is new information, random, and the rank of the group grows.  None: Z is in the group already.
     """
     column = 2 * site
-    pivot = smallest(state, column, state.stabilizer_groups, state.start, state.end, lanes)
+    pivot = smallest(state, column, state.stabilizers, state.start, state.end, lanes)
     if pivot >= 0:
         replace(state, site, pivot, lanes)
         return True
-    pivot = smallest(state, column, state.logical_groups, state.start, state.end, lanes)
+    pivot = smallest(state, column, state.logicals, state.start, state.end, lanes)
     if pivot >= 0:
         replace(state, site, pivot, lanes)
         promote(state, pivot, lanes)

@@ -14,8 +14,8 @@ from sweepmill_worker.jit import part, step
 def read(state: State, desk: Desk, matrix: Matrix, plan: Plan, out: NDArray[np.int32], lanes: Lanes) -> None:
     """out[region] = entropy in bits."""
     read_along(state, desk, plan, out, lanes)
-    read_interval_kind(state, desk, plan, INTERVAL, 0, out, lanes)
-    read_interval_kind(state, desk, plan, TURNED, state.sites // 2, out, lanes)
+    for kind, origin in ((INTERVAL, 0), (TURNED, state.sites // 2)):
+        read_intervals(state, desk, plan, kind, origin, out, lanes)
     read_general(state, matrix, plan, out, lanes)
 
 
@@ -28,7 +28,7 @@ def has_kind(plan: Plan, kind: int) -> bool:
     return found
 
 
-@step
+@part
 def read_along(state: State, desk: Desk, plan: Plan, out: NDArray[np.int32], lanes: Lanes) -> None:
     """Regions [0, x)."""
     if not has_kind(plan, PREFIX):
@@ -40,8 +40,8 @@ def read_along(state: State, desk: Desk, plan: Plan, out: NDArray[np.int32], lan
             out[region] = desk.ranks[length] - length
 
 
-@step
-def read_interval_kind(
+@part
+def read_intervals(
     state: State, desk: Desk, plan: Plan, kind: int, origin: int, out: NDArray[np.int32], lanes: Lanes
 ) -> None:
     """Intervals of the chain cut open at the origin."""
@@ -54,7 +54,7 @@ def read_interval_kind(
             out[region] = length - rows_inside(desk, plan.firsts[region], length)
 
 
-@step
+@part
 def read_general(state: State, matrix: Matrix, plan: Plan, out: NDArray[np.int32], lanes: Lanes) -> None:
     """Any regions, one after the other, by commutators."""
     count = len(plan.toggle_ends)

@@ -31,26 +31,22 @@ Lanes = tuple[int, ...]
 
 
 class State(NamedTuple):
-    """Arrays of one trajectory; `*_groups` are 32-bit views of the same memory."""
+    """Arrays of one trajectory."""
 
     sites: int
     chunks: int
     stride: int
     """Columns from one chunk to the next."""
     columns: Words
-    column_groups: Halves
     stabilizers: Words
     """Bit r: row r is a stabilizer."""
-    stabilizer_groups: Halves
     logicals: Words
-    """Bit r: row r is a logical row; its partner is row r ^ 1 at first, and `partner[r]` always."""
-    logical_groups: Halves
+    """Bit r: row r is a logical row."""
     partner: NDArray[np.int32]
     start: Shorts
     end: Shorts
     wrapping: Words
     """Bit r: the window of row r wraps around the ring."""
-    wrapping_groups: Halves
     bit_vectors: Words
     """64 vectors: bit b in every lane.  In memory, lest the compiler turn vector tests into scalar ones."""
 
@@ -84,16 +80,12 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
         chunks=chunks,
         stride=stride,
         columns=columns,  # type: ignore[arg-type]
-        column_groups=columns.view(np.uint32),
         stabilizers=stabilizers,  # type: ignore[arg-type]
-        stabilizer_groups=stabilizers.view(np.uint32),
         logicals=logicals,  # type: ignore[arg-type]
-        logical_groups=logicals.view(np.uint32),
         partner=np.zeros(slots, dtype=np.int32),
         start=aligned(slots, np.int16),  # type: ignore[arg-type]
         end=aligned(slots, np.int16),  # type: ignore[arg-type]
         wrapping=wrapping,  # type: ignore[arg-type]
-        wrapping_groups=wrapping.view(np.uint32),
         bit_vectors=bit_vectors,  # type: ignore[arg-type]
     )
     return state, (0,) * lanes

@@ -277,6 +277,31 @@ def item(typing: Any, array: Any, index: Any) -> Any:
 
 
 @intrinsic  # type: ignore[untyped-decorator]
+def half(typing: Any, words: Any, index: Any) -> Any:
+    """The 32-bit half `index` of an array of 64-bit words, little end first."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        data = context.make_array(words)(context, builder, arguments[0]).data
+        halves = builder.bitcast(data, ir.IntType(32).as_pointer())
+        return builder.load(builder.gep(halves, [arguments[1]]))
+
+    return types.uint32(words, types.int64), codegen
+
+
+@intrinsic  # type: ignore[untyped-decorator]
+def put_half(typing: Any, words: Any, index: Any, value: Any) -> Any:
+    """Write a 32-bit half of an array of 64-bit words."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        data = context.make_array(words)(context, builder, arguments[0]).data
+        halves = builder.bitcast(data, ir.IntType(32).as_pointer())
+        builder.store(arguments[2], builder.gep(halves, [arguments[1]]))
+        return context.get_dummy_value()
+
+    return types.void(words, types.int64, types.uint32), codegen
+
+
+@intrinsic  # type: ignore[untyped-decorator]
 def put(typing: Any, array: Any, index: Any, value: Any) -> Any:
     """array[index] = value for index >= 0."""
 

@@ -3,10 +3,10 @@
 import numpy as np
 
 from sweepmill_worker.clifford.state import (
-    Halves,
     Lanes,
     Shorts,
     State,
+    Words,
     address,
     column_chunk,
     groups_per_chunk,
@@ -19,6 +19,7 @@ from sweepmill_worker.clifford.vectors import (
     choose,
     element,
     first_true,
+    half,
     higher,
     item,
     least,
@@ -26,7 +27,7 @@ from sweepmill_worker.clifford.vectors import (
     load_shorts,
     lower,
     lower_unsigned,
-    put,
+    put_half,
     splat_short,
     store,
     tagged,
@@ -61,11 +62,11 @@ def keep(state: State, group: int, start, end) -> None:  # type: ignore[no-untyp
     start, end = start + turn, end + turn
     store(state.start, GROUP * group, start)
     store(state.end, GROUP * group, end)
-    put(state.wrapping_groups, group, bits(splat_short(state.sites - 1) < end))
+    put_half(state.wrapping, group, bits(splat_short(state.sites - 1) < end))
 
 
 @part
-def smallest(state: State, column: int, permitted: Halves, starts: Shorts, ends: Shorts, lanes: Lanes) -> int:
+def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: Shorts, lanes: Lanes) -> int:
     """Among the permitted rows with a bit in the column, one with the smallest end - start; -1 if there are none.
 
     Dense and free of data-dependent branches within a chunk; empty chunks are skipped where there are several.
@@ -79,7 +80,7 @@ def smallest(state: State, column: int, permitted: Halves, starts: Shorts, ends:
             continue
         here = splat_short(NOBODY)
         for group in range(groups_per_chunk(lanes)):
-            rows = truths(item(state.column_groups, base + group) & item(permitted, first + group))
+            rows = truths(half(state.columns, base + group) & half(permitted, first + group))
             at = GROUP * (first + group)
             length = lower(load_shorts(ends, at) - load_shorts(starts, at), splat_short(LONGEST))
             here = choose(rows, lower_unsigned(here, tagged(length, group)), here)
@@ -94,11 +95,11 @@ def smallest(state: State, column: int, permitted: Halves, starts: Shorts, ends:
 
 
 @part
-def occupied(state: State, base: int, permitted: Halves, first: int, lanes: Lanes) -> bool:
+def occupied(state: State, base: int, permitted: Words, first: int, lanes: Lanes) -> bool:
     """Has the chunk of a column any permitted row?"""
     found = np.uint32(0)
     for group in range(groups_per_chunk(lanes)):
-        found |= item(state.column_groups, base + group) & item(permitted, first + group)
+        found |= half(state.columns, base + group) & half(permitted, first + group)
     return found != 0
 
 
@@ -110,7 +111,7 @@ def unite(state: State, site: int, pivot: int, lanes: Lanes) -> None:
         wrapping = load(state.wrapping, chunk * len(lanes), lanes)
         around |= any_bit(column_chunk(state, chunk, 2 * site, lanes) & wrapping)
     if around:
-        unite_around(state, site, state.start[pivot], state.end[pivot], lanes)
+        unite_around(state, site, item(state.start, pivot), item(state.end, pivot), lanes)
     else:
         unite_straight(state, site, item(state.start, pivot), item(state.end, pivot), lanes)
     shrink(state, site, pivot, around)
@@ -125,7 +126,7 @@ def unite_straight(state: State, site: int, pivot_start: int, pivot_end: int, la
             continue
         base = 2 * address(state, chunk, 2 * site, lanes)
         for group in range(groups_per_chunk(lanes)):
-            rows = truths(item(state.column_groups, base + group))
+            rows = truths(half(state.columns, base + group))
             at = GROUP * (chunk * groups_per_chunk(lanes) + group)
             start, end = load_shorts(state.start, at), load_shorts(state.end, at)
             store(state.start, at, choose(rows, lower(start, start_bound), start))
@@ -140,7 +141,7 @@ def unite_around(state: State, site: int, pivot_start: int, pivot_end: int, lane
     start_bound, end_bound = splat_short(pivot_start - turn), splat_short(pivot_end - turn)
     for group in range(len(state.start) // GROUP):
         chunk, within = group // groups_per_chunk(lanes), group % groups_per_chunk(lanes)
-        rows = truths(item(state.column_groups, 2 * address(state, chunk, 2 * site, lanes) + within))
+        rows = truths(half(state.columns, 2 * address(state, chunk, 2 * site, lanes) + within))
         start, end = load_shorts(state.start, GROUP * group), load_shorts(state.end, GROUP * group)
         turned = choose(here < start, ring, zero)
         new_start = lower(start - turned, start_bound)
@@ -158,4 +159,4 @@ def shrink(state: State, site: int, pivot: int, around: bool) -> None:
     store(state.start, GROUP * group, start)
     store(state.end, GROUP * group, end)
     if around:
-        put(state.wrapping_groups, group, bits(splat_short(state.sites - 1) < end))
+        put_half(state.wrapping, group, bits(splat_short(state.sites - 1) < end))
