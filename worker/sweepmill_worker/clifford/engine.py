@@ -22,8 +22,8 @@ MAX_SITES: Final = 4096
 MAX_LAYERS: Final = 2**24
 """Far beyond any ensemble; layers are 32-bit counters of the random words."""
 
-_MASKS = aligned(16 * len(GATE_CLASSES), np.uint32)
-_MASKS[:] = column_masks()
+MASKS = aligned(16 * len(GATE_CLASSES), np.uint32)
+MASKS[:] = column_masks()
 
 
 @dataclass(frozen=True)
@@ -111,7 +111,7 @@ def run_plan(
         state,
         new_desk(spare),
         new_matrix(state, lanes, wanted=len(chosen.toggle_ends) > 0),
-        Circuit(chain.layers, chain.periodic, chain.mixed, chain.threshold, _MASKS, key_words),
+        Circuit(chain.layers, chain.periodic, chain.mixed, chain.threshold, MASKS, key_words),
         new_supply(chain.sites),
         chosen,
         np.array(read_layers, dtype=np.int64),

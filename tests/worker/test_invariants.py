@@ -1,0 +1,82 @@
+"""What the state promises between layers: independent commuting rows (I1) inside their windows (I2)."""
+
+import numpy as np
+import pytest
+from numpy.typing import NDArray
+from support.stim_oracle import rank
+from sweepmill_worker.clifford.commutators import new_matrix
+from sweepmill_worker.clifford.elimination import new_desk
+from sweepmill_worker.clifford.engine import MASKS
+from sweepmill_worker.clifford.roads import plan
+from sweepmill_worker.clifford.state import Lanes, State, new_state
+from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
+
+
+def final_state(sites: int, layers: int, periodic: bool, mixed: bool, rate: float) -> tuple[State, Lanes]:
+    state, lanes = new_state(sites, mixed)
+    results = Results(
+        np.zeros((1, 0, 0), np.int32), np.zeros((1, layers), np.int32), np.zeros((1, layers), np.int32)
+    )
+    run_batch(
+        state,
+        new_desk(new_state(sites, mixed)[0]),
+        new_matrix(state, lanes, wanted=False),
+        Circuit(layers, periodic, mixed, int(rate * 2**32), MASKS, (1, 2)),
+        new_supply(sites),
+        plan(sites, mixed, []),
+        np.zeros(0, dtype=np.int64),
+        np.uint64(3),  # type: ignore[arg-type]
+        results,
+        lanes,
+    )
+    return state, lanes
+
+
+def bits(words: NDArray[np.uint64]) -> NDArray[np.uint8]:
+    return np.unpackbits(words.view(np.uint8), bitorder="little")
+
+
+def rows_of(state: State, lanes: Lanes) -> NDArray[np.uint8]:
+    """[slot, column]"""
+    blocks = state.columns.reshape(state.chunks, state.stride, len(lanes))[:, : 2 * state.sites]
+    return np.concatenate([np.array([bits(column) for column in block]).T for block in blocks])
+
+
+CASES = [
+    (sites, layers, periodic, mixed, rate)
+    for sites, periodic in ((2, True), (7, False), (64, True), (65, False), (150, True), (300, True))
+    for mixed in (False, True)
+    for layers, rate in ((1, 0.5), (24, 0.1), (41, 0.25))
+]
+
+
+@pytest.mark.parametrize(("sites", "layers", "periodic", "mixed", "rate"), CASES)
+def test_rows_are_independent_commute_and_stay_in_their_windows(
+    sites: int, layers: int, periodic: bool, mixed: bool, rate: float
+) -> None:
+    state, lanes = final_state(sites, layers, periodic, mixed, rate)
+    rows = rows_of(state, lanes)
+    stabilizer, logical = bits(state.stabilizers).astype(bool), bits(state.logicals).astype(bool)
+    assert not (stabilizer & logical).any()
+    assert 2 * stabilizer.sum() + logical.sum() == 2 * sites
+    assert not rows[~(stabilizer | logical)].any()
+    used = np.flatnonzero(stabilizer | logical)
+    assert rank(int.from_bytes(np.packbits(rows[row]).tobytes(), "big") for row in used) == len(used)
+    xs, zs = rows[:, 0::2].astype(int), rows[:, 1::2].astype(int)
+    anticommuting = (xs @ zs.T + zs @ xs.T) % 2
+    expected = np.zeros_like(anticommuting)
+    pairs = np.flatnonzero(logical)
+    expected[pairs, state.partner[pairs]] = 1
+    np.testing.assert_array_equal(anticommuting, expected)
+    check_windows(state, rows, used)
+
+
+def check_windows(state: State, rows: NDArray[np.uint8], used: NDArray[np.int64]) -> None:
+    wrapping = bits(state.wrapping).astype(bool)
+    for row in used:
+        start, end = int(state.start[row]), int(state.end[row])
+        assert 0 <= start < state.sites
+        assert start <= end < start + state.sites
+        assert wrapping[row] == (end >= state.sites)
+        support = np.flatnonzero(rows[row, 0::2] | rows[row, 1::2])
+        assert ((support - start) % state.sites <= end - start).all()
