@@ -40,5 +40,5 @@ def serve(
         from sweepmill_service import serve as service
     if show_settings:
         print(service.show_settings(settings))
-    else:
-        raise typer.Exit(service.serve(settings))
+        return
+    raise typer.Exit(service.serve(settings))
