@@ -11,6 +11,7 @@ from itertools import product
 import numpy as np
 import stim
 from numpy.typing import NDArray
+
 from sweepmill_worker.clifford.engine import GATE_CLASSES
 
 ONE_SITE = ("", "H", "S", "H_YZ", "C_XYZ", "C_ZYX")

@@ -5,6 +5,7 @@ from functools import cache
 
 import numpy as np
 import stim
+
 from sweepmill_worker.clifford.engine import GATE_CLASSES, HybridChain, Layer
 
 

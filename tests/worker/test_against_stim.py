@@ -4,6 +4,7 @@ import random
 
 import numpy as np
 import pytest
+
 from support.stim_oracle import Reference
 from sweepmill_worker.clifford.engine import HybridChain, describe, run
 
@@ -19,7 +20,7 @@ CHAINS = [
 
 
 def regions_of(sites: int, seed: int) -> list[tuple[int, ...]]:
-    """Cuts from either side (all, in small chains), some intervals (wrapping ones too), some arbitrary sets, nothing, everything."""
+    """Nothing, everything, cuts from either side (all in small chains), arcs of the ring, arbitrary sets."""
     draw = random.Random(seed)
     step = 1 if sites < 64 else sites // 9
     cuts = [tuple(range(x)) for x in [*range(0, sites, step), sites]]

@@ -1,6 +1,7 @@
 """The statistical tests of the suite share one false-alarm probability."""
 
 import pytest
+
 from support.budget import SHARES, TOTAL, chi_square_limit, z_limit
 
 

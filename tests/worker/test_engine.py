@@ -5,6 +5,7 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
+
 from sweepmill_worker.clifford.engine import MAX_SITES, HybridChain, Readings, describe, run, run_plan
 from sweepmill_worker.clifford.roads import GENERAL, INTERVAL, PREFIX, TURNED, Road, plan
 
@@ -51,7 +52,8 @@ def all_kinds(sites: int, seed: int) -> list[tuple[int, ...]]:
 
 @pytest.mark.parametrize("mixed", [False, True])
 @pytest.mark.parametrize(
-    ("sites", "periodic"), [(2, True), (3, False), (8, True), (9, False), (40, True), (66, True), (140, True), (300, True)]
+    ("sites", "periodic"),
+    [(2, True), (3, False), (8, True), (9, False), (40, True), (66, True), (140, True), (300, True)],
 )
 def test_all_roads_give_the_same_entropies(sites: int, periodic: bool, mixed: bool) -> None:
     chain = HybridChain(sites, 20, periodic, mixed, P)
@@ -68,7 +70,7 @@ def test_all_roads_give_the_same_entropies(sites: int, periodic: bool, mixed: bo
 
 def test_roads_are_chosen_by_the_shape_of_the_regions() -> None:
     def kinds(mixed: bool, *regions: tuple[int, ...]) -> list[int]:
-        return plan(8, mixed, regions).kinds.tolist()
+        return [int(kind) for kind in plan(8, mixed, regions).kinds]
 
     assert kinds(False, (), (0, 1), (5, 6, 7), tuple(range(8))) == [PREFIX] * 4
     assert kinds(False, (0, 1), (2, 3), (0, 1, 7)) == [INTERVAL] * 3

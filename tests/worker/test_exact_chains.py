@@ -10,6 +10,7 @@ from functools import cache
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+
 from support.budget import z_limit
 from support.stabilizer_enumeration import ExactChain, Group, entropy
 from sweepmill_worker.clifford.engine import HybridChain, run
@@ -121,7 +122,7 @@ def deviation(samples: NDArray[np.float64], mean: float, variance: float) -> flo
     return float((samples.mean() - mean) / (variance / len(samples)) ** 0.5)
 
 
-SAMPLED = [
+SAMPLED: list[tuple[tuple[int, bool, bool, float], tuple[int, ...], list[tuple[int, ...]]]] = [
     ((2, False, False, 0.16), (1, 2, 5), [(0,)]),
     ((4, True, False, 0.0), (2, 4), [(0, 1), (0,), (0, 2), (1, 2)]),
     ((4, True, False, 0.1), (2,), [(0, 1), (0,), (0, 2), (1, 2)]),

@@ -4,6 +4,7 @@ import hashlib
 
 import numpy as np
 import pytest
+
 from support.stim_oracle import pauli, tableau
 from sweepmill_worker.clifford.engine import GATE_CLASSES
 

@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+
 from support.stim_oracle import rank
 from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
@@ -25,7 +26,7 @@ def final_state(sites: int, layers: int, periodic: bool, mixed: bool, rate: floa
         new_supply(sites),
         plan(sites, mixed, []),
         np.zeros(0, dtype=np.int64),
-        np.uint64(3),  # type: ignore[arg-type]
+        np.uint64(3),
         results,
         lanes,
     )

@@ -6,6 +6,7 @@ import sys
 from pathlib import Path
 
 import pytest
+
 from sweepmill_worker import jit
 from sweepmill_worker.warm import SIZES, main, warm
 

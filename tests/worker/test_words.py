@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from support.budget import chi_square_limit
 from sweepmill_worker.clifford.engine import HybridChain, describe
 from sweepmill_worker.words import GATE, MEASURE, OUTCOME, fill, words

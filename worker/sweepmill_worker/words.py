@@ -23,6 +23,7 @@ MEASURE: Final = 2
 OUTCOME: Final = 3
 """Place: site.  Outcomes of the signed engine; the sign-free one never reads them."""
 
+U = np.uint64
 _LOW = np.uint64(0xFFFFFFFF)
 _32 = np.uint64(32)
 _M0, _M1 = np.uint64(0xD2511F53), np.uint64(0xCD9E8D57)
@@ -30,13 +31,13 @@ _W0, _W1 = np.uint64(0x9E3779B9), np.uint64(0xBB67AE85)
 
 
 @part
-def _round(c0: int, c1: int, c2: int, c3: int, k0: int, k1: int) -> tuple[int, int, int, int]:
+def _round(c0: U, c1: U, c2: U, c3: U, k0: U, k1: U) -> tuple[U, U, U, U]:
     first, second = _M0 * c0, _M1 * c2
     return (second >> _32) ^ c1 ^ k0, second & _LOW, (first >> _32) ^ c3 ^ k1, first & _LOW
 
 
 @part
-def philox(c0: int, c1: int, c2: int, c3: int, k0: int, k1: int) -> tuple[int, int, int, int]:
+def philox(c0: U, c1: U, c2: U, c3: U, k0: U, k1: U) -> tuple[U, U, U, U]:
     """Four words of one counter (all uint64 holding 32 bits)."""
     for _ in range(10):
         c0, c1, c2, c3 = _round(c0, c1, c2, c3, k0, k1)
@@ -50,7 +51,7 @@ def fill(
     places: NDArray[np.uint32],
     layers: NDArray[np.uint32],
     first_layer: int,
-    k: int,
+    k: np.uint64,
     key: tuple[int, int],
 ) -> None:
     """Fill out[4 * i : 4 * i + 4] with the words of counter (places[i], first_layer + layers[i], k)."""

@@ -26,7 +26,7 @@ class Matrix(NamedTuple):
 def new_matrix(state: State, lanes: Lanes, wanted: bool) -> Matrix:
     """Room for the commutators of all rows (nothing if not wanted)."""
     size = len(state.start) * state.chunks * len(lanes) if wanted else 0
-    return Matrix(aligned(size, np.uint64), aligned(size, np.uint64))  # type: ignore[arg-type]
+    return Matrix(aligned(size, np.uint64), aligned(size, np.uint64))
 
 
 @part

@@ -41,8 +41,8 @@ class Desk(NamedTuple):
 def new_desk(copy: State) -> Desk:
     """Work space beside a spare state."""
     slots = len(copy.start)
-    spare = [aligned(slots, np.int16) for _ in range(3)]
-    return Desk(copy, *spare, ranks=np.zeros(copy.sites + 1, dtype=np.int32))  # type: ignore[arg-type]
+    ends, left, right = (aligned(slots, np.int16) for _ in range(3))
+    return Desk(copy, ends, left, right, ranks=np.zeros(copy.sites + 1, dtype=np.int32))
 
 
 @step

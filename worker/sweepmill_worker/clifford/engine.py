@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Final
 
 import numpy as np
@@ -115,7 +116,7 @@ def run_plan(
         new_supply(chain.sites),
         chosen,
         np.array(read_layers, dtype=np.int64),
-        np.uint64(first),  # type: ignore[arg-type]
+        np.uint64(first),
         results,
         lanes,
     )
@@ -152,10 +153,10 @@ def _check(
         raise ValueError(f"first, count: trajectories are numbered 0 .. 2**64 - 1, got {first}, {count}")
     if any(not 1 <= layer <= chain.layers for layer in read_layers):
         raise ValueError(f"read_layers: layers are 1 .. {chain.layers}, got {list(read_layers)}")
-    if any(a >= b for a, b in zip(read_layers, read_layers[1:], strict=False)):
+    if any(a >= b for a, b in pairwise(read_layers)):
         raise ValueError(f"read_layers: must ascend, got {list(read_layers)}")
     for region in regions:
         if any(not 0 <= site < chain.sites for site in region):
             raise ValueError(f"regions: sites are 0 .. {chain.sites - 1}, got {region}")
-        if any(a >= b for a, b in zip(region, region[1:], strict=False)):
+        if any(a >= b for a, b in pairwise(region)):
             raise ValueError(f"regions: sites must ascend, got {region}")

@@ -16,6 +16,7 @@ from sweepmill_worker.clifford.state import (
     write_one_hot,
 )
 from sweepmill_worker.clifford.vectors import (
+    Value,
     any_bit,
     choose,
     item,
@@ -31,7 +32,9 @@ from sweepmill_worker.jit import part
 
 
 @part
-def image(masks: Halves, at: int, x_left, z_left, x_right, z_right, lanes: Lanes):  # type: ignore[no-untyped-def]
+def image(
+    masks: Halves, at: int, x_left: Value, z_left: Value, x_right: Value, z_right: Value, lanes: Lanes
+) -> Value:
     """One new column of a gate: the sum of the old ones that the class's masks select."""
     return (
         (x_left & splat_half(item(masks, at), lanes))
@@ -119,7 +122,9 @@ def multiply(state: State, chunk: int, site: int, start: int, end: int, pivot: i
 
 
 @part
-def add_pivot(state: State, chunk: int, rows, first: int, beyond: int, pivot: int, lanes: Lanes) -> None:  # type: ignore[no-untyped-def]
+def add_pivot(
+    state: State, chunk: int, rows: Value, first: int, beyond: int, pivot: int, lanes: Lanes
+) -> None:
     """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit."""
     bit, nothing = bit_of(state, pivot, lanes), splat(np.uint64(0), lanes)
     to = address(state, chunk, 0, lanes)

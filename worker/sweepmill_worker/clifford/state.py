@@ -16,14 +16,15 @@ into bit tests: a Pauli that commutes with all rows lies in the group; and every
 S(A) = rank of the columns of A over all rows - |A|.
 """
 
-from typing import NamedTuple
+from typing import NamedTuple, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
 
-from sweepmill_worker.clifford.vectors import GROUP, load, one_hot, store
+from sweepmill_worker.clifford.vectors import GROUP, Value, load, one_hot, store
 from sweepmill_worker.jit import part
 
+T = TypeVar("T", bound=np.generic)
 Words = NDArray[np.uint64]
 Halves = NDArray[np.uint32]
 Shorts = NDArray[np.int16]
@@ -51,7 +52,7 @@ class State(NamedTuple):
     """64 vectors: bit b in every lane.  In memory, lest the compiler turn vector tests into scalar ones."""
 
 
-def aligned(shape: int, dtype: type[np.generic]) -> NDArray[np.generic]:
+def aligned(shape: int, dtype: type[T]) -> NDArray[T]:
     """Zeros whose first element starts a cache line."""
     size = shape * np.dtype(dtype).itemsize
     raw = np.zeros(size + 64, dtype=np.uint8)
@@ -79,14 +80,14 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
         sites=sites,
         chunks=chunks,
         stride=stride,
-        columns=columns,  # type: ignore[arg-type]
-        stabilizers=stabilizers,  # type: ignore[arg-type]
-        logicals=logicals,  # type: ignore[arg-type]
+        columns=columns,
+        stabilizers=stabilizers,
+        logicals=logicals,
         partner=np.zeros(slots, dtype=np.int32),
-        start=aligned(slots, np.int16),  # type: ignore[arg-type]
-        end=aligned(slots, np.int16),  # type: ignore[arg-type]
-        wrapping=wrapping,  # type: ignore[arg-type]
-        bit_vectors=bit_vectors,  # type: ignore[arg-type]
+        start=aligned(slots, np.int16),
+        end=aligned(slots, np.int16),
+        wrapping=wrapping,
+        bit_vectors=bit_vectors,
     )
     return state, (0,) * lanes
 
@@ -155,12 +156,12 @@ def rows_per_chunk(lanes: Lanes) -> int:
 
 
 @part
-def column_chunk(state: State, chunk: int, column: int, lanes: Lanes):  # type: ignore[no-untyped-def]
+def column_chunk(state: State, chunk: int, column: int, lanes: Lanes) -> Value:
     """The vector of a chunk of a column."""
     return load(state.columns, address(state, chunk, column, lanes), lanes)
 
 
 @part
-def bit_of(state: State, row: int, lanes: Lanes):  # type: ignore[no-untyped-def]
+def bit_of(state: State, row: int, lanes: Lanes) -> Value:
     """Bit row % 64 in every lane."""
     return load(state.bit_vectors, (row & 63) * len(lanes), lanes)

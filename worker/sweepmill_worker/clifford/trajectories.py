@@ -82,7 +82,7 @@ def draw_measured(supply: Supply, base: int, sites: int, threshold: int) -> int:
     count = 0
     for site in range(sites):
         put(supply.measured, count, site)
-        count += np.uint64(item(supply.words, base + site)) < np.uint64(threshold)
+        count += int(np.uint64(item(supply.words, base + site)) < np.uint64(threshold))
     return count
 
 
@@ -114,7 +114,7 @@ def run_batch(
     supply: Supply,
     plan: Plan,
     read_layers: NDArray[np.int64],
-    first: int,
+    first: np.uint64,
     results: Results,
     lanes: Lanes,
 ) -> None:

@@ -10,15 +10,23 @@ import operator
 from collections.abc import Callable
 from typing import Any
 
-from llvmlite import ir
+from llvmlite import ir  # type: ignore[import-untyped]
 from numba.core import cgutils, types
 from numba.extending import intrinsic, lower_builtin, models, register_model, type_callable
 
 GROUP = 32
 """Rows in one vector of shorts."""
 
+Value = Any
+"""A vector, as a value in kernel code: its type exists for numba only."""
 
-class Vector(types.Type):  # type: ignore[misc]
+_Decorator = Callable[[Callable[..., Any]], Any]
+_intrinsic: _Decorator = intrinsic
+_type_callable: Callable[..., _Decorator] = type_callable
+_lower_builtin: Callable[..., _Decorator] = lower_builtin
+
+
+class Vector(types.Type):
     """numba type of an LLVM vector of `count` integers of `bits` bits."""
 
     def __init__(self, bits: int, count: int) -> None:
@@ -43,7 +51,7 @@ TRUTHS = Vector(1, GROUP)
 
 
 def _operator(symbol: Any, emit: Callable[..., Any], truth: bool = False) -> None:
-    @type_callable(symbol)
+    @_type_callable(symbol)
     def typing(context: Any) -> Callable[[Any, Any], Any]:
         def typer(left: Any, right: Any) -> Any:
             if isinstance(left, Vector) and left == right:
@@ -52,7 +60,7 @@ def _operator(symbol: Any, emit: Callable[..., Any], truth: bool = False) -> Non
 
         return typer
 
-    @lower_builtin(symbol, Vector, Vector)
+    @_lower_builtin(symbol, Vector, Vector)
     def lower(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
         return emit(builder, *arguments)
 
@@ -72,9 +80,8 @@ def _pointer(context: Any, builder: Any, array_type: Any, array: Any, offset: An
 
 
 def _splat(builder: Any, scalar: Any, vector: Vector) -> Any:
-    scalar = (
-        builder.trunc(scalar, ir.IntType(vector.bits)) if scalar.type.width > vector.bits else scalar
-    )
+    if scalar.type.width > vector.bits:
+        scalar = builder.trunc(scalar, ir.IntType(vector.bits))
     single = builder.insert_element(ir.Constant(_llvm(vector), ir.Undefined), scalar, ir.IntType(32)(0))
     zeros = ir.Constant(ir.VectorType(ir.IntType(32), vector.count), None)
     return builder.shuffle_vector(single, single, zeros)
@@ -90,19 +97,19 @@ def _load_at(vector: Vector, array: Any, offset: Any, *rest: Any) -> tuple[Any, 
     return vector(array, offset, *rest), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def load(typing: Any, array: Any, offset: Any, lanes: Any) -> Any:
     """Words array[offset : offset + len(lanes)] as a vector; array data aligned to the vector's size."""
     return _load_at(Vector(64, lanes.count), array, offset, lanes)
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def load_shorts(typing: Any, array: Any, offset: Any) -> Any:
     """Shorts array[offset : offset + 32] as a vector; aligned."""
     return _load_at(SHORTS, array, offset)
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def store(typing: Any, array: Any, offset: Any, value: Any) -> Any:
     """Write a vector of words or shorts to array[offset : ...]; aligned."""
 
@@ -114,7 +121,7 @@ def store(typing: Any, array: Any, offset: Any, value: Any) -> Any:
     return types.void(array, offset, value), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def splat(typing: Any, scalar: Any, lanes: Any) -> Any:
     """A 64-bit word in every lane."""
     vector = Vector(64, lanes.count)
@@ -125,7 +132,7 @@ def splat(typing: Any, scalar: Any, lanes: Any) -> Any:
     return vector(scalar, lanes), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def splat_half(typing: Any, half: Any, lanes: Any) -> Any:
     """A 32-bit word in both halves of every lane."""
     vector, halves = Vector(64, lanes.count), Vector(32, 2 * lanes.count)
@@ -136,7 +143,7 @@ def splat_half(typing: Any, half: Any, lanes: Any) -> Any:
     return vector(half, lanes), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def splat_short(typing: Any, scalar: Any) -> Any:
     """A short in each of 32 lanes."""
 
@@ -146,7 +153,7 @@ def splat_short(typing: Any, scalar: Any) -> Any:
     return SHORTS(scalar), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def one_hot(typing: Any, index: Any, lanes: Any) -> Any:
     """The vector with bit `index` set; all zero if the index lies outside."""
     vector = Vector(64, lanes.count)
@@ -162,7 +169,7 @@ def one_hot(typing: Any, index: Any, lanes: Any) -> Any:
     return vector(index, lanes), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def nonzero(typing: Any, value: Any) -> Any:
     """Truth per lane: is it different from zero?"""
 
@@ -172,7 +179,7 @@ def nonzero(typing: Any, value: Any) -> Any:
     return Vector(1, value.count)(value), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def any_bit(typing: Any, value: Any) -> Any:
     """Is any bit of the vector set?"""
 
@@ -184,7 +191,7 @@ def any_bit(typing: Any, value: Any) -> Any:
     return types.boolean(value), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def truths(typing: Any, word: Any) -> Any:
     """The bits of a 32-bit word as 32 truth values."""
 
@@ -194,7 +201,7 @@ def truths(typing: Any, word: Any) -> Any:
     return TRUTHS(types.uint32), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def choose(typing: Any, truth: Any, yes: Any, no: Any) -> Any:
     """Per lane: yes where true, else no."""
 
@@ -211,25 +218,25 @@ def _extremum(compare: str, relation: str, left: Any, right: Any) -> tuple[Any, 
     return left(left, right), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def lower(typing: Any, left: Any, right: Any) -> Any:
     """Signed minimum per lane."""
     return _extremum("icmp_signed", "<", left, right)
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def higher(typing: Any, left: Any, right: Any) -> Any:
     """Signed maximum per lane."""
     return _extremum("icmp_signed", ">", left, right)
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def lower_unsigned(typing: Any, left: Any, right: Any) -> Any:
     """Unsigned minimum per lane."""
     return _extremum("icmp_unsigned", "<", left, right)
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def tagged(typing: Any, shorts: Any, tag: Any) -> Any:
     """Per lane: 16 * value + tag, for values of 12 bits and tags of 4."""
 
@@ -243,7 +250,7 @@ def tagged(typing: Any, shorts: Any, tag: Any) -> Any:
     return shorts(shorts, types.int64), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def least(typing: Any, shorts: Any) -> Any:
     """The smallest of 32 unsigned shorts."""
 
@@ -255,7 +262,7 @@ def least(typing: Any, shorts: Any) -> Any:
     return types.int64(shorts), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def bits(typing: Any, truth: Any) -> Any:
     """32 truth values as the bits of a word: the inverse of `truths`."""
 
@@ -265,7 +272,7 @@ def bits(typing: Any, truth: Any) -> Any:
     return types.uint32(truth), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def item(typing: Any, array: Any, index: Any) -> Any:
     """array[index] for index >= 0: spares the selects by which numba serves negative indices."""
 
@@ -276,7 +283,7 @@ def item(typing: Any, array: Any, index: Any) -> Any:
     return array.dtype(array, types.int64), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def half(typing: Any, words: Any, index: Any) -> Any:
     """The 32-bit half `index` of an array of 64-bit words, little end first."""
 
@@ -288,7 +295,7 @@ def half(typing: Any, words: Any, index: Any) -> Any:
     return types.uint32(words, types.int64), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def put_half(typing: Any, words: Any, index: Any, value: Any) -> Any:
     """Write a 32-bit half of an array of 64-bit words."""
 
@@ -301,7 +308,7 @@ def put_half(typing: Any, words: Any, index: Any, value: Any) -> Any:
     return types.void(words, types.int64, types.uint32), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def put(typing: Any, array: Any, index: Any, value: Any) -> Any:
     """array[index] = value for index >= 0."""
 
@@ -313,7 +320,7 @@ def put(typing: Any, array: Any, index: Any, value: Any) -> Any:
     return types.void(array, types.int64, array.dtype), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def first_true(typing: Any, truth: Any) -> Any:
     """The lowest lane that is true; at least one must be."""
 
@@ -325,7 +332,7 @@ def first_true(typing: Any, truth: Any) -> Any:
     return types.int64(truth), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def element(typing: Any, shorts: Any, lane: Any) -> Any:
     """One lane of a vector of shorts, as int64."""
 
@@ -335,7 +342,7 @@ def element(typing: Any, shorts: Any, lane: Any) -> Any:
     return types.int64(shorts, lane), codegen
 
 
-@intrinsic  # type: ignore[untyped-decorator]
+@_intrinsic
 def trailing_zeros(typing: Any, word: Any) -> Any:
     """Index of the lowest set bit of a non-zero 64-bit word."""
 

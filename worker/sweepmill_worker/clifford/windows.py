@@ -14,6 +14,7 @@ from sweepmill_worker.clifford.state import (
 )
 from sweepmill_worker.clifford.vectors import (
     GROUP,
+    Value,
     any_bit,
     bits,
     choose,
@@ -55,7 +56,7 @@ def grow(state: State, parity: int, periodic: bool) -> None:
 
 
 @part
-def keep(state: State, group: int, start, end) -> None:  # type: ignore[no-untyped-def]
+def keep(state: State, group: int, start: Value, end: Value) -> None:
     """Store the windows of a group, with starts from -L on brought into 0 .. L - 1, and mark those that wrap."""
     zero = splat_short(0)
     turn = choose(start < zero, splat_short(state.sites), zero)
@@ -91,7 +92,8 @@ def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: 
         return -1
     lane = first_true(best == splat_short(key))
     chunk = element(home, lane) if state.chunks > 1 else 0
-    return chunk * rows_per_chunk(lanes) + GROUP * (key & 15) + lane
+    row: int = chunk * rows_per_chunk(lanes) + GROUP * (key & 15) + lane
+    return row
 
 
 @part
@@ -100,7 +102,7 @@ def occupied(state: State, base: int, permitted: Words, first: int, lanes: Lanes
     found = np.uint32(0)
     for group in range(groups_per_chunk(lanes)):
         found |= half(state.columns, base + group) & half(permitted, first + group)
-    return found != 0
+    return bool(found != 0)
 
 
 @part
