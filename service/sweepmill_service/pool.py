@@ -7,6 +7,7 @@ import subprocess
 import sys
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from functools import cache
 from pathlib import Path
 from typing import Any, Protocol
 
@@ -158,6 +159,7 @@ class _DaskPool:
             self._checked.update((address, difference(answer)) for address, answer in answers.items())
 
 
+@cache
 def worker_versions() -> dict[str, str]:
     """Runs on a worker: everything that could change a result."""
     return {**versions(), "revisions": results_revision()}

@@ -1,13 +1,13 @@
 """Databases for the tests of the service: SQLite files, and a Postgres server started by the session."""
 
-from collections.abc import Callable, Iterator
-from contextlib import AbstractContextManager, ExitStack, contextmanager
+from collections.abc import Iterator
+from contextlib import ExitStack, contextmanager
 from pathlib import Path
 
 import pytest
 from sqlalchemy import Engine, event
 
-from support.databases import PostgresServer, Statements
+from support.databases import DatabaseMaker, PostgresServer, Statements
 from sweepmill_service.database import open_database
 from sweepmill_service.migrations import migrate
 from sweepmill_service.store import Store
@@ -33,9 +33,6 @@ def postgres() -> Iterator[PostgresServer]:
 def backend(request: pytest.FixtureRequest) -> str:
     """Each test that asks for it runs on both databases."""
     return str(request.param)
-
-
-DatabaseMaker = Callable[..., AbstractContextManager[str]]
 
 
 @pytest.fixture

@@ -5,8 +5,8 @@ import pwd
 import shutil
 import subprocess
 import tempfile
-from collections.abc import Iterator
-from contextlib import contextmanager
+from collections.abc import Callable, Iterator
+from contextlib import AbstractContextManager, contextmanager
 from pathlib import Path
 from typing import Any
 from uuid import uuid4
@@ -15,6 +15,8 @@ import psycopg
 
 PLACES = ("/usr/lib/postgresql", "/usr/pgsql", "/opt/homebrew/opt", "/usr/local/opt")
 UNPRIVILEGED = ("postgres", "nobody")
+
+DatabaseMaker = Callable[..., AbstractContextManager[str]]  # (migrated=True) -> URL of a fresh database
 
 
 def postgres_tool(name: str) -> str:

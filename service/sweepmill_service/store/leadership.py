@@ -80,12 +80,16 @@ class AdvisoryLeadership:
             raise
 
     def release(self) -> None:
-        """Close the connection, and with it the lock."""
-        connection, self._connection, self._held = self._connection, None, False
-        if connection is not None:
-            with contextlib.suppress(SQLAlchemyError):
-                connection.invalidate()
-                connection.close()
+        """Give it back and close the connection, which ends the lock in any case."""
+        connection, self._connection = self._connection, None
+        held, self._held = self._held, False
+        if connection is None:
+            return
+        with contextlib.suppress(SQLAlchemyError):
+            if held:
+                connection.execute(text("SELECT pg_advisory_unlock(:key)"), {"key": ADVISORY_LOCK})
+            connection.invalidate()
+            connection.close()
 
     def _acquire(self) -> bool:
         if self._connection is None:
