@@ -7,7 +7,7 @@ from typing import Any
 
 from fastapi import FastAPI, Request
 from fastapi.exceptions import RequestValidationError
-from sqlalchemy.exc import DBAPIError
+from sqlalchemy.exc import DataError, DBAPIError
 from sqlalchemy.exc import TimeoutError as PoolTimeout
 from starlette.exceptions import HTTPException
 from starlette.responses import JSONResponse, Response
@@ -117,6 +117,12 @@ def _from_database(error: DBAPIError | PoolTimeout) -> Refusal:
     return Unavailable(f"the database does not answer: {reason}")
 
 
+def _from_unstorable(error: DataError | UnicodeEncodeError) -> Refusal:
+    """Text that no database takes, such as half a character of UTF-16; Postgres takes no NUL either."""
+    reason = str(error.orig if isinstance(error, DataError) else error).splitlines()[0]
+    return Refusal(HTTPStatus.UNPROCESSABLE_ENTITY, f"a value cannot be stored: {reason}")
+
+
 def _from_anything(error: Exception) -> Refusal:
     """An error of ours. The log has the traceback; the answer has no internals."""
     return Refusal(HTTPStatus.INTERNAL_SERVER_ERROR, "the service failed at this request; its log says more")
@@ -131,6 +137,8 @@ _CONVERSIONS: dict[type[Exception], Any] = {
     UnknownKey: _from_unknown_key,
     AmbiguousKey: _from_ambiguous_key,
     DBAPIError: _from_database,
+    DataError: _from_unstorable,
+    UnicodeEncodeError: _from_unstorable,
     PoolTimeout: _from_database,
     Exception: _from_anything,
 }

@@ -5,17 +5,18 @@ from typing import Any
 
 from sweepmill.errors import Fault, SpecificationError
 from sweepmill.limits import Limits, check_limits
-from sweepmill.sweep import Sweep
+from sweepmill.sweep import MOST_FAULTS, Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
+from sweepmill_service.magnitudes import too_large
 from sweepmill_service.settings import ServerLimits
 from sweepmill_service.store import Store
 
 
 def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimits) -> tuple[Sweep, Costs]:
     """The sweep and what its trajectories cost. Raises SpecificationError with every fault."""
-    if fault := too_many(specification, limits.ensembles):
-        raise SpecificationError([fault])
+    if faults := _immense(specification, limits):
+        raise SpecificationError(faults)
     sweep = Sweep.parse(specification)
     if faults := check_limits(sweep, Limits(**limits.model_dump(include=set(Limits.model_fields)))):
         raise SpecificationError(faults)
@@ -23,6 +24,12 @@ def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimit
     if fault := _slow(sweep, costs, limits.trajectory_seconds):
         raise SpecificationError([fault])
     return sweep, costs
+
+
+def _immense(specification: Mapping[str, Any], limits: ServerLimits) -> list[Fault]:
+    """What must be refused before it is expanded, because expanding it would take for ever."""
+    many = too_many(specification, limits.ensembles)
+    return [*too_large(specification, limits), *([many] if many else [])][:MOST_FAULTS]
 
 
 def _slow(sweep: Sweep, costs: Costs, limit: float) -> Fault | None:

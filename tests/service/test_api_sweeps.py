@@ -1,5 +1,6 @@
 """Submitting, listing, amending, withdrawing: over HTTP, on both databases."""
 
+import json
 from collections.abc import Iterator
 
 import pytest
@@ -9,6 +10,8 @@ from support.specs import small
 from support.sweeps import small_sweep
 from sweepmill.messages import Estimate, ProgressPage, Submitted, SweepList, SweepStatus
 from sweepmill.sweep import Sweep
+
+JSON = {"Content-Type": "application/json"}
 
 
 @pytest.fixture
@@ -129,6 +132,24 @@ def test_withdrawing_keeps_what_was_sampled_and_submitting_restores(api: Api) ->
     again = api.http.delete(path)
     assert (again.status_code, again.json()["detail"]) == (404, f"local does not request sweep {sweep.key}")
     assert api.submit(sweep).json()["status"]["state"] == "sampling"
+
+
+def test_text_that_cannot_be_stored_is_refused(api: Api) -> None:
+    """Half a character of UTF-16 nowhere; NUL, which SQLite takes and Postgres does not, where it cannot be."""
+    body = small(label="\ud800")
+    assert api.http.post("/v1/sweeps", content=json.dumps(body), headers=JSON).status_code == 422
+    zero = api.http.post("/v1/sweeps", content=json.dumps(small(label="\0")), headers=JSON)
+    assert zero.status_code in (201, 422)
+    for query in ({"owner": "\0"}, {"family": "\0"}, {"after": "\0"}, {"after": "0" * 64}):
+        assert api.http.get("/v1/sweeps", params=query).status_code in (404, 422)
+
+
+def test_numbers_no_database_takes_are_refused(api: Api) -> None:
+    sweep = small_sweep()
+    api.submit(sweep)
+    for query in ({"since": 2**63}, {"after": 2**63}, {"after": -1}, {"limit": 2**63}):
+        assert api.http.get(f"/v1/sweeps/{sweep.key}/ensembles", params=query).status_code == 422
+    assert api.http.get(f"/v1/sweeps/{sweep.key}/events", params={"after": 2**63}).status_code == 422
 
 
 def test_an_owner_has_a_plain_name(api: Api) -> None:

@@ -72,8 +72,9 @@ def test_resuming_brings_the_state_and_what_changed_since(api: Api) -> None:
     assert body(resumed)["status"]["trajectories"] == 7
     with following(api, sweep, after=resumed.id) as stream:
         assert ordinals(next(stream)) == []
-    with following(api, sweep, after="999999") as stream:
-        assert ordinals(next(stream)) == [0, 1, 2]
+    for unknown in ("999999", "9" * 5000, "abc", "-1"):
+        with following(api, sweep, after=unknown) as stream:
+            assert ordinals(next(stream)) == [0, 1, 2]
 
 
 def test_a_sweep_that_is_over_gives_one_event(api: Api) -> None:

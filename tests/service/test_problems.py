@@ -86,17 +86,32 @@ def test_an_ambiguous_key_lists_its_candidates(api: Api) -> None:
 def test_limits_are_named_with_what_would_pass(database: Path) -> None:
     with serving(reading_only(f"sqlite:///{database}", limits={"ensembles": 3, "sites": 10})) as api:
         too_many = problem_of(api.http.post("/v1/sweeps", json=small()), 422)
-        assert [fault["path"] for fault in too_many.faults] == ["circuit"]
-        assert "at most 3 ensembles" in too_many.faults[0]["message"]
+        assert [fault["path"] for fault in too_many.faults] == ["circuit.sites[1]", "circuit"]
+        assert "at most 3 ensembles" in too_many.faults[1]["message"]
         large = problem_of(api.http.post("/v1/estimate", json=small(circuit__measurement_rate=0.1)), 422)
-        assert [fault["path"] for fault in large.faults] == ["circuit.sites"]
+        assert [fault["path"] for fault in large.faults] == ["circuit.sites[1]"]
 
 
 def test_a_trillion_ensembles_are_refused_without_expanding_them(api: Api) -> None:
     wide = {"from": 0.0, "to": 1.0, "points": 100_000}
     body = small(circuit__sites={"from": 2, "to": 200_000, "step": 2}, circuit__measurement_rate=wide)
     problem = problem_of(api.http.post("/v1/sweeps", json=body), 422)
-    assert "10000000000" in problem.faults[0]["message"]
+    assert "10000000000" in problem.faults[1]["message"]
+
+
+@pytest.mark.parametrize(
+    ("changes", "path"),
+    [
+        ({"circuit__sites": [8, 10**30]}, "circuit.sites[1]"),
+        ({"circuit__layers": 10**9}, "circuit.layers"),
+        ({"circuit__layers": {"per_site": 10**18}}, "circuit.layers.per_site"),
+        ({"stop__trajectories": 10**400}, "stop.trajectories"),
+        ({"observe": [{"quantity": "entropy", "at": {"log_spaced": 10**9}}]}, "observe[0].at.log_spaced"),
+    ],
+)
+def test_numbers_beyond_all_bounds_are_refused_at_once(api: Api, changes: dict[str, Any], path: str) -> None:
+    problem = problem_of(api.http.post("/v1/sweeps", json=small(**changes)), 422)
+    assert [fault["path"] for fault in problem.faults] == [path]
 
 
 def test_a_trajectory_too_long_for_this_server_is_refused(database: Path) -> None:

@@ -16,6 +16,7 @@ from sweepmill_service.runtime import Runtime
 from sweepmill_service.store import Store
 
 _PREFIX = re.compile(rf"[0-9a-f]{{{SHORTEST_PREFIX},64}}")
+OWNER_PATTERN = r"^[A-Za-z0-9._-]{1,64}$"
 EXAMPLE_KEY = "3b9f6c1e"
 
 
@@ -54,7 +55,7 @@ Owner = Annotated[
     str,
     Header(
         alias="Sweepmill-Owner",
-        pattern=r"^[A-Za-z0-9._-]{1,64}$",
+        pattern=OWNER_PATTERN,
         description="In whose name: requests, labels and priorities belong to owners",
         examples=["mara"],
     ),

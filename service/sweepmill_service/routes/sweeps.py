@@ -20,7 +20,7 @@ from sweepmill_service import examples
 from sweepmill_service.estimate import estimate, sampled
 from sweepmill_service.openapi import described, problems
 from sweepmill_service.problems import Refusal
-from sweepmill_service.routes.dependencies import KeyPrefix, Owner, RuntimeOf, StoreOf
+from sweepmill_service.routes.dependencies import OWNER_PATTERN, KeyPrefix, Owner, RuntimeOf, StoreOf
 from sweepmill_service.specification import accepted
 
 router = APIRouter(prefix="/v1", tags=["sweeps"])
@@ -71,11 +71,13 @@ def estimate_sweep(specification: Specification, runtime: RuntimeOf, store: Stor
 )
 def list_sweeps(
     store: StoreOf,
-    owner: Annotated[str | None, Query(description="Only sweeps this owner requests")] = None,
+    owner: Annotated[str | None, Query(pattern=OWNER_PATTERN, description="Only sweeps this owner requests")] = None,
     state: Annotated[SweepState | None, Query()] = None,
-    family: Annotated[str | None, Query(description="Only sweeps with circuits of this family")] = None,
+    family: Annotated[
+        str | None, Query(pattern="^[a-z0-9-]{1,64}$", description="Only sweeps with circuits of this family")
+    ] = None,
     limit: Annotated[int, Query(ge=1, le=500)] = 50,
-    after: Annotated[str | None, Query(description="`next` of the page before")] = None,
+    after: Annotated[str | None, Query(pattern="^[0-9a-f]{64}$", description="`next` of the page before")] = None,
 ) -> SweepList:
     """Sweeps with their progress."""
     return store.list_sweeps(owner=owner, state=state, family=family, limit=limit, after=after)
@@ -100,8 +102,8 @@ def read_sweep(key: KeyPrefix, runtime: RuntimeOf, store: StoreOf) -> SweepStatu
 def read_progress(
     key: KeyPrefix,
     store: StoreOf,
-    since: Annotated[int | None, Query(ge=0, description="Only what changed after this commit")] = None,
-    after: Annotated[int | None, Query(description="`next` of the page before")] = None,
+    since: Annotated[int | None, Query(ge=0, lt=2**63, description="Only what changed after this commit")] = None,
+    after: Annotated[int | None, Query(ge=0, lt=2**63, description="`next` of the page before")] = None,
     limit: Annotated[int, Query(ge=1, le=1000)] = 200,
 ) -> ProgressPage:
     """Progress of every ensemble of a sweep."""
