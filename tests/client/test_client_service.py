@@ -1,21 +1,27 @@
 """The client against a real service."""
 
 from collections.abc import Callable, Iterator
+from concurrent.futures import ThreadPoolExecutor
 from itertools import count
 from pathlib import Path
+from queue import Queue
 from typing import Any
 
 import httpx
 import pytest
 
+from support.running import running_service
 from sweepmill import (
     Client,
     RemoteSweep,
+    Retry,
     SpecificationError,
     Sweep,
+    SweepStuck,
     SweepWithdrawn,
     Table,
     UnknownKey,
+    Unreachable,
     WaitTimeout,
 )
 from sweepmill.messages import SweepStatus
@@ -189,6 +195,28 @@ def test_waiting_ends_at_its_timeout_and_the_sweep_goes_on(client: Client) -> No
     assert sweep.withdraw().state == "withdrawn"
 
 
+def test_a_sweep_whose_budget_is_spent_is_stuck_and_says_so(client: Client) -> None:
+    body = specification(trajectories=9_000_000, budget=0.01)
+    with pytest.raises(SweepStuck, match="budget"):
+        client.submit(Sweep.parse(body)).wait(progress=False, timeout=WAIT)
+
+
+def test_waiting_outlives_a_restart_of_the_service(tmp_path: Path) -> None:
+    seen: Queue[SweepStatus] = Queue()
+    with ThreadPoolExecutor(1) as threads:
+        with running_service(tmp_path, "--workers", "1") as url, Client(url) as client:
+            sweep = client.submit(endless())
+            watched = Client(url).sweep(sweep.key)
+            waiting = threads.submit(watched.wait, seen.put)
+            before = seen.get(timeout=WAIT)
+        with running_service(tmp_path, "--workers", "1", "--port", str(httpx.URL(url).port)), Client(url) as client:
+            assert not waiting.done()
+            client.sweep(sweep.key).withdraw()
+            with pytest.raises(SweepWithdrawn):
+                waiting.result(WAIT)
+    assert before.state in ("waiting", "sampling")
+
+
 def test_the_table_has_one_row_per_ensemble_observation_and_coordinate(settled: RemoteSweep) -> None:
     table = settled.table()
     assert table.axes == ("sites", "measurement_rate")
@@ -267,8 +295,6 @@ class Half(httpx.SyncByteStream):
 def test_a_download_that_breaks_off_leaves_the_file_as_it_was(
     service_url: str, settled: RemoteSweep, tmp_path: Path
 ) -> None:
-    from sweepmill import Retry, Unreachable
-
     path = tmp_path / "table.csv"
     path.write_text("as it was")
     with Client(service_url, transport=BreaksBodies(), retry=Retry(attempts=2, first=0.0)) as client:

@@ -24,9 +24,10 @@ def environment() -> dict[str, str]:
 def running_service(directory: Path, *options: str) -> Iterator[str]:
     """Address of a service that ends with the block."""
     database = f"sqlite:///{directory / 'service.sqlite'}"
+    variables = environment() | {"SWEEPMILL_BATCH_SECONDS": "0.5"}  # a stop waits for the batches in flight
     command = [sys.executable, "-m", "sweepmill", "serve", "--port", "0", "--database", database, *options]
     with (directory / "service.log").open("w") as log:
-        process = subprocess.Popen(command, stdout=subprocess.PIPE, stderr=log, text=True, env=environment())
+        process = subprocess.Popen(command, stdout=subprocess.PIPE, stderr=log, text=True, env=variables)
     try:
         yield _address(process, directory / "service.log")
     finally:
