@@ -45,7 +45,7 @@ def compare(sites: int, rate: float) -> tuple[float, float, float]:
     """Medians of kernel ms, stim ms and their ratio over the rounds."""
     chain = HybridChain(sites, 2 * sites, periodic=False, mixed=False, threshold=int(rate * 2**32))
     cuts = [tuple(range(x)) for x in range(sites + 1)]
-    batch = max(4, round(2000 * (32 / sites) ** 2.5))
+    batch = max(4, round(5000 * (32 / sites) ** 2.5))
     stim_route = StimRoute(sites, rate, seed=1)
     stim_route.trajectory()
     kernel_ms, stim_ms = [], []

@@ -3,6 +3,7 @@
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
+from operator import lt
 from typing import Final
 
 import numpy as np
@@ -156,7 +157,7 @@ def _check(
     if any(a >= b for a, b in pairwise(read_layers)):
         raise ValueError(f"read_layers: must ascend, got {list(read_layers)}")
     for region in regions:
-        if any(not 0 <= site < chain.sites for site in region):
-            raise ValueError(f"regions: sites are 0 .. {chain.sites - 1}, got {region}")
-        if any(a >= b for a, b in pairwise(region)):
+        if not all(map(lt, region, region[1:])):
             raise ValueError(f"regions: sites must ascend, got {region}")
+        if region and not 0 <= region[0] <= region[-1] < chain.sites:
+            raise ValueError(f"regions: sites are 0 .. {chain.sites - 1}, got {region}")

@@ -48,6 +48,8 @@ class State(NamedTuple):
     end: Shorts
     wrapping: Words
     """Bit r: the window of row r wraps around the ring."""
+    homes: Shorts
+    """Room of a search over several chunks: the chunk of the best row of each lane."""
     bit_vectors: Words
     """64 vectors: bit b in every lane.  In memory, lest the compiler turn vector tests into scalar ones."""
 
@@ -87,6 +89,7 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
         start=aligned(slots, np.int16),
         end=aligned(slots, np.int16),
         wrapping=wrapping,
+        homes=aligned(GROUP, np.int16),
         bit_vectors=bit_vectors,
     )
     return state, (0,) * lanes

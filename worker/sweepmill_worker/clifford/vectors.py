@@ -333,16 +333,6 @@ def first_true(typing: Any, truth: Any) -> Any:
 
 
 @_intrinsic
-def element(typing: Any, shorts: Any, lane: Any) -> Any:
-    """One lane of a vector of shorts, as int64."""
-
-    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
-        return builder.sext(builder.extract_element(*arguments), ir.IntType(64))
-
-    return types.int64(shorts, lane), codegen
-
-
-@_intrinsic
 def trailing_zeros(typing: Any, word: Any) -> Any:
     """Index of the lowest set bit of a non-zero 64-bit word."""
 

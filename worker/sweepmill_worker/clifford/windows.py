@@ -18,7 +18,6 @@ from sweepmill_worker.clifford.vectors import (
     any_bit,
     bits,
     choose,
-    element,
     first_true,
     half,
     higher,
@@ -73,7 +72,7 @@ def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: 
     Dense and free of data-dependent branches within a chunk; empty chunks are skipped where there are several.
     A key carries the number of its group, so that a minimum per lane tells the row.
     """
-    best, home = splat_short(NOBODY), splat_short(0)
+    best = splat_short(NOBODY)
     for chunk in range(state.chunks):
         base = 2 * address(state, chunk, column, lanes)
         first = chunk * groups_per_chunk(lanes)
@@ -85,13 +84,15 @@ def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: 
             at = GROUP * (first + group)
             length = lower(load_shorts(ends, at) - load_shorts(starts, at), splat_short(LONGEST))
             here = choose(rows, lower_unsigned(here, tagged(length, group)), here)
-        home = choose(lower_unsigned(here, best) == best, home, splat_short(chunk))
+        if state.chunks > 1:
+            homes = load_shorts(state.homes, 0)
+            store(state.homes, 0, choose(lower_unsigned(here, best) == best, homes, splat_short(chunk)))
         best = lower_unsigned(here, best)
     key = least(best)
     if key == NOBODY:
         return -1
     lane = first_true(best == splat_short(key))
-    chunk = element(home, lane) if state.chunks > 1 else 0
+    chunk = item(state.homes, lane) if state.chunks > 1 else 0
     row: int = chunk * rows_per_chunk(lanes) + GROUP * (key & 15) + lane
     return row
 
