@@ -126,12 +126,15 @@ class ExactChain:
         self.law = measured
 
     def _gate(self, left: int, right: int) -> None:
-        law: Law = defaultdict(float)
+        weights: dict[int, float] = defaultdict(float)
+        orbits: dict[int, tuple[Group, ...]] = {}
         for group, weight in self.law.items():
-            images = orbit(group, left, right)
-            for after in images:
-                law[after] += weight / len(images)
-        self.law = law
+            members = orbit(group, left, right)
+            orbits[id(members)] = members
+            weights[id(members)] += weight
+        self.law = {
+            group: weights[number] / len(members) for number, members in orbits.items() for group in members
+        }
 
     def moments(self, value: Callable[[Group], float]) -> tuple[float, float]:
         """Mean and variance of a function of the state."""
