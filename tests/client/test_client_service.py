@@ -203,18 +203,21 @@ def test_a_sweep_whose_budget_is_spent_is_stuck_and_says_so(client: Client) -> N
 
 def test_waiting_outlives_a_restart_of_the_service(tmp_path: Path) -> None:
     seen: Queue[SweepStatus] = Queue()
+
+    def watch(url: str, key: str) -> None:
+        with Client(url) as client:
+            client.sweep(key).wait(seen.put, timeout=WAIT)
+
     with ThreadPoolExecutor(1) as threads:
-        with running_service(tmp_path, "--workers", "1") as url, Client(url) as client:
-            sweep = client.submit(endless())
-            watched = Client(url).sweep(sweep.key)
-            waiting = threads.submit(watched.wait, seen.put)
-            before = seen.get(timeout=WAIT)
-        with running_service(tmp_path, "--workers", "1", "--port", str(httpx.URL(url).port)), Client(url) as client:
-            assert not waiting.done()
-            client.sweep(sweep.key).withdraw()
+        with running_service(tmp_path, "--no-dispatch") as url, Client(url) as client:
+            key = client.submit(endless()).key
+            watching = threads.submit(watch, url, key)
+            assert seen.get(timeout=WAIT).state == "waiting"
+        with running_service(tmp_path, "--no-dispatch", "--port", str(httpx.URL(url).port)), Client(url) as client:
+            assert not watching.done()
+            client.sweep(key).withdraw()
             with pytest.raises(SweepWithdrawn):
-                waiting.result(WAIT)
-    assert before.state in ("waiting", "sampling")
+                watching.result(WAIT)
 
 
 def test_the_table_has_one_row_per_ensemble_observation_and_coordinate(settled: RemoteSweep) -> None:
