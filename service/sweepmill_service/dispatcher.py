@@ -115,7 +115,7 @@ class Dispatcher:
     def status(self) -> PoolStatus:
         """The pool, what it computes, and why nothing is handed out if so."""
         cores = self._threads()
-        reasons = list(self._reasons.values())
+        reasons = [STANDBY] if "leadership" in self._reasons else list(self._reasons.values())
         return PoolStatus(
             ready=not reasons,
             reason="; ".join(reasons) or None,

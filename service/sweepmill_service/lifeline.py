@@ -1,4 +1,4 @@
-"""Runs inside worker processes: ends them with the service, and says when a batch begins.
+"""Runs inside worker processes: ends them with the service, loads the kernels, says when a batch begins.
 
 Workers of a local pool must not outlive a killed service. The parent-death signal of Linux belongs to the thread
 that started the process, which is not the service's main thread, so the parent is watched instead.
@@ -10,6 +10,8 @@ import threading
 from typing import Any
 
 from distributed.diagnostics.plugin import WorkerPlugin
+
+from sweepmill_worker.warm import warm
 
 CHECK_SECONDS = 0.5
 STARTED_TOPIC = "sweepmill-started"
@@ -42,6 +44,16 @@ class StartReporter(WorkerPlugin):  # type: ignore[misc]
         """Called by the worker at each change of a task's state."""
         if finish == "executing":
             self.worker.log_event(STARTED_TOPIC, {"task": str(key), "worker": self.where})
+
+
+class KernelLoader(WorkerPlugin):  # type: ignore[misc]
+    """Loads the compiled kernels before the first batch, so that its measured cost is that of sampling."""
+
+    name = "sweepmill-kernel-loader"
+
+    def setup(self, worker: Any) -> None:
+        """Compiles only what the cache does not hold."""
+        warm()
 
 
 def _watch(parent: int) -> None:

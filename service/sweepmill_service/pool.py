@@ -16,7 +16,7 @@ from distributed import Client, Future, LocalCluster
 from distributed.security import Security
 
 from sweepmill.revisions import results_revision
-from sweepmill_service.lifeline import STARTED_TOPIC, Lifeline, StartReporter
+from sweepmill_service.lifeline import STARTED_TOPIC, KernelLoader, Lifeline, StartReporter
 from sweepmill_worker.sample import sample_plain, versions
 
 log = logging.getLogger(__name__)
@@ -25,6 +25,8 @@ WAIT_SECONDS = 10.0
 THREAD_SETTINGS = ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS", "NUMBA_NUM_THREADS")
 SINGLE_THREADED = dict.fromkeys(THREAD_SETTINGS, "1")
 CONFIGURATION: dict[str, Any] = {
+    "distributed.scheduler.http.routes": [],
+    "distributed.worker.http.routes": [],
     "distributed.scheduler.work-stealing": False,  # buys nothing for independent batches
     "distributed.scheduler.allowed-failures": 0,  # failures are counted by us, per batch, in the database
     "distributed.scheduler.worker-ttl": "5 minutes",
@@ -200,12 +202,14 @@ class LocalPool(_DaskPool):
             threads_per_worker=1,
             processes=True,
             host="127.0.0.1",
-            dashboard_address=None,
+            dashboard_address="127.0.0.1:0",  # None would take a fixed port for Dask's own page
+            scheduler_kwargs={"dashboard": False},
             worker_dashboard_address=None,
             silence_logs=logging.CRITICAL,
         )
         self._connect(self._cluster)
         self.client.register_plugin(Lifeline(os.getpid()))
+        self.client.register_plugin(KernelLoader())
 
     def close(self) -> None:
         """End the worker processes."""
@@ -260,7 +264,7 @@ class ExternalPool(_DaskPool):
 
 def warm_kernels() -> None:
     """Compile all kernels in one process of their own: compiling in several at once can break the cache."""
-    command = [sys.executable, "-c", "from sweepmill_worker.warm import warm; warm(1024)"]
+    command = [sys.executable, "-m", "sweepmill_worker.warm"]
     environment = os.environ | SINGLE_THREADED
     done = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)  # noqa: S603 fixed words
     if done.returncode:

@@ -10,6 +10,7 @@ from sqlalchemy import Engine, event
 from support.databases import DatabaseMaker, PostgresServer, Statements
 from sweepmill_service.database import open_database
 from sweepmill_service.migrations import migrate
+from sweepmill_service.pool import LocalPool
 from sweepmill_service.store import Store
 
 TEMPLATE = "migrated"
@@ -89,3 +90,12 @@ def statements(engine: Engine) -> Iterator[Statements]:
         event.listen(engine, "before_cursor_execute", counted.note)
         stack.callback(event.remove, engine, "before_cursor_execute", counted.note)
         yield counted
+
+
+@pytest.fixture(scope="session")
+def local_pool() -> Iterator[LocalPool]:
+    """Two real worker processes, kernels compiled before."""
+    pool = LocalPool(2)
+    pool.open()
+    yield pool
+    pool.close()

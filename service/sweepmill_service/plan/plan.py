@@ -185,9 +185,10 @@ class Plan:
 
     def seconds_left(self, sweep: str, threads: int) -> float | None:
         """Predicted seconds until a sweep settles if the pool were its own; None without a pool or a sweep."""
-        if sweep not in self.sweeps or threads < 1:
+        known = self.sweeps.get(sweep)  # once: other threads ask, too
+        if known is None or threads < 1:
             return None
-        return max(0.0, self.sweeps[sweep].remaining + self.sweeps[sweep].under_way) / threads
+        return max(0.0, known.remaining + known.under_way) / threads
 
     # --- upkeep
 
