@@ -86,18 +86,14 @@ class HybridClifford(BaseModel):
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
         columns = {name: self._column(name, f"{path}.{name}", faults) for name in FAMILY_PARAMETERS[self.FAMILY]}
-        layer_values = columns.pop("layers")
-        blamed: set[str] = set()
-        for combination in product(*columns.values()):
-            parameters = dict(zip(columns, (value for _, value in combination), strict=True))
-            site_path = combination[0][0]
-            if parameters["boundary"] == "periodic" and parameters["sites"] % 2:
-                _once(faults, blamed, site_path, _odd_ring(parameters["sites"]))
-                continue
-            for layer_path, layers in layer_values:
-                resolved = _resolve(layers, parameters["sites"], layer_path, faults, blamed)
-                if resolved is not None:
-                    yield site_path, Ensemble.of(self.FAMILY, **parameters, layers=resolved)
+        _check_rings(columns, faults)
+        layers_at = _layers_by_size(columns, faults)
+        for site_path, sites in columns["sites"]:
+            here = columns | {"sites": [(site_path, sites)], "layers": layers_at[sites]}
+            for combination in product(*here.values()):
+                parameters = dict(zip(here, (value for _, value in combination), strict=True))
+                if not (parameters["boundary"] == "periodic" and sites % 2):
+                    yield site_path, Ensemble.of(self.FAMILY, **parameters)
 
     def _column(self, name: str, path: str, faults: list[Fault]) -> Values:
         """All values of one field; the invalid ones become faults and are left out."""
@@ -106,16 +102,16 @@ class HybridClifford(BaseModel):
         except ValueError as error:
             faults.append(Fault(path, str(error)))
             return []
-        kept: Values = []
+        kept: dict[Any, str] = {}
         for where, value in located:
             message = _range_fault(name, value)
-            if message is None and any(value == other for _, other in kept):
+            if message is None and value in kept:
                 message = f"the value {value} stands in this axis already"
             if message is not None:
                 faults.append(Fault(where, message))
             else:
-                kept.append((where, value))
-        return kept
+                kept[value] = where
+        return [(where, value) for value, where in kept.items()]
 
 
 CircuitBlock = HybridClifford
@@ -134,30 +130,31 @@ def _range_fault(name: str, value: Any) -> str | None:
     return None
 
 
-def _odd_ring(sites: int) -> str:
-    return f"periodic brickwork needs an even number of sites, got {sites}"
+def _check_rings(columns: dict[str, Values], faults: list[Fault]) -> None:
+    if any(boundary == "periodic" for _, boundary in columns["boundary"]):
+        for path, sites in columns["sites"]:
+            if sites % 2:
+                faults.append(Fault(path, f"periodic brickwork needs an even number of sites, got {sites}"))
 
 
-def _resolve(layers: int | PerSite, sites: int, path: str, faults: list[Fault], blamed: set[str]) -> int | None:
-    """Number of layers at this size, or None with a fault recorded."""
+def _layers_by_size(columns: dict[str, Values], faults: list[Fault]) -> dict[int, Values]:
+    """Numbers of layers at each size; a ``per_site`` that gives none becomes a fault."""
+    resolved: dict[int, Values] = {}
+    for _, sites in columns["sites"]:
+        resolved[sites] = []
+        for path, layers in columns["layers"]:
+            try:
+                resolved[sites].append((path, resolved_layers(layers, sites)))
+            except ValueError as error:
+                faults.append(Fault(path, str(error)))
+    return resolved
+
+
+def resolved_layers(layers: int | PerSite, sites: int) -> int:
+    """Layers at this size. Raises ValueError if they are not an integer."""
     if not isinstance(layers, PerSite):
         return int(layers)
-    try:
-        return resolved_layers(layers, sites)
-    except ValueError as error:
-        _once(faults, blamed, path, str(error))
-        return None
-
-
-def resolved_layers(layers: PerSite, sites: int) -> int:
-    """Layers at this size. Raises ValueError if they are not an integer."""
     exact = Decimal(repr(layers.per_site)) * sites
     if exact % 1 or exact < 1:
         raise ValueError(f"per_site = {layers.per_site} gives {exact} layers at {sites} sites: must be an integer")
     return int(exact)
-
-
-def _once(faults: list[Fault], blamed: set[str], path: str, message: str) -> None:
-    if path + message not in blamed:
-        blamed.add(path + message)
-        faults.append(Fault(path, message))

@@ -49,7 +49,9 @@ def _message(item: Any) -> str:
         return f"needs a field {context['discriminator']}"
     if kind in ("number", "integer", "layers", "duplicate", "empty"):
         return str(item["msg"])
-    wanted = item["msg"].replace("Input should", "must").replace("String should", "must").replace("a valid tuple", "a list")
+    wanted = item["msg"]
+    for theirs, ours in (("Input should", "must"), ("String should", "must"), ("a valid tuple", "a list")):
+        wanted = wanted.replace(theirs, ours)
     return f"{_decapitalized(wanted)}, got {_short(given)}"
 
 

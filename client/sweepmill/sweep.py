@@ -75,10 +75,10 @@ class Sweep(BaseModel):
     def read(cls, path: str | Path) -> "Sweep":
         """A sweep from a .toml or .json file. Raises OSError for a file that cannot be read."""
         path = Path(path)
-        text = path.read_text(encoding="utf-8")
         try:
+            text = path.read_text(encoding="utf-8")
             data = json.loads(text) if path.suffix == ".json" else tomllib.loads(text)
-        except ValueError as error:
+        except ValueError as error:  # of the encoding, too
             raise SpecificationError([Fault("", f"{path.name} cannot be parsed: {error}")]) from None
         return cls.parse(data)
 

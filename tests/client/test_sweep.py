@@ -84,6 +84,18 @@ def test_every_fault_is_listed_with_its_path() -> None:
     }
 
 
+def test_faults_between_fields_are_found_although_another_field_has_no_valid_value() -> None:
+    found = faults(small(circuit__sites=[8, 7], circuit__measurement_rate=1.5, circuit__layers={"per_site": 0.3}))
+    assert sorted(found) == ["circuit.layers", "circuit.measurement_rate", "circuit.sites[1]"]
+
+
+def test_a_file_that_is_not_text_is_one_clear_fault(tmp_path: Path) -> None:
+    broken = tmp_path / "broken.toml"
+    broken.write_bytes(bytes([0xFF, 0xFE, 0x00]))
+    with pytest.raises(SpecificationError, match=r"broken\.toml cannot be parsed"):
+        Sweep.read(broken)
+
+
 def test_faults_between_fields_name_what_would_pass() -> None:
     found = faults(
         transition(circuit__sites=[32, 33, 64, 64], circuit__measurement_rate=[0.1, 1.5], stop__at_least=5000)
