@@ -99,7 +99,7 @@ async def _in_threads(feed: Feed, limiter: anyio.CapacityLimiter) -> AsyncIterat
         try:
             event = await anyio.to_thread.run_sync(next, changes, None, limiter=limiter)
         except (DBAPIError, PoolTimeout) as error:
-            log.warning("an event stream waits for the database: %s", error)
+            log.warning("an event stream waits for the database: %s", str(error).splitlines()[0])
             return
         if event is None:
             return

@@ -112,8 +112,8 @@ def _from_ambiguous_key(error: AmbiguousKey) -> Refusal:
 
 def _from_database(error: DBAPIError | PoolTimeout) -> Refusal:
     """The database is locked, full or gone; its own first line says which, and never holds a password."""
-    log.warning("database trouble: %s", error)
     reason = str(error.orig).splitlines()[0] if isinstance(error, DBAPIError) else "no connection is free"
+    log.warning("the database does not answer: %s", reason)
     return Unavailable(f"the database does not answer: {reason}")
 
 

@@ -1,6 +1,8 @@
 """One trajectory recomputed on demand, within limits: it runs in a thread of the service, not in the pool."""
 
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from http import HTTPStatus
 
 from sweepmill.ensemble import Ensemble
@@ -12,7 +14,7 @@ from sweepmill_service.store import Store
 from sweepmill_worker.sample import trajectory_values, versions
 
 _ONE_AT_A_TIME = threading.Lock()
-PATIENCE_SECONDS = 60.0
+_QUEUE = threading.BoundedSemaphore(4)  # who waits holds a thread that other requests need
 
 
 def recompute(store: Store, key: str, k: int, limit: float) -> Trajectory:
@@ -35,15 +37,12 @@ def recompute(store: Store, key: str, k: int, limit: float) -> Trajectory:
 
 
 def _recomputed(ensemble: Ensemble, forms: list[dict[str, object]], k: int) -> Trajectory:
-    if not _ONE_AT_A_TIME.acquire(timeout=PATIENCE_SECONDS):
-        raise Unavailable("other trajectories are being recomputed")
     try:
         observations = [observation_from_normal_form(form) for form in forms]
-        values = trajectory_values(ensemble, observations, k)
+        with _turn():
+            values = trajectory_values(ensemble, observations, k)
     except ValueError as error:  # a revision this code no longer samples
         raise _refused(str(error)) from error
-    finally:
-        _ONE_AT_A_TIME.release()
     return Trajectory(
         ensemble=ensemble.key,
         trajectory=k,
@@ -51,6 +50,18 @@ def _recomputed(ensemble: Ensemble, forms: list[dict[str, object]], k: int) -> T
         observations=[TrajectoryValue.model_validate(item) for item in values],
         versions=versions(),
     )
+
+
+@contextmanager
+def _turn() -> Iterator[None]:
+    """One computes, a few wait. Raises Unavailable for the rest."""
+    if not _QUEUE.acquire(blocking=False):
+        raise Unavailable("several trajectories are being recomputed already")
+    try:
+        with _ONE_AT_A_TIME:
+            yield
+    finally:
+        _QUEUE.release()
 
 
 def _refused(detail: str) -> Refusal:

@@ -10,6 +10,7 @@ import pytest
 from sqlalchemy import event
 
 from support.api import Api, reading_only, sampled_by_hand, serving
+from support.databases import PostgresServer
 from support.specs import small
 from support.sweeps import small_sweep
 from sweepmill.messages import Problem
@@ -176,3 +177,19 @@ def test_a_database_of_a_later_release_is_left_alone(database: Path) -> None:
     engine.dispose()
     with serving(reading_only(f"sqlite:///{database}")) as api:
         assert "later release" in problem_of(api.http.get("/readyz"), 503).detail
+
+
+def test_a_postgres_server_that_goes_away_is_said_so_and_found_again(postgres: PostgresServer) -> None:
+    with postgres.database("migrated") as url, serving(reading_only(url)) as api:
+        assert api.http.get("/readyz").status_code == 200
+        postgres.stop()
+        try:
+            answer = api.http.get("/v1/sweeps")
+            assert "does not answer" in problem_of(answer, 503).detail
+            assert int(answer.headers["retry-after"]) > 0
+            assert "database" in problem_of(api.http.get("/readyz"), 503).detail
+            assert api.http.get("/healthz").status_code == 200
+        finally:
+            postgres.start()
+        assert api.http.get("/v1/sweeps").status_code == 200
+        assert api.http.get("/readyz").status_code == 200
