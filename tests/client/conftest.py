@@ -4,11 +4,12 @@ from collections.abc import Iterator
 
 import pytest
 
-from support.running import running_service
+from support.services import service
 
 
 @pytest.fixture(scope="session")
 def service_url(tmp_path_factory: pytest.TempPathFactory) -> Iterator[str]:
     """One service for all tests of the client; tests keep out of each other's way by `circuit.replicate`."""
-    with running_service(tmp_path_factory.mktemp("service"), "--workers", "1") as url:
-        yield url
+    database = f"sqlite:///{tmp_path_factory.mktemp('service') / 'service.sqlite'}"
+    with service(database, workers="1", batch_seconds="0.5") as running:  # a stop waits for the batches in flight
+        yield running.url

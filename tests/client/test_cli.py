@@ -14,7 +14,7 @@ from typing import Any, NamedTuple
 import pytest
 from typer.main import get_command
 
-from support.running import environment
+from support.services import environment
 from sweepmill import Sweep, Table
 from sweepmill.cli import main
 from sweepmill.cli.application import app
@@ -278,7 +278,7 @@ def test_the_pool_is_shown(served: Run) -> None:
 
 def test_an_interrupt_ends_the_watching_and_not_the_sweep(served: Run, service_url: str, tmp_path: Path) -> None:
     path = written(tmp_path, trajectories=9_000_000)
-    variables = environment() | {"SWEEPMILL_URL": service_url, "SWEEPMILL_OWNER": "mara"}
+    variables = environment(url=service_url, owner="mara")
     command = [sys.executable, "-m", "sweepmill", "submit", str(path), "--watch"]
     with subprocess.Popen(
         command, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True, env=variables

@@ -10,7 +10,7 @@ from typing import Any
 import httpx
 import pytest
 
-from support.running import running_service
+from support.services import service
 from sweepmill import (
     Client,
     RemoteSweep,
@@ -208,12 +208,15 @@ def test_waiting_outlives_a_restart_of_the_service(tmp_path: Path) -> None:
         with Client(url) as client:
             client.sweep(key).wait(seen.put, timeout=WAIT)
 
+    database = f"sqlite:///{tmp_path / 'service.sqlite'}"
     with ThreadPoolExecutor(1) as threads:
-        with running_service(tmp_path, "--no-dispatch") as url, Client(url) as client:
+        with service(database, "--no-dispatch") as first, Client(first.url) as client:
+            url = first.url
             key = client.submit(endless()).key
             watching = threads.submit(watch, url, key)
             assert seen.get(timeout=WAIT).state == "waiting"
-        with running_service(tmp_path, "--no-dispatch", "--port", str(httpx.URL(url).port)), Client(url) as client:
+        port = str(httpx.URL(url).port)
+        with service(database, "--no-dispatch", "--port", port), Client(url) as client:
             assert not watching.done()
             client.sweep(key).withdraw()
             with pytest.raises(SweepWithdrawn):

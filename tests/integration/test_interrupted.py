@@ -12,7 +12,12 @@ from support.services import Service, service, until
 from sweepmill import Client, Sweep
 
 WORKERS, WINDOW_PER_THREAD = 2, 2
-SETTINGS = {"batch_seconds": "0.25", "first_batch_seconds": "0.1", "window_per_thread": str(WINDOW_PER_THREAD)}
+SETTINGS = {
+    "workers": str(WORKERS),
+    "batch_seconds": "0.25",
+    "first_batch_seconds": "0.1",
+    "window_per_thread": str(WINDOW_PER_THREAD),
+}
 SWEEP: dict[str, Any] = {
     "circuit": {
         "family": "hybrid-clifford",
@@ -63,7 +68,7 @@ def kill_and_see_every_process_gone(running: Service) -> None:
 def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> tuple[bytes, list[dict[str, Any]]]:
     """The same sweep on one worker, with batches of another size, never interrupted."""
     directory = tmp_path_factory.mktemp("undisturbed")
-    with service(f"sqlite:///{directory / 'a.sqlite'}", workers=1, batch_seconds="1.5") as running:
+    with service(f"sqlite:///{directory / 'a.sqlite'}", workers="1", batch_seconds="1.5") as running:
         with Client(running.url) as client:
             key = client.submit(Sweep.parse(SWEEP)).key
         settle(running.url, key)
@@ -72,19 +77,19 @@ def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> tuple[bytes, list[d
 
 def interrupt(database: str, directory: Path) -> tuple[bytes, list[dict[str, Any]]]:
     """Kill the service twice and a worker once; then let the sweep settle."""
-    first = Service(database, WORKERS, **SETTINGS)
+    first = Service(database, **SETTINGS)
     with Client(first.url) as client:
         key = client.submit(Sweep.parse(SWEEP)).key
     wait_for_progress(first.url, key, 500)
     kill_and_see_every_process_gone(first)
 
-    second = Service(database, WORKERS, **SETTINGS)
+    second = Service(database, **SETTINGS)
     wait_for_progress(second.url, key, 500)
     second.workers()[0].kill()
     wait_for_progress(second.url, key, 800)
     kill_and_see_every_process_gone(second)
 
-    with service(database, WORKERS, **SETTINGS) as third:
+    with service(database, **SETTINGS) as third:
         settle(third.url, key)
         return result(third.url, key, directory)
 

@@ -1,6 +1,7 @@
 """The service as users run it: `sweepmill serve` in a process of its own."""
 
 import os
+import selectors
 import signal
 import subprocess
 import sys
@@ -12,6 +13,7 @@ from pathlib import Path
 import psutil
 
 READY = "Sweepmill is ready at "
+START_SECONDS = 180.0  # the first start on a machine compiles the kernels
 
 
 def until(condition: Callable[[], object], what: str, seconds: float = 60.0) -> None:
@@ -22,26 +24,33 @@ def until(condition: Callable[[], object], what: str, seconds: float = 60.0) -> 
         time.sleep(0.02)
 
 
-class Service:
-    """A running service; ``settings`` become SWEEPMILL_* variables."""
+def environment(**settings: str) -> dict[str, str]:
+    """The environment with these SWEEPMILL_* variables and none of the person who runs the tests."""
+    rest = {name: value for name, value in os.environ.items() if not name.startswith("SWEEPMILL_")}
+    return rest | {f"SWEEPMILL_{name.upper()}": value for name, value in settings.items()}
 
-    def __init__(self, database: str, workers: int, **settings: str) -> None:
-        variables = {f"SWEEPMILL_{name.upper()}": value for name, value in settings.items()}
-        options = ["--port", "0", "--database", database, "--workers", str(workers)]
-        self.process = subprocess.Popen(
-            [sys.executable, "-m", "sweepmill", "serve", *options],
-            stdout=subprocess.PIPE,
-            text=True,
-            env=os.environ | variables,
-        )
+
+class Service:
+    """A running service; ``options`` are those of the command line, ``settings`` become SWEEPMILL_* variables."""
+
+    def __init__(self, database: str, *options: str, **settings: str) -> None:
+        command = [sys.executable, "-m", "sweepmill", "serve", "--port", "0", "--database", database, *options]
+        self.process = subprocess.Popen(command, stdout=subprocess.PIPE, text=True, env=environment(**settings))
         self.url = self._ready_url()
 
     def _ready_url(self) -> str:
         assert self.process.stdout is not None
-        for line in self.process.stdout:
-            if line.startswith(READY):
-                return line.removeprefix(READY).strip()
-        raise AssertionError(f"the service ended with {self.process.wait()} before it was ready")
+        deadline = time.monotonic() + START_SECONDS
+        with selectors.DefaultSelector() as selector:
+            selector.register(self.process.stdout, selectors.EVENT_READ)
+            while selector.select(max(0.0, deadline - time.monotonic())):
+                line = self.process.stdout.readline()
+                if line.startswith(READY):
+                    return line.removeprefix(READY).strip()
+                if not line:
+                    break
+        self.process.kill()
+        raise AssertionError(f"the service ended with {self._wait()} before it was ready")
 
     def family(self) -> list[psutil.Process]:
         """All processes started by the service, at any depth."""
@@ -78,9 +87,9 @@ def _maps(process: psutil.Process) -> str:
 
 
 @contextmanager
-def service(database: str, workers: int = 2, **settings: str) -> Iterator[Service]:
+def service(database: str, *options: str, **settings: str) -> Iterator[Service]:
     """A service that is stopped, if it still runs, at the end of the block."""
-    running = Service(database, workers, **settings)
+    running = Service(database, *options, **settings)
     try:
         yield running
     finally:

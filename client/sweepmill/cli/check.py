@@ -5,7 +5,7 @@ from typing import Annotated
 import typer
 
 from sweepmill import messages
-from sweepmill.cli.options import Specification, Url, read
+from sweepmill.cli.options import Specification, Url
 from sweepmill.client import Client
 from sweepmill.errors import Unreachable
 from sweepmill.retry import Retry
@@ -25,7 +25,7 @@ def check(
 
     Example: sweepmill check transition.toml
     """
-    sweep = read(file)
+    sweep = Sweep.read(file)
     print(_expanded(sweep))
     if ensembles:
         for point in sweep.points:

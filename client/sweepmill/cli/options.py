@@ -5,20 +5,9 @@ from typing import Annotated
 
 import typer
 
-from sweepmill.errors import Fault, SpecificationError
-from sweepmill.sweep import Sweep
-
 Specification = Annotated[
     Path, typer.Argument(metavar="FILE", exists=True, dir_okay=False, readable=True, help="A .toml or .json file.")
 ]
 Key = Annotated[str, typer.Argument(metavar="KEY", help="Key of the sweep, or at least 8 of its first digits.")]
 Url = Annotated[str | None, typer.Option(metavar="URL", help="Address of the service, in place of SWEEPMILL_URL.")]
 Owner = Annotated[str | None, typer.Option(metavar="NAME", help="Whose request this is, in place of SWEEPMILL_OWNER.")]
-
-
-def read(file: Path) -> Sweep:
-    """The sweep of a file. Raises SpecificationError, also for a file that is no text."""
-    try:
-        return Sweep.read(file)
-    except UnicodeDecodeError as error:
-        raise SpecificationError([Fault("", f"{file.name} is not UTF-8 text")]) from error

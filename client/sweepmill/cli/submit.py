@@ -5,10 +5,11 @@ from typing import Annotated, Any
 
 import typer
 
-from sweepmill.cli.options import Owner, Specification, Url, read
+from sweepmill.cli.options import Owner, Specification, Url
 from sweepmill.cli.watch import wait_for
 from sweepmill.client import Client
 from sweepmill.messages import Submitted
+from sweepmill.sweep import Sweep
 from sweepmill.text import count, short
 
 
@@ -28,7 +29,7 @@ def submit(
     Example: sweepmill submit transition.toml --watch
     """
     changes: dict[str, Any] = {"label": label, "priority": priority}
-    sweep = read(file).model_copy(update={k: v for k, v in changes.items() if v is not None})
+    sweep = Sweep.read(file).model_copy(update={k: v for k, v in changes.items() if v is not None})
     with Client(url, owner=owner) as client:
         remote = client.submit(sweep)
         print(remote.key, flush=True)
