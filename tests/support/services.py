@@ -54,7 +54,8 @@ class Service:
 
     def family(self) -> list[psutil.Process]:
         """All processes started by the service, at any depth."""
-        return psutil.Process(self.process.pid).children(recursive=True)
+        children: list[psutil.Process] = psutil.Process(self.process.pid).children(recursive=True)
+        return children
 
     def workers(self) -> list[psutil.Process]:
         """The worker processes: those of the family that have loaded the kernels' compiler."""
