@@ -12,6 +12,7 @@ from pydantic_core import PydanticCustomError
 
 SIGNIFICANT_DIGITS = 12
 LONGEST_RANGE = 100_000
+LARGEST_INTEGER = 2**53  # larger ones are not exact in JSON, so they cannot be part of a key
 _CONTEXT = Context(prec=SIGNIFICANT_DIGITS)
 
 
@@ -39,6 +40,10 @@ def _strict_integer(value: Any) -> Any:
     """Integers may be spelled 64 or 64.0 (JSON does not tell them apart), nothing else."""
     if isinstance(value, bool) or not isinstance(value, int | float) or value != value or value % 1:
         raise PydanticCustomError("integer", "must be an integer, got {value}", {"value": repr(value)})
+    if abs(value) >= LARGEST_INTEGER:
+        raise PydanticCustomError(
+            "integer", "must be an integer below 2^53, got one of {digits} digits", {"digits": len(str(int(value)))}
+        )
     return int(value)
 
 

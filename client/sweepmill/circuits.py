@@ -3,12 +3,14 @@
 from collections.abc import Iterator
 from decimal import Decimal
 from itertools import product
+from math import prod
 from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
 from pydantic_core import PydanticCustomError
 
 from sweepmill.axes import (
+    LARGEST_INTEGER,
     Integer,
     IntegerAxis,
     Number,
@@ -21,6 +23,7 @@ from sweepmill.axes import (
 from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
 from sweepmill.errors import Fault
 
+MOST_ENSEMBLES = 1_000_000  # a guard against slips of the pen; servers take fewer
 Values = list[tuple[str, Any]]
 
 
@@ -39,7 +42,7 @@ def _layers(value: Any) -> Any:
 
 
 def _plain_integer(value: Any) -> int:
-    if isinstance(value, bool) or not isinstance(value, int | float) or value % 1:
+    if isinstance(value, bool) or not isinstance(value, int | float) or value % 1 or abs(value) >= LARGEST_INTEGER:
         raise PydanticCustomError(
             "layers", "must be an integer or {form}, got {value}", {"value": repr(value), "form": "{ per_site = n }"}
         )
@@ -86,6 +89,9 @@ class HybridClifford(BaseModel):
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
         columns = {name: self._column(name, f"{path}.{name}", faults) for name in FAMILY_PARAMETERS[self.FAMILY]}
+        if (size := prod(map(len, columns.values()))) > MOST_ENSEMBLES:
+            faults.append(Fault(path, f"a block has at most {MOST_ENSEMBLES} ensembles, the axes multiply to {size}"))
+            return
         _check_rings(columns, faults)
         layers_at = _layers_by_size(columns, faults)
         for site_path, sites in columns["sites"]:

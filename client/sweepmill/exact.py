@@ -1,5 +1,6 @@
 """Exact integer arrays: int64 where everything fits, Python integers beyond, at most 127 bits."""
 
+import math
 from typing import Any
 
 import numpy as np
@@ -64,7 +65,7 @@ def array_to_bytes(array: IntArray) -> bytes:
 
 def array_from_bytes(data: bytes, offset: int, shape: tuple[int, ...]) -> tuple[IntArray, int]:
     """The array stored at ``offset`` and the offset behind it."""
-    size = int(np.prod(shape, dtype=np.int64))
+    size = math.prod(shape)
     width = data[offset]
     end = offset + 1 + width * size
     if width == 8:

@@ -12,6 +12,9 @@ from pydantic_core import PydanticCustomError
 from sweepmill.axes import Integer, Number, nonempty
 
 
+MOST_READINGS = 100_000
+
+
 class Strict(BaseModel):
     """Frozen, unknown fields refused."""
 
@@ -28,7 +31,7 @@ class Every(Strict):
 class LogSpaced(Strict):
     """A series of at most n unit cells (or single layers), evenly spaced in the logarithm of the layer."""
 
-    log_spaced: Annotated[Integer, Field(ge=2)]
+    log_spaced: Annotated[Integer, Field(ge=2, le=1000)]
     single_layers: bool = False
 
 
@@ -60,10 +63,10 @@ def distinct_sorted(values: tuple[int, ...]) -> tuple[int, ...]:
 
 
 def _form(value: Any) -> str:
-    if isinstance(value, str):
-        return "at-word"
     if isinstance(value, list | tuple):
         return "at-layers"
+    if not isinstance(value, dict | Strict):
+        return "at-word"
     keys = value.keys() if isinstance(value, dict) else type(value).model_fields.keys()
     if "log_spaced" in keys:
         return "at-log-spaced"
@@ -111,6 +114,7 @@ def readings(at: Any, layers: int) -> tuple[Reading, ...]:
         return _series(_log_spaced(at.log_spaced, 1 if at.single_layers else 2, layers), at.single_layers)
     _need(at.single_layers or at.every >= 2, "unit cells overlap below every = 2: use single_layers = true")
     _need(at.every <= layers, f"every = {at.every} is beyond the last layer, {layers}")
+    _need_few(layers // at.every)
     return _series(tuple(range(at.every, layers + 1, at.every)), at.single_layers)
 
 
@@ -119,12 +123,17 @@ def _need(condition: bool, message: str) -> None:
         raise ValueError(message)
 
 
+def _need_few(count: int) -> None:
+    _need(count <= MOST_READINGS, f"reads {count} cells, at most {MOST_READINGS} pass: read fewer")
+
+
 def _series(ends: tuple[int, ...], single_layers: bool) -> tuple[Reading, ...]:
     return tuple(Reading(n, (n,) if single_layers else (n - 1, n)) for n in ends)
 
 
 def _window(window: Window, layers: int) -> tuple[int, ...]:
     # twelve-digit decimals: the product rounded at nine places is the exact border where it is an integer
+    _need_few(int(layers * window.last) // window.every)
     border = round(layers * (1 - window.last), 9)
     ends = [end for end in range(layers, 1, -window.every) if end - 1 > border]
     _need(bool(ends), f"the last {window.last} of {layers} layers holds no whole unit cell")
@@ -134,15 +143,15 @@ def _window(window: Window, layers: int) -> tuple[int, ...]:
 def _log_spaced(points: int, first: int, layers: int) -> tuple[int, ...]:
     _need(layers > first, f"a log-spaced series needs more than {first} layers, the circuit has {layers}")
     power = points - 1
-    return tuple(sorted({_root(first ** (power - i) * layers**i, power) for i in range(points)}))
+    return tuple(sorted({_log_point(first, layers, i, power) for i in range(points)}))
 
 
-def _root(value: int, power: int) -> int:
-    """Largest integer whose ``power`` is at most ``value``: exact, so that every machine reads the same layers."""
-    low, high = 1, 1
-    while high**power <= value:
-        low, high = high, 2 * high
-    while high - low > 1:
-        middle = (low + high) // 2
-        low, high = (middle, high) if middle**power <= value else (low, middle)
-    return low
+def _log_point(first: int, last: int, step: int, steps: int) -> int:
+    """Largest n with n^steps <= first^(steps - step) last^step: exact, so that every machine reads the same layers."""
+    target = first ** (steps - step) * last**step
+    guess: int = round(first * (last / first) ** (step / steps))
+    while guess**steps > target:
+        guess -= 1
+    while (guess + 1) ** steps <= target:
+        guess += 1
+    return guess

@@ -131,6 +131,19 @@ def test_faults_between_fields_name_what_would_pass() -> None:
         ({"circuit__layers": 2.5}, "circuit.layers", "must be an integer or { per_site = n }"),
         ({"circuit__replicate": -1}, "circuit.replicate", "at least 0"),
         ({"observe": []}, "observe", "needs at least one item"),
+        ({"circuit__replicate": 2**53}, "circuit.replicate", "must be an integer below 2^53"),
+        ({"circuit__layers": 10**400}, "circuit.layers", "must be an integer"),
+        ({"observe": [{"quantity": "entropy", "at": 5}]}, "observe[0].at", "must be 'last-cell' or 'end', got 5"),
+        ({"observe": [{"quantity": "entropy", "at": None}]}, "observe[0].at", "must be 'last-cell' or 'end'"),
+        ({"observe": [{"quantity": "entropy", "at": {"log_spaced": 10**9}}]}, "observe[0].at.log_spaced", "1000"),
+        (
+            {
+                "circuit__measurement_rate": {"from": 0, "to": 1, "points": 50_000},
+                "circuit__replicate": {"from": 0, "to": 99, "points": 100},
+            },
+            "circuit",
+            "the axes multiply to 15000000",
+        ),
         ({"observe": [{"quantity": "entropi"}]}, "observe[0]", "unknown quantity 'entropi': one of entropy"),
         (
             {"observe": [{"quantity": "entropy", "region": "third"}]},

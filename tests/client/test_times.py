@@ -34,6 +34,12 @@ def test_a_window_too_short_for_a_cell_is_refused() -> None:
         readings(AverageOver(average_over=Window(last=0.1)), 10)
 
 
+@pytest.mark.parametrize("at", [Every(every=2), AverageOver(average_over=Window(last=0.5))])
+def test_a_series_without_end_is_refused_before_it_is_listed(at: Every | AverageOver) -> None:
+    with pytest.raises(ValueError, match="at most 100000 pass"):
+        readings(at, 10**15)
+
+
 def test_a_log_spaced_series_runs_from_the_first_cell_to_the_last_layer() -> None:
     ends = [reading.layer for reading in readings(LogSpaced(log_spaced=7), 128)]
     assert ends == [2, 4, 8, 16, 32, 64, 128]
