@@ -11,7 +11,6 @@ from pydantic_core import PydanticCustomError
 
 from sweepmill.axes import Integer, Number, nonempty
 
-
 MOST_READINGS = 100_000
 
 
