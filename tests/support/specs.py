@@ -27,14 +27,7 @@ TRANSITION: dict[str, Any] = {
 
 def transition(**changes: Any) -> dict[str, Any]:
     """The example of the README; keyword arguments ``circuit__sites=…`` replace nested fields."""
-    spec = deepcopy(TRANSITION)
-    for path, value in changes.items():
-        *parents, last = path.split("__")
-        target = spec
-        for parent in parents:
-            target = target[parent]
-        target[last] = value
-    return spec
+    return changed(deepcopy(TRANSITION), changes)
 
 
 def small(**changes: Any) -> dict[str, Any]:
@@ -49,6 +42,11 @@ def small(**changes: Any) -> dict[str, Any]:
         "observe": [{"quantity": "entropy"}, {"name": "i3", "quantity": "tripartite-information"}],
         "stop": {"trajectories": 300},
     }
+    return changed(spec, changes)
+
+
+def changed(spec: dict[str, Any], changes: dict[str, Any]) -> dict[str, Any]:
+    """``spec`` with nested fields replaced: ``circuit__sites`` is the field sites of circuit."""
     for path, value in changes.items():
         *parents, last = path.split("__")
         target = spec
