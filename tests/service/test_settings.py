@@ -98,3 +98,9 @@ def test_passwords_are_masked_wherever_they_stand() -> None:
     assert "s3cret" not in masked_url("postgresql://db.example/sweeps?user=mill&password=s3cret")
     assert "s3cret" not in masked_url("postgresql://db.example/sweeps?sslpassword=s3cret")
     assert masked_url("sqlite:////data/a.sqlite") == "sqlite:////data/a.sqlite"
+
+
+def test_the_example_of_the_deploy_folder_is_valid(monkeypatch: pytest.MonkeyPatch) -> None:
+    example = Path(__file__).parents[2] / "deploy" / "settings.example.toml"
+    monkeypatch.setenv("SWEEPMILL_SETTINGS", str(example))
+    assert load_settings().limits.sites == 1024
