@@ -9,6 +9,7 @@ from queue import Empty, SimpleQueue
 from typing import Any
 
 from distributed import Future, KilledWorker
+from distributed.scheduler import NoValidWorkerError, NoWorkerError
 
 from sweepmill_service.plan.task import Task
 from sweepmill_service.pool import Pool, difference
@@ -107,6 +108,8 @@ class Flights:
         if future.status != "error":
             return Failed(task, None)
         error, trace = _error_of(future)
+        if isinstance(error, NoWorkerError | NoValidWorkerError):
+            return Failed(task, None)
         if isinstance(error, KilledWorker):
             return Failed(task, self._worker_lost(task, worker, error))
         return Failed(task, fault_of(task, type(error).__name__, str(error), worker or "unknown", trace))

@@ -1,5 +1,6 @@
 """Throughput over the last minute."""
 
+import threading
 import time
 from collections import deque
 from collections.abc import Callable
@@ -8,18 +9,20 @@ WINDOW = 60.0
 
 
 class Meter:
-    """Sums of what landed within the window."""
+    """Sums of what landed within the window; may be read from any thread."""
 
     def __init__(self, clock: Callable[[], float] = time.monotonic) -> None:
         self._clock = clock
+        self._lock = threading.Lock()
         self._since = clock()
         self._landed: deque[tuple[float, float, int]] = deque()
         self.batches = 0
 
     def note(self, seconds: float, trajectories: int) -> None:
         """A batch of so many core-seconds and trajectories was stored."""
-        self.batches += 1
-        self._landed.append((self._clock(), seconds, trajectories))
+        with self._lock:
+            self.batches += 1
+            self._landed.append((self._clock(), seconds, trajectories))
 
     def trajectories_per_second(self) -> float:
         """Mean over the window."""
@@ -29,10 +32,11 @@ class Meter:
         """Core-seconds of sampling per core and second, over the window."""
         return sum(seconds for _, seconds, _ in self._recent()) / self._span() / cores if cores else 0.0
 
-    def _recent(self) -> deque[tuple[float, float, int]]:
-        while self._landed and self._landed[0][0] < self._clock() - WINDOW:
-            self._landed.popleft()
-        return self._landed
+    def _recent(self) -> list[tuple[float, float, int]]:
+        with self._lock:
+            while self._landed and self._landed[0][0] < self._clock() - WINDOW:
+                self._landed.popleft()
+            return list(self._landed)
 
     def _span(self) -> float:
         return max(min(WINDOW, self._clock() - self._since), 1e-3)

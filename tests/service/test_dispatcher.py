@@ -214,7 +214,7 @@ def test_a_dispatcher_that_stops_and_one_that_starts_sample_nothing_twice(store:
     store.submit(sweep, "ada")
     for _ in range(2):
         before = store.sweep_status(sweep.key).trajectories
-        with dispatching(store, local_pool):
+        with dispatching(store, local_pool, first_batch_seconds=0.005, batch_seconds=0.005):
             until(partial(sampled_beyond, store, sweep, before), "sampling goes on")
     with dispatching(store, local_pool):
         settle(store, sweep)

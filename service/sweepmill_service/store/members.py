@@ -85,7 +85,7 @@ class Member:
 
 def lock_ensembles(connection: Connection, keys: Collection[str]) -> dict[str, Any]:
     """Rows of the ensembles, locked in order of key until the transaction ends."""
-    statement = select(ensemble).order_by(ensemble.c.key).with_for_update()
+    statement = select(ensemble).order_by(ensemble.c.key).with_for_update(key_share=True)
     rows: dict[str, Any] = {}
     for piece in chunks(sorted(keys)):
         rows.update((row.key, row) for row in connection.execute(statement.where(ensemble.c.key.in_(piece))))
@@ -121,7 +121,7 @@ def lock_sweeps(connection: Connection, keys: Collection[str]) -> dict[str, Swee
         observed = select(*columns).where(sweep_observation.c.sweep.in_(piece))
         for key, observation in connection.execute(observed.order_by(sweep_observation.c.ordinal)):
             names[key].append(observation)
-        locked = select(sweep).where(sweep.c.key.in_(piece)).order_by(sweep.c.key).with_for_update()
+        locked = select(sweep).where(sweep.c.key.in_(piece)).order_by(sweep.c.key).with_for_update(key_share=True)
         rows.extend(connection.execute(locked))
     return {row.key: _sweep_row(row, names[row.key]) for row in rows}
 

@@ -47,16 +47,17 @@ def submit(connection: Connection, wanted: Sweep, owner: str) -> Submission:
         _insert_parts(connection, wanted)
         refresh_sampled(connection, wanted.key)
     else:
-        connection.execute(select(sweep.c.key).where(sweep.c.key == wanted.key).with_for_update())
+        _retry_failed(connection, wanted.key, at)  # ensembles before their sweep, as commits lock them
+        _lock(connection, wanted.key)
     joined = _request(connection, wanted, owner, at)
-    _restore(connection, wanted.key, at)
+    _restore(connection, wanted.key)
     note_change(connection)
     return Submission(wanted.key, created, joined and not created)
 
 
 def withdraw(connection: Connection, key: str, owner: str) -> bool:
     """Remove the owner's request; False if there was none."""
-    connection.execute(select(sweep.c.key).where(sweep.c.key == key).with_for_update())
+    _lock(connection, key)
     mine = (request.c.sweep == key, request.c.owner == owner)
     removed = connection.execute(delete(request).where(*mine).returning(request.c.owner)).all()
     if not removed:
@@ -166,23 +167,28 @@ def _request(connection: Connection, wanted: Sweep, owner: str, at: float) -> bo
     return connection.execute(statement.values(row)).first() is not None
 
 
-def _restore(connection: Connection, key: str, at: float) -> None:
-    """Bring a withdrawn or stuck sweep back; whatever failed in it gets another chance."""
+def _lock(connection: Connection, key: str) -> None:
+    statement = select(sweep.c.key).where(sweep.c.key == key)
+    connection.execute(statement.with_for_update(key_share=True))
+
+
+def _restore(connection: Connection, key: str) -> None:
+    """Bring a withdrawn or stuck sweep back."""
     row = connection.execute(
         select(sweep.c.state, sweep.c.settled, sweep.c.ensembles, sweep.c.trajectories_sampled).where(
             sweep.c.key == key
         )
     ).one()
-    if row.state == STUCK:
-        _retry_failed(connection, key, at)
     if row.state != SETTLED:
         under_way = SAMPLING if row.trajectories_sampled else WAITING
         _set_state(connection, key, SETTLED if row.settled == row.ensembles else under_way)
 
 
 def _retry_failed(connection: Connection, key: str, at: float) -> None:
-    members = select(sweep_ensemble.c.ensemble).where(sweep_ensemble.c.sweep == key)
-    failed = (ensemble.c.key.in_(members), ensemble.c.stuck_kind == "failed")
+    """Whatever failed in a stuck sweep gets another chance; an ensemble that contradicted itself does not."""
+    members = select(sweep_ensemble.c.ensemble).join(sweep, sweep.c.key == sweep_ensemble.c.sweep)
+    stuck = members.where(sweep.c.key == key, sweep.c.state == STUCK)
+    failed = (ensemble.c.key.in_(stuck), ensemble.c.stuck_kind == "failed")
     connection.execute(update(ensemble).where(*failed).values(stuck=None, stuck_kind=None, retried_at=at))
 
 
