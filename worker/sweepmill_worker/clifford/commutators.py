@@ -4,7 +4,7 @@ The matrix M of commutators on A is the sum over the sites q of A of x_q z_q^T +
 columns of q over all rows.  Rows inside A or outside A drop out by themselves, so M has as many non-zero rows as cross
 the boundary of A; and the next region costs only the sites in which it differs from the last.  That makes averages
 over translations of two-interval regions cheap.  Source of the formula: rank of commutation matrices, as in
-Entanglement in the stabilizer formalism, quant-ph/0406168; the form as a sum over sites is derived here.
+Entanglement in the stabilizer formalism, quant-ph/0406168 (from memory); the sum over sites is derived here.
 """
 
 from typing import NamedTuple

@@ -20,7 +20,7 @@ from sweepmill_worker.words import GATE, MEASURE, words
 __all__ = ["GATE_CLASSES", "MAX_LAYERS", "MAX_SITES", "HybridChain", "Layer", "Readings", "describe", "run"]
 
 MAX_SITES: Final = 4096
-"""Windows are shorts, and a column of 4096 rows is what has been tested."""
+"""The keys of the search for the shortest row hold lengths of 12 bits."""
 MAX_LAYERS: Final = 2**24
 """Far beyond any ensemble; layers are 32-bit counters of the random words."""
 

@@ -1,9 +1,9 @@
 """Fixed-width integer vectors inside numba kernels.
 
-Plain loops over a few words do not vectorize (27 ns a gate against 6 with these types), so kernels hold columns in
-LLVM vectors.  A vector of 64-bit words gets its width from the *type* of a `lanes` argument, a tuple of that many
-zeros: one source then compiles, and is cached on disk, once per width.  Vectors of 32 shorts hold windows of rows;
-a 32-bit word turns into a vector of 32 truth values that selects among them.
+Plain loops over a few words are not vectorized reliably, so kernels hold columns in LLVM vectors.  A vector of 64-bit
+words gets its width from the *type* of a `lanes` argument, a tuple of that many zeros: one source then compiles, and
+is cached on disk, once per width.  Vectors of 32 shorts hold windows of rows; a 32-bit word turns into a vector of 32
+truth values that selects among them.
 """
 
 import operator
