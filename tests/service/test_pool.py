@@ -84,6 +84,24 @@ def test_a_closed_pool_leaves_no_processes_and_says_so() -> None:
     pool.close()
 
 
+def test_a_local_pool_that_lost_all_its_workers_is_rebuilt(
+    sqlite_store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("sweepmill_service.dispatcher.PATIENCE_WITHOUT_WORKERS", 0.5)
+    pool = LocalPool(1)
+    dispatcher = Dispatcher(sqlite_store, pool, QuickSettings())
+    dispatcher.start()
+    until(lambda: dispatcher.status().ready, "the pool is ready")
+    before = [worker.address for worker in dispatcher.status().workers]
+    pool.client.retire_workers(before, close_workers=True, remove=True)
+    until(lambda: dispatcher.status().reason == "the pool has no workers", "the loss is noticed")
+    sweep = small_sweep(rates=1, cap=100)
+    sqlite_store.submit(sweep, "ada")
+    until(lambda: sqlite_store.sweep_status(sweep.key).state == "settled", "a new pool samples")
+    assert [worker.address for worker in dispatcher.status().workers] != before
+    dispatcher.stop(5)
+
+
 def test_differing_versions_are_named() -> None:
     mine = worker_versions()
     assert difference(mine) is None
