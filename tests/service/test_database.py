@@ -1,7 +1,7 @@
 """Opening databases: what is refused, what is set, who may dispatch."""
 
-import multiprocessing
-from multiprocessing.synchronize import Event
+import subprocess
+import sys
 from pathlib import Path
 
 import pytest
@@ -62,6 +62,47 @@ def test_postgres_gives_up_on_statements_that_take_too_long(postgres: PostgresSe
             shown = [connection.scalar(text(f"SHOW {name}")) for name in ("statement_timeout", "lock_timeout")]
         assert shown == ["1min", "15s"]
         engine.dispose()
+
+
+def test_a_second_dispatcher_on_one_sqlite_file_is_refused_by_name(tmp_path: Path) -> None:
+    path = tmp_path / "x.sqlite"
+    engine = open_database(f"sqlite:///{path}")
+    first = leadership(engine)
+    assert first.acquire()
+    assert first.acquire()
+    with pytest.raises(AlreadyServed, match=str(path)):
+        leadership(engine).acquire()
+    first.release()
+    second = leadership(engine)
+    assert second.acquire()
+    second.release()
+    engine.dispose()
+
+
+HOLDER = """
+import sys
+from sweepmill_service.database import open_database
+from sweepmill_service.store.leadership import leadership
+assert leadership(open_database(sys.argv[1])).acquire()
+print("held", flush=True)
+sys.stdin.read()
+"""
+
+
+def test_a_killed_service_leaves_its_sqlite_file_free(tmp_path: Path) -> None:
+    url = f"sqlite:///{tmp_path / 'x.sqlite'}"
+    engine = open_database(url)
+    command = [sys.executable, "-c", HOLDER, url]
+    with subprocess.Popen(command, stdin=subprocess.PIPE, stdout=subprocess.PIPE, text=True) as holder:
+        assert holder.stdout is not None
+        assert holder.stdout.readline() == "held\n"
+        with pytest.raises(AlreadyServed):
+            leadership(engine).acquire()
+        holder.kill()
+    lead = leadership(engine)
+    assert lead.acquire()
+    lead.release()
+    engine.dispose()
 
 
 def test_a_second_dispatcher_on_one_sqlite_file_is_refused_by_name(tmp_path: Path) -> None:
