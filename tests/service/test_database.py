@@ -105,46 +105,6 @@ def test_a_killed_service_leaves_its_sqlite_file_free(tmp_path: Path) -> None:
     engine.dispose()
 
 
-def test_a_second_dispatcher_on_one_sqlite_file_is_refused_by_name(tmp_path: Path) -> None:
-    path = tmp_path / "x.sqlite"
-    engine = open_database(f"sqlite:///{path}")
-    first = leadership(engine)
-    assert first.acquire()
-    assert first.acquire()
-    with pytest.raises(AlreadyServed, match=str(path)):
-        leadership(engine).acquire()
-    first.release()
-    second = leadership(engine)
-    assert second.acquire()
-    second.release()
-    engine.dispose()
-
-
-def _hold(url: str, ready: Event) -> None:
-    lead = leadership(open_database(url))
-    lead.acquire()
-    ready.set()
-    multiprocessing.Event().wait()
-
-
-def test_a_killed_service_leaves_its_sqlite_file_free(tmp_path: Path) -> None:
-    url = f"sqlite:///{tmp_path / 'x.sqlite'}"
-    context = multiprocessing.get_context("spawn")
-    ready = context.Event()
-    process = context.Process(target=_hold, args=(url, ready))
-    process.start()
-    assert ready.wait(60)
-    engine = open_database(url)
-    with pytest.raises(AlreadyServed):
-        leadership(engine).acquire()
-    process.kill()
-    process.join(30)
-    lead = leadership(engine)
-    assert lead.acquire()
-    lead.release()
-    engine.dispose()
-
-
 def test_a_second_dispatcher_on_one_postgres_database_waits_for_the_first(postgres: PostgresServer) -> None:
     with postgres.database() as url, postgres.database() as elsewhere:
         engines: list[Engine] = [open_database(one) for one in (url, url, elsewhere)]
