@@ -174,6 +174,18 @@ def test_batches_start_short_grow_in_steps_and_are_bounded() -> None:
     assert seconds == [0.5, 2.0, 4.0, 4.0]
 
 
+def test_the_first_batches_teach_what_trajectories_of_other_ensembles_take() -> None:
+    ensembles = [ensemble(f"{n}", 1_000_000, None, default_seconds=1e-6) for n in range(40)]
+    plan = plan_of((sweep_info(), ensembles))
+    counts = []
+    for _ in ensembles:
+        task = choose(plan)
+        counts.append(task.count)
+        plan.landed(task, task.count * 1e-3)  # a thousand times slower than the default
+    assert counts[0] == 4000
+    assert counts[-1] == pytest.approx(500, rel=0.05)  # half a second
+
+
 def test_a_slow_trajectory_is_a_batch_of_its_own() -> None:
     assert choose(plan_of((sweep_info(), [ensemble(pace=60.0)]))).count == 1
 

@@ -43,7 +43,7 @@ def _companions(entry: Entry, first: int, speculative: bool) -> tuple[tuple[str,
 def batch_seconds(entry: Entry, rules: SizeRules, sweep_remaining: float, threads: int) -> float:
     """Core-seconds of the next batch: short at first, growing in steps, shared out near the end of a sweep."""
     if entry.measured_seconds is None:
-        wanted = rules.first_batch_seconds
+        wanted = min(rules.first_batch_seconds, rules.first_batch_count * entry.seconds_per_trajectory)
     else:
         wanted = rules.batch_seconds
         if entry.largest:

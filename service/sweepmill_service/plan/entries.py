@@ -3,6 +3,7 @@
 from collections.abc import Iterable
 from dataclasses import dataclass, field
 
+from sweepmill_service.plan.costs import Calibration
 from sweepmill_service.plan.marks import Reach, ladder, next_mark, next_rung
 from sweepmill_service.plan.task import Task
 
@@ -62,6 +63,7 @@ class Entry:
     key: str
     default_seconds: float
     measured_seconds: float | None
+    calibration: Calibration
     stuck: bool = False
     largest: int = 0  # trajectories of the largest batch that came back
     tracks: dict[str, Track] = field(default_factory=dict)
@@ -72,7 +74,9 @@ class Entry:
     @property
     def seconds_per_trajectory(self) -> float:
         """Measured if possible; always positive."""
-        return max(self.default_seconds if self.measured_seconds is None else self.measured_seconds, 1e-9)
+        if self.measured_seconds is None:
+            return max(self.default_seconds * self.calibration.factor, 1e-9)
+        return max(self.measured_seconds, 1e-9)
 
     def track(self, observation: str) -> Track:
         """Ranges of an observation."""

@@ -7,6 +7,7 @@ from collections.abc import Collection, Iterable
 from dataclasses import dataclass, field, replace
 from itertools import count
 
+from sweepmill_service.plan.costs import Calibration
 from sweepmill_service.plan.cutting import batch_seconds, next_task
 from sweepmill_service.plan.entries import Entry, PlanMember, Track
 from sweepmill_service.plan.fair import FairShare
@@ -41,6 +42,7 @@ class Plan:
         self.under_way: dict[str, Task] = {}
         self.stuck: set[str] = set()
         self.share = FairShare()
+        self.calibration = Calibration()
         self._numbers = count(1)  # of versions of entries and of tasks: none ever returns
 
     # --- sweeps come, change and go
@@ -122,6 +124,8 @@ class Plan:
             entry.largest = max(entry.largest, task.count)
             latest = seconds / task.count
             before = entry.measured_seconds
+            if before is None:
+                self.calibration.note(entry.default_seconds, latest)
             entry.measured_seconds = latest if before is None else (before + latest) / 2
 
     def lost(self, task: Task, failures: int | None = None) -> None:
@@ -195,7 +199,7 @@ class Plan:
     def _entry(self, one: EnsembleInfo) -> Entry:
         entry = self.entries.get(one.key)
         if entry is None:
-            entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds)
+            entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds, self.calibration)
         entry.stuck = one.stuck
         (self.stuck.add if one.stuck else self.stuck.discard)(one.key)
         entry.faults = dict(one.faults)

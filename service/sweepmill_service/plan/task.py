@@ -34,5 +34,6 @@ class SizeRules:
 
     batch_seconds: float = 4.0
     first_batch_seconds: float = 0.5
+    first_batch_count: int = 4000  # however cheap its trajectories are thought to be before they were measured
     least_seconds: float = 0.25  # at the end of a sweep tasks are not split below this
     growth: int = 4  # a batch is at most so many times the largest one that came back
