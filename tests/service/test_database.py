@@ -83,7 +83,8 @@ HOLDER = """
 import sys
 from sweepmill_service.database import open_database
 from sweepmill_service.store.leadership import leadership
-assert leadership(open_database(sys.argv[1])).acquire()
+lead = leadership(open_database(sys.argv[1]))
+assert lead.acquire()
 print("held", flush=True)
 sys.stdin.read()
 """
