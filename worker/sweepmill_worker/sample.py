@@ -8,6 +8,7 @@ import platform
 import time
 from collections.abc import Mapping, Sequence
 from decimal import Decimal
+from functools import cache
 from importlib.metadata import version
 from typing import Any
 
@@ -75,6 +76,7 @@ def trajectory_values(ensemble: Ensemble, observations: Sequence[Any], k: int) -
     ]
 
 
+@cache
 def versions() -> dict[str, str]:
     """Versions of everything that could change a result, for provenance."""
     names = ("sweepmill", "numpy", "numba")
