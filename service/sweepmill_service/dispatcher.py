@@ -177,7 +177,7 @@ class Dispatcher:
 
     def _works(self, part: str) -> None:
         if part in self._reasons:
-            log.info("the %s works again", part)
+            log.info("the %s is ready", part)
             self._reasons = {name: why for name, why in self._reasons.items() if name != part}
 
     def _cycle(self) -> None:

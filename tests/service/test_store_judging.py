@@ -3,6 +3,7 @@
 import hashlib
 from typing import Any
 
+import pytest
 from sqlalchemy import select
 
 from support.batches import accumulator, result
@@ -78,7 +79,22 @@ def test_a_batch_beyond_a_rung_that_folds_in_one_commit_is_judged_at_the_rung(st
         assert entry.digest == whole.digest
 
 
-def test_totals_at_rungs_that_were_not_met_are_not_kept(store: Store) -> None:
+def test_small_totals_at_rungs_that_were_not_met_are_kept_for_later_sweeps(store: Store) -> None:
+    strict = small_sweep(rates=1, cap=400, at_least=50, standard_error=[{"of": "bits", "below": 0.001}])
+    store.submit(strict, "ada")
+    (one,), _ = keys_of(strict)
+    sample_to(store, strict, *rungs(50, 400))
+    assert marks(store, one) == list(rungs(50, 400))
+    assert store.progress(strict.key).ensembles[0].met_by == "cap"
+    lax = small_sweep(rates=1, cap=400, at_least=50, **RULE)
+    store.submit(lax, "bob")
+    store.judge(store.due_ensembles(lax.key))
+    (settled,) = store.progress(lax.key).ensembles
+    assert (settled.trajectories, settled.met_by) == (118, "error")  # as if it had come first
+
+
+def test_large_totals_at_rungs_that_were_not_met_are_not_kept(store: Store, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("sweepmill_service.store.judging.KEPT_BYTES", 100)
     sweep = small_sweep(rates=1, cap=400, at_least=50, standard_error=[{"of": "bits", "below": 0.001}])
     store.submit(sweep, "ada")
     (one,), _ = keys_of(sweep)

@@ -21,6 +21,7 @@ from sweepmill_service.store.results import BatchResult
 from sweepmill_worker.sample import sample_plain
 
 PATIENCE = 60.0
+COMMITTED_AT_ONCE = 100
 
 
 @dataclass(frozen=True)
@@ -78,10 +79,11 @@ def reading_only(database: str, **changes: Any) -> Settings:
 
 def sampled_by_hand(store: Store, sweep: Sweep, upto: int, first: int = 0, owner: str = "local") -> None:
     """Sample trajectories [first, upto) of every ensemble of a stored sweep, as the pool would."""
-    for point in sweep.points:
-        forms = [item.observation.normal_form() for item in sweep.observations]
-        plain = sample_plain(point.ensemble.normal_form(), forms, first, upto - first)
-        store.commit([_result(point.ensemble.key, plain, sweep.key, owner)])
+    forms = [item.observation.normal_form() for item in sweep.observations]
+    for begin in range(0, len(sweep.points), COMMITTED_AT_ONCE):
+        keyed = [(p.ensemble.key, p.ensemble.normal_form()) for p in sweep.points[begin : begin + COMMITTED_AT_ONCE]]
+        plain = ((key, sample_plain(form, forms, first, upto - first)) for key, form in keyed)
+        store.commit([_result(key, result, sweep.key, owner) for key, result in plain])
 
 
 def _result(ensemble: str, plain: dict[str, Any], sweep: str, owner: str) -> BatchResult:

@@ -132,9 +132,7 @@ class ExactChain:
             members = orbit(group, left, right)
             orbits[id(members)] = members
             weights[id(members)] += weight
-        self.law = {
-            group: weights[number] / len(members) for number, members in orbits.items() for group in members
-        }
+        self.law = {group: weights[number] / len(members) for number, members in orbits.items() for group in members}
 
     def moments(self, value: Callable[[Group], float]) -> tuple[float, float]:
         """Mean and variance of a function of the state."""

@@ -61,9 +61,7 @@ def test_all_roads_give_the_same_entropies(sites: int, periodic: bool, mixed: bo
     regions = regions if sites < 100 else random.Random(1).sample(regions, 60)
     count = 20 if sites < 100 else 2
     roads = [frozenset(Road), frozenset({Road.PREFIXES}), frozenset({Road.INTERVALS}), frozenset[Road]()]
-    results = [
-        run_plan(chain, KEY, 5, count, [1, 11, 20], plan(sites, mixed, regions, allowed)) for allowed in roads
-    ]
+    results = [run_plan(chain, KEY, 5, count, [1, 11, 20], plan(sites, mixed, regions, allowed)) for allowed in roads]
     for other in results[1:]:
         equal(results[0], other)
 

@@ -15,9 +15,7 @@ from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply,
 
 def final_state(sites: int, layers: int, periodic: bool, mixed: bool, rate: float) -> tuple[State, Lanes]:
     state, lanes = new_state(sites, mixed)
-    results = Results(
-        np.zeros((1, 0, 0), np.int32), np.zeros((1, layers), np.int32), np.zeros((1, layers), np.int32)
-    )
+    results = Results(np.zeros((1, 0, 0), np.int32), np.zeros((1, layers), np.int32), np.zeros((1, layers), np.int32))
     run_batch(
         state,
         new_desk(new_state(sites, mixed)[0]),

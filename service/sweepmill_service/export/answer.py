@@ -19,15 +19,17 @@ Build = Callable[[Store, str], Content]
 def table_answer(store: Store, key: str, kind: str, build: Build, accept: str | None, held: str | None) -> Response:
     """Raises Refusal (406) where no format is acceptable."""
     form = choose_format(accept)
-    numbers = store.table_version(key)
-    etag = entity_tag(kind, key, numbers, form)
-    headers = {"ETag": etag, "Vary": "Accept", "Cache-Control": "private, no-cache"}
-    if matches(held, etag):
-        return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=headers)
+    if held is not None:
+        etag = entity_tag(kind, key, store.table_version(key), form)
+        if matches(held, etag):
+            return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=_headers(etag))
     content = build(store, key)
-    if store.table_version(key) != numbers:  # sampled on while it was read: the tag would promise too much
-        headers = {"Vary": "Accept", "Cache-Control": "no-store"}
-    return StreamingResponse(WRITERS[form](content), headers=headers, media_type=MEDIA_TYPES[form])
+    etag = entity_tag(kind, key, content.version, form)
+    return StreamingResponse(WRITERS[form](content), headers=_headers(etag), media_type=MEDIA_TYPES[form])
+
+
+def _headers(etag: str) -> dict[str, str]:
+    return {"ETag": etag, "Vary": "Accept", "Cache-Control": "private, no-cache"}
 
 
 def entity_tag(kind: str, key: str, numbers: str, form: str) -> str:

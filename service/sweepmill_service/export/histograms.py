@@ -27,19 +27,14 @@ def histogram_content(store: Store, key: str) -> Content:
         for item, _, total in sampled(layout, entries):
             _add(rows, layout, ordinal, item, Accumulator.from_bytes(total).histogram)
         provenance.note(ordinal, entries, began, rows.count)
-    return Content(rows.schema, rows.finished(), provenance.metadata())
+    return Content(rows.schema, rows.finished(), provenance.metadata(), provenance.version())
 
 
 def _add(rows: Rows, layout: Layout, ordinal: int, item: NamedObservation, counts: CountRows | None) -> None:
     if counts is None:
         return
     places = layout.coordinates(ordinal, item)
-    constant = [*layout.axis_values(ordinal), *layout.labels[item.name]]
+    constant = (*layout.axis_values(ordinal), *layout.labels[item.name])
     occurrences = counts[:, 2:].sum(axis=1).tolist()
-    rows.extend(
-        constant,
-        [
-            (places[place].layer, places[place].position, value, number)
-            for (place, value), number in zip(counts[:, :2].tolist(), occurrences, strict=True)
-        ],
-    )
+    for (place, value), number in zip(counts[:, :2].tolist(), occurrences, strict=True):
+        rows.append((*constant, places[place].layer, places[place].position, value, number))

@@ -7,6 +7,7 @@ from sweepmill.accumulate import folds_for
 from sweepmill.revisions import all_revisions
 from sweepmill_service.export.layout import Layout
 from sweepmill_service.store import TableEntry
+from sweepmill_service.store.tables import Number, version_of
 
 
 class Provenance:
@@ -17,10 +18,12 @@ class Provenance:
         self.layout = layout
         self.frozen = frozen
         self.ensembles: list[dict[str, Any]] = []
+        self.numbers: list[Number] = []
 
     def note(self, ordinal: int, entries: list[TableEntry], began: int, ended: int) -> None:
         """The totals of one ensemble, which made the rows [began, ended)."""
         key = entries[0].ensemble_key
+        self.numbers += [Number(ordinal, one.observation_key, one.trajectories, one.met_by) for one in entries]
         self.ensembles.append(
             {
                 "key": key,
@@ -31,6 +34,10 @@ class Provenance:
                 "observations": {entry.observation_key: _total(entry) for entry in entries},
             }
         )
+
+    def version(self) -> str:
+        """What `table_version` gives while nothing more is sampled."""
+        return version_of(self.sweep, self.numbers)
 
     def metadata(self) -> dict[str, Any]:
         """Plain data. Only what a table is a function of: nothing about now or this machine."""
@@ -46,9 +53,9 @@ class Provenance:
 
     def _folds(self) -> dict[str, list[int]]:
         """Numbers of folds each observation's totals keep; several where sizes differ in coordinates."""
-        last = len(self.layout.sweep.ensembles)
+        shapes = {(e.sites, e.layers): i for i, e in enumerate(self.layout.sweep.ensembles)}
         return {
-            item.name: sorted({folds_for(len(self.layout.coordinates(i, item))) for i in range(last)})
+            item.name: sorted({folds_for(len(self.layout.coordinates(i, item))) for i in shapes.values()})
             for item in self.layout.sweep.observations
         }
 

@@ -5,7 +5,7 @@ import json
 from collections.abc import Collection, Iterator, Sequence
 from typing import Any, Literal, NamedTuple
 
-from sqlalchemy import Connection, bindparam, delete, exists, select, tuple_
+from sqlalchemy import Connection, bindparam, delete, exists, func, select, tuple_
 
 from sweepmill.accumulate import Accumulator
 from sweepmill.coordinates import coordinates
@@ -25,6 +25,7 @@ from sweepmill_service.store.members import (
 from sweepmill_service.store.moving import advance, place, save_sweeps, update_member
 from sweepmill_service.store.results import Outcome, Verdict
 
+KEPT_BYTES = 16_384  # a total at an unmet rung is kept for later sweeps up to this size
 Place = tuple[str, str, int]  # ensemble, observation, N
 
 
@@ -79,7 +80,8 @@ def _judge_round(connection: Connection, due: Sequence[_Due], known: Reaches, ou
     forms = _normal_forms(connection, due)
     verdicts = [_verdict(one, kept, forms) for one in due]
     settled = [one for one, verdict in zip(due, verdicts, strict=True) if verdict.met_by]
-    _freeze_totals(connection, settled, known)
+    _keep_totals(connection, settled, known)
+    _keep_totals(connection, [one for one in due if one not in settled], known, KEPT_BYTES)
     _save(connection, due, verdicts, kept)
     outcome.verdicts.extend(verdicts)
     outcome.settled_sweeps.update(
@@ -148,14 +150,19 @@ def _normal_forms(connection: Connection, due: Sequence[_Due]) -> dict[str, Any]
     return forms
 
 
-def _freeze_totals(connection: Connection, settled: Sequence[_Due], known: Reaches) -> None:
-    """Keep the totals at the N where ensembles settled; where N is the prefix they are copied from the total."""
-    pairs = {place[:2] for one in settled for place in one.places() if known[place[:2]].prefix == one.number}
+def _keep_totals(connection: Connection, due: Sequence[_Due], known: Reaches, largest: int | None = None) -> None:
+    """Keep totals at the N of these judgements, if they are not larger than ``largest`` bytes.
+
+    Where N is the prefix they are copied from the total; elsewhere they have been kept already.
+    """
+    pairs = {place[:2] for one in due for place in one.places() if known[place[:2]].prefix == one.number}
     columns = ("ensemble", "observation", "trajectories", "accumulator", "digest")
     for piece in chunks(sorted(pairs), 200):
         rows = select(*(total.c[name] for name in columns)).where(
             tuple_(total.c.ensemble, total.c.observation).in_(piece)
         )
+        if largest is not None:
+            rows = rows.where(func.length(total.c.accumulator) <= largest)
         connection.execute(insert_missing(connection, mark).from_select(columns, rows))
 
 
@@ -186,7 +193,10 @@ def frozen_digest(places: Iterator[Place], kept: dict[Place, Kept]) -> str:
 
 
 def _drop_marks(connection: Connection, ensembles: Sequence[str]) -> None:
-    """Forget totals at rungs that were judged and not met; what is frozen or still to be judged stays."""
+    """Forget large totals at rungs that were judged and not met; what is frozen or still to be judged stays.
+
+    Small ones stay as well: a later sweep with a laxer rule is then judged at the same N as if it had come first.
+    """
     mine = sweep_ensemble.c.ensemble == mark.c.ensemble
     frozen = exists().where(mine, sweep_ensemble.c.trajectories == mark.c.trajectories)
     awaited = exists().where(
@@ -196,4 +206,8 @@ def _drop_marks(connection: Connection, ensembles: Sequence[str]) -> None:
         sweep.c.key == sweep_ensemble.c.sweep,
         sweep.c.state != WITHDRAWN,
     )
-    connection.execute(delete(mark).where(mark.c.ensemble.in_(ensembles), ~frozen, ~awaited))
+    connection.execute(
+        delete(mark).where(
+            mark.c.ensemble.in_(ensembles), ~frozen, ~awaited, func.length(mark.c.accumulator) > KEPT_BYTES
+        )
+    )

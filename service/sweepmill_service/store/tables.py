@@ -1,15 +1,19 @@
 """The totals behind a table, in table order, read in short transactions."""
 
 import hashlib
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from typing import Any, NamedTuple
 
-from sqlalchemy import Connection, Engine, Row, case, func, select, tuple_
+from sqlalchemy import Column, Connection, Engine, Table, case, func, select, tuple_
 
 from sweepmill_service.schema import mark, sweep, sweep_ensemble, sweep_observation, total
 from sweepmill_service.store.errors import UnknownKey
 
-PAGE = 250  # totals held in memory at once
+FIRST_PAGE, LARGEST_PAGE = 100, 4000  # totals
+PAGE_BYTES = 32_000_000  # of totals held in memory at once
+
+
+Total = tuple[Any, ...]  # in the order of `_columns`
 
 
 class TableEntry(NamedTuple):
@@ -49,9 +53,9 @@ def sweep_observations(connection: Connection, key: str) -> list[str]:
 
 
 def _pages(engine: Engine, key: str, observations: list[str]) -> Iterator[TableEntry]:
-    size = max(1, PAGE // len(observations))
-    last = -1
+    last, page = -1, FIRST_PAGE
     while True:
+        size = max(1, page // len(observations))
         with engine.connect() as connection:
             members = _members(connection, key, last, size)
             totals = _totals(connection, members, observations)
@@ -61,6 +65,8 @@ def _pages(engine: Engine, key: str, observations: list[str]) -> Iterator[TableE
         if len(members) < size:
             return
         last = members[-1].ordinal
+        largest = max((len(row[3]) for row in (*totals.values(), *frozen.values())), default=1)
+        page = min(PAGE_BYTES // largest, LARGEST_PAGE)
 
 
 def _members(connection: Connection, key: str, last: int, size: int) -> list[_Member]:
@@ -71,43 +77,43 @@ def _members(connection: Connection, key: str, last: int, size: int) -> list[_Me
     return [_Member(*row) for row in rows]
 
 
-def _totals(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Row[Any]]:
+def _totals(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Total]:
     keys = [member.ensemble for member in members if member.met_by is None]
     if not keys:
         return {}
-    statement = select(total).where(total.c.ensemble.in_(keys), total.c.observation.in_(observations))
-    return {(row.ensemble, row.observation): row for row in connection.execute(statement)}
+    where = (total.c.ensemble.in_(keys), total.c.observation.in_(observations))
+    return {(row[0], row[1]): tuple(row) for row in connection.execute(select(*_columns(total)).where(*where))}
 
 
-def _frozen(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Row[Any]]:
+def _frozen(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Total]:
     pairs = [(member.ensemble, member.trajectories) for member in members if member.met_by is not None]
     if not pairs:
         return {}
     where = (tuple_(mark.c.ensemble, mark.c.trajectories).in_(pairs), mark.c.observation.in_(observations))
-    return {(row.ensemble, row.observation): row for row in connection.execute(select(mark).where(*where))}
+    return {(row[0], row[1]): tuple(row) for row in connection.execute(select(*_columns(mark)).where(*where))}
 
 
-def _entries(member: _Member, observations: list[str], totals: dict[tuple[str, str], Row[Any]]) -> Iterator[TableEntry]:
+def _columns(table: Table) -> list[Column[Any]]:
+    names = ("ensemble", "observation", "trajectories", "accumulator", "digest")
+    return [table.c[name] for name in names]
+
+
+def _entries(member: _Member, observations: list[str], totals: dict[tuple[str, str], Total]) -> Iterator[TableEntry]:
     for observation in observations:
         row = totals.get((member.ensemble, observation))
+        number, accumulator, digest = (0, None, None) if row is None else row[2:]
+        frozen = member.met_by is not None
         yield TableEntry(
-            ordinal=member.ordinal,
-            ensemble_key=member.ensemble,
-            observation_key=observation,
-            trajectories=0 if row is None else row.trajectories,
-            accumulator=None if row is None else row.accumulator,
-            digest=None if row is None else row.digest,
-            met_by=member.met_by,
-            frozen=member.met_by is not None,
+            member.ordinal, member.ensemble, observation, number, accumulator, digest, member.met_by, frozen
         )
 
 
 def table_version(connection: Connection, key: str) -> str:
-    """Digest over the N of every ensemble and observation: equal versions mean equal tables."""
+    """Version of the table as it is now."""
     members = sweep_ensemble.c
     number = case((members.met_by.is_(None), func.coalesce(total.c.trajectories, 0)), else_=members.trajectories)
     statement = (
-        select(members.ordinal, sweep_observation.c.ordinal, number, members.met_by)
+        select(members.ordinal, sweep_observation.c.observation, number, members.met_by)
         .join(sweep_observation, sweep_observation.c.sweep == members.sweep)
         .outerjoin(
             total,
@@ -116,9 +122,23 @@ def table_version(connection: Connection, key: str) -> str:
         .where(members.sweep == key)
         .order_by(members.ordinal, sweep_observation.c.ordinal)
     )
+    return version_of(key, (Number(*row) for row in connection.execute(statement)))
+
+
+class Number(NamedTuple):
+    """How many trajectories one entry of a table rests on."""
+
+    ordinal: int
+    observation_key: str
+    trajectories: int
+    met_by: str | None
+
+
+def version_of(key: str, numbers: Iterable[Number]) -> str:
+    """Digest over the N of every ensemble and observation: equal versions mean equal tables."""
     digest = hashlib.sha256(key.encode())
-    for row in connection.execute(statement):
-        digest.update(f"\n{row[0]}:{row[1]}:{row[2]}:{row[3]}".encode())
+    for one in dict.fromkeys(numbers):  # an observation under two names counts once
+        digest.update(f"\n{one.ordinal}:{one.observation_key}:{one.trajectories}:{one.met_by}".encode())
     return digest.hexdigest()
 
 
