@@ -21,7 +21,7 @@ serve: $(READY)
 
 test: $(READY)
 	@$(BIN)/python -m sweepmill_worker.warm
-	@$(BIN)/python -m pytest
+	@$(BIN)/python -m pytest -n 2 --dist loadfile
 
 lint: $(READY)
 	@$(BIN)/ruff check .
