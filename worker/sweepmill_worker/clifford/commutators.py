@@ -91,9 +91,7 @@ def gather(state: State, matrix: Matrix, lanes: Lanes) -> int:
 
 
 @part
-def clear_below(
-    state: State, matrix: Matrix, row: int, beyond: int, word: int, position: int, lanes: Lanes
-) -> None:
+def clear_below(state: State, matrix: Matrix, row: int, beyond: int, word: int, position: int, lanes: Lanes) -> None:
     """Add scratch row `row` to the later rows that have its lowest bit."""
     width = state.chunks * len(lanes)
     bit, nothing = bit_of(state, position, lanes), splat(np.uint64(0), lanes)

@@ -134,5 +134,3 @@ def rows_inside(desk: Desk, first: int, length: int) -> int:
     for row in range(len(desk.left)):
         inside += (desk.left[row] >= first) & (desk.right[row] < beyond)
     return inside
-
-

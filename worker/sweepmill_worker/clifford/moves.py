@@ -32,9 +32,7 @@ from sweepmill_worker.jit import part
 
 
 @part
-def image(
-    masks: Halves, at: int, x_left: Value, z_left: Value, x_right: Value, z_right: Value, lanes: Lanes
-) -> Value:
+def image(masks: Halves, at: int, x_left: Value, z_left: Value, x_right: Value, z_right: Value, lanes: Lanes) -> Value:
     """One new column of a gate: the sum of the old ones that the class's masks select."""
     return (
         (x_left & splat_half(item(masks, at), lanes))
@@ -122,9 +120,7 @@ def multiply(state: State, chunk: int, site: int, start: int, end: int, pivot: i
 
 
 @part
-def add_pivot(
-    state: State, chunk: int, rows: Value, first: int, beyond: int, pivot: int, lanes: Lanes
-) -> None:
+def add_pivot(state: State, chunk: int, rows: Value, first: int, beyond: int, pivot: int, lanes: Lanes) -> None:
     """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit."""
     bit, nothing = bit_of(state, pivot, lanes), splat(np.uint64(0), lanes)
     to = address(state, chunk, 0, lanes)
