@@ -184,15 +184,16 @@ def difference(answer: object) -> str | None:
 class LocalPool(_DaskPool):
     """Worker processes of this machine, one thread each, that end with this process."""
 
-    def __init__(self, workers: int, warm: Callable[[], None] | None = None) -> None:
+    def __init__(self, workers: int, sites: int = 1024) -> None:
+        """So many processes, with kernels compiled for chains of up to so many sites."""
         super().__init__()
         self._number = workers
-        self._warm = warm_kernels if warm is None else warm
+        self._sites = sites
         self._cluster: LocalCluster | None = None
 
     def open(self) -> None:
         """Compile the kernels once, then start the workers, which only load them."""
-        self._warm()
+        warm_kernels(self._sites)
         dask.config.set(CONFIGURATION)
         quiet()
         try:
@@ -267,8 +268,8 @@ class ExternalPool(_DaskPool):
         )
 
 
-def warm_kernels() -> None:
-    """Compile all kernels in one process of their own: compiling in several at once can break the cache."""
+def warm_kernels(sites: int) -> None:
+    """Compile the kernels in one process of their own: compiling in several at once can break the cache."""
     command = [sys.executable, "-m", "sweepmill_worker.warm"]
     environment = os.environ | SINGLE_THREADED
     done = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)  # noqa: S603 fixed words
