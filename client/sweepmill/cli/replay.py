@@ -33,7 +33,7 @@ def replay(
         theirs = client.trajectory(record.key, k)
     here = trajectory_values(_ensemble(record), _observations(theirs), k)
     rows = [row for local, remote in zip(here, theirs.observations, strict=True) for row in _compared(local, remote)]
-    print(aligned(("quantity", "layer", "position", "here", "service", ""), rows))
+    print(aligned(("quantity", "region", "layer", "position", "here", "service", ""), rows))
     if any(row[-1] for row in rows):
         print(f"trajectory {k} of ensemble {short(record.key)} is different here")
         raise typer.Exit(1)
@@ -57,11 +57,12 @@ def _observations(trajectory: Trajectory) -> list[Any]:
 
 def _compared(local: dict[str, Any], remote: TrajectoryValue) -> list[list[Any]]:
     """One row per coordinate; the last cell says where the two differ. Values are equal only bit for bit."""
-    quantity = remote.observation["quantity"]
+    observation = observation_from_normal_form(remote.observation)
     absent: dict[str, Any] = {}
     return [
         [
-            quantity,
+            observation.quantity,
+            observation.region_label(),
             here.get("layer"),
             here.get("position"),
             _value(here),
