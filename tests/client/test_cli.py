@@ -20,6 +20,13 @@ from sweepmill.cli import main
 from sweepmill.cli.application import app
 
 _replicates = count(5000)
+# The command line as in a terminal: a test run in the background hands down an ignored SIGINT.
+INTERRUPTIBLE = """
+import signal
+signal.signal(signal.SIGINT, signal.default_int_handler)
+from sweepmill.cli import main
+main()
+"""
 COMMANDS = [
     *("check", "submit", "list", "watch", "table", "withdraw"),
     *("replay", "pool", "demo", "serve", "dispatch"),
@@ -279,7 +286,7 @@ def test_the_pool_is_shown(served: Run) -> None:
 def test_an_interrupt_ends_the_watching_and_not_the_sweep(served: Run, service_url: str, tmp_path: Path) -> None:
     path = written(tmp_path, trajectories=9_000_000)
     variables = environment(url=service_url, owner="mara")
-    command = [sys.executable, "-m", "sweepmill", "submit", str(path), "--watch"]
+    command = [sys.executable, "-c", INTERRUPTIBLE, "submit", str(path), "--watch"]
     with subprocess.Popen(
         command, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True, env=variables
     ) as watching:
