@@ -24,6 +24,7 @@ from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
 from sweepmill.errors import Fault
 
 MOST_ENSEMBLES = 1_000_000  # a guard against slips of the pen; servers take fewer
+SMALLEST_RATE = 1e-6  # the kernel's resolution, 2.3e-10, is 2e-4 of it
 Values = list[tuple[str, Any]]
 
 
@@ -129,6 +130,8 @@ def _range_fault(name: str, value: Any) -> str | None:
         return f"a chain has an integer number of sites, at least 2, got {value}"
     if name == "measurement_rate" and not 0 <= value <= 1:
         return f"a rate is a probability between 0 and 1, got {value}"
+    if name == "measurement_rate" and 0 < value < SMALLEST_RATE:
+        return f"a rate is 0 or at least {SMALLEST_RATE:g} (it is resolved to 2^-32), got {value}"
     if name == "layers" and not isinstance(value, PerSite) and (value % 1 or value < 1):
         return f"must be an integer, at least 1, got {value}"
     if name == "replicate" and (value % 1 or value < 0):

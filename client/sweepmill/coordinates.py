@@ -1,10 +1,12 @@
 """The coordinates of an observation on an ensemble: one row of the table each."""
 
+from math import isqrt
 from typing import Any, NamedTuple
 
 from sweepmill.accumulate import folds_for
+from sweepmill.counts import VARIED_FROM
 from sweepmill.ensemble import Ensemble
-from sweepmill.observation import Entropy
+from sweepmill.observation import Entropy, RecordBits, wants_histogram
 from sweepmill.times import readings
 
 
@@ -37,9 +39,24 @@ def coordinates(ensemble: Ensemble, observation: Any) -> tuple[Coordinate, ...]:
 
 
 def accumulator_bytes(ensemble: Ensemble, observation: Any) -> int:
-    """Upper estimate of the size of one total, histograms apart."""
+    """Upper estimate of the size of one total: sums, folds, tally, and the histogram if one is kept."""
     times = len(readings(observation.at, ensemble.layers))
-    count = times * len(positions(ensemble.sites, observation))
+    places = positions(ensemble.sites, observation)
+    count = times * len(places)
     components: int = observation.COMPONENTS
-    per_coordinate = components * (3 + folds_for(count)) + components * (components + 1) // 2
-    return 8 * count * per_coordinate
+    folds = folds_for(count)
+    sums = components * (3 + folds) + components * (components + 1) // 2
+    tally = VARIED_FROM * (components + 2)  # fewer than 30 trajectories differ, each by a value of its own
+    bins = times * sum(_values(ensemble, observation, place) for place in places)
+    histogram = bins * (2 + folds) if wants_histogram(observation) else 0
+    return 8 * (count * (sums + tally) + histogram + folds) + count + 64
+
+
+def _values(ensemble: Ensemble, observation: Any, place: int | None) -> int:
+    """How many values a single reading takes."""
+    if isinstance(observation, RecordBits):
+        # a sum of sites x layers outcomes scatters like its square root: six standard deviations to either side
+        return 12 * isqrt(ensemble.sites * ensemble.layers) + 1
+    if place is not None:
+        return min(place, ensemble.sites - place) + 1
+    return ensemble.sites + 1

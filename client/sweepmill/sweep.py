@@ -98,7 +98,7 @@ class Sweep(BaseModel):
     def normalized(self) -> dict[str, Any]:
         """Axes expanded, ``per_site`` resolved where there is one size, defaults omitted, observations sorted."""
         return {
-            "circuit": [_normal_block(block) for block in self.circuit],
+            "circuit": [_normal_block(block, self.stop.trajectories) for block in self.circuit],
             "observe": [_normal_observation(item) for item in self.observations],
             "stop": self.stop.normal_form(),
         }
@@ -182,7 +182,7 @@ def _normal_observation(item: NamedObservation) -> dict[str, Any]:
     return form if item.name == item.observation.quantity else form | {"name": item.name}
 
 
-def _normal_block(block: CircuitBlock) -> dict[str, Any]:
+def _normal_block(block: CircuitBlock, cap: int) -> dict[str, Any]:
     form: dict[str, Any] = {"family": block.family}
     sites = [int(value) for _, value in located_values(block.sites, "")]
     for name, default in FAMILY_PARAMETERS[block.family].items():
@@ -191,7 +191,7 @@ def _normal_block(block: CircuitBlock) -> dict[str, Any]:
             values = [_normal_layers(value, sites) for value in values]
         if values != [default]:
             form[name] = values[0] if len(values) == 1 else values
-    if block.trajectories is not None:
+    if block.trajectories not in (None, cap):
         form["trajectories"] = block.trajectories
     return form
 

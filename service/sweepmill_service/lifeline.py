@@ -51,9 +51,12 @@ class KernelLoader(WorkerPlugin):  # type: ignore[misc]
 
     name = "sweepmill-kernel-loader"
 
+    def __init__(self, sites: int) -> None:
+        self.sites = sites
+
     def setup(self, worker: Any) -> None:
         """Compiles only what the cache does not hold."""
-        warm()
+        warm(self.sites)
 
 
 def _watch(parent: int) -> None:

@@ -215,7 +215,7 @@ class LocalPool(_DaskPool):
         )
         self._connect(self._cluster)
         self.client.register_plugin(Lifeline(os.getpid()))
-        self.client.register_plugin(KernelLoader())
+        self.client.register_plugin(KernelLoader(self._sites))
 
     def close(self) -> None:
         """End the worker processes."""
@@ -270,7 +270,7 @@ class ExternalPool(_DaskPool):
 
 def warm_kernels(sites: int) -> None:
     """Compile the kernels in one process of their own: compiling in several at once can break the cache."""
-    command = [sys.executable, "-m", "sweepmill_worker.warm"]
+    command = [sys.executable, "-m", "sweepmill_worker.warm", "--sites-up-to", str(sites)]
     environment = os.environ | SINGLE_THREADED
     done = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)  # noqa: S603 fixed words
     if done.returncode:

@@ -108,6 +108,8 @@ def test_spelled_out_defaults_do_not_change_the_key() -> None:
     spelled["circuit"] |= {"boundary": "periodic", "initial_state": ["zeros"], "replicate": 0}
     spelled["observe"][0] |= {"name": "entropy", "region": "half", "at": "last-cell", "histogram": False}
     assert Sweep.parse(spelled).key == Sweep.parse(small()).key
+    spelled["circuit"]["trajectories"] = 300  # the block's own cap, equal to the common one
+    assert Sweep.parse(spelled).key == Sweep.parse(small()).key
 
 
 def test_the_order_of_observations_rules_and_regions_does_not_change_the_key() -> None:

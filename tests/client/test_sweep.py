@@ -126,6 +126,7 @@ def test_faults_between_fields_name_what_would_pass() -> None:
             "circuit.measurement_rate",
             "at most 100000 values",
         ),
+        ({"circuit__measurement_rate": 1e-10}, "circuit.measurement_rate", "0 or at least 1e-06"),
         ({"circuit__layers": {"per_site": 0.3}}, "circuit.layers", "must be an integer"),
         ({"circuit__layers": 0}, "circuit.layers", "at least 1"),
         ({"circuit__layers": 2.5}, "circuit.layers", "must be an integer or { per_site = n }"),

@@ -164,6 +164,20 @@ def test_work_under_way_counts_so_that_nobody_fills_the_window_first() -> None:
     assert Counter(choose(plan).owner for _ in range(4)) == {"ada": 2, "bob": 2}
 
 
+@pytest.fixture
+def _no_common_marks(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("sweepmill_service.plan.entries.WORTH_KEEPING", float("inf"))
+
+
+def test_batches_end_at_common_marks_where_a_total_is_worth_keeping() -> None:
+    costly = plan_of((sweep_info(), [ensemble(cap=4000, pace=0.01)]))
+    ends = {task.end for task in choose_all(costly)}
+    assert {200, 800, 3200} <= ends
+    cheap = plan_of((sweep_info(), [ensemble(cap=4000, pace=1e-5)]))
+    assert not {200, 800, 3200} & {task.end for task in choose_all(cheap, threads=1)}
+
+
+@pytest.mark.usefixtures("_no_common_marks")
 def test_batches_start_short_grow_in_steps_and_are_bounded() -> None:
     plan = plan_of((sweep_info(), [ensemble(cap=1_000_000, pace=None)]))
     seconds = []
@@ -190,6 +204,7 @@ def test_a_slow_trajectory_is_a_batch_of_its_own() -> None:
     assert choose(plan_of((sweep_info(), [ensemble(pace=60.0)]))).count == 1
 
 
+@pytest.mark.usefixtures("_no_common_marks")
 def test_near_the_end_of_a_sweep_the_rest_is_shared_between_threads() -> None:
     plan = plan_of((sweep_info(), [ensemble(cap=400, pace=0.01)]))
     seconds = [task.seconds for task in choose_all(plan, threads=4)]

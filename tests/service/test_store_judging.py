@@ -142,6 +142,17 @@ def test_a_sweep_submitted_after_its_trajectories_were_sampled_settles_without_s
     assert store.sweep_status(short.key).state == "settled"
 
 
+def test_a_smaller_cap_asked_for_later_is_met_at_a_common_mark_near_it(store: Store) -> None:
+    long, short = small_sweep(rates=1, cap=900), small_sweep(rates=1, cap=150)
+    store.submit(long, "ada")
+    sample_to(store, long, 200, 800, 900)
+    (one,), _ = keys_of(long)
+    assert marks(store, one) == [200, 800, 900]
+    store.submit(short, "bob")
+    store.judge(store.due_ensembles(short.key))
+    assert store.progress(short.key).ensembles[0].trajectories == 200
+
+
 def test_an_observation_added_later_waits_for_the_common_number(store: Store) -> None:
     sweep = small_sweep(rates=1, cap=40)
     store.submit(sweep, "ada")

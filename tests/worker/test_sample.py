@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 
 from support.specs import small
 from sweepmill.accumulate import Accumulator, merged
-from sweepmill.coordinates import coordinates
+from sweepmill.coordinates import accumulator_bytes, coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import Observation
 from sweepmill.statistics import summarize
@@ -167,6 +167,23 @@ def test_without_measurements_outcomes_are_undefined_and_with_all_measured_sites
     silent, product = (point.ensemble for point in sweep.points)
     assert np.isnan(summarize(one(silent, randomness, 50), coordinates(silent, randomness))[0].mean)
     assert summarize(one(product, entropy, 50), coordinates(product, entropy))[0].mean == 0
+
+
+@pytest.mark.parametrize("count", [29, 400])
+def test_totals_are_not_larger_than_predicted(count: int) -> None:
+    observe = [
+        {"quantity": "entropy", "region": "every-cut", "histogram": True},
+        {"quantity": "entropy", "name": "series", "at": {"every": 1, "single_layers": True}},
+        {"quantity": "tripartite-information", "average_translations": True, "histogram": True},
+        {"quantity": "record-bits", "histogram": True, "at": {"every": 2}},
+        {"quantity": "outcome-randomness", "at": [1, 5]},
+    ]
+    sweep = Sweep.parse(small(circuit__sites=64, circuit__measurement_rate=[0.1, 0.4], observe=observe))
+    for point in sweep.points:
+        observations = [item.observation for item in sweep.observations]
+        totals = sample(point.ensemble, observations, 0, count).accumulators
+        for item in observations:
+            assert totals[item.key].nbytes <= accumulator_bytes(point.ensemble, item)
 
 
 @pytest.mark.parametrize(("first", "count"), [(-1, 5), (0, 0), (3, -2)])

@@ -4,9 +4,10 @@ from collections.abc import Iterable
 from dataclasses import dataclass, field
 
 from sweepmill_service.plan.costs import Calibration
-from sweepmill_service.plan.marks import Reach, ladder, next_mark, next_rung
+from sweepmill_service.plan.marks import Reach, common_mark, ladder, next_mark, next_rung
 from sweepmill_service.plan.task import Task
 
+WORTH_KEEPING = 1.0  # core-seconds in a total: less is sampled again sooner than a batch is cut for it
 NOTHING = Reach(0, frozenset())
 
 
@@ -105,7 +106,9 @@ class Entry:
 
     def cut(self, first: int) -> int | None:
         """The next N after ``first`` at which a total must be kept: no task crosses it."""
-        ahead = [
+        common = common_mark(first)
+        ahead = [common] if common * self.seconds_per_trajectory >= WORTH_KEEPING else []
+        ahead += [
             step
             for member in self.members.values()
             for step in (self.next_judged(member), *member.ladder)

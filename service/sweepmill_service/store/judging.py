@@ -14,6 +14,7 @@ from sweepmill.observation import observation_from_normal_form
 from sweepmill.statistics import needed_trajectories, rule_met
 from sweepmill_service.schema import ensemble, mark, observation, sweep, sweep_ensemble, total
 from sweepmill_service.store.common import WITHDRAWN, chunks, insert_missing
+from sweepmill_service.store.folding import KEPT_BYTES
 from sweepmill_service.store.members import (
     Member,
     Reaches,
@@ -25,7 +26,6 @@ from sweepmill_service.store.members import (
 from sweepmill_service.store.moving import advance, place, save_sweeps, update_member
 from sweepmill_service.store.results import Outcome, Verdict
 
-KEPT_BYTES = 16_384  # a total at an unmet rung is kept for later sweeps up to this size
 Place = tuple[str, str, int]  # ensemble, observation, N
 
 
