@@ -63,7 +63,7 @@ class NumberRange(BaseModel):
 
     def expand(self) -> tuple[float, ...]:
         """The values, in order. Raises ValueError for a range that does not say how to run from end to end."""
-        first, last = Decimal(str(self.first)), Decimal(str(self.last))
+        first, last = Decimal(str(normal_number(self.first))), Decimal(str(normal_number(self.last)))
         if (self.points is None) == (self.step is None):
             raise ValueError("a range has either 'points' or 'step'")
         if last < first:

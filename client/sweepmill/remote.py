@@ -79,9 +79,11 @@ class RemoteSweep:
     def download(self, path: str | Path) -> Path:
         """Write the table to a file whose suffix gives the format: .csv, .json, .parquet or .arrow.
 
-        The file appears complete or not at all. Raises ValueError for another suffix.
+        The file appears complete or not at all. Raises ValueError for another suffix, and NotADirectoryError.
         """
         path = Path(path)
+        if not path.parent.is_dir():
+            raise NotADirectoryError(f"{path.parent} is not a directory")
         accept = {"Accept": media_type(path)}
         self._transport.retry.run(lambda: self._write(path, accept))
         return path

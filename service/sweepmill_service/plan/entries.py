@@ -4,7 +4,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, field
 
 from sweepmill_service.plan.costs import Calibration
-from sweepmill_service.plan.marks import Reach, common_mark, ladder, next_mark, next_rung
+from sweepmill_service.plan.marks import COMMON_MARKS, Reach, ladder, next_mark, next_rung
 from sweepmill_service.plan.task import Task
 
 WORTH_KEEPING = 1.0  # core-seconds in a total: less is sampled again sooner than a batch is cut for it
@@ -106,8 +106,8 @@ class Entry:
 
     def cut(self, first: int) -> int | None:
         """The next N after ``first`` at which a total must be kept: no task crosses it."""
-        common = common_mark(first)
-        ahead = [common] if common * self.seconds_per_trajectory >= WORTH_KEEPING else []
+        worth = WORTH_KEEPING / self.seconds_per_trajectory
+        ahead = [number for number in COMMON_MARKS if number > first and number >= worth][:1]
         ahead += [
             step
             for member in self.members.values()

@@ -22,18 +22,8 @@ class Reach(NamedTuple):
         return self.prefix == number or number in self.marks
 
 
-COMMON_FIRST, COMMON_FACTOR = 200, 4
-
-
-def common_mark(above: int) -> int:
-    """Smallest N = 200, 800, 3200, … beyond ``above``: where small totals are kept whoever samples.
-
-    A later sweep with a smaller cap or a laxer rule finds a total not far above the N it asks for.
-    """
-    number = COMMON_FIRST
-    while number <= above:
-        number *= COMMON_FACTOR
-    return number
+# Where totals are kept whoever samples: a later sweep with a smaller cap or a laxer rule finds one near its N.
+COMMON_MARKS = tuple(200 * 4**step for step in range(20))
 
 
 @lru_cache(maxsize=4096)

@@ -8,12 +8,11 @@ from typing import Any
 from sqlalchemy import Connection, bindparam, select, tuple_, update
 
 from sweepmill.accumulate import Accumulator
-from sweepmill_service.plan.marks import common_mark
+from sweepmill_service.plan.marks import COMMON_MARKS
 from sweepmill_service.schema import batch, mark, total
 from sweepmill_service.store.classify import Pair, Ranges
 from sweepmill_service.store.common import chunks, insert_all, replace_all
 
-KEPT_BYTES = 16_384  # a total that nobody awaits is kept for later sweeps up to this size
 Blobs = dict[tuple[str, str, int], bytes]
 
 
@@ -29,7 +28,7 @@ def fold(
 ) -> dict[Pair, list[int]]:
     """Extend totals by every batch that follows without a gap; returns the firsts folded, by pair.
 
-    A total about to leave an N of ``wanted``, or a small one a common mark, is kept there.
+    A total about to leave an N of ``wanted``, or a common mark, is kept there.
     """
     chains = {pair: chain for pair, one in ranges.items() if (chain := one.chain())}
     totals = _totals(connection, list(chains))
@@ -55,10 +54,8 @@ def _fold_one(
     place = {"ensemble": ensemble, "observation": observation}
     sum_so_far = None if start is None else Accumulator.from_bytes(start)
     for first in chain:
-        if sum_so_far is not None and (first in wanted or common_mark(first - 1) == first):
-            content = _content(sum_so_far, first)
-            if first in wanted or len(content["accumulator"]) <= KEPT_BYTES:
-                work.marks.append(place | content)
+        if sum_so_far is not None and (first in wanted or first in COMMON_MARKS):
+            work.marks.append(place | _content(sum_so_far, first))
         if first in ranges.fresh:
             data = ranges.fresh[first].accumulators[observation]
         else:

@@ -12,9 +12,9 @@ from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.statistics import needed_trajectories, rule_met
+from sweepmill_service.plan.marks import COMMON_MARKS
 from sweepmill_service.schema import ensemble, mark, observation, sweep, sweep_ensemble, total
 from sweepmill_service.store.common import WITHDRAWN, chunks, insert_missing
-from sweepmill_service.store.folding import KEPT_BYTES
 from sweepmill_service.store.members import (
     Member,
     Reaches,
@@ -26,6 +26,7 @@ from sweepmill_service.store.members import (
 from sweepmill_service.store.moving import advance, place, save_sweeps, update_member
 from sweepmill_service.store.results import Outcome, Verdict
 
+KEPT_BYTES = 16_384  # a total at an unmet rung is kept for later sweeps up to this size
 Place = tuple[str, str, int]  # ensemble, observation, N
 
 
@@ -206,8 +207,5 @@ def _drop_marks(connection: Connection, ensembles: Sequence[str]) -> None:
         sweep.c.key == sweep_ensemble.c.sweep,
         sweep.c.state != WITHDRAWN,
     )
-    connection.execute(
-        delete(mark).where(
-            mark.c.ensemble.in_(ensembles), ~frozen, ~awaited, func.length(mark.c.accumulator) > KEPT_BYTES
-        )
-    )
+    large = (func.length(mark.c.accumulator) > KEPT_BYTES, mark.c.trajectories.not_in(COMMON_MARKS))
+    connection.execute(delete(mark).where(mark.c.ensemble.in_(ensembles), ~frozen, ~awaited, *large))
