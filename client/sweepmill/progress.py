@@ -34,7 +34,8 @@ def sentence(status: SweepStatus) -> str:
         f"{count(status.trajectories)} trajectories",
     ]
     if status.state in ("waiting", "sampling") and status.seconds_left is not None:
-        parts.append(f"about {duration(status.seconds_left)} left")
+        left = duration(status.seconds_left)
+        parts.append(f"{left} left" if left.startswith("under") else f"about {left} left")
     return ", ".join(parts) + (f" ({status.reason})" if status.reason else "")
 
 
