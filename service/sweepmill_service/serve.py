@@ -2,7 +2,6 @@
 
 import asyncio
 import contextlib
-import gc
 import json
 import logging
 import os
@@ -23,7 +22,6 @@ READY_POLL_SECONDS = 0.05
 DISPATCH_POLL_SECONDS = 0.2
 STOP_SIGNALS = (signal.SIGTERM, signal.SIGINT)
 CONNECTIONS_WAIT_SECONDS = 5
-COLLECTIONS = (50_000, 20, 50)  # a table makes many objects and no cycles: collecting took a quarter of its time
 log = logging.getLogger(__name__)
 
 
@@ -34,7 +32,6 @@ class CannotServe(SweepmillError):
 def serve(settings: Settings) -> int:
     """Serve until SIGTERM or SIGINT; returns 0 after a clean stop. Raises CannotServe."""
     configure_logs(settings)
-    gc.set_threshold(*COLLECTIONS)
     try:
         listener = listen(settings.host, settings.port)
     except OSError as error:

@@ -1,7 +1,9 @@
 """The HTTP answer with a table: format by Accept, a validator, and 304 for a copy that is current."""
 
+import gc
 import hashlib
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from http import HTTPStatus
 from importlib.metadata import version
 
@@ -23,9 +25,20 @@ def table_answer(store: Store, key: str, kind: str, build: Build, accept: str | 
         etag = entity_tag(kind, key, store.table_version(key), form)
         if matches(held, etag):
             return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=_headers(etag))
-    content = build(store, key)
+    with _no_collections():
+        content = build(store, key)
     etag = entity_tag(kind, key, content.version, form)
     return StreamingResponse(WRITERS[form](content), headers=_headers(etag), media_type=MEDIA_TYPES[form])
+
+
+@contextmanager
+def _no_collections() -> Iterator[None]:
+    """A large table makes a million objects and no cycles: looking for some took a third of its time."""
+    gc.disable()
+    try:
+        yield
+    finally:
+        gc.enable()
 
 
 def _headers(etag: str) -> dict[str, str]:

@@ -4,7 +4,7 @@ import hashlib
 from collections.abc import Iterable, Iterator
 from typing import Any, NamedTuple
 
-from sqlalchemy import Column, Connection, Engine, Table, case, func, select, tuple_
+from sqlalchemy import Column, Connection, Engine, Table, case, func, select
 
 from sweepmill_service.schema import mark, sweep, sweep_ensemble, sweep_observation, total
 from sweepmill_service.store.errors import UnknownKey
@@ -58,8 +58,8 @@ def _pages(engine: Engine, key: str, observations: list[str]) -> Iterator[TableE
         size = max(1, page // len(observations))
         with engine.connect() as connection:
             members = _members(connection, key, last, size)
-            totals = _totals(connection, members, observations)
-            frozen = _frozen(connection, members, observations)
+            totals = _totals(connection, key, members, observations, frozen=False)
+            frozen = _totals(connection, key, members, observations, frozen=True)
         for member in members:
             yield from _entries(member, observations, totals if member.met_by is None else frozen)
         if len(members) < size:
@@ -77,20 +77,21 @@ def _members(connection: Connection, key: str, last: int, size: int) -> list[_Me
     return [_Member(*row) for row in rows]
 
 
-def _totals(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Total]:
-    keys = [member.ensemble for member in members if member.met_by is None]
-    if not keys:
+def _totals(
+    connection: Connection, key: str, members: list[_Member], observations: list[str], frozen: bool
+) -> dict[tuple[str, str], Total]:
+    """Totals of a page of members by ensemble and observation: kept ones of the settled, current ones of the others."""
+    if not any((member.met_by is not None) == frozen for member in members):
         return {}
-    where = (total.c.ensemble.in_(keys), total.c.observation.in_(observations))
-    return {(row[0], row[1]): tuple(row) for row in connection.execute(select(*_columns(total)).where(*where))}
-
-
-def _frozen(connection: Connection, members: list[_Member], observations: list[str]) -> dict[tuple[str, str], Total]:
-    pairs = [(member.ensemble, member.trajectories) for member in members if member.met_by is not None]
-    if not pairs:
-        return {}
-    where = (tuple_(mark.c.ensemble, mark.c.trajectories).in_(pairs), mark.c.observation.in_(observations))
-    return {(row[0], row[1]): tuple(row) for row in connection.execute(select(*_columns(mark)).where(*where))}
+    source, mine = (mark if frozen else total), sweep_ensemble.c
+    same = source.c.ensemble == mine.ensemble
+    statement = (
+        select(*_columns(source))
+        .join(sweep_ensemble, same & (source.c.trajectories == mine.trajectories) if frozen else same)
+        .where(mine.sweep == key, mine.ordinal.between(members[0].ordinal, members[-1].ordinal))
+        .where(mine.met_by.is_not(None) if frozen else mine.met_by.is_(None), source.c.observation.in_(observations))
+    )
+    return {(row[0], row[1]): tuple(row) for row in connection.execute(statement)}
 
 
 def _columns(table: Table) -> list[Column[Any]]:
