@@ -18,10 +18,10 @@ def narrow(array: IntArray) -> IntArray:
     """The same numbers as int64 if they fit, else as Python integers. Raises AccumulatorOverflow beyond 127 bits."""
     if array.dtype != object:
         return array.astype(np.int64, copy=False)
-    largest = max((abs(int(value)) for value in array.flat), default=0)
-    if largest < _INT64_LIMIT:
+    least, most = min(array.flat, default=0), max(array.flat, default=0)
+    if -_INT64_LIMIT <= least and most < _INT64_LIMIT:
         return array.astype(np.int64)
-    if largest >= _WIDE_LIMIT:
+    if least < -_WIDE_LIMIT or most >= _WIDE_LIMIT:
         raise AccumulatorOverflow("a sum needs more than 127 bits")
     return array
 

@@ -33,7 +33,7 @@ def test_sums_squares_and_folds_are_exact_integers_of_any_size(values: np.ndarra
     pairs = [(i, j) for i in range(components) for j in range(i, components)]
     assert total.sums.tolist() == exact.sum(axis=0).tolist()
     assert total.products.T.tolist() == [(exact[..., i] * exact[..., j]).sum(axis=0).tolist() for i, j in pairs]
-    assert total.fold_sums.sum(axis=0).tolist() == total.sums.tolist()
+    assert total.fold_sums.astype(object).sum(axis=0).tolist() == total.sums.tolist()  # int64 would wrap here
     assert int(total.fold_counts.sum()) == total.count == len(values)
     for k, row in enumerate(exact, start=first):
         assert total.fold_sums[k % 64].tolist() == row.tolist()  # at most 12 trajectories: one in a fold
@@ -75,6 +75,13 @@ def test_sums_beyond_64_bits_stay_exact_and_beyond_127_bits_are_refused() -> Non
     with pytest.raises(AccumulatorOverflow):
         total.merge(total)  # 2^127 is the first sum of squares that does not fit
     assert add(narrow(np.array([2**63 - 1])), np.array([1])).tolist() == [2**63]
+
+
+def test_the_least_64_bit_integer_has_one_spelling_however_it_came_about() -> None:
+    half = np.array([-(2**62)])
+    by_machine, by_python = add(half, half), narrow(half.astype(object) + half.astype(object))
+    assert by_machine.tolist() == by_python.tolist() == [-(2**63)]
+    assert by_machine.dtype == by_python.dtype == np.int64
 
 
 def test_a_sum_that_fits_again_has_one_spelling() -> None:
