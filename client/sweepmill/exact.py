@@ -19,7 +19,7 @@ def narrow(array: IntArray) -> IntArray:
     if array.dtype != object:
         return array.astype(np.int64, copy=False)
     least, most = min(array.flat, default=0), max(array.flat, default=0)
-    if -_INT64_LIMIT <= least and most < _INT64_LIMIT:
+    if least >= -_INT64_LIMIT and most < _INT64_LIMIT:
         return array.astype(np.int64)
     if least < -_WIDE_LIMIT or most >= _WIDE_LIMIT:
         raise AccumulatorOverflow("a sum needs more than 127 bits")
