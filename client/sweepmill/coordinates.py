@@ -1,12 +1,25 @@
 """The coordinates of an observation on an ensemble: one row of the table each."""
 
+from collections import Counter
+from functools import lru_cache
 from math import isqrt
 from typing import Any, NamedTuple
 
 from sweepmill.accumulate import folds_for
 from sweepmill.counts import VARIED_FROM
 from sweepmill.ensemble import Ensemble
-from sweepmill.observation import Entropy, RecordBits, wants_histogram
+from sweepmill.observation import (
+    ClusterOrder,
+    Entropy,
+    GeneratorLengths,
+    Negativity,
+    PauliExpectation,
+    RecordBits,
+    ReferenceEntropy,
+    SiteEnvironmentInformation,
+    wants_histogram,
+)
+from sweepmill.observation.distances import distances
 from sweepmill.times import readings
 
 
@@ -18,11 +31,28 @@ class Coordinate(NamedTuple):
     scale: int
 
 
-def positions(sites: int, observation: Any) -> tuple[int | None, ...]:
-    """Position of each coordinate at one time: the cut x of ``every-cut``, else a single None."""
-    if isinstance(observation, Entropy) and observation.region == "every-cut":
-        return tuple(range(1, sites))
-    return (None,)
+class Place(NamedTuple):
+    """A coordinate at one time: its position, and how many readings it sums (or the unit it counts in)."""
+
+    position: int | None
+    readings: int
+
+
+def places(ensemble: Ensemble, observation: Any) -> tuple[Place, ...]:
+    """The coordinates of an observation at one time and in one layer."""
+    sites, averaged = ensemble.sites, translations(ensemble.sites, observation)
+    match observation:
+        case Entropy(region="every-interval"):
+            return tuple(Place(n, averaged if averaged > 1 else sites - n + 1) for n in range(1, sites + 1))
+        case Entropy(region="every-cut") | Negativity(region="every-cut"):
+            return tuple(Place(cut, averaged) for cut in range(1, sites))
+        case SiteEnvironmentInformation():
+            return _depths(observation.region, sites, ensemble.periodic)
+        case GeneratorLengths():
+            return tuple(Place(length, 1) for length in range(1, sites + 1))
+        case ClusterOrder():
+            return (Place(None, sites * sites),)
+    return (Place(None, averaged),)
 
 
 def translations(sites: int, observation: Any) -> int:
@@ -32,31 +62,42 @@ def translations(sites: int, observation: Any) -> int:
 
 def coordinates(ensemble: Ensemble, observation: Any) -> tuple[Coordinate, ...]:
     """All coordinates, times first: the order of every accumulator."""
-    offsets = translations(ensemble.sites, observation)
-    places = positions(ensemble.sites, observation)
-    times = readings(observation.at, ensemble.layers)
-    return tuple(Coordinate(t.layer, place, offsets * len(t.layers)) for t in times for place in places)
+    at_one_time = places(ensemble, observation)
+    times = readings(observation.at, ensemble.layers, ensemble.cell)
+    return tuple(Coordinate(t.layer, p.position, p.readings * len(t.layers)) for t in times for p in at_one_time)
 
 
 def accumulator_bytes(ensemble: Ensemble, observation: Any) -> int:
     """Upper estimate of the size of one total: sums, folds, tally, and the histogram if one is kept."""
-    times = len(readings(observation.at, ensemble.layers))
-    places = positions(ensemble.sites, observation)
-    count = times * len(places)
+    times = len(readings(observation.at, ensemble.layers, ensemble.cell))
+    at_one_time = places(ensemble, observation)
+    count = times * len(at_one_time)
     components: int = observation.COMPONENTS
     folds = folds_for(count)
     sums = components * (3 + folds) + components * (components + 1) // 2
     tally = VARIED_FROM * (components + 2)  # fewer than 30 trajectories differ, each by a value of its own
-    bins = times * sum(_values(ensemble, observation, place) for place in places)
+    bins = times * sum(_values(ensemble, observation, place.position) for place in at_one_time)
     histogram = bins * (2 + folds) if wants_histogram(observation) else 0
     return 8 * (count * (sums + tally) + histogram + folds) + count + 64
 
 
-def _values(ensemble: Ensemble, observation: Any, place: int | None) -> int:
+@lru_cache(maxsize=256)
+def _depths(region: str | tuple[int, ...], sites: int, periodic: bool) -> tuple[Place, ...]:
+    """Distances from the boundary of a region, each with its number of sites."""
+    listed = tuple(range(sites // 2)) if isinstance(region, str) else region
+    counts = Counter(distances(listed, sites, periodic).tolist())
+    return tuple(Place(depth, counts[depth]) for depth in sorted(counts))
+
+
+def _values(ensemble: Ensemble, observation: Any, position: int | None) -> int:
     """How many values a single reading takes."""
     if isinstance(observation, RecordBits):
         # a sum of sites x layers outcomes scatters like its square root: six standard deviations to either side
         return 12 * isqrt(ensemble.sites * ensemble.layers) + 1
-    if place is not None:
-        return min(place, ensemble.sites - place) + 1
+    if isinstance(observation, PauliExpectation):
+        return 3
+    if isinstance(observation, ReferenceEntropy):
+        return ensemble.references + 1
+    if position is not None:
+        return min(position, ensemble.sites - position) + 1
     return ensemble.sites + 1

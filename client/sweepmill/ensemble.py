@@ -85,3 +85,19 @@ class Ensemble:
     def periodic(self) -> bool:
         """Whether site L-1 neighbours site 0."""
         return self.parameters["boundary"] == "periodic"
+
+    @property
+    def cell(self) -> int:
+        """Layers of the unit cell in time: the brickwork repeats after two."""
+        return 2
+
+    @property
+    def references(self) -> int:
+        """Number of reference qubits, which no layer touches."""
+        return 0
+
+    @property
+    def shape(self) -> tuple[str, str, int, int, int, int, bool]:
+        """What decides which observations can be read off, and their coordinates."""
+        engine = str(self.parameters.get("engine", "auto"))
+        return self.family, engine, self.sites, self.references, self.layers, self.cell, self.periodic

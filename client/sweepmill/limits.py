@@ -38,7 +38,7 @@ def _beyond(path: str, value: int, limit: int, what: str) -> Fault | None:
 
 def _size_fault(sweep: Sweep, index: int, points: tuple[Point, ...], limits: Limits) -> Fault | None:
     item = sweep.observe[index]
-    shapes = {(p.ensemble.sites, p.ensemble.layers): p.ensemble for p in points}
+    shapes = {p.ensemble.shape: p.ensemble for p in points}
     size, largest = max((accumulator_bytes(e, item), e.sites) for e in shapes.values())
     if size <= limits.accumulator_bytes:
         return None

@@ -6,11 +6,17 @@ A number is raised whenever the same key would give other values, so that old an
 FAMILY_REVISIONS: dict[str, int] = {"hybrid-clifford": 1}
 
 QUANTITY_REVISIONS: dict[str, int] = {
+    "cluster-order": 1,
     "entropy": 1,
+    "generator-lengths": 1,
     "global-entropy": 1,
     "mutual-information": 1,
+    "negativity": 1,
     "outcome-randomness": 1,
+    "pauli-expectation": 1,
     "record-bits": 1,
+    "reference-entropy": 1,
+    "site-environment-information": 1,
     "tripartite-information": 1,
 }
 

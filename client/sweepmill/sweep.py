@@ -149,7 +149,7 @@ class Sweep(BaseModel):
 
     def _check_circuits(self, single: bool, faults: list[Fault]) -> None:
         caps: dict[str, int] = {}
-        shapes: set[tuple[int, int, bool]] = set()
+        shapes: set[tuple[Any, ...]] = set()
         for index, block in enumerate(self.circuit):
             path = "circuit" if single else f"circuit[{index}]"
             own: set[str] = set()
@@ -160,7 +160,7 @@ class Sweep(BaseModel):
                 elif caps.setdefault(ensemble.key, cap) != cap:
                     faults.append(Fault(f"{path}.trajectories", "an earlier block gives the same ensemble another cap"))
                 own.add(ensemble.key)
-                shape = (ensemble.sites, ensemble.layers, ensemble.periodic)
+                shape = ensemble.shape
                 if shape not in shapes:
                     shapes.add(shape)
                     self._check_observations(ensemble, where, faults)

@@ -1,6 +1,7 @@
 """When an observation is read: the field ``at`` and the layers it stands for.
 
-A unit cell is two consecutive layers; it is named by its last layer. Layers count from 1 to the ensemble's ``layers``.
+A unit cell is as many consecutive layers as the circuit takes to repeat: two on a chain, four on the square lattice. It
+is named by its last layer. Layers count from 1 to the ensemble's ``layers``.
 """
 
 import itertools
@@ -12,6 +13,7 @@ from pydantic_core import PydanticCustomError
 from sweepmill.axes import Integer, Number, nonempty
 
 MOST_READINGS = 100_000
+ADJACENT = 2  # default of a window's `every`: omitted from keys, so it stays what it was before there were longer cells
 
 
 class Strict(BaseModel):
@@ -35,10 +37,13 @@ class LogSpaced(Strict):
 
 
 class Window(Strict):
-    """The unit cells in the last part of the layers, one every so many layers."""
+    """The unit cells in the last part of the layers, one every so many layers.
+
+    By default one after the other, also where a cell is longer than two layers.
+    """
 
     last: Annotated[Number, Field(gt=0, le=1)] = 0.5
-    every: Annotated[Integer, Field(ge=2)] = 2
+    every: Annotated[Integer, Field(ge=1)] = ADJACENT
 
 
 class AverageOver(Strict):
@@ -97,24 +102,28 @@ class Reading(NamedTuple):
     layers: tuple[int, ...]
 
 
-def readings(at: Any, layers: int) -> tuple[Reading, ...]:
-    """The time coordinates of ``at`` in a circuit of ``layers`` layers. Raises ValueError saying what would pass."""
+def readings(at: Any, layers: int, cell: int = 2) -> tuple[Reading, ...]:
+    """The time coordinates of ``at`` in a circuit of ``layers`` layers whose unit cell is ``cell`` layers.
+
+    Raises ValueError saying what would pass.
+    """
     if at == "end":
         return (Reading(None, (layers,)),)
     if at == "last-cell":
-        _need(layers >= 2, "'last-cell' averages two layers and the circuit has one: use at = \"end\"")
-        return (Reading(None, (layers - 1, layers)),)
+        _need(layers >= cell, f"'last-cell' averages {cell} layers and the circuit has {layers}: use at = \"end\"")
+        return (Reading(None, _cell(layers, cell)),)
     if isinstance(at, tuple):
         _need(at[-1] <= layers, f"layer {at[-1]} is beyond the last layer, {layers}")
         return tuple(Reading(n, (n,)) for n in at)
     if isinstance(at, AverageOver):
-        return (Reading(None, _window(at.average_over, layers)),)
+        return (Reading(None, _window(at.average_over, layers, cell)),)
+    length = 1 if at.single_layers else cell
     if isinstance(at, LogSpaced):
-        return _series(_log_spaced(at.log_spaced, 1 if at.single_layers else 2, layers), at.single_layers)
-    _need(at.single_layers or at.every >= 2, "unit cells overlap below every = 2: use single_layers = true")
+        return _series(_log_spaced(at.log_spaced, length, layers), length)
+    _need(at.every >= length, f"unit cells overlap below every = {cell}: use single_layers = true")
     _need(at.every <= layers, f"every = {at.every} is beyond the last layer, {layers}")
     _need_few(layers // at.every)
-    return _series(tuple(range(at.every, layers + 1, at.every)), at.single_layers)
+    return _series(tuple(range(at.every, layers + 1, at.every)), length)
 
 
 def _need(condition: bool, message: str) -> None:
@@ -126,17 +135,23 @@ def _need_few(count: int) -> None:
     _need(count <= MOST_READINGS, f"reads {count} cells, at most {MOST_READINGS} pass: read fewer")
 
 
-def _series(ends: tuple[int, ...], single_layers: bool) -> tuple[Reading, ...]:
-    return tuple(Reading(n, (n,) if single_layers else (n - 1, n)) for n in ends)
+def _cell(end: int, length: int) -> tuple[int, ...]:
+    return tuple(range(end - length + 1, end + 1))
 
 
-def _window(window: Window, layers: int) -> tuple[int, ...]:
+def _series(ends: tuple[int, ...], length: int) -> tuple[Reading, ...]:
+    return tuple(Reading(n, _cell(n, length)) for n in ends)
+
+
+def _window(window: Window, layers: int, cell: int) -> tuple[int, ...]:
+    every = max(window.every, cell) if window.every == ADJACENT else window.every
+    _need(every >= cell, f"unit cells overlap below every = {cell}")
     # twelve-digit decimals: the product rounded at nine places is the exact border where it is an integer
-    _need_few(int(layers * window.last) // window.every)
+    _need_few(int(layers * window.last) // every)
     border = round(layers * (1 - window.last), 9)
-    ends = [end for end in range(layers, 1, -window.every) if end - 1 > border]
-    _need(bool(ends), f"the last {window.last} of {layers} layers holds no whole unit cell")
-    return tuple(sorted(n for end in ends for n in (end - 1, end)))
+    ends = [end for end in range(layers, cell - 1, -every) if end - cell + 1 > border]
+    _need(bool(ends), f"the last {window.last} of {layers} layers holds no whole unit cell of {cell} layers")
+    return tuple(sorted(n for end in ends for n in _cell(end, cell)))
 
 
 def _log_spaced(points: int, first: int, layers: int) -> tuple[int, ...]:

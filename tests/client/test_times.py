@@ -47,6 +47,33 @@ def test_a_log_spaced_series_runs_from_the_first_cell_to_the_last_layer() -> Non
     assert single == [1, 10, 100, 1000]
 
 
+def test_cells_are_as_long_as_the_circuit_says() -> None:
+    assert readings("last-cell", 8, cell=4) == (Reading(None, (5, 6, 7, 8)),)
+    assert readings(Every(every=6), 13, cell=4) == (Reading(6, (3, 4, 5, 6)), Reading(12, (9, 10, 11, 12)))
+    assert readings(Every(every=1), 2, cell=1) == (Reading(1, (1,)), Reading(2, (2,)))
+    assert [reading.layer for reading in readings(LogSpaced(log_spaced=5), 64, cell=4)] == [4, 8, 16, 32, 64]
+    (adjacent,) = readings(AverageOver(average_over=Window(last=0.5)), 16, cell=4)
+    assert adjacent.layers == tuple(range(9, 17))
+    (spaced,) = readings(AverageOver(average_over=Window(last=0.5, every=8)), 32, cell=4)
+    assert spaced.layers == (21, 22, 23, 24, 29, 30, 31, 32)
+
+
+@pytest.mark.parametrize(
+    ("at", "layers", "message"),
+    [
+        ("last-cell", 3, "averages 4 layers and the circuit has 3"),
+        (Every(every=3), 20, "unit cells overlap below every = 4"),
+        (AverageOver(average_over=Window(every=3)), 20, "unit cells overlap below every = 4"),
+        (LogSpaced(log_spaced=3), 4, "needs more than 4 layers"),
+    ],
+)
+def test_what_does_not_fit_the_cell_is_refused(
+    at: str | Every | AverageOver | LogSpaced, layers: int, message: str
+) -> None:
+    with pytest.raises(ValueError, match=message):
+        readings(at, layers, cell=4)
+
+
 @given(st.integers(2, 60), st.integers(3, 100_000))
 def test_log_spaced_layers_are_distinct_and_inside_the_circuit(points: int, layers: int) -> None:
     found = readings(LogSpaced(log_spaced=points), layers)

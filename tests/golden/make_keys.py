@@ -31,6 +31,16 @@ CASES: dict[str, dict[str, Any]] = {
             },
         ],
     ),
+    "quantities of the state's structure": small(
+        circuit__sites=16,
+        circuit__initial_state="mixed",
+        observe=[
+            {"quantity": "entropy", "region": "every-interval", "average_translations": True},
+            {"quantity": "site-environment-information", "at": {"every": 4}},
+            {"quantity": "negativity", "region": "every-cut", "histogram": True},
+            {"quantity": "generator-lengths", "at": "end"},
+        ],
+    ),
     "a union with replicates": small(
         circuit=[
             {

@@ -108,7 +108,7 @@ def _chain(ensemble: Ensemble) -> HybridChain:
 
 
 def _times(ensemble: Ensemble, observations: Sequence[Any]) -> list[tuple[Reading, ...]]:
-    return [readings(item.at, ensemble.layers) for item in observations]
+    return [readings(item.at, ensemble.layers, ensemble.cell) for item in observations]
 
 
 def _read_layers(times: Sequence[tuple[Reading, ...]], plan: RegionPlan) -> list[int]:
