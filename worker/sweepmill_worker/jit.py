@@ -13,12 +13,16 @@ from platformdirs import user_cache_path
 
 F = TypeVar("F", bound=Callable[..., Any])
 
+KERNEL_FOLDERS = ("clifford", "clusters", "program")
+"""Packages whose files hold compiled code."""
+
 
 def _sources_digest() -> str:
     """numba notices a change of an entry point's own file only, not of the parts it calls: hash all kernel files."""
     package = Path(__file__).parent
     digest = hashlib.sha256()
-    for path in [package / "jit.py", package / "words.py", *sorted((package / "clifford").glob("*.py"))]:
+    folders = [path for name in KERNEL_FOLDERS for path in sorted((package / name).glob("*.py"))]
+    for path in [package / "jit.py", package / "words.py", *folders]:
         digest.update(path.read_bytes())
     return digest.hexdigest()[:12]
 
