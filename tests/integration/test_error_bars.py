@@ -2,7 +2,7 @@
 
 The exact value is that of ``tests/worker/test_pulls.py``: entropy of two neighboring sites of a periodic chain of four
 after its second layer at p = 0.16, from the Markov chain on all 2,295 stabilizer groups. False-alarm probability: the
-share ``spare`` of the suite's budget, split over two comparisons.
+share ``error-bars`` of the suite's budget, split over two comparisons.
 """
 
 from pathlib import Path
@@ -40,6 +40,6 @@ def test_replicates_that_settle_by_a_rule_have_pulls_of_unit_width_and_no_bias(t
     assert set(table.values("trajectories")) <= set(rungs(475, 4000))
     assert len(set(table.values("trajectories"))) > 1
     pulls = (table["mean"] - EXACT) / table["standard_error"]
-    tail = SHARES["spare"] / 2 / 2
+    tail = SHARES["error-bars"] / 2 / 2
     assert stats.chi2.ppf(tail, REPLICATES) < (pulls**2).sum() < stats.chi2.isf(tail, REPLICATES)
-    assert abs(pulls.mean()) * np.sqrt(REPLICATES) < z_limit("spare", 2)
+    assert abs(pulls.mean()) * np.sqrt(REPLICATES) < z_limit("error-bars", 2)

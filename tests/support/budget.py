@@ -14,14 +14,19 @@ TOTAL: Final = 1e-3
 SHARES: Final[dict[str, float]] = {
     "exact-chains": 1e-4,
     "tripartite": 5e-5,
-    "purification": 1e-4,
-    "purity-recursion": 1e-4,
-    "page-law": 1e-4,
-    "monte-carlo": 1e-4,
+    "purification": 5e-5,
+    "purity-recursion": 5e-5,
+    "page-law": 5e-5,
+    "monte-carlo": 5e-5,
     "word-frequencies": 5e-5,
     "pulls": 1e-4,
-    "sample": 1e-4,
-    "spare": 1e-4,
+    "sample": 5e-5,
+    "error-bars": 5e-5,
+    "ising": 1e-4,
+    "edge-bath": 5e-5,
+    "rotated": 1e-4,
+    "square-and-long-range": 5e-5,
+    "references": 5e-5,
 }
 
 

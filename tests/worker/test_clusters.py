@@ -1,0 +1,191 @@
+"""The cluster engine circuit by circuit: against plain Python, against stim, and its own promises."""
+
+import random
+from collections import Counter
+from itertools import pairwise
+
+import numpy as np
+import pytest
+import stim
+from numpy.typing import NDArray
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+from support.partitions import bonds_of, entropy, measure_x, measure_zz
+from support.stim_oracle import Reference
+from sweepmill_worker.clifford.engine import HybridChain
+from sweepmill_worker.clusters.engine import (
+    MAX_SITES,
+    ClusterChain,
+    ClusterReadings,
+    describe,
+    run_clusters,
+    working_bytes,
+)
+from sweepmill_worker.clusters.state import new_state
+from sweepmill_worker.clusters.trajectories import new_supply
+
+KEY = (0x715EED, 0xC1057E4)
+SIZES = [(2, False), (2, True), (3, True), (4, False), (5, True), (8, True), (9, False), (16, True), (33, False)]
+RATES = (0.0, 0.2, 0.5, 0.8, 1.0)
+
+
+def chain(sites: int, layers: int, periodic: bool, rate: float) -> ClusterChain:
+    return ClusterChain(sites, layers, periodic, int(rate * 2**32), int((1 - rate) * 2**32))
+
+
+def regions_of(sites: int, seed: int) -> list[tuple[int, ...]]:
+    """Cuts, arcs of the ring, arbitrary sets, nothing and everything, in no order."""
+    draw = random.Random(seed)
+    arcs = [tuple(sorted((f + i) % sites for i in range(draw.randint(1, sites)))) for f in range(sites)]
+    sets = [tuple(sorted(draw.sample(range(sites), draw.randint(0, sites)))) for _ in range(8)]
+    cuts = [tuple(range(x)) for x in range(sites + 1)]
+    return draw.sample([*arcs, *sets, *cuts], len(arcs) + len(sets) + len(cuts))
+
+
+@pytest.mark.parametrize("rate", RATES)
+@pytest.mark.parametrize(("sites", "periodic"), SIZES)
+def test_everything_read_agrees_with_a_simulation_in_plain_python(sites: int, periodic: bool, rate: float) -> None:
+    law, reads = chain(sites, 12, periodic, rate), [1, 2, 5, 12]
+    regions = regions_of(sites, seed=sites)
+    readings = run_clusters(law, KEY, 3, 2, reads, regions, cuts=True, intervals=True)
+    for index in range(2):
+        partition = tuple(range(sites))
+        for number, layer in enumerate(describe(law, KEY, 3 + index), start=1):
+            assert set(layer.bonds) <= set(bonds_of(sites, periodic))
+            counted = [0, 0]
+            for left, right in layer.bonds:
+                partition, is_random = measure_zz(partition, left, right)
+                counted[0] += is_random
+            for site in layer.sites:
+                partition, is_random = measure_x(partition, site)
+                counted[1] += is_random
+            assert readings.random_by_kind[index, number - 1].tolist() == counted
+            assert readings.measured_by_kind[index, number - 1].tolist() == [len(layer.bonds), len(layer.sites)]
+            if number in reads:
+                read = reads.index(number)
+                assert readings.squares[index, read] == sum(n * n for n in Counter(partition).values())
+                assert readings.entropies[index, read].tolist() == [entropy(partition, r) for r in regions]
+                cuts = [entropy(partition, range(x)) for x in range(sites + 1)]
+                assert readings.cuts[index, read].tolist() == cuts
+                windows = [interval_sum(partition, length, periodic) for length in range(sites + 1)]
+                assert readings.intervals[index, read].tolist() == windows
+    np.testing.assert_array_equal(readings.random, readings.random_by_kind.sum(axis=2))
+    np.testing.assert_array_equal(readings.measured, readings.measured_by_kind.sum(axis=2))
+
+
+def interval_sum(partition: tuple[int, ...], length: int, periodic: bool) -> int:
+    sites = len(partition)
+    firsts = range(sites if periodic else sites - length + 1)
+    return sum(entropy(partition, [(first + i) % sites for i in range(length)]) for first in firsts)
+
+
+@pytest.mark.parametrize("rate", RATES)
+@pytest.mark.parametrize(("sites", "periodic"), SIZES)
+def test_circuits_agree_with_stim(sites: int, periodic: bool, rate: float) -> None:
+    law, reads, regions = chain(sites, 10, periodic, rate), [1, 3, 10], regions_of(sites, seed=1)
+    readings = run_clusters(law, KEY, 8, 1, reads, regions)
+    oracle = Reference(HybridChain(sites, 0, False, False, 0))
+    oracle.simulator.h(*range(sites))
+    for number, layer in enumerate(describe(law, KEY, 8), start=1):
+        observed = [stim.PauliString(dict.fromkeys(bond, "Z")) for bond in layer.bonds]
+        observed += [stim.PauliString({site: "X"}) for site in layer.sites]
+        outcomes = 0
+        for pauli in observed:
+            outcomes += oracle.simulator.peek_observable_expectation(pauli) == 0
+            oracle.simulator.measure_observable(pauli)
+        assert readings.random[0, number - 1] == outcomes
+        assert readings.measured[0, number - 1] == len(observed)
+        if number in reads:
+            assert readings.entropies[0, reads.index(number)].tolist() == oracle.entropies(regions)
+
+
+@pytest.mark.parametrize("first", [0, 2**32 - 3, 2**63])
+def test_a_batch_is_the_sum_of_its_pieces(first: int) -> None:
+    law, regions = chain(40, 9, True, 0.5), regions_of(40, seed=2)
+    whole = run_clusters(law, KEY, first, 7, [2, 9], regions, cuts=True, intervals=True)
+    pieces = [
+        run_clusters(law, KEY, first + a, b - a, [2, 9], regions, cuts=True, intervals=True)
+        for a, b in pairwise([0, 1, 1, 5, 7])
+    ]
+    for field in [*ClusterReadings.__annotations__, "entropies", "random", "measured"]:
+        np.testing.assert_array_equal(getattr(whole, field), np.concatenate([getattr(p, field) for p in pieces]))
+
+
+def test_a_longer_circuit_begins_with_the_shorter_one() -> None:
+    short, long = (run_clusters(chain(20, n, False, 0.5), KEY, 0, 9, [5], [(0, 1, 2)]) for n in (5, 15))
+    np.testing.assert_array_equal(short.entropies, long.entropies)
+    np.testing.assert_array_equal(short.random_by_kind, long.random_by_kind[:, :5])
+
+
+@pytest.mark.parametrize(("sites", "periodic"), [(4096, True), (4097, True), (10_001, False)])
+def test_long_chains_whose_words_come_in_pieces_agree_with_connected_components(sites: int, periodic: bool) -> None:
+    law = chain(sites, 4, periodic, 0.6)
+    readings = run_clusters(law, KEY, 0, 1, [4], [tuple(range(sites // 2))], cuts=True)
+    labels: NDArray[np.signedinteger] = np.arange(sites)
+    for layer in describe(law, KEY, 0):
+        left, right = labels[np.array(layer.bonds)].T
+        graph = coo_array((np.ones(len(left)), (left, right)), shape=(2 * sites, 2 * sites))
+        labels = connected_components(graph, directed=False)[1][labels]
+        labels[list(layer.sites)] = 2 * sites + np.arange(len(layer.sites))
+        labels = np.unique(labels, return_inverse=True)[1]
+    partition = tuple(labels.tolist())
+    assert readings.entropies[0, 0, 0] == entropy(partition, range(sites // 2))
+    assert readings.squares[0, 0] == (np.bincount(labels) ** 2).sum()
+    for x in (1, sites // 3, sites - 1):
+        assert readings.cuts[0, 0, x] == entropy(partition, range(x))
+
+
+def test_without_bonds_all_stay_alone_and_without_sites_all_become_one() -> None:
+    alone = run_clusters(chain(100, 3, True, 0.0), KEY, 0, 2, [3], [], cuts=True)
+    assert (alone.random == 0).all()
+    assert (alone.measured == 100).all()
+    assert (alone.squares == 100).all()
+    one = run_clusters(chain(100, 3, True, 1.0), KEY, 0, 2, [3], [], cuts=True)
+    assert one.random[0].tolist() == [99, 0, 0]
+    assert (one.squares == 100**2).all()
+    assert (one.cuts[:, :, 1:-1] == 1).all()
+
+
+def test_the_largest_chain_runs_in_the_memory_it_states() -> None:
+    law = chain(MAX_SITES, 2, True, 0.5)
+    readings = run_clusters(law, KEY, 0, 1, [2], [tuple(range(MAX_SITES // 2))], intervals=True)
+    assert readings.measured_by_kind.sum() == pytest.approx(2 * MAX_SITES, rel=0.01)
+    assert readings.intervals[0, 0, [0, -1]].tolist() == [0, 0]
+    arrays = [*new_state(MAX_SITES), *new_supply(MAX_SITES)]
+    held = sum(array.nbytes for array in arrays) + 2 * 8 * (MAX_SITES + 2)
+    assert held <= working_bytes(MAX_SITES) < 1.01 * held
+
+
+@pytest.mark.parametrize(
+    ("change", "message"),
+    [
+        ({"sites": 1}, "sites: must be 2"),
+        ({"sites": MAX_SITES + 1}, "sites: must be 2"),
+        ({"layers": -1}, "layers: must be 0"),
+        ({"bond_threshold": 2**32 + 1}, "bond_threshold: must be"),
+        ({"site_threshold": -1}, "site_threshold: must be"),
+    ],
+)
+def test_chains_out_of_range_are_refused(change: dict[str, int], message: str) -> None:
+    fields = {"sites": 8, "layers": 4, "periodic": True, "bond_threshold": 2**31, "site_threshold": 2**31}
+    with pytest.raises(ValueError, match=message):
+        ClusterChain(**(fields | change))  # type: ignore[arg-type]
+
+
+@pytest.mark.parametrize(
+    ("change", "message"),
+    [
+        ({"key_words": (2**32, 0)}, "key_words: must be two"),
+        ({"first": -1}, "first, count: trajectories"),
+        ({"first": 2**64 - 1, "count": 2}, "first, count: trajectories"),
+        ({"read_layers": [0]}, "read_layers: must ascend"),
+        ({"read_layers": [2, 2]}, "read_layers: must ascend"),
+        ({"regions": [(1, 0)]}, "regions: sites must ascend"),
+        ({"regions": [(0, 8)]}, "regions: sites must ascend"),
+    ],
+)
+def test_arguments_out_of_range_are_refused(change: dict[str, object], message: str) -> None:
+    fields: dict[str, object] = {"key_words": KEY, "first": 0, "count": 1, "read_layers": [1], "regions": [(0,)]}
+    with pytest.raises(ValueError, match=message):
+        run_clusters(chain(8, 4, True, 0.5), **(fields | change))  # type: ignore[arg-type]
