@@ -20,8 +20,6 @@ GATE: Final = 1
 """Place: ordinal of the bond in its layer, (0,1), (2,3), ... or (1,2), ..., (L-1,0)."""
 MEASURE: Final = 2
 """Place: site."""
-OUTCOME: Final = 3
-"""Place: site.  Outcomes of the signed engine; the sign-free one never reads them."""
 
 U = np.uint64
 _LOW = np.uint64(0xFFFFFFFF)
