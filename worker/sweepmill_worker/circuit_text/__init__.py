@@ -1,0 +1,1 @@
+"""The circuit of one trajectory as text that other programs read."""
