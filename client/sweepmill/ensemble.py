@@ -1,22 +1,58 @@
 """An ensemble: all trajectories of one circuit family with every parameter fixed."""
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
 
+from sweepmill.frozen import FrozenTable, freeze, thaw
 from sweepmill.identity import key_of, key_words
+from sweepmill.language.geometry import number_of_places
 from sweepmill.revisions import FAMILY_REVISIONS
 
+LAYERED = "layered"
+PROGRAM = ("before", "repeat", "after")
+"""Parameters of a layered circuit that are the circuit itself: lists of layers, each a list of steps."""
+
+_TAIL: dict[str, Any] = {"layers": None, "replicate": 0, "engine": "auto"}
 # Parameters of each family in table order; a value is the default that a normal form omits, None means required.
-FAMILY_PARAMETERS: dict[str, dict[str, int | float | str | None]] = {
+FAMILY_PARAMETERS: dict[str, dict[str, Any]] = {
     "hybrid-clifford": {
         "sites": None,
         "measurement_rate": None,
         "boundary": "periodic",
         "initial_state": "zeros",
-        "layers": None,
-        "replicate": 0,
+        "references": 0,
+        "scrambling_layers": 0,
+        **_TAIL,
+    },
+    "hybrid-clifford-square": {
+        "width": None,
+        "height": None,
+        "measurement_rate": None,
+        "boundary": "periodic",
+        "initial_state": "zeros",
+        **_TAIL,
+    },
+    "hybrid-clifford-long-range": {
+        "sites": None,
+        "exponent": None,
+        "measurement_rate": None,
+        "boundary": "periodic",
+        "initial_state": "zeros",
+        **_TAIL,
+    },
+    "projective-ising": {"sites": None, "bond_rate": None, "boundary": "periodic", **_TAIL},
+    "edge-bath": {"sites": None, **_TAIL},
+    "rotated-clifford": {"sites": None, "ends": "open", **_TAIL},
+    LAYERED: {
+        "sites": None,
+        "boundary": "periodic",
+        "initial_state": "zeros",
+        **_TAIL,
+        "before": (),
+        "repeat": None,
+        "after": (),
     },
 }
 
@@ -25,27 +61,30 @@ FAMILY_PARAMETERS: dict[str, dict[str, int | float | str | None]] = {
 class Ensemble:
     """Family and complete parameters (``sites``, ``layers`` … resolved to numbers).
 
-    ``revision`` is the family revision its key was made with.
+    The circuit of a layered ensemble is three parameters of nested tuples and tables that cannot be changed.
+    ``revision`` is the family revision its key was made with. ``labels`` are values that a specification gives names
+    to, such as {"p": 0.1}: columns of its table, not part of the identity.
     """
 
     family: str
-    parameters: Mapping[str, int | float | str]
+    parameters: Mapping[str, Any]
     revision: int
+    labels: Mapping[str, float] = field(default_factory=FrozenTable, compare=False)
 
     @classmethod
-    def of(cls, family: str, **parameters: int | float | str) -> "Ensemble":
+    def of(cls, family: str, **parameters: Any) -> "Ensemble":
         """An ensemble of the current revision; omitted parameters take their defaults. Raises ValueError."""
         table = FAMILY_PARAMETERS.get(family)
         if table is None:
             raise ValueError(f"unknown circuit family {family!r}: one of {', '.join(sorted(FAMILY_PARAMETERS))}")
         if unknown := parameters.keys() - table.keys():
             raise ValueError(f"{family} has no parameter {', '.join(sorted(unknown))}")
-        complete: dict[str, int | float | str] = {}
+        complete: dict[str, Any] = {}
         for name, default in table.items():
             value = parameters.get(name, default)
             if value is None:
                 raise ValueError(f"{family} needs the parameter {name}")
-            complete[name] = value
+            complete[name] = freeze(value)
         return cls(family, complete, FAMILY_REVISIONS[family])
 
     @classmethod
@@ -58,7 +97,7 @@ class Ensemble:
     def normal_form(self) -> dict[str, Any]:
         """What the key is the hash of: parameters that differ from their defaults, family and revision."""
         table = FAMILY_PARAMETERS[self.family]
-        changed = {name: value for name, value in self.parameters.items() if value != table[name]}
+        changed = {name: thaw(value) for name, value in self.parameters.items() if value != table[name]}
         return {"family": self.family, "revision": self.revision, **changed}
 
     @cached_property
@@ -71,30 +110,46 @@ class Ensemble:
         """The two 32-bit words that seed the random words of every trajectory."""
         return key_words(self.key)
 
+    @cached_property
+    def columns(self) -> Mapping[str, Any]:
+        """What a table can say about the ensemble: its scalar parameters, and the labels before ``layers``."""
+        scalars = {name: value for name, value in self.parameters.items() if name not in PROGRAM}
+        return {n: v for n, v in scalars.items() if n not in _TAIL} | {**self.labels} | {n: scalars[n] for n in _TAIL}
+
     @property
     def sites(self) -> int:
-        """Number of sites L."""
+        """Number of sites, reference qubits not counted."""
+        if self.family == "hybrid-clifford-square":
+            return int(self.parameters["width"] * self.parameters["height"])
         return int(self.parameters["sites"])
 
     @property
     def layers(self) -> int:
-        """Number of layers T."""
-        return int(self.parameters["layers"])
-
-    @property
-    def periodic(self) -> bool:
-        """Whether site L-1 neighbours site 0."""
-        return self.parameters["boundary"] == "periodic"
+        """Number of layers that can be read: all but those of ``before``."""
+        return int(self.parameters["layers"]) + len(self.parameters.get("after", ()))
 
     @property
     def cell(self) -> int:
-        """Layers of the unit cell in time: the brickwork repeats after two."""
-        return 2
+        """Layers of the unit cell in time, after which the circuit repeats."""
+        if self.family == LAYERED:
+            return len(self.parameters["repeat"])
+        return 4 if self.family == "hybrid-clifford-square" else 2
+
+    @property
+    def periodic(self) -> bool:
+        """Whether site L-1 neighbors site 0."""
+        return self.parameters.get("boundary") == "periodic" or self.parameters.get("ends") == "ring"
 
     @property
     def references(self) -> int:
-        """Number of reference qubits, which no layer touches."""
-        return 0
+        """Number of reference qubits, which no layer but their own touches."""
+        return self._swapped_in if self.family == LAYERED else int(self.parameters.get("references", 0))
+
+    @cached_property
+    def _swapped_in(self) -> int:
+        layers = (*self.parameters["before"], *self.parameters["after"])
+        places = [step["on"] for layer in layers for step in layer if "swap_in" in step]
+        return sum(number_of_places(on, self.sites, self.periodic) for on in places)
 
     @property
     def shape(self) -> tuple[str, str, int, int, int, int, bool]:

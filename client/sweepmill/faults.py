@@ -6,12 +6,15 @@ from typing import Any
 from pydantic import ValidationError
 
 from sweepmill.axes import SHAPE_TAGS
+from sweepmill.ensemble import FAMILY_PARAMETERS
 from sweepmill.errors import Fault
+from sweepmill.language.refusal import KIND, near
+from sweepmill.language.tags import LANGUAGE_TAGS
 from sweepmill.observation import QUANTITIES, REGION_TAGS
 from sweepmill.times import AT_TAGS
 
 # Names of union members: pydantic puts them into locations, a reader never wrote them
-_TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | set(QUANTITIES)
+_TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | LANGUAGE_TAGS | set(QUANTITIES) | set(FAMILY_PARAMETERS)
 _UNION_MARKS = ("function-", "int", "PerSite")
 
 
@@ -20,8 +23,14 @@ def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
     single = isinstance(raw.get("circuit"), Mapping)
     found: dict[Fault, None] = {}
     for item in error.errors(include_url=False):
-        found[Fault(path_of(item["loc"], single), _message(item))] = None
+        path = path_of(item["loc"], single)
+        found[Fault(f"{path}.family" if _of_family(item) else path, _message(item))] = None
     return list(found)
+
+
+def _of_family(item: Any) -> bool:
+    """Whether it is the family that tells no circuit block apart."""
+    return item.get("ctx", {}).get("discriminator") == "'family'"
 
 
 def path_of(location: tuple[int | str, ...], single_circuit: bool) -> str:
@@ -30,9 +39,13 @@ def path_of(location: tuple[int | str, ...], single_circuit: bool) -> str:
     for depth, part in enumerate(location):
         if isinstance(part, int):
             path += "" if single_circuit and depth == 1 and location[0] == "circuit" else f"[{part}]"
-        elif part not in _TAGS and not part.startswith(_UNION_MARKS):
+        elif _named_by_user(location, depth) or (part not in _TAGS and not part.startswith(_UNION_MARKS)):
             path += f".{part}" if path else part
     return path
+
+
+def _named_by_user(location: tuple[int | str, ...], depth: int) -> bool:
+    return depth > 1 and location[depth - 1] == "parameters"
 
 
 def _message(item: Any) -> str:
@@ -46,8 +59,8 @@ def _message(item: Any) -> str:
     if kind == "union_tag_invalid":
         return _bad_tag(context, given)
     if kind == "union_tag_not_found":
-        return f"needs a field {context['discriminator']}"
-    if kind in ("number", "integer", "layers", "duplicate", "empty"):
+        return "is missing" if _of_family(item) else f"needs a field {context['discriminator']}"
+    if kind in ("number", "integer", "layers", "duplicate", "empty", KIND):
         return str(item["msg"])
     wanted = item["msg"]
     for theirs, ours in (("Input should", "must"), ("String should", "must"), ("a valid tuple", "a list")):
@@ -58,6 +71,9 @@ def _message(item: Any) -> str:
 def _bad_tag(context: Mapping[str, Any], given: Any) -> str:
     if context.get("discriminator") == "'quantity'":
         return f"unknown quantity {context['tag']!r}: one of {', '.join(QUANTITIES)}"
+    if context.get("discriminator") == "'family'":
+        wanted = str(context["tag"])
+        return f"unknown circuit family {wanted!r}{near(wanted, FAMILY_PARAMETERS)} ({', '.join(FAMILY_PARAMETERS)})"
     return f"must be a value or a list of values, got {_short(given)}"
 
 

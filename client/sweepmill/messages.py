@@ -7,6 +7,7 @@ from pydantic import BaseModel, ConfigDict, Field
 SweepState = Literal["waiting", "sampling", "settled", "withdrawn", "stuck"]
 MetBy = Literal["error", "cap"]
 Scalar = int | float | str
+Parameters = dict[str, Scalar | list[Any]]  # the lists are the layers of a circuit written as data
 
 
 class Message(BaseModel):
@@ -58,7 +59,7 @@ class EnsembleProgress(Message):
 
     ordinal: int
     ensemble: str
-    parameters: dict[str, Scalar]
+    parameters: Parameters
     trajectories: int
     cap: int
     met_by: MetBy | None = None
@@ -152,7 +153,7 @@ class EnsembleRecord(Message):
 
     key: str
     family: str
-    parameters: dict[str, Scalar]
+    parameters: Parameters
     revision: int
     reason: str | None = None
     observations: list[ObservationRecord]
@@ -176,7 +177,7 @@ class Trajectory(Message):
 
     ensemble: str
     trajectory: int
-    parameters: dict[str, Scalar]
+    parameters: Parameters
     observations: list[TrajectoryValue]
     versions: dict[str, str]
 

@@ -3,7 +3,15 @@
 A number is raised whenever the same key would give other values, so that old and new results never mix.
 """
 
-FAMILY_REVISIONS: dict[str, int] = {"hybrid-clifford": 1}
+FAMILY_REVISIONS: dict[str, int] = {
+    "edge-bath": 1,
+    "hybrid-clifford": 1,
+    "hybrid-clifford-long-range": 1,
+    "hybrid-clifford-square": 1,
+    "layered": 1,
+    "projective-ising": 1,
+    "rotated-clifford": 1,
+}
 
 QUANTITY_REVISIONS: dict[str, int] = {
     "cluster-order": 1,

@@ -9,10 +9,11 @@ from typing import Annotated, Any, NamedTuple
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
 
-from sweepmill.axes import Integer, located_values, nonempty
-from sweepmill.circuits import CircuitBlock, PerSite, resolved_layers
-from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
+from sweepmill.axes import Integer, nonempty
+from sweepmill.ensemble import Ensemble
 from sweepmill.errors import Fault, SpecificationError
+from sweepmill.families import CircuitBlock
+from sweepmill.families.block import Block
 from sweepmill.faults import faults_of
 from sweepmill.identity import canonical, key_of
 from sweepmill.observation import Observation
@@ -37,7 +38,7 @@ class NamedObservation(NamedTuple):
 
 
 def _blocks(value: Any) -> Any:
-    return (value,) if isinstance(value, Mapping | CircuitBlock) else as_tuple(value)
+    return (value,) if isinstance(value, Mapping | Block) else as_tuple(value)
 
 
 class Sweep(BaseModel):
@@ -59,7 +60,7 @@ class Sweep(BaseModel):
             super().__init__(**fields)
         except ValidationError as error:
             raise SpecificationError(faults_of(error, fields)) from None
-        if faults := self._misfits(isinstance(fields["circuit"], Mapping | CircuitBlock)):
+        if faults := self._misfits(isinstance(fields["circuit"], Mapping | Block)):
             raise SpecificationError(faults[:MOST_FAULTS])
 
     @classmethod
@@ -98,7 +99,7 @@ class Sweep(BaseModel):
     def normalized(self) -> dict[str, Any]:
         """Axes expanded, ``per_site`` resolved where there is one size, defaults omitted, observations sorted."""
         return {
-            "circuit": [_normal_block(block, self.stop.trajectories) for block in self.circuit],
+            "circuit": [block.normal_form(self.stop.trajectories) for block in self.circuit],
             "observe": [_normal_observation(item) for item in self.observations],
             "stop": self.stop.normal_form(),
         }
@@ -120,9 +121,9 @@ class Sweep(BaseModel):
 
     @cached_property
     def axes(self) -> tuple[str, ...]:
-        """Circuit fields that take more than one value; ``layers`` only where the others do not fix it."""
-        names = list(dict.fromkeys(name for point in self.points for name in point.ensemble.parameters))
-        several = [n for n in names if len({point.ensemble.parameters.get(n) for point in self.points}) > 1]
+        """Circuit fields and parameters that take more than one value; ``layers`` only where the others do not fix it."""
+        names = list(dict.fromkeys(name for point in self.points for name in point.ensemble.columns))
+        several = [n for n in names if len({point.ensemble.columns.get(n) for point in self.points}) > 1]
         if "layers" in several and self._fixed_by(n for n in several if n != "layers"):
             several.remove("layers")
         families = {point.ensemble.family for point in self.points}
@@ -131,9 +132,7 @@ class Sweep(BaseModel):
     def _fixed_by(self, names: Iterable[str]) -> bool:
         """Whether these fields tell all ensembles apart."""
         fields = ("family", *names)
-        rows = {
-            tuple({"family": p.ensemble.family, **p.ensemble.parameters}.get(n) for n in fields) for p in self.points
-        }
+        rows = {tuple({"family": p.ensemble.family, **p.ensemble.columns}.get(n) for n in fields) for p in self.points}
         return len(rows) == len(self.points)
 
     def _misfits(self, single: bool) -> list[Fault]:
@@ -156,7 +155,7 @@ class Sweep(BaseModel):
             for where, ensemble in block.ensembles(path, faults):
                 cap = block.trajectories or self.stop.trajectories
                 if ensemble.key in own:
-                    faults.append(Fault(f"{path}.layers", "two values give the same number of layers at one size"))
+                    faults.append(_twice(ensemble, path))
                 elif caps.setdefault(ensemble.key, cap) != cap:
                     faults.append(Fault(f"{path}.trajectories", "an earlier block gives the same ensemble another cap"))
                 own.add(ensemble.key)
@@ -182,21 +181,8 @@ def _normal_observation(item: NamedObservation) -> dict[str, Any]:
     return form if item.name == item.observation.quantity else form | {"name": item.name}
 
 
-def _normal_block(block: CircuitBlock, cap: int) -> dict[str, Any]:
-    form: dict[str, Any] = {"family": block.family}
-    sites = [int(value) for _, value in located_values(block.sites, "")]
-    for name, default in FAMILY_PARAMETERS[block.family].items():
-        values = [value for _, value in located_values(getattr(block, name), "")]
-        if name == "layers":
-            values = [_normal_layers(value, sites) for value in values]
-        if values != [default]:
-            form[name] = values[0] if len(values) == 1 else values
-    if block.trajectories not in (None, cap):
-        form["trajectories"] = block.trajectories
-    return form
-
-
-def _normal_layers(value: int | PerSite, sites: list[int]) -> int | dict[str, float]:
-    if not isinstance(value, PerSite):
-        return int(value)
-    return resolved_layers(value, sites[0]) if len(sites) == 1 else {"per_site": value.per_site}
+def _twice(ensemble: Ensemble, path: str) -> Fault:
+    if ensemble.labels:
+        shown = ", ".join(f"{name} = {value:g}" for name, value in ensemble.labels.items())
+        return Fault(f"{path}.parameters", f"an earlier combination of values gives the circuit of {shown} already")
+    return Fault(f"{path}.layers", "two values give the same number of layers at one size")

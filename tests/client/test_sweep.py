@@ -26,8 +26,11 @@ def test_the_example_expands_into_the_product_of_its_axes() -> None:
         "measurement_rate": 0.13,
         "boundary": "periodic",
         "initial_state": "zeros",
+        "references": 0,
+        "scrambling_layers": 0,
         "layers": 128,
         "replicate": 0,
+        "engine": "auto",
     }
     assert (last.sites, last.parameters["measurement_rate"], last.layers) == (128, 0.19, 512)
     assert [item.name for item in sweep.observations] == ["entropy", "i3"]
@@ -109,7 +112,7 @@ def test_faults_between_fields_name_what_would_pass() -> None:
 @pytest.mark.parametrize(
     ("change", "path", "words"),
     [
-        ({"circuit__family": "hybrid-clifort"}, "circuit.family", "must be 'hybrid-clifford'"),
+        ({"circuit__family": "hybrid-clifort"}, "circuit.family", "did you mean 'hybrid-clifford'?"),
         ({"circuit__sites": []}, "circuit.sites", "needs at least one item"),
         ({"circuit__sites": 1}, "circuit.sites", "at least 2"),
         ({"circuit__sites": float("nan")}, "circuit.sites", "must be an integer"),

@@ -29,7 +29,7 @@ def check(
     print(_expanded(sweep))
     if ensembles:
         for point in sweep.points:
-            parameters = ", ".join(f"{name} = {value}" for name, value in point.ensemble.parameters.items())
+            parameters = ", ".join(f"{name} = {value}" for name, value in point.ensemble.columns.items())
             print(f"{point.ensemble.key}  {parameters}")
     with Client(url, retry=Retry(attempts=1)) as client:
         try:

@@ -1,0 +1,106 @@
+"""Circuits written as data."""
+
+import re
+from collections.abc import Iterator
+from functools import cached_property
+from typing import Annotated, Any, Literal
+
+from pydantic import AfterValidator
+
+from sweepmill.axes import IntegerAxis, NumberAxis, located_values, nonempty
+from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
+from sweepmill.errors import Fault
+from sweepmill.families.block import Block, Values, column
+from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite
+from sweepmill.frozen import FrozenTable
+from sweepmill.language.forms import Chain, Resolution, written_form
+from sweepmill.language.grammar import grammar_faults
+from sweepmill.language.program import Program
+from sweepmill.language.steps import LayerList
+
+_NAME = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,63}")
+TAKEN = frozenset(
+    {
+        *("family", "trajectories", "parameters", "name", "quantity", "region", "layer", "position"),
+        *("mean", "standard_error", "variance", "minimum", "maximum", "met_by", "value", "occurrences"),
+        *FAMILY_PARAMETERS["layered"],
+    }
+)
+"""Names that circuit fields and columns of tables have already."""
+
+
+class Layered(Block):
+    """A circuit as lists of steps: ``before`` once, ``repeat`` in turn for ``layers`` layers, ``after`` once.
+
+    Rates may name ``parameters``, which may be axes. Layers of ``before`` are not counted, those of ``after`` follow
+    the others.
+    """
+
+    family: Literal["layered"]
+    sites: IntegerAxis
+    boundary: BoundaryAxis = "periodic"
+    initial_state: LayeredStateAxis = "zeros"
+    layers: LayersAxis = PerSite(per_site=4)
+    before: LayerList = ()
+    repeat: Annotated[LayerList, AfterValidator(nonempty)]
+    after: LayerList = ()
+    parameters: dict[str, NumberAxis] = {}
+
+    def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
+        """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
+        found = [*self._name_faults(path), *grammar_faults(self.program, self.parameters, path)]
+        found += [fault for chain in self._chains() for fault in chain.faults(self.program, path)] if not found else []
+        if not found:
+            yield from super().ensembles(path, faults)
+            return
+        self.columns(path, faults)  # its faults belong on the list, too
+        faults.extend(dict.fromkeys(found))
+
+    @cached_property
+    def program(self) -> Program:
+        """The circuit as written."""
+        return Program(self.before, self.repeat, self.after)
+
+    def _chains(self) -> list[Chain]:
+        """Every size with every boundary."""
+        return [
+            Chain(int(sites), boundary == "periodic")
+            for _, sites in column(self.sites, "sites", "", [])
+            for _, boundary in column(self.boundary, "boundary", "", [])
+        ]
+
+    def _name_faults(self, path: str) -> Iterator[Fault]:
+        for name in self.parameters:
+            where = f"{path}.parameters.{name}"
+            if not _NAME.fullmatch(name):
+                yield Fault(where, "a parameter is named by up to 64 letters, digits and underscores, a letter first")
+            elif name in TAKEN:
+                yield Fault(where, f"{name!r} is a field of a circuit or a column of a table: use another name")
+
+    def columns(self, path: str, faults: list[Fault]) -> dict[str, Values]:
+        """Fields and parameters, the parameters by name and before the layers."""
+        fields = super().columns(path, faults)
+        parameters = {
+            name: column(axis, "", f"{path}.parameters.{name}", faults)
+            for name, axis in sorted(self.parameters.items())
+        }
+        tail = {name: fields.pop(name) for name in ("layers", "replicate", "engine")}
+        return fields | parameters | tail
+
+    def ensemble(self, values: dict[str, Any], path: str, faults: list[Fault]) -> Ensemble | None:
+        """The circuit at one size with its parameters resolved; None with faults where a value is out of range."""
+        given = {name: values.pop(name) for name in sorted(self.parameters)}
+        resolution = Resolution(Chain(int(values["sites"]), values["boundary"] == "periodic"), given)
+        program = resolution.program(self.program, path)
+        if resolution.faults:
+            faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
+            return None
+        plain = Ensemble.of(self.family, **values, **program)
+        return Ensemble(plain.family, plain.parameters, plain.revision, FrozenTable(given))
+
+    def normal_form(self, cap: int) -> dict[str, Any]:
+        """The block with its circuit as written, synonyms folded, and the values of its parameters."""
+        parameters = {name: [value for _, value in located_values(axis, "")] for name, axis in self.parameters.items()}
+        written = {part: written_form(layers) for part, layers in self.program._asdict().items() if layers}
+        given = {name: values[0] if len(values) == 1 else values for name, values in parameters.items()}
+        return super().normal_form(cap) | written | ({"parameters": given} if given else {})

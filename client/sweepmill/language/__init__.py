@@ -1,0 +1,1 @@
+"""The language of circuits written as data: layers of steps on places, with rates."""
