@@ -15,7 +15,7 @@ from sweepmill.times import AT_TAGS
 
 # Names of union members: pydantic puts them into locations, a reader never wrote them
 _TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | LANGUAGE_TAGS | set(QUANTITIES) | set(FAMILY_PARAMETERS)
-_UNION_MARKS = ("function-", "int", "PerSite")
+_UNION_MARKS = ("function-", "int", "PerSite", "PerSide")
 
 
 def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
@@ -30,7 +30,7 @@ def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
 
 def _of_family(item: Any) -> bool:
     """Whether it is the family that tells no circuit block apart."""
-    return item.get("ctx", {}).get("discriminator") == "'family'"
+    return str(item.get("ctx", {}).get("discriminator")) == "'family'"
 
 
 def path_of(location: tuple[int | str, ...], single_circuit: bool) -> str:

@@ -14,7 +14,7 @@ class FrozenTable(dict[str, Any]):
         raise TypeError("this table is part of an ensemble and cannot be changed")
 
     __setitem__ = __delitem__ = _refuse
-    __ior__ = pop = popitem = clear = update = setdefault = _refuse  # type: ignore[assignment]
+    __ior__ = pop = popitem = clear = update = setdefault = _refuse
 
     def __reduce__(self) -> tuple[type["FrozenTable"], tuple[dict[str, Any]]]:
         return FrozenTable, (dict(self),)

@@ -121,7 +121,7 @@ class Sweep(BaseModel):
 
     @cached_property
     def axes(self) -> tuple[str, ...]:
-        """Circuit fields and parameters that take more than one value; ``layers`` only where the others do not fix it."""
+        """Fields and parameters that take more than one value; ``layers`` only where the others do not fix it."""
         names = list(dict.fromkeys(name for point in self.points for name in point.ensemble.columns))
         several = [n for n in names if len({point.ensemble.columns.get(n) for point in self.points}) > 1]
         if "layers" in several and self._fixed_by(n for n in several if n != "layers"):

@@ -148,11 +148,15 @@ def test_faults_between_fields_name_what_would_pass() -> None:
             "circuit",
             "the axes multiply to 15000000",
         ),
-        ({"observe": [{"quantity": "entropi"}]}, "observe[0]", "unknown quantity 'entropi': one of entropy"),
+        (
+            {"observe": [{"quantity": "entropi"}]},
+            "observe[0]",
+            "unknown quantity 'entropi': one of cluster-order, entropy",
+        ),
         (
             {"observe": [{"quantity": "entropy", "region": "third"}]},
             "observe[0].region",
-            "must be 'half' or 'every-cut'",
+            "must be 'half', 'every-cut' or 'every-interval'",
         ),
         ({"observe": [{"quantity": "entropy", "region": [3, 5, 3]}]}, "observe[0].region", "3 stands twice"),
         ({"observe": [{"quantity": "entropy", "region": [40]}]}, "observe[0].region", "outside a chain of 32 sites"),

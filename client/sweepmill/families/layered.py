@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from functools import cached_property
 from typing import Annotated, Any, Literal
 
-from pydantic import AfterValidator
+from pydantic import AfterValidator, Field
 
 from sweepmill.axes import IntegerAxis, NumberAxis, located_values, nonempty
 from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
@@ -18,6 +18,7 @@ from sweepmill.language.grammar import grammar_faults
 from sweepmill.language.program import Program
 from sweepmill.language.steps import LayerList
 
+MOST_NOTED = 200  # faults of values, more than anybody is shown
 _NAME = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,63}")
 TAKEN = frozenset(
     {
@@ -44,7 +45,7 @@ class Layered(Block):
     before: LayerList = ()
     repeat: Annotated[LayerList, AfterValidator(nonempty)]
     after: LayerList = ()
-    parameters: dict[str, NumberAxis] = {}
+    parameters: dict[str, NumberAxis] = Field(default_factory=dict)
 
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
@@ -93,7 +94,8 @@ class Layered(Block):
         resolution = Resolution(Chain(int(values["sites"]), values["boundary"] == "periodic"), given)
         program = resolution.program(self.program, path)
         if resolution.faults:
-            faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
+            if len(faults) < MOST_NOTED:
+                faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
             return None
         plain = Ensemble.of(self.family, **values, **program)
         return Ensemble(plain.family, plain.parameters, plain.revision, FrozenTable(given))

@@ -123,8 +123,8 @@ def on_form(on: Any, sites: int, periodic: bool, exponent: float = 0) -> Any:
         case RandomPairs():
             return {"random_pairs": _pairs_form(on, sites, exponent)}
         case RandomSequential():
-            rule = on.random_sequential
-            return {"random_sequential": {"count": resolved_count(rule.count, sites), "of": rule.of}}
+            drawn = on.random_sequential
+            return {"random_sequential": {"count": resolved_count(drawn.count, sites), "of": drawn.of}}
     return on
 
 

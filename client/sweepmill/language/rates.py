@@ -25,7 +25,7 @@ def value_of(value: Any, given: Mapping[str, float]) -> float:
 
 
 def rate_form(rate: Any, given: Mapping[str, float]) -> Any:
-    """A number, or a table with one of ``profile`` and ``disorder``; a list that repeats itself is cut to its period."""
+    """A number, or a table with ``profile`` or ``disorder``; a list that repeats itself is cut to its period."""
     if isinstance(rate, Parameter) or not isinstance(rate, BaseModel):
         return value_of(rate, given)
     form = {

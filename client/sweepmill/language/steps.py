@@ -126,9 +126,9 @@ Step = Annotated[
 
 
 def _listed(value: Any) -> Any:
-    if isinstance(value, list | tuple):
-        return tuple(value)
-    refuse(f"must be a list, got {shown(value)}")
+    if not isinstance(value, list | tuple):
+        refuse(f"must be a list, got {shown(value)}")
+    return tuple(value)
 
 
 Branches = Annotated[tuple[Branch, ...], BeforeValidator(_listed)]
