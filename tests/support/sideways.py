@@ -2,13 +2,14 @@
 
 Forward, on stim: a chain whose site 0 is given to a bath after every layer.  Sideways, in plain Python: columns of
 gates act on time slices, from the last site to site 0.  Slice m of a site is the leg of its world line after layer m;
-a gate of layer n on the sites x, x + 1 takes the slices n - 1, n of site x + 1 to those of site x (Postselection-free
-entanglement dynamics via spacetime duality, PRL 126, 060501 (2021), 2010.15840; bookkeeping worked out for these tests).
+a gate of layer n on the sites x, x + 1 takes the slices n - 1, n of site x + 1 to those of site x.  (Postselection-free
+entanglement dynamics via spacetime duality, PRL 126, 060501 (2021), 2010.15840; the bookkeeping is worked out here.)
 """
 
 from collections.abc import Callable, Mapping, Sequence
 from functools import cache
 
+import numpy as np
 import stim
 
 from support.stabilizer_enumeration import Group, reduced, restricted
@@ -48,7 +49,7 @@ class Bath:
     def entropy(self) -> int:
         """Of the chain and its purifier."""
         _, _, xs, zs, _, _ = self.simulator.current_inverse_tableau().inverse().to_numpy()
-        columns = [int("".join("01"[bit] for bit in part[:, q]), 2) for q in self.kept for part in (xs, zs)]
+        columns = [int.from_bytes(np.packbits(part[:, q]).tobytes(), "big") for q in self.kept for part in (xs, zs)]
         return rank(columns) - len(self.kept)
 
 
@@ -138,6 +139,8 @@ class Columns:
         self._start()
         for site in range(sites - 2, -1, -1):
             self._column(site)
+        if layers % 2 == 0:  # what the bath gives after the last odd layer meets no gate
+            self.slices[layers] = self.legs.pair()[0]
 
     def _bottom(self) -> int:
         """The first leg of a world line: |0>, or half of a pair with the purifier."""
