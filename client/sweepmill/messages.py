@@ -6,6 +6,7 @@ from pydantic import BaseModel, ConfigDict, Field
 
 SweepState = Literal["waiting", "sampling", "settled", "withdrawn", "stuck"]
 MetBy = Literal["error", "cap"]
+CircuitFormat = Literal["stim", "openqasm3"]
 Scalar = int | float | str
 Parameters = dict[str, Scalar | list[Any]]  # the lists are the layers of a circuit written as data
 
@@ -172,6 +173,13 @@ class TrajectoryValue(Message):
     )
 
 
+class CircuitText(Message):
+    """The circuit of one trajectory for other programs; where it measures, outcomes are drawn anew."""
+
+    format: CircuitFormat
+    text: str
+
+
 class Trajectory(Message):
     """One trajectory, recomputed on demand."""
 
@@ -180,6 +188,7 @@ class Trajectory(Message):
     parameters: Parameters
     observations: list[TrajectoryValue]
     versions: dict[str, str]
+    circuit: CircuitText | None = Field(None, description="The circuit, if it was asked for")
 
 
 class WorkerStatus(Message):

@@ -180,6 +180,16 @@ ENSEMBLE = EnsembleRecord.model_validate(
         "faults": [],
     }
 ).model_dump()
+CIRCUIT = """\
+# trajectory 17 of an ensemble of 4 sites (shortened)
+# qubits 0 .. 3: the chain
+XCZ 0 1
+CX 2 3
+S 0
+C_XYZ 1 2
+M 1
+TICK # layer 1 done
+"""
 TRAJECTORY = Trajectory.model_validate(
     {
         "ensemble": _POINT.ensemble.key,
@@ -192,6 +202,7 @@ TRAJECTORY = Trajectory.model_validate(
             }
         ],
         "versions": _VERSIONS,
+        "circuit": {"format": "stim", "text": CIRCUIT},
     }
 ).model_dump()
 POOL = PoolStatus.model_validate(

@@ -21,15 +21,16 @@ class Range(NamedTuple):
     quality: float
 
 
-def choose_format(accept: str | None) -> str:
-    """The format named best by ``accept``; JSON where nothing is preferred. Raises Refusal (406) if none fits."""
-    if not accept:
-        return "json"
-    ranges = parse_accept(accept)
-    quality = {name: _quality(media, ranges) for name, media in MEDIA_TYPES.items()}
+def choose_format(accept: str | None, offered: Mapping[str, str] = MEDIA_TYPES, what: str = "tables") -> str:
+    """The format of ``offered`` named best by ``accept``; the first, JSON, where nothing is preferred.
+
+    Raises Refusal (406) if none fits.
+    """
+    ranges = parse_accept(accept or "*/*")
+    quality = {name: _quality(media, ranges) for name, media in offered.items()}
     best = max(quality, key=lambda name: quality[name])  # the first of equals, JSON before all
     if quality[best] <= 0:
-        raise Refusal(HTTPStatus.NOT_ACCEPTABLE, f"tables come as {', '.join(MEDIA_TYPES.values())}")
+        raise Refusal(HTTPStatus.NOT_ACCEPTABLE, f"{what} come as {', '.join(offered.values())}")
     return best
 
 

@@ -21,7 +21,7 @@ _BY_HAND: tuple[type[BaseModel], ...] = (Problem, ProgressEvent, Sweep, Table)
 _WHEN = {
     400: "The body is not JSON, or nested too deep",
     404: "Nothing has this key, or the owner has no request here",
-    406: "No format of tables is acceptable",
+    406: "No format at hand is acceptable",
     409: "The shortened key fits several; `faults` lists them",
     413: "The body is too large",
     415: "The body is not declared as application/json",

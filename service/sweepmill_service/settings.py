@@ -37,6 +37,7 @@ class ServerLimits(BaseModel):
     accumulator_bytes: int = Field(1_048_576, ge=1024, description="Totals of one ensemble and observation")
     trajectory_seconds: float = Field(600.0, gt=0, description="Predicted seconds of one trajectory")
     recompute_seconds: float = Field(30.0, gt=0, description="The same where a request recomputes it on demand")
+    circuit_operations: int = Field(200_000, ge=1, description="Operations of a circuit that is written out on demand")
     body_bytes: int = Field(4_194_304, ge=1024, description="Body of one request")
     json_depth: int = Field(32, ge=4, description="Nesting of lists and objects in a body")
 

@@ -54,7 +54,7 @@ def test_every_gate_named_for_openqasm_is_what_stim_means_by_it() -> None:
         _append(script, circuit, name, *range(first, first + size))
     expected = stim.TableauSimulator()
     expected.do(circuit)
-    found = Interpreter(qasm_text(script, "every gate")).simulator
+    found = Interpreter(qasm_text(script, ["every gate"])).simulator
     assert found.canonical_stabilizers() == expected.canonical_stabilizers()
 
 
@@ -81,14 +81,14 @@ def test_both_texts_have_the_entropies_of_the_signed_simulation(sites: int, init
     regions = [tuple(q for q in range(total) if mask >> q & 1) for mask in range(2**total)]
     expected = _entropies(reference.state.stabilizers(), total, regions)
 
-    circuit = stim.Circuit(stim_text(script, "a trajectory"))
+    circuit = stim.Circuit(stim_text(script, ["a trajectory"]))
     simulator = stim.TableauSimulator(seed=seed)
     simulator.set_num_qubits(script.total)
     simulator.do(circuit)
     assert circuit.num_ticks == len(layers)
     assert _entropies(simulator.canonical_stabilizers(), script.total, regions) == expected
 
-    program = Interpreter(qasm_text(script, "a trajectory"))
+    program = Interpreter(qasm_text(script, ["a trajectory"]))
     assert program.barriers == len(layers)
     assert program.simulator.num_qubits == script.total
     assert _entropies(program.simulator.canonical_stabilizers(), script.total, regions) == expected
@@ -105,7 +105,7 @@ def _entropies(stabilizers: list[stim.PauliString], qubits: int, regions: list[t
 def test_a_short_circuit_as_stim_text() -> None:
     script = _short()
     assert (
-        stim_text(script, "a short circuit")
+        stim_text(script, ["a short circuit"])
         == """\
 # a short circuit
 # qubits 0 .. 2: the chain
@@ -134,7 +134,7 @@ TICK # layer 2 done
 
 def test_a_short_circuit_as_openqasm() -> None:
     assert (
-        qasm_text(_short(), "a short circuit")
+        qasm_text(_short(), ["a short circuit"])
         == """\
 OPENQASM 3.0;
 // a short circuit

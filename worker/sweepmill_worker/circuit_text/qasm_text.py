@@ -4,7 +4,7 @@ Source of the language: OpenQASM 3: a broader and deeper quantum assembly langua
 Computing 3, 12 (2022), arXiv:2104.14722.
 """
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from itertools import count
 from typing import Final
 
@@ -15,14 +15,14 @@ _TO_Z: Final = {"X": ("h",), "Y": ("sdg", "h"), "Z": ()}
 _FROM_Z: Final = {"X": ("h",), "Y": ("h", "s"), "Z": ()}
 
 
-def qasm_text(script: Script, title: str) -> str:
+def qasm_text(script: Script, title: Sequence[str]) -> str:
     """The text, comments included."""
     return "\n".join([*_head(script, title), *_body(script)]) + "\n"
 
 
-def _head(script: Script, title: str) -> Iterator[str]:
+def _head(script: Script, title: Sequence[str]) -> Iterator[str]:
     yield "OPENQASM 3.0;"
-    yield f"// {title}"
+    yield from (f"// {line}" for line in title)
     yield 'include "stdgates.inc";'
     names = sorted({one.name for one in script.instructions} - {MEASURE, FORCED, LAYER})
     yield from (line for line in map(definition, names) if line is not None)

@@ -1,6 +1,6 @@
 """A script as a stim circuit."""
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from itertools import groupby
 from typing import Final
 
@@ -10,13 +10,13 @@ _ONE_SITE: Final = {"X": "MX", "Y": "MY", "Z": "M"}
 _FORCED_NOTE: Final = "forced: keep runs with 0 here"
 
 
-def stim_text(script: Script, title: str) -> str:
+def stim_text(script: Script, title: Sequence[str]) -> str:
     """The text, comments included."""
     return "\n".join([*_head(script, title), *_body(script)]) + "\n"
 
 
-def _head(script: Script, title: str) -> Iterator[str]:
-    yield f"# {title}"
+def _head(script: Script, title: Sequence[str]) -> Iterator[str]:
+    yield from (f"# {line}" for line in title)
     yield f"# qubits 0 .. {script.sites - 1}: the chain"
     first = script.sites
     for count, what in ((script.references, "references"), (script.discarded, "discarded, not part of the state")):
