@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import Any, NamedTuple
 
 import pytest
+import stim
 from typer.main import get_command
 
 from support.services import environment
@@ -133,6 +134,8 @@ def test_the_module_runs_like_the_command() -> None:
         ("table", "5a0c77d2", "-o", "table.xlsx"),
         ("table", "5a0c77d2", "-o", "table.csv", "--name", "i3"),
         ("replay", "5a0c77d2", "-1"),
+        ("replay", "5a0c77d2", "1", "-o", "circuit.stim"),
+        ("replay", "5a0c77d2", "1", "--circuit", "quil"),
         ("list", "--state", "paused"),
     ],
 )
@@ -236,6 +239,22 @@ def test_a_sweep_from_submission_to_files(served: Run, tmp_path: Path) -> None:
     assert withdrawn == (0, f"request withdrawn; sweep {key[:12]} is withdrawn\n", "")
     assert served("withdraw", key[:10]).code == 1
     assert served("watch", key).code == 1
+
+
+def test_the_circuit_of_a_trajectory_is_written_beside_the_comparison(served: Run, tmp_path: Path) -> None:
+    key = served("submit", written(tmp_path), "--watch").out.strip()
+    served("table", key, "-o", tmp_path / "t.json")
+    ensemble = Table.read(tmp_path / "t.json").ensembles[0]["key"]
+    printed = served("replay", ensemble, 3, "--circuit", "stim")
+    assert printed.code == 0
+    assert printed.out.startswith(f"# trajectory 3 of ensemble {ensemble}\n")
+    assert stim.Circuit(printed.out).num_ticks == 8
+    assert "is equal here and there" in printed.err
+    path = tmp_path / "circuit.qasm"
+    kept = served("replay", ensemble, 3, "--circuit", "openqasm3", "-o", path)
+    assert (kept.code, kept.err) == (0, "")
+    assert "is equal here and there" in kept.out
+    assert path.read_text().startswith("OPENQASM 3.0;\n")
 
 
 def test_a_trajectory_that_differs_is_exit_code_1(served: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:

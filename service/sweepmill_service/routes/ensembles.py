@@ -22,7 +22,6 @@ def _trajectory_response() -> dict[str, Any]:
     return response
 
 
-
 @router.get(
     "/ensembles/{key}",
     responses={200: described("The ensemble", examples.ENSEMBLE), **problems(404, 409, 422, 503)},
