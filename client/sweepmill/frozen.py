@@ -26,7 +26,9 @@ def freeze(value: Any) -> Any:
         return value
     if isinstance(value, Mapping):
         return FrozenTable({name: freeze(inner) for name, inner in value.items()})
-    return tuple(freeze(inner) for inner in value) if isinstance(value, list | tuple) else value
+    if isinstance(value, tuple) and all(isinstance(inner, FrozenTable) for inner in value):
+        return value
+    return tuple(map(freeze, value)) if isinstance(value, list | tuple) else value
 
 
 def thaw(value: Any) -> Any:

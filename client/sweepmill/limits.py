@@ -1,10 +1,15 @@
 """Limits a server sets on sweeps: a refusal names the limit and what would pass."""
 
+from collections.abc import Iterator
+
 from pydantic import BaseModel, ConfigDict, Field
 
 from sweepmill.coordinates import accumulator_bytes
+from sweepmill.ensemble import Ensemble
 from sweepmill.errors import Fault
 from sweepmill.sweep import Point, Sweep
+
+CLUSTERS = "projective-ising"  # its engine takes far longer chains than the others
 
 
 class Limits(BaseModel):
@@ -12,24 +17,45 @@ class Limits(BaseModel):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    sites: int = Field(1024, ge=2, description="Sites of one ensemble")
+    sites: int = Field(1024, ge=2, description="Sites of one ensemble, and its reference qubits")
+    cluster_sites: int = Field(1_000_000, ge=2, description="Sites of projective-ising, which has an engine of its own")
+    reference_sites: int = Field(64, ge=2, description="Sites with engine = 'reference'")
     layers: int = Field(100_000, ge=1, description="Layers of one ensemble")
     ensembles: int = Field(20_000, ge=1, description="Ensembles of one sweep")
     trajectories: int = Field(10_000_000, ge=1, description="Cap of one ensemble")
     accumulator_bytes: int = Field(1_048_576, ge=1024, description="Size of one total")
 
+    def sites_of(self, ensemble: Ensemble) -> tuple[int, str]:
+        """How many sites an ensemble may have, and of what this is the limit."""
+        if ensemble.parameters["engine"] == "reference":
+            return self.reference_sites, "sites per ensemble with engine = 'reference'"
+        if ensemble.family == CLUSTERS:
+            return self.cluster_sites, f"sites per ensemble of {CLUSTERS}"
+        return self.sites, "sites per ensemble"
+
 
 def check_limits(sweep: Sweep, limits: Limits) -> list[Fault]:
     """Every limit the sweep exceeds, once each with the worst offender."""
     points = sweep.points
+    fitting = tuple(p for p in points if p.ensemble.sites <= limits.sites_of(p.ensemble)[0])
     faults = [
-        _beyond("circuit.sites", max(p.ensemble.sites for p in points), limits.sites, "sites per ensemble"),
+        *_sites_faults(points, limits),
+        _beyond("circuit.references", max(p.ensemble.references for p in points), limits.sites, "reference qubits"),
         _beyond("circuit.layers", max(p.ensemble.layers for p in points), limits.layers, "layers per ensemble"),
         _beyond("circuit", len(points), limits.ensembles, "ensembles per sweep"),
         _beyond("stop.trajectories", max(p.cap for p in points), limits.trajectories, "trajectories per ensemble"),
-        *(_size_fault(sweep, index, points, limits) for index in range(len(sweep.observe))),
+        *(_size_fault(sweep, index, fitting, limits) for index in range(len(sweep.observe)) if fitting),
     ]
     return [fault for fault in faults if fault is not None]
+
+
+def _sites_faults(points: tuple[Point, ...], limits: Limits) -> Iterator[Fault | None]:
+    most: dict[tuple[int, str], int] = {}
+    for point in points:
+        kind = limits.sites_of(point.ensemble)
+        most[kind] = max(most.get(kind, 0), point.ensemble.sites)
+    for (limit, what), sites in most.items():
+        yield _beyond("circuit.sites", sites, limit, what)
 
 
 def _beyond(path: str, value: int, limit: int, what: str) -> Fault | None:

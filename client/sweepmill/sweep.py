@@ -30,6 +30,13 @@ class Point(NamedTuple):
     cap: int
 
 
+class Expansion(NamedTuple):
+    """Ensembles of one circuit block and its faults; the paths to blame begin within the block."""
+
+    ensembles: list[tuple[str, Ensemble]]
+    faults: list[Fault]
+
+
 class NamedObservation(NamedTuple):
     """An observation under the name it has in its sweep."""
 
@@ -114,10 +121,14 @@ class Sweep(BaseModel):
     def points(self) -> tuple[Point, ...]:
         """Every ensemble once, in table order: blocks as written, fields in the family's order, values as written."""
         points: dict[str, Point] = {}
-        for block in self.circuit:
-            for _, ensemble in block.ensembles("", []):
+        for block, expansion in zip(self.circuit, self._expansions, strict=True):
+            for _, ensemble in expansion.ensembles:
                 points.setdefault(ensemble.key, Point(ensemble, block.trajectories or self.stop.trajectories))
         return tuple(points.values())
+
+    @cached_property
+    def _expansions(self) -> tuple[Expansion, ...]:
+        return tuple(_expansion(block) for block in self.circuit)
 
     @cached_property
     def axes(self) -> tuple[str, ...]:
@@ -152,7 +163,8 @@ class Sweep(BaseModel):
         for index, block in enumerate(self.circuit):
             path = "circuit" if single else f"circuit[{index}]"
             own: set[str] = set()
-            for where, ensemble in block.ensembles(path, faults):
+            faults += [Fault(path + where, message) for where, message in self._expansions[index].faults]
+            for where, ensemble in self._expansions[index].ensembles:
                 cap = block.trajectories or self.stop.trajectories
                 if ensemble.key in own:
                     faults.append(_twice(ensemble, path))
@@ -162,7 +174,7 @@ class Sweep(BaseModel):
                 shape = ensemble.shape
                 if shape not in shapes:
                     shapes.add(shape)
-                    self._check_observations(ensemble, where, faults)
+                    self._check_observations(ensemble, path + where, faults)
                 if len(faults) > MOST_FAULTS:
                     return
 
@@ -170,6 +182,11 @@ class Sweep(BaseModel):
         for index, item in enumerate(self.observe):
             if fault := item.fault(ensemble):
                 faults.append(Fault(f"observe[{index}].{fault[0]}", f"{fault[1]} ({where})"))
+
+
+def _expansion(block: Block) -> Expansion:
+    faults: list[Fault] = []
+    return Expansion(list(block.ensembles("", faults)), faults)
 
 
 def _name(item: Observation) -> str:

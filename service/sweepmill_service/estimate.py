@@ -1,7 +1,7 @@
 """What of a sweep is sampled already, and what the rest would cost."""
 
 from collections.abc import Iterator
-from typing import Literal, NamedTuple
+from typing import Any, Literal, NamedTuple
 
 from sweepmill.coordinates import accumulator_bytes
 from sweepmill.messages import Estimate
@@ -61,10 +61,10 @@ def _source(costs: Costs, sweep: Sweep, there: list[Sampled]) -> Literal["measur
 
 
 def _sizes(sweep: Sweep) -> Iterator[int]:
-    known: dict[tuple[str, int, int], int] = {}
+    known: dict[tuple[Any, ...], int] = {}
     for point in sweep.points:
         for item in sweep.observations:
-            shape = (item.name, point.ensemble.sites, point.ensemble.layers)
+            shape = (item.name, *point.ensemble.shape)
             if shape not in known:
                 known[shape] = accumulator_bytes(point.ensemble, item.observation)
             yield known[shape]

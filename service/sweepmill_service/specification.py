@@ -9,6 +9,7 @@ from sweepmill.sweep import MOST_FAULTS, Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
 from sweepmill_service.magnitudes import too_large
+from sweepmill_service.programs import too_long
 from sweepmill_service.settings import ServerLimits
 from sweepmill_service.store import Store
 
@@ -29,7 +30,8 @@ def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimit
 def _immense(specification: Mapping[str, Any], limits: ServerLimits) -> list[Fault]:
     """What must be refused before it is expanded, because expanding it would take for ever."""
     many = too_many(specification, limits.ensembles)
-    return [*too_large(specification, limits), *([many] if many else [])][:MOST_FAULTS]
+    faults = [*too_large(specification, limits), *([many] if many else []), *too_long(specification, limits)]
+    return faults[:MOST_FAULTS]
 
 
 def _slow(sweep: Sweep, costs: Costs, limit: float) -> Fault | None:

@@ -7,8 +7,8 @@ from typing import Any, NamedTuple
 
 from pydantic import TypeAdapter
 
-from sweepmill.circuits import CircuitBlock
 from sweepmill.ensemble import Ensemble
+from sweepmill.families import CircuitBlock
 from sweepmill.observation import Observation
 from sweepmill.sweep import NamedObservation
 

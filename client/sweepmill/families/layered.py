@@ -12,7 +12,7 @@ from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
 from sweepmill.errors import Fault
 from sweepmill.families.block import Block, Values, column
 from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite
-from sweepmill.frozen import FrozenTable
+from sweepmill.frozen import FrozenTable, freeze
 from sweepmill.language.forms import Chain, Resolution, written_form
 from sweepmill.language.grammar import grammar_faults
 from sweepmill.language.program import Program
@@ -91,14 +91,29 @@ class Layered(Block):
     def ensemble(self, values: dict[str, Any], path: str, faults: list[Fault]) -> Ensemble | None:
         """The circuit at one size with its parameters resolved; None with faults where a value is out of range."""
         given = {name: values.pop(name) for name in sorted(self.parameters)}
-        resolution = Resolution(Chain(int(values["sites"]), values["boundary"] == "periodic"), given)
-        program = resolution.program(self.program, path)
-        if resolution.faults:
-            if len(faults) < MOST_NOTED:
-                faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
+        at = (int(values["sites"]), values["boundary"] == "periodic", *given.values())
+        if at not in self._resolved:
+            self._resolved[at] = self._resolve(Chain(*at[:2]), given, path, faults)
+        program = self._resolved[at]
+        if program is None:
             return None
         plain = Ensemble.of(self.family, **values, **program)
         return Ensemble(plain.family, plain.parameters, plain.revision, FrozenTable(given))
+
+    @cached_property
+    def _resolved(self) -> dict[tuple[Any, ...], Any]:
+        """Circuits that were resolved already, by size, boundary and values: other fields leave them as they are."""
+        return {}
+
+    def _resolve(self, chain: Chain, given: dict[str, float], path: str, faults: list[Fault]) -> Any:
+        """The frozen circuit; None with faults where a value is out of range."""
+        resolution = Resolution(chain, given)
+        program = resolution.program(self.program, path)
+        if not resolution.faults:
+            return freeze(program)
+        if len(faults) < MOST_NOTED:
+            faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
+        return None
 
     def normal_form(self, cap: int) -> dict[str, Any]:
         """The block with its circuit as written, synonyms folded, and the values of its parameters."""

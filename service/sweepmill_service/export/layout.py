@@ -28,21 +28,21 @@ class Layout:
         self.fields = [pa.field(axis, _type([self._value(e, axis) for e in sweep.ensembles])) for axis in axes]
         self.observation_keys = [(item, item.observation.key) for item in sweep.observations]
         self.labels = {item.name: _labels(item) for item in sweep.observations}
-        self._coordinates: dict[tuple[str, int, int], tuple[Coordinate, ...]] = {}
+        self._coordinates: dict[tuple[Any, ...], tuple[Coordinate, ...]] = {}
 
     @staticmethod
     def _value(ensemble: Ensemble, axis: str) -> Any:
-        return ensemble.family if axis == "family" else ensemble.parameters.get(axis)
+        return ensemble.family if axis == "family" else ensemble.columns.get(axis)
 
     def axis_values(self, ordinal: int) -> list[Any]:
-        """Value of every axis on an ensemble; None where its family has no such parameter."""
+        """Value of every axis on an ensemble; None where it has no such parameter."""
         ensemble = self.sweep.ensembles[ordinal]
         return [self._value(ensemble, axis) for axis in self.axes]
 
     def coordinates(self, ordinal: int, item: NamedObservation) -> tuple[Coordinate, ...]:
-        """Coordinates in the order of the accumulator, worked out once for each size and depth."""
+        """Coordinates in the order of the accumulator, worked out once for each shape."""
         ensemble = self.sweep.ensembles[ordinal]
-        key = (item.name, ensemble.sites, ensemble.layers)
+        key = (item.name, *ensemble.shape)
         if key not in self._coordinates:
             self._coordinates[key] = coordinates(ensemble, item.observation)
         return self._coordinates[key]

@@ -53,7 +53,7 @@ class Provenance:
 
     def _folds(self) -> dict[str, list[int]]:
         """Numbers of folds each observation's totals keep; several where sizes differ in coordinates."""
-        shapes = {(e.sites, e.layers): i for i, e in enumerate(self.layout.sweep.ensembles)}
+        shapes = {e.shape: i for i, e in enumerate(self.layout.sweep.ensembles)}
         return {
             item.name: sorted({folds_for(len(self.layout.coordinates(i, item))) for i in shapes.values()})
             for item in self.layout.sweep.observations

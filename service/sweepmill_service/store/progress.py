@@ -1,16 +1,17 @@
 """Progress per ensemble, and what is there already of ensembles that may never have been submitted."""
 
 import json
-from collections.abc import Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 from sqlalchemy import Connection, Row, select
 
-from sweepmill.ensemble import Ensemble
+from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.messages import EnsembleProgress, ProgressPage
-from sweepmill_service.schema import ensemble, sweep_ensemble, total
+from sweepmill_service.schema import ensemble, sweep, sweep_ensemble, total
 from sweepmill_service.store.common import chunks
 from sweepmill_service.store.status import commit_counter
+from sweepmill_service.stored import expand
 
 
 def progress(connection: Connection, key: str, since: int | None, limit: int, after: int | None) -> ProgressPage:
@@ -22,7 +23,7 @@ def progress(connection: Connection, key: str, since: int | None, limit: int, af
     if after is not None:
         conditions.append(sweep_ensemble.c.ordinal > after)
     statement = (
-        select(sweep_ensemble, ensemble.c.normal_form, ensemble.c.stuck)
+        select(sweep_ensemble, ensemble.c.family, ensemble.c.normal_form, ensemble.c.stuck)
         .join(ensemble, ensemble.c.key == sweep_ensemble.c.ensemble)
         .where(*conditions)
         .order_by(sweep_ensemble.c.ordinal)
@@ -31,14 +32,25 @@ def progress(connection: Connection, key: str, since: int | None, limit: int, af
     rows = connection.execute(statement).all()
     page = rows[:limit]
     following = page[-1].ordinal if len(rows) > limit else None
-    return ProgressPage(sweep=key, commit=counter, ensembles=[_ensemble_progress(row) for row in page], next=following)
+    named = _named(connection, key, page)
+    ensembles = [_ensemble_progress(row, named(row)) for row in page]
+    return ProgressPage(sweep=key, commit=counter, ensembles=ensembles, next=following)
 
 
-def _ensemble_progress(row: Row[Any]) -> EnsembleProgress:
+def _named(connection: Connection, key: str, page: Sequence[Row[Any]]) -> Callable[[Row[Any]], Mapping[str, Any]]:
+    """What to call an ensemble by: its scalar parameters, and the named values that only the specification knows."""
+    if not any(row.family == LAYERED for row in page):
+        return lambda row: Ensemble.from_normal_form(json.loads(row.normal_form)).columns
+    text = connection.scalars(select(sweep.c.specification).where(sweep.c.key == key)).one()
+    ensembles = expand(text).ensembles
+    return lambda row: ensembles[row.ordinal].columns
+
+
+def _ensemble_progress(row: Row[Any], columns: Mapping[str, Any]) -> EnsembleProgress:
     return EnsembleProgress(
         ordinal=row.ordinal,
         ensemble=row.ensemble,
-        parameters=dict(Ensemble.from_normal_form(json.loads(row.normal_form)).parameters),
+        parameters=dict(columns),
         trajectories=row.sampled if row.trajectories is None else row.trajectories,
         cap=row.cap,
         met_by=row.met_by,
