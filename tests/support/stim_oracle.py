@@ -5,6 +5,7 @@ from functools import cache
 
 import numpy as np
 import stim
+from numpy.typing import NDArray
 
 from sweepmill_worker.clifford.engine import GATE_CLASSES, HybridChain, Layer
 
@@ -54,6 +55,11 @@ class Reference:
             random += self.simulator.peek_z(site) == 0
             self.simulator.measure(site)
         return random
+
+    def rows(self) -> tuple[NDArray[np.uint8], NDArray[np.uint8]]:
+        """X and Z parts of the stabilizers [rows, sites], reference qubits included."""
+        _, _, z_to_x, z_to_z, _, _ = self.simulator.current_inverse_tableau().inverse().to_numpy()
+        return z_to_x.astype(np.uint8), z_to_z.astype(np.uint8)
 
     def entropies(self, regions: Sequence[tuple[int, ...]]) -> list[int]:
         """Rank of the stabilizers restricted to the region, minus its size, from columns as integers."""

@@ -7,7 +7,8 @@ import numpy as np
 import pytest
 
 from sweepmill_worker.clifford.engine import MAX_SITES, HybridChain, Readings, describe, run, run_plan
-from sweepmill_worker.clifford.roads import GENERAL, INTERVAL, PREFIX, TURNED, Road, plan
+from sweepmill_worker.clifford.roads import Plan, Road, plan
+from sweepmill_worker.observables.probes import Probes, of_regions
 
 KEY = (11, 12)
 P = int(0.13 * 2**32)
@@ -61,23 +62,30 @@ def test_all_roads_give_the_same_entropies(sites: int, periodic: bool, mixed: bo
     regions = regions if sites < 100 else random.Random(1).sample(regions, 60)
     count = 20 if sites < 100 else 2
     roads = [frozenset(Road), frozenset({Road.PREFIXES}), frozenset({Road.INTERVALS}), frozenset[Road]()]
-    results = [run_plan(chain, KEY, 5, count, [1, 11, 20], plan(sites, mixed, regions, allowed)) for allowed in roads]
+    probes = of_regions(sites, regions)
+    results = [run_plan(chain, KEY, 5, count, [1, 11, 20], plan(probes, mixed, allowed)) for allowed in roads]
     for other in results[1:]:
         equal(results[0], other)
 
 
 def test_roads_are_chosen_by_the_shape_of_the_regions() -> None:
-    def kinds(mixed: bool, *regions: tuple[int, ...]) -> list[int]:
-        return [int(kind) for kind in plan(8, mixed, regions).kinds]
+    def roads(mixed: bool, *regions: tuple[int, ...], references: int = 0) -> list[int]:
+        found: Plan = plan(of_regions(8, regions, references), mixed)
+        return [len(road.places) for road in (found.cuts, found.inside, found.around, found.others)]
 
-    assert kinds(False, (), (0, 1), (5, 6, 7), tuple(range(8))) == [PREFIX] * 4
-    assert kinds(False, (0, 1), (2, 3), (0, 1, 7)) == [INTERVAL] * 3
-    assert kinds(True, (0, 1), (5, 6, 7)) == [INTERVAL, INTERVAL]
-    assert kinds(True, (0, 1, 7)) == [TURNED]
-    assert kinds(True, (0, 1, 2, 6, 7)) == [TURNED]
-    assert kinds(True, (0, 1, 2, 3, 4, 6, 7)) == [GENERAL]
-    assert kinds(False, (0, 2), (1, 3, 4, 5, 6, 7)) == [GENERAL, GENERAL]
-    assert len(plan(8, False, [(0, 2), (1, 3, 4, 5, 6, 7)]).toggle_ends) == 1  # complements: one entropy
+    assert roads(False, (), (0, 1), (5, 6, 7), tuple(range(8))) == [4, 0, 0, 0]
+    assert roads(False, (0, 1), (2, 3), (0, 1, 7)) == [0, 3, 0, 0]
+    assert roads(True, (0, 1), (5, 6, 7)) == [0, 2, 0, 0]
+    assert roads(True, (0, 1), (0, 1, 7), (0, 1, 2, 3, 4, 6, 7)) == [1, 0, 2, 0]
+    assert roads(False, (0, 1, 7), (8, 9), (7, 8), references=2) == [0, 1, 1, 1]
+    assert roads(False, (0, 2), (1, 3, 4, 5, 6, 7)) == [0, 0, 0, 2]
+    complements = plan(of_regions(8, [(0, 2), (1, 3, 4, 5, 6, 7)]), False)
+    assert len(complements.others.ends) == 1  # one entropy, read once
+
+
+def test_probes_that_need_signs_or_clusters_are_refused() -> None:
+    with pytest.raises(ValueError, match="without signs"):
+        plan(Probes(8, cluster_order=True), False)
 
 
 @pytest.mark.parametrize(("sites", "periodic"), [(10, True), (11, False), (70, True)])
@@ -86,7 +94,7 @@ def test_entropies_of_complements_agree_in_a_pure_state(sites: int, periodic: bo
     complements = [tuple(sorted(set(range(sites)) - set(region))) for region in regions]
     chain = HybridChain(sites, 30, periodic, False, P)
     readings = [
-        run_plan(chain, KEY, 0, 4, [15, 30], plan(sites, True, which)) for which in (regions, complements)
+        run_plan(chain, KEY, 0, 4, [15, 30], plan(of_regions(sites, which), True)) for which in (regions, complements)
     ]  # planned as for a mixed state: no use of the identity that is tested
     equal(*readings)
 

@@ -26,6 +26,10 @@ EVERYTHING: list[dict[str, Any]] = [
     {"quantity": "record-bits", "at": {"log_spaced": 4}, "histogram": True},
     {"quantity": "outcome-randomness", "at": {"average_over": {"last": 0.5}}},
     {"quantity": "outcome-randomness", "name": "so-far", "cumulative": True, "at": [2, 8]},
+    {"quantity": "entropy", "name": "intervals", "region": "every-interval", "average_translations": True},
+    {"quantity": "site-environment-information", "at": {"every": 8}},
+    {"quantity": "negativity", "region": "every-cut", "histogram": True},
+    {"quantity": "generator-lengths", "at": "end"},
 ]
 
 

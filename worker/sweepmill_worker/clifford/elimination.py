@@ -1,6 +1,6 @@
-"""Roads over the chain in order: all prefixes by one elimination, all intervals by the clipped gauge.
+"""Eliminations along the line, the chain cut open at site 0: all prefixes at once, and the clipped gauge.
 
-Both work on a copy of the columns in linear order, cut open at an `origin`, where a row ends no later than `ends`.
+They work on a copy of the columns of the first sites, where a row ends no later than `ends`.
 """
 
 from typing import NamedTuple
@@ -17,6 +17,7 @@ from sweepmill_worker.clifford.state import (
     address,
     aligned,
     erase,
+    insert,
 )
 from sweepmill_worker.clifford.vectors import any_bit, load, store
 from sweepmill_worker.clifford.windows import smallest
@@ -27,49 +28,56 @@ class Desk(NamedTuple):
     """Work space of the readings."""
 
     copy: State
-    """Columns in linear order; `stabilizers` marks the rows that are not yet pivots, `start` stays zero."""
+    """The columns; `stabilizers` marks the rows that are not yet pivots, `start` stays zero."""
     ends: Shorts
     """Per row, the last position (in the direction of the sweep) where it may have support."""
     left: Shorts
-    """Clipped gauge: first position of the support of each stabilizer; -1 for every other row."""
+    """Clipped gauge: first position of the support of each row that has some; -1 for every other slot."""
     right: Shorts
     """Clipped gauge: last position of the support."""
     ranks: NDArray[np.int32]
-    """Rank of the columns of the first x positions, x = 0 .. L."""
+    """Rank of the columns of the first x positions, x = 0 .. total sites."""
+    rows: Words
+    """Some rows, as bits."""
+    heads: NDArray[np.int32]
+    """Per position one of the clipped rows that begin there, or -1."""
+    following: NDArray[np.int32]
+    """Per row another one that begins there, too, or -1."""
+    counts: NDArray[np.int32]
+    """Room for a count per position or length, and a few more."""
 
 
 def new_desk(copy: State) -> Desk:
     """Work space beside a spare state."""
-    slots = len(copy.start)
+    slots, sites = len(copy.start), copy.sites
     ends, left, right = (aligned(slots, np.int16) for _ in range(3))
-    return Desk(copy, ends, left, right, ranks=np.zeros(copy.sites + 1, dtype=np.int32))
+    ranks, heads, following, counts = (np.zeros(n, dtype=np.int32) for n in (sites + 1, sites, slots, sites + 4))
+    rows = aligned(len(copy.stabilizers), np.uint64)
+    return Desk(copy, ends, left, right, ranks, rows, heads, following, counts)
 
 
 @step
-def cut_open(state: State, desk: Desk, origin: int, lanes: Lanes) -> None:
-    """Copy the columns in the order origin, origin + 1, ..., and bound the rows' ends."""
-    copy, sites, width = desk.copy, state.sites, len(lanes)
+def cut_open(state: State, desk: Desk, sites: int, lanes: Lanes) -> None:
+    """Copy the columns of the first `sites` sites, and bound the rows' ends."""
+    copy, width = desk.copy, len(lanes)
     for chunk in range(state.chunks):
-        for position in range(sites):
-            site = position + origin - (sites if position + origin >= sites else 0)
-            source, to = address(state, chunk, 2 * site, lanes), address(state, chunk, 2 * position, lanes)
-            store(copy.columns, to, load(state.columns, source, lanes))
-            store(copy.columns, to + width, load(state.columns, source + width, lanes))
+        first = address(state, chunk, 0, lanes)
+        for column in range(2 * sites):
+            store(copy.columns, first + column * width, load(state.columns, first + column * width, lanes))
     for row in range(len(state.start)):
-        begin = (state.start[row] - origin) % sites
-        desk.ends[row] = min(begin + state.end[row] - state.start[row], sites - 1)
+        desk.ends[row] = min(state.end[row], sites - 1)
 
 
 @step
-def sweep(desk: Desk, backward: bool, met: Shorts, lanes: Lanes) -> None:
+def sweep(desk: Desk, sites: int, backward: bool, met: Shorts, lanes: Lanes) -> None:
     """Eliminate position by position: afterwards pivots that begin at one position are independent there.
 
     The pivot is the row that ends first, so no other row ends later for being multiplied by it.  met[row] = position
     at which the row became pivot, counted from the left whatever the direction; desk.ranks counts in sweep order.
     """
-    copy, last, rank = desk.copy, desk.copy.sites - 1, 0
+    copy, last, rank = desk.copy, sites - 1, 0
     desk.ranks[0] = 0
-    for position in range(copy.sites):
+    for position in range(sites):
         site = last - position if backward else position
         for column in (2 * site, 2 * site + 1):
             pivot = smallest(copy, column, copy.stabilizers, copy.start, desk.ends, lanes)
@@ -81,6 +89,20 @@ def sweep(desk: Desk, backward: bool, met: Shorts, lanes: Lanes) -> None:
             end = last - desk.ends[pivot] if backward else desk.ends[pivot]
             clear_column(copy, column, min(site, end), max(site, end), pivot, lanes)
         desk.ranks[position + 1] = rank
+
+
+@step
+def leave_inside(desk: Desk, depths: NDArray[np.int64], lanes: Lanes) -> None:
+    """Eliminate the positions of depth 0: the rows still marked generate the group inside the other positions."""
+    copy = desk.copy
+    for site in range(copy.sites):
+        if depths[site] != 0:
+            continue
+        for column in (2 * site, 2 * site + 1):
+            pivot = smallest(copy, column, copy.stabilizers, copy.start, desk.ends, lanes)
+            if pivot >= 0:
+                erase(copy.stabilizers, pivot)
+                clear_column(copy, column, 0, desk.ends[pivot], pivot, lanes)
 
 
 @part
@@ -101,36 +123,36 @@ def copy_rows(to: Words, first: Words, second: Words) -> None:
 
 
 @part
-def read_prefixes(state: State, desk: Desk, lanes: Lanes) -> None:
+def rank_prefixes(state: State, desk: Desk, sites: int, lanes: Lanes) -> None:
     """Leave in desk.ranks the ranks of all prefixes 0 .. x - 1: S(x) = ranks[x] - x, pure or mixed."""
-    cut_open(state, desk, 0, lanes)
+    cut_open(state, desk, sites, lanes)
     copy_rows(desk.copy.stabilizers, state.stabilizers, state.logicals)
-    sweep(desk, False, desk.left, lanes)
+    sweep(desk, sites, False, desk.left, lanes)
 
 
-@part
-def clip(state: State, desk: Desk, origin: int, lanes: Lanes) -> None:
-    """Bring the stabilizers to the clipped gauge; leave their exact endpoints in desk.left and desk.right.
+@step
+def clip(state: State, desk: Desk, sites: int, others: Words, lanes: Lanes) -> None:
+    """Bring the stabilizers and the `others` among the rows to the clipped gauge on the first sites.
 
-    A product of rows then begins where its first factor begins and ends where its last one ends, so the group inside
-    an interval is generated by the rows inside it.  The backward sweep keeps the left ends: its pivot is the row that
-    begins last.
+    Leaves the exact ends of their supports there in desk.left and desk.right.  A product of rows then begins where its
+    first factor begins and ends where its last one ends, so all products inside an interval are generated by the rows
+    inside it.  The backward sweep keeps the left ends: its pivot is the row that begins last.
     """
-    cut_open(state, desk, origin, lanes)
-    copy_rows(desk.copy.stabilizers, state.stabilizers, state.stabilizers)
+    cut_open(state, desk, sites, lanes)
+    copy_rows(desk.copy.stabilizers, state.stabilizers, others)
     desk.left[:] = -1
-    sweep(desk, False, desk.left, lanes)
-    copy_rows(desk.copy.stabilizers, state.stabilizers, state.stabilizers)
+    sweep(desk, sites, False, desk.left, lanes)
+    mark(desk, desk.copy.stabilizers, sites)
     for row in range(len(desk.left)):
-        desk.ends[row] = state.sites - 1 - desk.left[row]
-    sweep(desk, True, desk.right, lanes)
+        desk.ends[row] = sites - 1 - desk.left[row]
+    sweep(desk, sites, True, desk.right, lanes)
 
 
 @part
-def rows_inside(desk: Desk, first: int, length: int) -> int:
-    """Number of clipped rows within positions first .. first + length - 1: S = length - rows inside."""
-    inside = 0
-    beyond = first + length
+def mark(desk: Desk, rows: Words, beyond: int) -> None:
+    """rows = the clipped rows that begin before a position."""
+    for word in range(len(rows)):
+        rows[word] = 0
     for row in range(len(desk.left)):
-        inside += (desk.left[row] >= first) & (desk.right[row] < beyond)
-    return inside
+        if 0 <= desk.left[row] < beyond:
+            insert(rows, row)

@@ -12,12 +12,23 @@ from numpy.typing import NDArray
 from sweepmill_worker.clifford.classes import GATE_CLASSES, column_masks
 from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
-from sweepmill_worker.clifford.roads import Plan, Region, plan
+from sweepmill_worker.clifford.roads import Plan, plan
 from sweepmill_worker.clifford.state import aligned, new_state
 from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
+from sweepmill_worker.observables.probes import Probes, Region, of_regions
 from sweepmill_worker.words import GATE, MEASURE, words
 
-__all__ = ["GATE_CLASSES", "MAX_LAYERS", "MAX_SITES", "HybridChain", "Layer", "Readings", "describe", "run"]
+__all__ = [
+    "GATE_CLASSES",
+    "MAX_LAYERS",
+    "MAX_SITES",
+    "HybridChain",
+    "Layer",
+    "Readings",
+    "describe",
+    "run",
+    "run_probes",
+]
 
 MAX_SITES: Final = 4096
 """The keys of the search for the shortest row hold lengths of 12 bits."""
@@ -60,7 +71,7 @@ class Readings:
     """What was read off `count` trajectories, in the order of k."""
 
     entropies: NDArray[np.int32]
-    """[count, reads, regions], in bits, after the measurements of the layer."""
+    """[count, reads, regions], in bits, after the measurements of the layer; or the integers of other probes."""
     random: NDArray[np.int32]
     """[count, layers]: outcomes with Born probability 1/2."""
     measured: NDArray[np.int32]
@@ -90,7 +101,14 @@ def run(
     tuples of distinct sites.  Raises ValueError, naming the argument, for anything out of range.
     """
     _check(chain, key_words, first, count, read_layers, regions)
-    return run_plan(chain, key_words, first, count, read_layers, plan(chain.sites, chain.mixed, regions))
+    return run_probes(chain, key_words, first, count, read_layers, of_regions(chain.sites, regions))
+
+
+def run_probes(
+    chain: HybridChain, key_words: tuple[int, int], first: int, count: int, read_layers: Sequence[int], probes: Probes
+) -> Readings:
+    """`run` with any probes instead of regions: the last axis of `entropies` is that of their layout."""
+    return run_plan(chain, key_words, first, count, read_layers, plan(probes, chain.mixed))
 
 
 def run_plan(
@@ -105,14 +123,14 @@ def run_plan(
     state, lanes = new_state(chain.sites, chain.mixed)
     spare, _ = new_state(chain.sites, chain.mixed)
     results = Results(
-        entropies=np.zeros((count, len(read_layers), len(chosen.kinds)), dtype=np.int32),
+        entropies=np.zeros((count, len(read_layers), chosen.size), dtype=np.int32),
         random=np.zeros((count, chain.layers), dtype=np.int32),
         measured=np.zeros((count, chain.layers), dtype=np.int32),
     )
     run_batch(
         state,
         new_desk(spare),
-        new_matrix(state, lanes, wanted=len(chosen.toggle_ends) > 0),
+        new_matrix(state, lanes, wanted=len(chosen.others.ends) + len(chosen.negativities.ends) > 0),
         Circuit(chain.layers, chain.periodic, chain.mixed, chain.threshold, MASKS, key_words),
         new_supply(chain.sites),
         chosen,

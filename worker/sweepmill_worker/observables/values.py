@@ -19,7 +19,7 @@ class Values:
     single: NDArray[np.int64] | None = None
 
 
-def entropy_values(
+def state_values(
     counts: Readings,
     times: tuple[Reading, ...],
     layer_index: dict[int, int],
@@ -27,11 +27,11 @@ def entropy_values(
     signs: tuple[int, ...],
     histogram: bool,
 ) -> Values:
-    """Combinations of region entropies, summed over the layers of a reading and over translations."""
+    """Sums of a state's integers, over the layers of a reading and over translations."""
     blocks, singles = [], []
     for time in times:
         rows = [layer_index[n] for n in time.layers]
-        # [n, layers, positions, offsets]
+        # [n, layers, positions, readings]
         readings = sum(
             sign * counts.entropies[:, rows][:, :, indices[..., term]].astype(np.int64)
             for term, sign in enumerate(signs)
@@ -76,4 +76,4 @@ def values_of(
     if isinstance(observation, OutcomeRandomness):
         return randomness_values(counts, times, observation.cumulative)
     assert indices is not None
-    return entropy_values(counts, times, layer_index, indices, signs, wants_histogram(observation))
+    return state_values(counts, times, layer_index, indices, signs, wants_histogram(observation))
