@@ -33,6 +33,7 @@ from sweepmill.errors import (
     Unreachable,
     WaitTimeout,
 )
+from sweepmill.presets import layered_form
 from sweepmill.remote import RemoteSweep
 from sweepmill.retry import Retry
 from sweepmill.sweep import Sweep
@@ -66,5 +67,6 @@ __all__ = [
     "UnknownKey",
     "Unreachable",
     "WaitTimeout",
+    "layered_form",
     "require_independent",
 ]

@@ -59,6 +59,51 @@ CASES: dict[str, dict[str, Any]] = {
         stop__budget=60,
         stop__at_least=100,
     ),
+    "every preset": small(
+        circuit=[
+            {"family": "hybrid-clifford", "sites": 8, "measurement_rate": 0.1, "references": 2, "scrambling_layers": 3},
+            {"family": "hybrid-clifford-square", "width": 4, "measurement_rate": [0.1, 0.2], "engine": "reference"},
+            {"family": "hybrid-clifford-square", "width": 4, "height": 6, "measurement_rate": 0.1, "layers": 8},
+            {"family": "hybrid-clifford-long-range", "sites": 8, "exponent": 2.5, "measurement_rate": 0.1},
+            {"family": "projective-ising", "sites": 8, "bond_rate": [0.4, 0.6], "boundary": "open"},
+            {"family": "edge-bath", "sites": 8},
+            {"family": "rotated-clifford", "sites": 8, "layers": 9, "ends": ["open", "product", "ring"]},
+        ],
+        observe=[{"quantity": "entropy", "at": "end"}],
+    ),
+    "a circuit written as data": small(
+        circuit={
+            "family": "layered",
+            "sites": [8, 16],
+            "boundary": ["periodic", "open"],
+            "initial_state": "plus",
+            "layers": {"per_site": 1},
+            "before": [[{"swap-in": "reference", "on": {"sublattice": {"every": 4}}}]],
+            "repeat": [
+                [
+                    {"apply": "Uniform_Clifford", "on": {"blocks": {"width": 2, "every": 2}}, "fixed": "trajectory"},
+                    {"measure": "z", "on": "sites", "rate": {"parameter": "p"}},
+                ],
+                [
+                    {
+                        "choose": [
+                            {"weight": {"parameter": "p"}, "steps": [{"measure": "ZZ", "recorded": False}]},
+                            {"weight": {"parameter": "p", "complement": True}, "steps": [{"apply": "CNOT"}]},
+                        ],
+                        "on": "bonds-from-1",
+                    },
+                    {
+                        "reset": True,
+                        "on": {"random_sequential": {"count": {"per_site": 0.5}, "of": "sites"}},
+                        "rate": {"profile": "list", "by": "layer", "values": [0.1, 0.2, 0.1, 0.2]},
+                    },
+                ],
+            ],
+            "after": [[{"measure": "Z", "on": "sites", "rate": {"disorder": "uniform", "from": 0, "to": 0.5}}]],
+            "parameters": {"p": {"from": 0.25, "to": 0.75, "step": 0.25}},
+        },
+        observe=[{"quantity": "reference-entropy", "at": "end"}],
+    ),
 }
 
 
@@ -69,7 +114,7 @@ def case(title: str, specification: dict[str, Any]) -> dict[str, Any]:
         "specification": specification,
         "canonical": sweep.canonical(),
         "key": sweep.key,
-        "ensembles": [point.ensemble.key for point in sweep.points][:3],
+        "ensembles": [point.ensemble.key for point in sweep.points][:20],
         "observations": {item.name: item.observation.key for item in sweep.observations},
     }
 

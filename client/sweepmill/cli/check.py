@@ -8,6 +8,8 @@ from sweepmill import messages
 from sweepmill.cli.options import Specification, Url
 from sweepmill.client import Client
 from sweepmill.errors import Unreachable
+from sweepmill.language.written import circuit_toml
+from sweepmill.presets import layered_form
 from sweepmill.retry import Retry
 from sweepmill.sweep import Sweep
 from sweepmill.text import count, duration
@@ -16,16 +18,23 @@ from sweepmill.text import count, duration
 def check(
     file: Specification,
     ensembles: Annotated[bool, typer.Option("--ensembles", help="List every ensemble with its key.")] = False,
+    layered: Annotated[
+        bool, typer.Option("--layered", help="Write the circuit of the first ensemble as data, and nothing else.")
+    ] = False,
     url: Url = None,
 ) -> None:
     """Validate a specification, expand it, and estimate its cost.
 
     Faults are printed one per line as `path: message`, and the exit code is 1. The estimate needs a service;
-    without one the check is local.
+    without one the check is local. With --layered the circuit is printed as a block of the family `layered`,
+    to start a circuit of one's own from.
 
     Example: sweepmill check transition.toml
     """
     sweep = Sweep.read(file)
+    if layered:
+        print(circuit_toml(layered_form(sweep.points[0].ensemble)))
+        return
     print(_expanded(sweep))
     if ensembles:
         for point in sweep.points:

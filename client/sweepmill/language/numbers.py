@@ -36,7 +36,7 @@ By = Literal["site", "layer"]
 
 
 class ListProfile(Part):
-    """Values by site or layer, taken in turn."""
+    """Values by site or layer, taken in turn; the first belongs to site 0, or to layer 1."""
 
     profile: Literal["list"]
     by: By

@@ -154,9 +154,10 @@ def _period(forms: Sequence[Any], by: str) -> int:
 
 def _least(form: Any, site: int, layer: int) -> float:
     """Value of a list or a stripe, the smallest value of anything else."""
-    if isinstance(form, Mapping) and form.get("profile") in ("list", "stripe"):
-        index = site if form["by"] == "site" else layer
-        if form["profile"] == "stripe":
-            return float(form["inside"] if index % form["period"] < form["width"] else form["outside"])
-        return float(form["values"][index % len(form["values"])])
-    return bounds(form)[0]
+    if not isinstance(form, Mapping) or form.get("profile") not in ("list", "stripe"):
+        return bounds(form)[0]
+    index = site if form["by"] == "site" else layer
+    if form["profile"] == "stripe":
+        return float(form["inside"] if index % form["period"] < form["width"] else form["outside"])
+    first = 0 if form["by"] == "site" else 1  # layers count from 1
+    return float(form["values"][(index - first) % len(form["values"])])

@@ -52,10 +52,19 @@ class Measure(Part):
     forced: bool = False
 
 
+def _true(value: Any) -> Any:
+    if value is not True:
+        refuse(f"must be true, got {shown(value)}")
+    return value
+
+
+Yes = Annotated[Literal[True], BeforeValidator(_true)]
+
+
 class Depolarise(Part):
     """Every site of a place becomes maximally mixed."""
 
-    depolarise: Literal[True]
+    depolarise: Yes
     on: On | None = None
     rate: Rate = 1
 
@@ -63,7 +72,7 @@ class Depolarise(Part):
 class Reset(Part):
     """Every site of a place is traced out, then |0>."""
 
-    reset: Literal[True]
+    reset: Yes
     on: On | None = None
     rate: Rate = 1
 
