@@ -18,6 +18,7 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
 from sweepmill_worker.clusters.engine import ClusterChain, run_clusters, working_bytes
+from sweepmill_worker.observables.probes import Probes
 
 KEY = (0x5EED5EED, 0x0B5E55ED)
 ROUNDS = 5
@@ -52,9 +53,10 @@ def compare(sites: int) -> tuple[float, float]:
     slow = max(4, steps // 8)
     chain = ClusterChain(sites, steps, periodic=True, bond_threshold=HALF, site_threshold=HALF)
     draw = np.random.default_rng(1)
+    probes = Probes(sites, arcs=np.array([(0, sites // 2)]), cluster_order=True)
     ours, theirs = [], []
     for turn in range(ROUNDS):
-        ours.append(sites * steps / timed(partial(run_clusters, chain, KEY, turn, 1, [steps], [])) / 1e6)
+        ours.append(sites * steps / timed(partial(run_clusters, chain, KEY, turn, 1, [steps], probes)) / 1e6)
         theirs.append(sites * slow / timed(partial(by_components, sites, slow, draw)) / 1e6)
     return median(ours), median(theirs)
 
@@ -64,7 +66,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0] if __doc__ else None)
     parser.add_argument("--quick", action="store_true", help="leave out a million sites")
     sizes = [1000, 10_000, 100_000] if parser.parse_args().quick else [1000, 10_000, 100_000, 1_000_000]
-    run_clusters(ClusterChain(8, 1, True, HALF, HALF), KEY, 0, 1, [], [])
+    run_clusters(ClusterChain(8, 1, True, HALF, HALF), KEY, 0, 1, [], Probes(8, arcs=np.array([(0, 4)])))
     print(f"{'sites':>8} {'engine':>10} {'scipy':>10} {'ratio':>6} {'memory':>10}   million site-steps per second; MB")
     for sites in sizes:
         ours, theirs = compare(sites)

@@ -17,13 +17,13 @@ from sweepmill_worker.clifford.engine import HybridChain
 from sweepmill_worker.clusters.engine import (
     MAX_SITES,
     ClusterChain,
-    ClusterReadings,
     describe,
     run_clusters,
     working_bytes,
 )
 from sweepmill_worker.clusters.state import new_state
 from sweepmill_worker.clusters.trajectories import new_supply
+from sweepmill_worker.observables.probes import Information, Probes, of_regions
 
 KEY = (0x715EED, 0xC1057E4)
 SIZES = [(2, False), (2, True), (3, True), (4, False), (5, True), (8, True), (9, False), (16, True), (33, False)]
@@ -47,8 +47,8 @@ def regions_of(sites: int, seed: int) -> list[tuple[int, ...]]:
 @pytest.mark.parametrize(("sites", "periodic"), SIZES)
 def test_everything_read_agrees_with_a_simulation_in_plain_python(sites: int, periodic: bool, rate: float) -> None:
     law, reads = chain(sites, 12, periodic, rate), [1, 2, 5, 12]
-    regions = regions_of(sites, seed=sites)
-    readings = run_clusters(law, KEY, 3, 2, reads, regions, cuts=True, intervals=True)
+    probes = everything(sites, seed=sites)
+    readings = run_clusters(law, KEY, 3, 2, reads, probes)
     for index in range(2):
         partition = tuple(range(sites))
         for number, layer in enumerate(describe(law, KEY, 3 + index), start=1):
@@ -63,28 +63,63 @@ def test_everything_read_agrees_with_a_simulation_in_plain_python(sites: int, pe
             assert readings.random_by_kind[index, number - 1].tolist() == counted
             assert readings.measured_by_kind[index, number - 1].tolist() == [len(layer.bonds), len(layer.sites)]
             if number in reads:
-                read = reads.index(number)
-                assert readings.squares[index, read] == sum(n * n for n in Counter(partition).values())
-                assert readings.entropies[index, read].tolist() == [entropy(partition, r) for r in regions]
-                cuts = [entropy(partition, range(x)) for x in range(sites + 1)]
-                assert readings.cuts[index, read].tolist() == cuts
-                windows = [interval_sum(partition, length, periodic) for length in range(sites + 1)]
-                assert readings.intervals[index, read].tolist() == windows
+                found = readings.entropies[index, reads.index(number)]
+                np.testing.assert_array_equal(found, plain(partition, probes))
     np.testing.assert_array_equal(readings.random, readings.random_by_kind.sum(axis=2))
     np.testing.assert_array_equal(readings.measured, readings.measured_by_kind.sum(axis=2))
 
 
-def interval_sum(partition: tuple[int, ...], length: int, periodic: bool) -> int:
+def everything(sites: int, seed: int) -> Probes:
+    """All probes that clusters answer."""
+    sets = tuple(regions_of(sites, seed))
+    arcs = np.array([(first, length) for first in range(sites) for length in range(sites + 1)])
+    return Probes(
+        sites,
+        arcs=arcs[random.Random(seed).sample(range(len(arcs)), len(arcs))],
+        sets=sets,
+        line=True,
+        ring=True,
+        informations=tuple(Information(region, tuple(range(1, len(region) + 1))) for region in sets if region),
+        negativities=sets[:3],
+        lengths=True,
+        cluster_order=True,
+    )
+
+
+def plain(partition: tuple[int, ...], probes: Probes) -> list[int]:
+    """The integers of all probes, one entropy after the other."""
     sites = len(partition)
-    firsts = range(sites if periodic else sites - length + 1)
-    return sum(entropy(partition, [(first + i) % sites for i in range(length)]) for first in firsts)
+
+    def arc(first: int, length: int) -> int:
+        return entropy(partition, [(first + i) % sites for i in range(length)])
+
+    def information(site: int, region: tuple[int, ...]) -> int:
+        without = [other for other in region if other != site]
+        return entropy(partition, [site]) + entropy(partition, region) - entropy(partition, without)
+
+    def rows(first: int, beyond: int) -> int:  # independent group elements inside an interval
+        return max(beyond - first, 0) - entropy(partition, range(first, beyond))
+
+    def exactly(first: int, beyond: int) -> int:  # clipped generators that begin and end there
+        return rows(first, beyond) - rows(first + 1, beyond) - rows(first, beyond - 1) + rows(first + 1, beyond - 1)
+
+    return [
+        *(arc(first, length) for first, length in probes.arcs.tolist()),
+        *(entropy(partition, region) for region in probes.sets),
+        *(sum(arc(first, n) for first in range(sites - n + 1)) for n in range(1, sites + 1)),
+        *(sum(arc(first, n) for first in range(sites)) for n in range(1, sites + 1)),
+        *(information(site, item.region) for item in probes.informations for site in item.region),
+        *(entropy(partition, region) for region in probes.negativities),  # pure: the entropy of either side
+        *(sum(exactly(first, first + n) for first in range(sites - n + 1)) for n in range(1, sites + 1)),
+        sum(n * n for n in Counter(partition).values()),
+    ]
 
 
 @pytest.mark.parametrize("rate", RATES)
 @pytest.mark.parametrize(("sites", "periodic"), SIZES)
 def test_circuits_agree_with_stim(sites: int, periodic: bool, rate: float) -> None:
     law, reads, regions = chain(sites, 10, periodic, rate), [1, 3, 10], regions_of(sites, seed=1)
-    readings = run_clusters(law, KEY, 8, 1, reads, regions)
+    readings = run_clusters(law, KEY, 8, 1, reads, of_regions(sites, regions))
     oracle = Reference(HybridChain(sites, 0, False, False, 0))
     oracle.simulator.h(*range(sites))
     for number, layer in enumerate(describe(law, KEY, 8), start=1):
@@ -102,18 +137,15 @@ def test_circuits_agree_with_stim(sites: int, periodic: bool, rate: float) -> No
 
 @pytest.mark.parametrize("first", [0, 2**32 - 3, 2**63])
 def test_a_batch_is_the_sum_of_its_pieces(first: int) -> None:
-    law, regions = chain(40, 9, True, 0.5), regions_of(40, seed=2)
-    whole = run_clusters(law, KEY, first, 7, [2, 9], regions, cuts=True, intervals=True)
-    pieces = [
-        run_clusters(law, KEY, first + a, b - a, [2, 9], regions, cuts=True, intervals=True)
-        for a, b in pairwise([0, 1, 1, 5, 7])
-    ]
-    for field in [*ClusterReadings.__annotations__, "entropies", "random", "measured"]:
+    law, probes = chain(40, 9, True, 0.5), everything(40, seed=2)
+    whole = run_clusters(law, KEY, first, 7, [2, 9], probes)
+    pieces = [run_clusters(law, KEY, first + a, b - a, [2, 9], probes) for a, b in pairwise([0, 1, 1, 5, 7])]
+    for field in ("entropies", "random", "measured", "random_by_kind", "measured_by_kind"):
         np.testing.assert_array_equal(getattr(whole, field), np.concatenate([getattr(p, field) for p in pieces]))
 
 
 def test_a_longer_circuit_begins_with_the_shorter_one() -> None:
-    short, long = (run_clusters(chain(20, n, False, 0.5), KEY, 0, 9, [5], [(0, 1, 2)]) for n in (5, 15))
+    short, long = (run_clusters(chain(20, n, False, 0.5), KEY, 0, 9, [5], of_regions(20, [(0, 1, 2)])) for n in (5, 15))
     np.testing.assert_array_equal(short.entropies, long.entropies)
     np.testing.assert_array_equal(short.random_by_kind, long.random_by_kind[:, :5])
 
@@ -121,7 +153,9 @@ def test_a_longer_circuit_begins_with_the_shorter_one() -> None:
 @pytest.mark.parametrize(("sites", "periodic"), [(4096, True), (4097, True), (10_001, False)])
 def test_long_chains_whose_words_come_in_pieces_agree_with_connected_components(sites: int, periodic: bool) -> None:
     law = chain(sites, 4, periodic, 0.6)
-    readings = run_clusters(law, KEY, 0, 1, [4], [tuple(range(sites // 2))], cuts=True)
+    lengths = [sites // 2, 1, sites // 3, sites - 1]
+    probes = Probes(sites, arcs=np.array([(0, x) for x in lengths]), cluster_order=True)
+    readings = run_clusters(law, KEY, 0, 1, [4], probes)
     labels: NDArray[np.signedinteger] = np.arange(sites)
     for layer in describe(law, KEY, 0):
         left, right = labels[np.array(layer.bonds)].T
@@ -130,30 +164,30 @@ def test_long_chains_whose_words_come_in_pieces_agree_with_connected_components(
         labels[list(layer.sites)] = 2 * sites + np.arange(len(layer.sites))
         labels = np.unique(labels, return_inverse=True)[1]
     partition = tuple(labels.tolist())
-    assert readings.entropies[0, 0, 0] == entropy(partition, range(sites // 2))
-    assert readings.squares[0, 0] == (np.bincount(labels) ** 2).sum()
-    for x in (1, sites // 3, sites - 1):
-        assert readings.cuts[0, 0, x] == entropy(partition, range(x))
+    cuts = [entropy(partition, range(x)) for x in lengths]
+    assert readings.entropies[0, 0].tolist() == [*cuts, (np.bincount(labels) ** 2).sum()]
 
 
 def test_without_bonds_all_stay_alone_and_without_sites_all_become_one() -> None:
-    alone = run_clusters(chain(100, 3, True, 0.0), KEY, 0, 2, [3], [], cuts=True)
+    probes = Probes(100, ring=True, cluster_order=True)
+    alone = run_clusters(chain(100, 3, True, 0.0), KEY, 0, 2, [3], probes)
     assert (alone.random == 0).all()
     assert (alone.measured == 100).all()
-    assert (alone.squares == 100).all()
-    one = run_clusters(chain(100, 3, True, 1.0), KEY, 0, 2, [3], [], cuts=True)
+    assert (alone.entropies == [*[0] * 100, 100]).all()
+    one = run_clusters(chain(100, 3, True, 1.0), KEY, 0, 2, [3], probes)
     assert one.random[0].tolist() == [99, 0, 0]
-    assert (one.squares == 100**2).all()
-    assert (one.cuts[:, :, 1:-1] == 1).all()
+    assert (one.entropies == [*[100] * 99, 0, 100**2]).all()
 
 
 def test_the_largest_chain_runs_in_the_memory_it_states() -> None:
     law = chain(MAX_SITES, 2, True, 0.5)
-    readings = run_clusters(law, KEY, 0, 1, [2], [tuple(range(MAX_SITES // 2))], intervals=True)
+    readings = run_clusters(law, KEY, 0, 1, [2], Probes(MAX_SITES, ring=True))
     assert readings.measured_by_kind.sum() == pytest.approx(2 * MAX_SITES, rel=0.01)
-    assert readings.intervals[0, 0, [0, -1]].tolist() == [0, 0]
-    arrays = [*new_state(MAX_SITES), *new_supply(MAX_SITES)]
-    held = sum(array.nbytes for array in arrays) + 2 * 8 * (MAX_SITES + 2)
+    rings = readings.entropies[0, 0]
+    assert rings[-1] == 0
+    np.testing.assert_array_equal(rings[:-1], rings[-2::-1])  # pure: of an arc and its complement
+    arrays: list[NDArray[np.generic]] = [*new_state(MAX_SITES, intervals=True), *new_supply(MAX_SITES)]
+    held = sum(array.nbytes for array in arrays)
     assert held <= working_bytes(MAX_SITES) < 1.01 * held
 
 
@@ -181,11 +215,13 @@ def test_chains_out_of_range_are_refused(change: dict[str, int], message: str) -
         ({"first": 2**64 - 1, "count": 2}, "first, count: trajectories"),
         ({"read_layers": [0]}, "read_layers: must ascend"),
         ({"read_layers": [2, 2]}, "read_layers: must ascend"),
-        ({"regions": [(1, 0)]}, "regions: sites must ascend"),
-        ({"regions": [(0, 8)]}, "regions: sites must ascend"),
+        ({"probes": of_regions(8, [(1, 0)])}, "probes: sites must ascend"),
+        ({"probes": of_regions(8, [(0, 8)])}, "probes: sites must ascend"),
+        ({"probes": Probes(7)}, "probes: must be of a chain of 8 sites"),
+        ({"probes": Probes(8, references=1)}, "probes: clusters have no reference qubits"),
     ],
 )
 def test_arguments_out_of_range_are_refused(change: dict[str, object], message: str) -> None:
-    fields: dict[str, object] = {"key_words": KEY, "first": 0, "count": 1, "read_layers": [1], "regions": [(0,)]}
+    fields: dict[str, object] = {"key_words": KEY, "first": 0, "count": 1, "read_layers": [1], "probes": Probes(8)}
     with pytest.raises(ValueError, match=message):
         run_clusters(chain(8, 4, True, 0.5), **(fields | change))  # type: ignore[arg-type]

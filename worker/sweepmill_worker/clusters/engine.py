@@ -2,7 +2,6 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from functools import lru_cache
 from itertools import pairwise
 from operator import lt
 from typing import Final
@@ -10,23 +9,20 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
-from sweepmill_worker.clifford.engine import Readings
-from sweepmill_worker.clusters.readings import Sums
 from sweepmill_worker.clusters.state import new_state
 from sweepmill_worker.clusters.trajectories import (
     BOND_KIND,
     SITE_KIND,
     Circuit,
     Results,
-    Wanted,
     new_supply,
     run_batch,
 )
+from sweepmill_worker.clusters.wanted import wanted
+from sweepmill_worker.observables.probes import Probes
 from sweepmill_worker.words import words
 
 __all__ = ["MAX_SITES", "ClusterChain", "ClusterLayer", "ClusterReadings", "describe", "run_clusters", "working_bytes"]
-
-Region = tuple[int, ...]
 
 MAX_SITES: Final = 2**20
 """Sums of squared sizes and of intervals stay far within 64 bits; see `working_bytes`."""
@@ -60,20 +56,25 @@ class ClusterChain:
 
 
 @dataclass(frozen=True)
-class ClusterReadings(Readings):
-    """What was read off `count` trajectories, in the order of k; both kinds of measurements counted together."""
+class ClusterReadings:
+    """What was read off `count` trajectories, in the order of k."""
 
+    entropies: NDArray[np.int64]
+    """[count, reads, integers]: those of `Probes.layout`; of regions only, their entropies in bits."""
     random_by_kind: NDArray[np.int32]
     """[count, layers, 2]: random outcomes of ZZ and of X."""
     measured_by_kind: NDArray[np.int32]
     """[count, layers, 2]: measurements of ZZ and of X."""
-    squares: NDArray[np.int64]
-    """[count, reads]: sum of the squared cluster sizes."""
-    cuts: NDArray[np.int32]
-    """[count, reads, L + 1]: entropies of [0, x) in bits, x = 0 .. L; or of no length, if not wanted."""
-    intervals: NDArray[np.int64]
-    """[count, reads, L + 1]: summed entropies of all intervals of l = 0 .. L sites (L of them on the ring,
-    L - l + 1 on the open line); or of no length, if not wanted."""
+
+    @property
+    def random(self) -> NDArray[np.int32]:
+        """[count, layers]: random outcomes of either kind."""
+        return np.asarray(self.random_by_kind.sum(axis=2, dtype=np.int32))
+
+    @property
+    def measured(self) -> NDArray[np.int32]:
+        """[count, layers]: measurements of either kind."""
+        return np.asarray(self.measured_by_kind.sum(axis=2, dtype=np.int32))
 
 
 @dataclass(frozen=True)
@@ -85,7 +86,7 @@ class ClusterLayer:
 
 
 def working_bytes(sites: int) -> int:
-    """Memory of a batch in bytes, its results and regions apart: 14 per site, 16 more where intervals are wanted."""
+    """Memory of a batch in bytes, results and regions apart: 14 per site, 16 more where intervals are wanted."""
     return 30 * sites + 40_000
 
 
@@ -95,43 +96,31 @@ def run_clusters(
     first: int,
     count: int,
     read_layers: Sequence[int],
-    regions: Sequence[Region],
-    cuts: bool = False,
-    intervals: bool = False,
+    probes: Probes,
 ) -> ClusterReadings:
     """Sample trajectories first .. first + count - 1.
 
-    key_words: the first two 32-bit words of the ensemble key.  read_layers: ascending, 0 excluded.  regions: sorted
-    tuples of distinct sites; a region costs time for the sites in which it differs from one of its like.  cuts,
-    intervals: read all of them, in a time linear in L.  Raises ValueError, naming the argument, for anything out of
-    range.
+    key_words: the first two 32-bit words of the ensemble key.  read_layers: ascending, 0 excluded.  Sums over
+    intervals cost a time linear in L, arcs and sets a time for the sites in which each differs from the last.  Raises
+    ValueError, naming the argument, for anything out of range.
     """
-    _check(chain, key_words, first, count, read_layers, regions)
-    order, ends, toggles = _sequence(tuple(regions))
-    results = _new_results(chain, count, len(read_layers), len(regions), cuts, intervals)
+    _check(chain, key_words, first, count, read_layers, probes)
+    results = Results(
+        entropies=np.zeros((count, len(read_layers), probes.size), dtype=np.int64),
+        random=np.zeros((count, chain.layers, 2), dtype=np.int32),
+        measured=np.zeros((count, chain.layers, 2), dtype=np.int32),
+    )
+    thresholds = np.uint64(chain.bond_threshold), np.uint64(chain.site_threshold)
     run_batch(
-        new_state(chain.sites),
-        Circuit(
-            chain.layers, chain.periodic, np.uint64(chain.bond_threshold), np.uint64(chain.site_threshold), key_words
-        ),
+        new_state(chain.sites, intervals=probes.line or probes.ring),
+        Circuit(chain.layers, chain.periodic, *thresholds, key_words),
         new_supply(chain.sites),
-        Wanted(ends, toggles, cuts, intervals, *_ramps(chain.sites, intervals)),
+        wanted(probes),
         np.array(read_layers, dtype=np.int64),
         np.uint64(first),
         results,
     )
-    entropies = np.empty_like(results.entropies)
-    entropies[:, :, order] = results.entropies
-    return ClusterReadings(
-        entropies=entropies,
-        random=results.random.sum(axis=2, dtype=np.int32),
-        measured=results.measured.sum(axis=2, dtype=np.int32),
-        random_by_kind=results.random,
-        measured_by_kind=results.measured,
-        squares=results.squares,
-        cuts=results.cuts,
-        intervals=results.intervals,
-    )
+    return ClusterReadings(results.entropies, results.random, results.measured)
 
 
 def describe(chain: ClusterChain, key_words: tuple[int, int], k: int) -> tuple[ClusterLayer, ...]:
@@ -149,44 +138,13 @@ def _describe_layer(chain: ClusterChain, key_words: tuple[int, int], k: int, lay
     return ClusterLayer(tuple((bond, (bond + 1) % chain.sites) for bond in bonds), tuple(sites))
 
 
-def _new_results(chain: ClusterChain, count: int, reads: int, regions: int, cuts: bool, intervals: bool) -> Results:
-    cut_width, interval_width = (chain.sites + 1 if wanted else 0 for wanted in (cuts, intervals))
-    return Results(
-        entropies=np.zeros((count, reads, regions), dtype=np.int32),
-        random=np.zeros((count, chain.layers, 2), dtype=np.int32),
-        measured=np.zeros((count, chain.layers, 2), dtype=np.int32),
-        cuts=np.zeros((count, reads, cut_width), dtype=np.int32),
-        intervals=np.zeros((count, reads, interval_width), dtype=np.int64),
-        squares=np.zeros((count, reads), dtype=np.int64),
-    )
-
-
-def _ramps(sites: int, wanted: bool) -> tuple[Sums, Sums]:
-    size = sites + 2 if wanted else 0
-    return np.zeros(size, dtype=np.int64), np.zeros(size, dtype=np.int64)
-
-
-@lru_cache(maxsize=16)
-def _sequence(regions: tuple[Region, ...]) -> tuple[NDArray[np.intp], Sums, Sums]:
-    """The order in which regions differ least, and the toggles from one to the next: sites + 1 in, negative out."""
-    order = sorted(range(len(regions)), key=lambda i: (len(regions[i]), regions[i]))
-    toggles: list[int] = []
-    ends, present = [], set[int]()
-    for index in order:
-        wanted = set(regions[index])
-        toggles += [site + 1 for site in sorted(wanted - present)] + [-site - 1 for site in sorted(present - wanted)]
-        present = wanted
-        ends.append(len(toggles))
-    return np.array(order, dtype=np.intp), np.array(ends, dtype=np.int64), np.array(toggles, dtype=np.int64)
-
-
 def _check(
     chain: ClusterChain,
     key_words: tuple[int, int],
     first: int,
     count: int,
     read_layers: Sequence[int],
-    regions: Sequence[Region],
+    probes: Probes,
 ) -> None:
     if not all(0 <= word < 2**32 for word in key_words):
         raise ValueError(f"key_words: must be two 32-bit words, got {key_words}")
@@ -194,6 +152,8 @@ def _check(
         raise ValueError(f"first, count: trajectories are numbered 0 .. 2**64 - 1, got {first}, {count}")
     if any(not 1 <= layer <= chain.layers for layer in read_layers) or any(a >= b for a, b in pairwise(read_layers)):
         raise ValueError(f"read_layers: must ascend within 1 .. {chain.layers}, got {list(read_layers)}")
-    for region in regions:
+    if probes.sites != chain.sites:
+        raise ValueError(f"probes: must be of a chain of {chain.sites} sites, got {probes.sites}")
+    for region in (*probes.sets, *probes.negativities, *(item.region for item in probes.informations)):
         if not all(map(lt, region, region[1:])) or (region and not 0 <= region[0] <= region[-1] < chain.sites):
-            raise ValueError(f"regions: sites must ascend within 0 .. {chain.sites - 1}, got {region}")
+            raise ValueError(f"probes: sites must ascend within 0 .. {chain.sites - 1}, got {region}")

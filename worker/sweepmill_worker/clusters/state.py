@@ -14,7 +14,7 @@ NONE: Final = np.uint32(0xFFFFFFFF)
 
 
 class State(NamedTuple):
-    """Arrays of L unsigned integers, not negative so that indexing needs no care for negative ones."""
+    """Arrays of L unsigned integers: indices that cannot be negative need no care for it."""
 
     label: Counts
     """Between layers: the smallest site of the cluster of each site.  Within: a forest, parents below children."""
@@ -22,8 +22,13 @@ class State(NamedTuple):
     """Sites of the cluster with this label, where counted."""
     mark: Counts
     """Work space, one number per label."""
+    gaps: NDArray[np.int64]
+    """Work space for sums over intervals: L + 2 numbers, or none."""
+    spans: NDArray[np.int64]
 
 
-def new_state(sites: int) -> State:
+def new_state(sites: int, intervals: bool) -> State:
     """Every site for itself: the product of |+>."""
-    return State(np.arange(sites, dtype=np.uint32), np.ones(sites, np.uint32), np.zeros(sites, np.uint32))
+    label, size, mark = np.arange(sites, dtype=np.uint32), np.ones(sites, np.uint32), np.zeros(sites, np.uint32)
+    gaps, spans = (np.zeros(sites + 2 if intervals else 0, dtype=np.int64) for _ in range(2))
+    return State(label, size, mark, gaps, spans)

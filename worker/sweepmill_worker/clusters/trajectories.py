@@ -6,8 +6,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sweepmill_worker.clusters.moves import measure_bonds, measure_sites, settle
-from sweepmill_worker.clusters.readings import Sums, count_sizes, read_cuts, read_intervals, read_regions
+from sweepmill_worker.clusters.readings import read
 from sweepmill_worker.clusters.state import Counts, State
+from sweepmill_worker.clusters.wanted import Integers, Wanted
 from sweepmill_worker.jit import entry, step
 from sweepmill_worker.words import counters, fill
 
@@ -37,26 +38,12 @@ class Supply(NamedTuple):
     words: Counts
 
 
-class Wanted(NamedTuple):
-    """What to read: a sequence of regions as toggles, all cuts, all intervals."""
-
-    ends: Sums
-    toggles: Sums
-    cuts: bool
-    intervals: bool
-    gaps: Sums
-    spans: Sums
-
-
 class Results(NamedTuple):
     """Filled by the kernel; shapes as in `engine.ClusterReadings`."""
 
-    entropies: NDArray[np.int32]
+    entropies: Integers
     random: NDArray[np.int32]
     measured: NDArray[np.int32]
-    cuts: NDArray[np.int32]
-    intervals: Sums
-    squares: Sums
 
 
 def new_supply(sites: int) -> Supply:
@@ -100,17 +87,6 @@ def run_layer(state: State, circuit: Circuit, supply: Supply, layer: int, k: np.
     return random_zz, zz, random_x, x
 
 
-@step
-def read(state: State, circuit: Circuit, wanted: Wanted, results: Results, index: int, number: int) -> None:
-    """Read number `number` of trajectory `index`."""
-    results.squares[index, number] = count_sizes(state)
-    read_regions(state, wanted.ends, wanted.toggles, results.entropies[index, number])
-    if wanted.cuts:
-        read_cuts(state, results.cuts[index, number])
-    if wanted.intervals:
-        read_intervals(state, circuit.periodic, wanted.gaps, wanted.spans, results.intervals[index, number])
-
-
 @entry
 def run_batch(
     state: State,
@@ -131,5 +107,5 @@ def run_batch(
             results.random[index, layer - 1, 0], results.measured[index, layer - 1, 0] = counted[0], counted[1]
             results.random[index, layer - 1, 1], results.measured[index, layer - 1, 1] = counted[2], counted[3]
             if reads < len(read_layers) and read_layers[reads] == layer:
-                read(state, circuit, wanted, results, index, reads)
+                read(state, wanted, results.entropies[index, reads])
                 reads += 1
