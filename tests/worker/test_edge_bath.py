@@ -63,7 +63,7 @@ def test_windows_of_what_the_bath_takes_have_the_derived_digits() -> None:
     assert scaled_bulk_purities(12) * 0.8 ** np.arange(1, 13) == pytest.approx(np.repeat(bulk, 2), abs=1e-12)
 
 
-def log_coefficient(entropies: NDArray[np.float64], layers: NDArray[np.int64]) -> tuple[float, float]:
+def log_coefficient(entropies: NDArray[np.floating], layers: NDArray[np.int64]) -> tuple[float, float]:
     """Slope and coefficient of log2 t in a fit of S = a t + b log2 t + c."""
     design = np.stack([layers, np.log2(layers), np.ones(len(layers))], axis=1)
     slope, coefficient, _ = np.linalg.lstsq(design, entropies, rcond=None)[0]
