@@ -41,6 +41,26 @@ SPECIFICATIONS: Any = {
             "stop": {"trajectories": 1000},
         },
     },
+    "layered": {
+        "summary": "A circuit written as data: gates drawn once per trajectory, a measurement rate as an axis",
+        "value": {
+            "circuit": {
+                "family": "layered",
+                "sites": [32, 64],
+                "layers": {"per_site": 4},
+                "repeat": [
+                    [
+                        {"apply": "uniform-clifford", "on": bricks, "fixed": "trajectory"},
+                        {"measure": "Z", "on": "sites", "rate": {"parameter": "p"}},
+                    ]
+                    for bricks in ("bonds-from-0", "bonds-from-1")
+                ],
+                "parameters": {"p": {"from": 0.02, "to": 0.1, "points": 5}},
+            },
+            "observe": [{"quantity": "entropy"}],
+            "stop": {"trajectories": 1000},
+        },
+    },
 }
 AMENDMENTS: Any = {
     "both": {"value": {"label": "lantern project, for the poster", "priority": 3}},

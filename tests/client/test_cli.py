@@ -197,6 +197,13 @@ def test_an_address_that_cannot_be_used_is_one_line_on_standard_error(run: Run) 
     assert (done.code, len(done.err.splitlines())) == (1, 1)
 
 
+def test_checking_may_write_the_circuit_as_data_to_start_from(run: Run, tmp_path: Path) -> None:
+    shown = run("check", written(tmp_path), "--layered")
+    assert shown.code == 0
+    assert shown.out.splitlines()[:3] == ["[circuit]", 'family = "layered"', "sites = 4"]
+    assert '{ apply = "uniform-clifford", on = "bonds-from-0" }' in shown.out
+
+
 def test_checking_with_a_service_gives_an_estimate(served: Run, tmp_path: Path) -> None:
     done = served("check", written(tmp_path))
     assert done.code == 0
