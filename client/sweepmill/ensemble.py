@@ -62,14 +62,14 @@ class Ensemble:
     """Family and complete parameters (``sites``, ``layers`` … resolved to numbers).
 
     The circuit of a layered ensemble is three parameters of nested tuples and tables that cannot be changed.
-    ``revision`` is the family revision its key was made with. ``labels`` are values that a specification gives names
-    to, such as {"p": 0.1}: columns of its table, not part of the identity.
+    ``revision`` is the family revision its key was made with. ``labels`` are what a specification calls the ensemble
+    by, such as {"circuit": "weak links", "p": 0.1}: columns of its table, not part of the identity.
     """
 
     family: str
     parameters: Mapping[str, Any]
     revision: int
-    labels: Mapping[str, float] = field(default_factory=FrozenTable, compare=False)
+    labels: Mapping[str, float | str] = field(default_factory=FrozenTable, compare=False)
 
     @classmethod
     def of(cls, family: str, **parameters: Any) -> "Ensemble":

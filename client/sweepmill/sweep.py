@@ -2,7 +2,7 @@
 
 import json
 import tomllib
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from functools import cached_property
 from pathlib import Path
 from typing import Annotated, Any, NamedTuple
@@ -10,7 +10,7 @@ from typing import Annotated, Any, NamedTuple
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
 
 from sweepmill.axes import Integer, nonempty
-from sweepmill.ensemble import Ensemble
+from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.errors import Fault, SpecificationError
 from sweepmill.families import CircuitBlock
 from sweepmill.families.block import Block
@@ -133,8 +133,9 @@ class Sweep(BaseModel):
     @cached_property
     def axes(self) -> tuple[str, ...]:
         """Fields and parameters that take more than one value; ``layers`` only where the others do not fix it."""
-        names = list(dict.fromkeys(name for point in self.points for name in point.ensemble.columns))
-        several = [n for n in names if len({point.ensemble.columns.get(n) for point in self.points}) > 1]
+        ensembles = [point.ensemble for point in self.points]
+        names = list(dict.fromkeys(name for ensemble in ensembles for name in ensemble.columns))
+        several = [name for name in names if _varies(name, ensembles)]
         if "layers" in several and self._fixed_by(n for n in several if n != "layers"):
             several.remove("layers")
         families = {point.ensemble.family for point in self.points}
@@ -198,8 +199,15 @@ def _normal_observation(item: NamedObservation) -> dict[str, Any]:
     return form if item.name == item.observation.quantity else form | {"name": item.name}
 
 
+def _varies(name: str, ensembles: Sequence[Ensemble]) -> bool:
+    """Whether those that can have a value there have several; a label that a circuit does not use is one of them."""
+    label = any(name in ensemble.labels for ensemble in ensembles)
+    able = (e for e in ensembles if name in e.columns or (label and e.family == LAYERED))
+    return len({ensemble.columns.get(name) for ensemble in able}) > 1
+
+
 def _twice(ensemble: Ensemble, path: str) -> Fault:
     if ensemble.labels:
-        shown = ", ".join(f"{name} = {value:g}" for name, value in ensemble.labels.items())
+        shown = ", ".join(f"{name} = {value}" for name, value in ensemble.labels.items())
         return Fault(f"{path}.parameters", f"an earlier combination of values gives the circuit of {shown} already")
     return Fault(f"{path}.layers", "two values give the same number of layers at one size")

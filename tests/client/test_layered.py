@@ -37,6 +37,22 @@ def test_a_parameter_may_differ_between_blocks_and_be_an_axis_there() -> None:
     assert sweep.axes == ("p",)
 
 
+def test_circuits_of_several_blocks_are_told_apart_by_name_or_by_parameters_of_their_own() -> None:
+    one, other = layered([GATES], name="gates")["circuit"], layered([Z], name="nothing but Z")["circuit"]
+    sweep = Sweep.parse({**layered([GATES]), "circuit": [one, other]})
+    assert sweep.axes == ("circuit",)
+    assert [point.ensemble.labels["circuit"] for point in sweep.points] == ["gates", "nothing but Z"]
+    assert sweep.points[0].ensemble.key == ensembles(layered([GATES]))[0].key
+    plain, with_p = layered([GATES])["circuit"], layered([GATES, Z | {"rate": P}], parameters={"p": 0.1})["circuit"]
+    assert Sweep.parse({**layered([GATES]), "circuit": [plain, with_p]}).axes == ("p",)
+
+
+def test_fields_that_other_families_do_not_have_are_no_axes() -> None:
+    hybrid = {"family": "hybrid-clifford", "sites": 8, "measurement_rate": 0.1, "layers": 4}
+    sweep = Sweep.parse({**layered([GATES]), "circuit": [hybrid, layered([GATES])["circuit"]]})
+    assert sweep.axes == ("family",)
+
+
 def test_a_complement_is_taken_in_decimal_arithmetic() -> None:
     form = only(layered([Z | {"rate": {**P, "complement": True}}], parameters={"p": 0.9}))
     assert form["repeat"][0][0]["rate"] == 0.1

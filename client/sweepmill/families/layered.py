@@ -22,7 +22,7 @@ MOST_NOTED = 200  # faults of values, more than anybody is shown
 _NAME = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,63}")
 TAKEN = frozenset(
     {
-        *("family", "trajectories", "parameters", "name", "quantity", "region", "layer", "position"),
+        *("family", "circuit", "trajectories", "parameters", "name", "quantity", "region", "layer", "position"),
         *("mean", "standard_error", "variance", "minimum", "maximum", "met_by", "value", "occurrences"),
         *FAMILY_PARAMETERS["layered"],
     }
@@ -34,7 +34,7 @@ class Layered(Block):
     """A circuit as lists of steps: ``before`` once, ``repeat`` in turn for ``layers`` layers, ``after`` once.
 
     Rates may name ``parameters``, which may be axes. Layers of ``before`` are not counted, those of ``after`` follow
-    the others.
+    the others. A ``name`` tells the circuits of several blocks apart, in the column ``circuit`` of the table.
     """
 
     family: Literal["layered"]
@@ -46,6 +46,7 @@ class Layered(Block):
     repeat: Annotated[LayerList, AfterValidator(nonempty)]
     after: LayerList = ()
     parameters: dict[str, NumberAxis] = Field(default_factory=dict)
+    name: Annotated[str, Field(min_length=1, max_length=64)] | None = None
 
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
@@ -98,7 +99,8 @@ class Layered(Block):
         if program is None:
             return None
         plain = Ensemble.of(self.family, **values, **program)
-        return Ensemble(plain.family, plain.parameters, plain.revision, FrozenTable(given))
+        named = {} if self.name is None else {"circuit": self.name}
+        return Ensemble(plain.family, plain.parameters, plain.revision, FrozenTable(named | given))
 
     @cached_property
     def _resolved(self) -> dict[tuple[Any, ...], Any]:
@@ -120,4 +122,5 @@ class Layered(Block):
         parameters = {name: [value for _, value in located_values(axis, "")] for name, axis in self.parameters.items()}
         written = {part: written_form(layers) for part, layers in self.program._asdict().items() if layers}
         given = {name: values[0] if len(values) == 1 else values for name, values in parameters.items()}
-        return super().normal_form(cap) | written | ({"parameters": given} if given else {})
+        called = {} if self.name is None else {"name": self.name}
+        return super().normal_form(cap) | called | written | ({"parameters": given} if given else {})
