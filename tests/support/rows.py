@@ -14,10 +14,10 @@ KIND = 96
 def row(
     code: int, sites: Sequence[int], gate: int = 0, frame: int = 0, letters: str = "", flags: int = 0, place: int = 0
 ) -> list[int]:
-    """One row; `letters` as a Pauli string."""
+    """One row; `letters` as a Pauli string; sites of a swap: the site, then the reference qubit."""
     digits = sum("IXYZ".index(letter) * 4**i for i, letter in enumerate(reversed(letters)))
     padded = [*sites, *[-1] * (op.WIDEST - len(sites))]
-    return [code, len(sites), *padded, gate, frame, digits, flags, KIND, place]
+    return [code, 1 if code == op.SWAP_IN else len(sites), *padded, gate, frame, digits, flags, KIND, place]
 
 
 def table(rows: Sequence[list[int]]) -> NDArray[np.int32]:

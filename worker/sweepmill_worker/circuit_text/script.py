@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from sweepmill_worker.circuit_text.gates import named_gates
 from sweepmill_worker.program import operations as op
-from sweepmill_worker.reference.paulis import row_pauli, row_sites
+from sweepmill_worker.reference.paulis import row_pauli, row_sites, swapped
 
 MEASURE: Final = "MEASURE"
 FORCED: Final = "FORCED"
@@ -86,7 +86,7 @@ class Script:
                 for site in row_sites(row):
                     self._reset(site, "reset")
             case op.SWAP_IN:
-                site, reference = row_sites(row)
+                site, reference = swapped(row)
                 if site not in self._untouched:
                     self._reset(site, "traced out for a reference qubit")
                 self._add("H", site)

@@ -26,6 +26,11 @@ def row_sites(row: NDArray[np.int32]) -> tuple[int, ...]:
     return tuple(row[SITE : SITE + int(row[SITES])].tolist())
 
 
+def swapped(row: NDArray[np.int32]) -> tuple[int, int]:
+    """The site and the reference qubit of a swap, which stands behind the sites of its row."""
+    return int(row[SITE]), int(row[SITE + 1])
+
+
 def row_pauli(row: NDArray[np.int32]) -> Pauli:
     """The Pauli product of a row: one letter X, Y or Z per site, sites with an identity left out."""
     pairs = zip(letters_of(int(row[LETTERS]), int(row[SITES])), row_sites(row), strict=True)

@@ -17,7 +17,7 @@ import stim
 from numpy.typing import NDArray
 
 from sweepmill_worker.program import operations as op
-from sweepmill_worker.reference.paulis import Pauli, row_pauli, row_sites, row_tableau
+from sweepmill_worker.reference.paulis import Pauli, row_pauli, row_sites, row_tableau, swapped
 from sweepmill_worker.reference.record import Measurement, Record
 from sweepmill_worker.reference.state import SignedState
 from sweepmill_worker.words import fill
@@ -59,8 +59,9 @@ class SignedTrajectory:
                 for site in sites:
                     self.state.reset(site)
             case op.SWAP_IN:
-                self.state.reset(sites[0])
-                self.state.pair(*sites)
+                site, reference = swapped(row)
+                self.state.reset(site)
+                self.state.pair(site, reference)
             case code:
                 raise ValueError(f"no operation has the code {code}")
 
