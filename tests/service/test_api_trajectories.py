@@ -7,10 +7,10 @@ import pytest
 import stim
 
 from support.api import Api, reading_only, sampled_by_hand, serving
+from support.signed import entropies
 from support.sweeps import small_sweep
 from sweepmill.messages import CircuitText, Trajectory
 from sweepmill_worker.circuit_text.write import circuit_text
-from sweepmill_worker.reference.rows import entropy, rows_of
 
 SWEEP = small_sweep(rates=1, cap=40)
 ENSEMBLE = SWEEP.points[0].ensemble
@@ -50,8 +50,8 @@ def test_the_circuit_that_is_answered_has_the_entropies_that_were_sampled(api: A
         simulator = stim.TableauSimulator(seed=1)
         simulator.set_num_qubits(8)
         simulator.do(stim.Circuit("TICK".join(pieces[:ticks])))
-        rows = rows_of(simulator.canonical_stabilizers(), 8)
-        total += entropy(rows, range(4))
+        (half,) = entropies(simulator.canonical_stabilizers(), 8, [range(4)])
+        total += half
     (found,) = (one for one in answer.observations if one.observation["quantity"] == "entropy")
     assert found.values[0]["value"] * 2 == total
 

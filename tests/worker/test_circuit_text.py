@@ -8,13 +8,13 @@ import stim
 
 from support.qasm_interpreter import Interpreter
 from support.rows import random_layer, row, table
+from support.signed import entropies
 from sweepmill_worker.circuit_text.gates import CONTROLLED, named_gates
 from sweepmill_worker.circuit_text.qasm_text import qasm_text
 from sweepmill_worker.circuit_text.script import Instruction, Script
 from sweepmill_worker.circuit_text.stim_text import stim_text
 from sweepmill_worker.program import operations as op
 from sweepmill_worker.reference.paulis import gate_tableau
-from sweepmill_worker.reference.rows import entropy, rows_of
 from sweepmill_worker.reference.trajectory import SignedTrajectory, outcome_bits
 
 KEY = (0x0123ABCD, 0xDEADBEEF)
@@ -79,27 +79,22 @@ def test_both_texts_have_the_entropies_of_the_signed_simulation(sites: int, init
         script.layer(rows, f"layer {number}")
     total = sites + references
     regions = [tuple(q for q in range(total) if mask >> q & 1) for mask in range(2**total)]
-    expected = _entropies(reference.state.stabilizers(), total, regions)
+    expected = entropies(reference.state.stabilizers(), total, regions)
 
     circuit = stim.Circuit(stim_text(script, ["a trajectory"]))
     simulator = stim.TableauSimulator(seed=seed)
     simulator.set_num_qubits(script.total)
     simulator.do(circuit)
     assert circuit.num_ticks == len(layers)
-    assert _entropies(simulator.canonical_stabilizers(), script.total, regions) == expected
+    assert entropies(simulator.canonical_stabilizers(), script.total, regions) == expected
 
     program = Interpreter(qasm_text(script, ["a trajectory"]))
     assert program.barriers == len(layers)
     assert program.simulator.num_qubits == script.total
-    assert _entropies(program.simulator.canonical_stabilizers(), script.total, regions) == expected
+    assert entropies(program.simulator.canonical_stabilizers(), script.total, regions) == expected
     recorded = len(reference.record.measurements)
     assert len(program.bits.get("outcome", [])) == recorded
     assert circuit.num_measurements == recorded + len(program.bits.get("forced", []))
-
-
-def _entropies(stabilizers: list[stim.PauliString], qubits: int, regions: list[tuple[int, ...]]) -> list[int]:
-    rows = rows_of(stabilizers, qubits)
-    return [entropy(rows, region) for region in regions]
 
 
 def test_a_short_circuit_as_stim_text() -> None:

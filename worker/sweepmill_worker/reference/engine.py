@@ -1,10 +1,17 @@
-"""The signed simulation of a program, trajectory by trajectory."""
+"""The signed simulation of a program: trajectory by trajectory, and as an engine that reads probes."""
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from typing import NamedTuple
 
+import numpy as np
+from numpy.typing import NDArray
+
+from sweepmill_worker.clifford.engine import Readings
+from sweepmill_worker.observables.probes import Probes
+from sweepmill_worker.observables.rows import read_rows
 from sweepmill_worker.program.compile import Program
 from sweepmill_worker.program.listing import operations
+from sweepmill_worker.reference.rows import rows_of
 from sweepmill_worker.reference.trajectory import SignedTrajectory, outcome_bits
 
 
@@ -29,3 +36,34 @@ def play(program: Program, key_words: tuple[int, int], k: int) -> Iterator[Playe
     for layer in operations(program, key_words, k):
         counts = trajectory.play(layer.rows, layer.number, outcome_bits(key_words, layer.word, k))
         yield Played(layer.number, trajectory, *counts)
+
+
+def run_reference(
+    program: Program, key_words: tuple[int, int], first: int, count: int, read_layers: Sequence[int], probes: Probes
+) -> Readings:
+    """Sample trajectories first .. first + count - 1, as the executor does, with expectations of Pauli products too.
+
+    Arguments as of the executor; read_layers: ascending, 1 .. program.layers.  Raises ValueError for too many qubits
+    and for probes that a stabilizer state does not answer.
+    """
+    readings = Readings(
+        np.zeros((count, len(read_layers), probes.size), dtype=np.int32),
+        np.zeros((count, program.layers), dtype=np.int32),
+        np.zeros((count, program.layers), dtype=np.int32),
+    )
+    at = {number: index for index, number in enumerate(read_layers)}
+    for index in range(count):
+        for number, trajectory, random, measured in play(program, key_words, first + index):
+            if number > 0:
+                readings.random[index, number - 1] = random
+                readings.measured[index, number - 1] = measured
+            if number in at:
+                readings.entropies[index, at[number]] = _read(trajectory, probes)
+    return readings
+
+
+def _read(trajectory: SignedTrajectory, probes: Probes) -> NDArray[np.int32]:
+    state = trajectory.state
+    rows = rows_of(state.stabilizers(), state.qubits)
+    expectations = [state.expectation((pauli.letters, pauli.sites)) for pauli in probes.paulis]
+    return read_rows(rows.x.astype(np.uint8), rows.z.astype(np.uint8), probes, expectations)

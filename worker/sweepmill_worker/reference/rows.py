@@ -1,6 +1,6 @@
-"""Stabilizer rows as arrays, and entropies from their ranks."""
+"""Stabilizer rows as arrays."""
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -24,25 +24,3 @@ def rows_of(stabilizers: Sequence[Any], qubits: int) -> Rows:
     x = np.array([one for one, _ in bits], dtype=bool).reshape(len(bits), qubits)
     z = np.array([one for _, one in bits], dtype=bool).reshape(len(bits), qubits)
     return Rows(x, z, np.array([string.sign.real < 0 for string in stabilizers], dtype=bool))
-
-
-def entropy(rows: Rows, region: Sequence[int]) -> int:
-    """Of a region, in bits: its size minus the generators that live on it alone.
-
-    Those are all rows less the rank of the rows on the rest of the qubits.  Source: Entanglement in the stabilizer
-    formalism, quant-ph/0406168.
-    """
-    outside = np.setdiff1d(np.arange(rows.x.shape[1]), np.asarray(region, dtype=np.int64))
-    columns = np.concatenate([rows.x[:, outside], rows.z[:, outside]], axis=1)
-    return len(region) - len(columns) + rank(int.from_bytes(np.packbits(column).tobytes()) for column in columns.T)
-
-
-def rank(vectors: Iterable[int]) -> int:
-    """Rank over GF(2) of vectors written as integers."""
-    basis: dict[int, int] = {}
-    for vector in vectors:
-        while vector and vector.bit_length() in basis:
-            vector ^= basis[vector.bit_length()]
-        if vector:
-            basis[vector.bit_length()] = vector
-    return len(basis)
