@@ -10,9 +10,10 @@ Entanglement in the stabilizer formalism, quant-ph/0406168 (from memory); the su
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
-from sweepmill_worker.clifford.state import Lanes, State, Words, address, aligned, bit_of, column_chunk, rows_per_chunk
-from sweepmill_worker.clifford.vectors import any_bit, choose, item, load, nonzero, splat, store, trailing_zeros
+from sweepmill_worker.clifford.state import Lanes, State, Words, address, aligned, column_chunk, rows_per_chunk
+from sweepmill_worker.clifford.vectors import any_bit, item, load, splat, store, trailing_zeros
 from sweepmill_worker.jit import part
 
 
@@ -21,12 +22,18 @@ class Matrix(NamedTuple):
 
     rows: Words
     scratch: Words
+    owners: NDArray[np.int32]
+    """Per row of the scratch space, the row of the group it belongs to."""
+    homes: NDArray[np.int32]
+    """The inverse, where there is one."""
 
 
 def new_matrix(state: State, lanes: Lanes, wanted: bool) -> Matrix:
     """Room for the commutators of all rows (nothing if not wanted)."""
     size = len(state.start) * state.chunks * len(lanes) if wanted else 0
-    return Matrix(aligned(size, np.uint64), aligned(size, np.uint64))
+    slots = len(state.start) if wanted else 0
+    owners, homes = np.zeros(slots, dtype=np.int32), np.zeros(slots, dtype=np.int32)
+    return Matrix(aligned(size, np.uint64), aligned(size, np.uint64), owners, homes)
 
 
 @part
@@ -60,20 +67,27 @@ def add_column(state: State, matrix: Matrix, row: int, column: int, lanes: Lanes
 
 @part
 def half_rank(state: State, matrix: Matrix, lanes: Lanes) -> int:
-    """Half the rank of the matrix: the entropy of the region in bits."""
+    """Half the rank of the matrix: the entropy of the region in bits.
+
+    Rows leave in pairs that do not commute, once their parts are removed from all others: then these have no bits left
+    at the places of the pair, and the matrix remains one of commutators.
+    """
     width = state.chunks * len(lanes)
     remaining = gather(state, matrix, lanes)
-    rank = 0
-    for row in range(remaining):
+    pairs = 0
+    while remaining > 0:
+        remaining -= 1
         word = 0
-        while word < width and item(matrix.scratch, row * width + word) == 0:
+        while word < width and item(matrix.scratch, remaining * width + word) == 0:
             word += 1
         if word == width:
             continue
-        rank += 1
-        position = trailing_zeros(item(matrix.scratch, row * width + word))
-        clear_below(state, matrix, row, remaining, word, position, lanes)
-    return rank // 2
+        partner = 64 * word + trailing_zeros(item(matrix.scratch, remaining * width + word))
+        remaining -= 1
+        move_to(state, matrix, partner, remaining, lanes)
+        remove_pair(state, matrix, remaining, lanes)
+        pairs += 1
+    return pairs
 
 
 @part
@@ -86,18 +100,44 @@ def gather(state: State, matrix: Matrix, lanes: Lanes) -> int:
             value = load(matrix.rows, (row * state.chunks + chunk) * len(lanes), lanes)
             store(matrix.scratch, (found * state.chunks + chunk) * len(lanes), value)
             kept |= any_bit(value)
+        matrix.owners[found] = row
+        matrix.homes[row] = found
         found += kept
     return found
 
 
 @part
-def clear_below(state: State, matrix: Matrix, row: int, beyond: int, word: int, position: int, lanes: Lanes) -> None:
-    """Add scratch row `row` to the later rows that have its lowest bit."""
+def move_to(state: State, matrix: Matrix, row: int, place: int, lanes: Lanes) -> None:
+    """Put the scratch row of a row of the group in the given place, and the one that was there in its stead."""
+    old, other = matrix.homes[row], matrix.owners[place]
+    for chunk in range(state.chunks):
+        here, there = (place * state.chunks + chunk) * len(lanes), (old * state.chunks + chunk) * len(lanes)
+        value = load(matrix.scratch, here, lanes)
+        store(matrix.scratch, here, load(matrix.scratch, there, lanes))
+        store(matrix.scratch, there, value)
+    matrix.owners[place], matrix.owners[old] = row, other
+    matrix.homes[row], matrix.homes[other] = place, old
+
+
+@part
+def remove_pair(state: State, matrix: Matrix, place: int, lanes: Lanes) -> None:
+    """Remove from the scratch rows before `place` their parts along the two that begin there, a and b.
+
+    A row that anticommutes with a is multiplied by b, and one that anticommutes with b by a.
+    """
     width = state.chunks * len(lanes)
-    bit, nothing = bit_of(state, position, lanes), splat(np.uint64(0), lanes)
-    for other in range(row + 1, beyond):
-        here = nonzero(splat(item(matrix.scratch, other * width + word), lanes) & bit)
-        for chunk in range(word // len(lanes), state.chunks):
+    of_a, of_b = matrix.owners[place], matrix.owners[place + 1]
+    for other in range(place):
+        with_a = splat(bit_mask(item(matrix.scratch, other * width + (of_a >> 6)), of_a), lanes)
+        with_b = splat(bit_mask(item(matrix.scratch, other * width + (of_b >> 6)), of_b), lanes)
+        for chunk in range(state.chunks):
             to = other * width + chunk * len(lanes)
-            pivot = load(matrix.scratch, row * width + chunk * len(lanes), lanes)
-            store(matrix.scratch, to, load(matrix.scratch, to, lanes) ^ choose(here, pivot, nothing))
+            a = load(matrix.scratch, place * width + chunk * len(lanes), lanes)
+            b = load(matrix.scratch, (place + 1) * width + chunk * len(lanes), lanes)
+            store(matrix.scratch, to, load(matrix.scratch, to, lanes) ^ (a & with_b) ^ (b & with_a))
+
+
+@part
+def bit_mask(word: np.uint64, place: int) -> np.uint64:
+    """All bits if the bit at place % 64 is set, else none."""
+    return np.uint64(0) - ((word >> np.uint64(place & 63)) & np.uint64(1))
