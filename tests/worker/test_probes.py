@@ -93,3 +93,17 @@ def test_reading_leaves_the_state_as_it_is() -> None:
     once = run_probes(chain, KEY, 0, 5, [12], probes)
     np.testing.assert_array_equal(often.entropies[:, -1], once.entropies[:, 0])
     np.testing.assert_array_equal(often.random, once.random)
+
+
+@pytest.mark.parametrize("mixed", [False, True])
+def test_entropies_are_strongly_subadditive(mixed: bool) -> None:
+    """S_A + S_B >= S_(A or B) + S_(A and B), for all pairs: Journal of Mathematical Physics 14, 1938 (1973)."""
+    sites = 7
+    masks = np.arange(2**sites)
+    regions = tuple(tuple(np.flatnonzero(mask >> np.arange(sites) & 1).tolist()) for mask in masks)
+    chain = HybridChain(sites, 12, False, mixed, int(0.1 * 2**32))
+    found = run_probes(chain, KEY, 0, 30, [4, 12], Probes(sites, sets=regions)).entropies
+    first, second = masks[:, None], masks[None, :]
+    excess = found[..., first] + found[..., second] - found[..., first | second] - found[..., first & second]
+    assert excess.min() == 0
+    assert excess.max() > 0

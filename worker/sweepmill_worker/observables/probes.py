@@ -108,9 +108,9 @@ def arc_of(region: Region, sites: int) -> tuple[int, int] | None:
         return 0, 0
     if region[-1] >= sites:
         return None
-    gaps = [i for i in range(1, length) if region[i] != region[i - 1] + 1]
-    if not gaps:
+    if region[-1] - region[0] == length - 1:
         return region[0], length
+    gaps = [i for i in range(1, length) if region[i] != region[i - 1] + 1]
     wraps = len(gaps) == 1 and region[0] == 0 and region[-1] == sites - 1
     return (region[gaps[0]], length) if wraps else None
 

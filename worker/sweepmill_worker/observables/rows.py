@@ -48,6 +48,9 @@ class Group:
     def __init__(self, x: Bits, z: Bits) -> None:
         rows = np.stack([x, z], axis=-1).astype(np.uint8)
         self.rows = eliminate(rows, range(rows.shape[1]))[0]
+        self.columns = [
+            [int.from_bytes(np.packbits(part).tobytes()) for part in site.T] for site in self.rows.swapaxes(0, 1)
+        ]
 
     def inside(self, region: Iterable[int]) -> "Group":
         """The elements that are the identity outside the region."""
@@ -57,9 +60,13 @@ class Group:
         return Group(rows[..., 0], rows[..., 1])
 
     def entropy(self, region: Iterable[int]) -> int:
-        """Entropy of a region in bits."""
-        sites = list(region)
-        return len(sites) - len(self.inside(sites).rows)
+        """Entropy of a region in bits: its size minus the number of independent elements inside it.
+
+        Those are all rows less their rank outside.
+        """
+        kept = set(region)
+        outside = (column for site, pair in enumerate(self.columns) if site not in kept for column in pair)
+        return len(kept) - len(self.rows) + rank(outside)
 
     def negativity(self, region: Iterable[int]) -> int:
         """Between a region and the rest: half the rank of the commutators of the rows cut down to the region.
@@ -69,6 +76,17 @@ class Group:
         x, z = np.moveaxis(self.rows[:, list(region)].astype(np.int64), 2, 0)
         commutators = (x @ z.T + z @ x.T) % 2
         return len(eliminate(commutators.astype(np.uint8)[:, :, None], range(len(x)))[0]) // 2
+
+
+def rank(vectors: Iterable[int]) -> int:
+    """Rank over GF(2) of vectors written as integers."""
+    basis: dict[int, int] = {}
+    for vector in vectors:
+        while vector and vector.bit_length() in basis:
+            vector ^= basis[vector.bit_length()]
+        if vector:
+            basis[vector.bit_length()] = vector
+    return len(basis)
 
 
 def eliminate(rows: Bits, sites: Iterable[int]) -> tuple[Bits, Bits]:
