@@ -3,7 +3,7 @@
 from typing import Any
 
 from sweepmill.ensemble import Ensemble
-from sweepmill_service.plan.costs import default_seconds_per_trajectory
+from sweepmill_service.plan.costs import seconds_of, work_of
 from sweepmill_service.plan.plan import EnsembleInfo, Plan
 from sweepmill_service.plan.sweeps import Request, SweepInfo
 from sweepmill_service.plan.task import Task
@@ -109,12 +109,14 @@ def _info(sweep: LiveSweep) -> SweepInfo:
 
 
 def _ensemble_info(one: OpenEnsemble) -> EnsembleInfo:
+    work = work_of(Ensemble.from_normal_form(one.normal_form))
     return EnsembleInfo(
         key=one.key,
         cap=one.cap,
         judged=one.judged,
-        default_seconds=default_seconds_per_trajectory(Ensemble.from_normal_form(one.normal_form)),
+        default_seconds=seconds_of(work),
         measured_seconds=one.seconds_per_trajectory,
+        kind=work.kind,
         stuck=one.stuck,
         reaches=one.reaches,
         islands=one.islands,

@@ -269,7 +269,7 @@ class ExternalPool(_DaskPool):
 
 
 def warm_kernels(sites: int) -> None:
-    """Compile the kernels in one process of their own: compiling in several at once can break the cache."""
+    """Compile the kernels in processes of their own, under a lock: two that write one entry can break the cache."""
     command = [sys.executable, "-m", "sweepmill_worker.warm", "--sites-up-to", str(sites)]
     environment = os.environ | SINGLE_THREADED
     done = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)  # noqa: S603 fixed words

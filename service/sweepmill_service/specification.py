@@ -9,6 +9,7 @@ from sweepmill.sweep import MOST_FAULTS, Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
 from sweepmill_service.magnitudes import too_large
+from sweepmill_service.plan.costs import seconds_of, what_would_pass, work_of
 from sweepmill_service.programs import too_long
 from sweepmill_service.settings import ServerLimits
 from sweepmill_service.store import Store
@@ -39,8 +40,11 @@ def _slow(sweep: Sweep, costs: Costs, limit: float) -> Fault | None:
     seconds = costs[slowest.key].seconds
     if seconds <= limit:
         return None
+    work = work_of(slowest)
+    layers, sites = what_would_pass(work, seconds / seconds_of(work), limit)
     return Fault(
         "circuit",
         f"one trajectory of {slowest.sites} sites and {slowest.layers} layers is predicted to take {seconds:.0f} s, "
-        f"this server takes at most {limit:g} s: fewer sites or layers",
+        f"this server takes at most {limit:g} s: up to {layers} layers of this size would pass, "
+        f"or up to {sites} sites with as many layers per site",
     )

@@ -12,7 +12,13 @@ from sweepmill.sweep import Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
 from sweepmill_service.estimate import Sampled, sampled
-from sweepmill_service.plan.costs import default_seconds_per_trajectory
+from sweepmill_service.plan.costs import (
+    KINDS,
+    Work,
+    default_seconds_per_trajectory,
+    seconds_of,
+    what_would_pass,
+)
 from sweepmill_service.store import Store
 from sweepmill_service.stored import expand
 
@@ -102,3 +108,21 @@ def test_a_stored_specification_expands_to_what_was_submitted(body: dict[str, An
     stored = expand(sweep.canonical())
     assert stored.ensembles == tuple(point.ensemble for point in sweep.points)
     assert stored.observations == sweep.observations
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_the_sizes_said_to_pass_do_and_the_next_ones_do_not(kind: str) -> None:
+    work = Work(kind, 600, 2400)
+    limit, factor = seconds_of(work) / 7, 1.5
+    layers, sites = what_would_pass(work, factor, limit)
+    assert (
+        factor * seconds_of(work._replace(layers=layers))
+        <= limit
+        < factor * seconds_of(work._replace(layers=layers + 1))
+    )
+    assert (
+        factor * seconds_of(Work(kind, sites, 4 * sites))
+        <= limit
+        < factor * seconds_of(Work(kind, sites + 1, 4 * sites + 4))
+    )
+    assert what_would_pass(work, factor, 1e-9) == (0, 0)

@@ -200,6 +200,19 @@ def test_the_first_batches_teach_what_trajectories_of_other_ensembles_take() -> 
     assert counts[-1] == pytest.approx(500, rel=0.05)  # half a second
 
 
+def test_ensembles_of_another_kind_of_work_learn_nothing_from_it() -> None:
+    slow = [ensemble(f"{n}", 1_000_000, None, default_seconds=1e-6, kind="slow") for n in range(5)]
+    other = ensemble("other", 1_000_000, None, default_seconds=1e-6, kind="other")
+    plan = plan_of((sweep_info(), [*slow, other]))
+    counts = {}
+    for _ in range(6):
+        task = choose(plan)
+        counts[task.ensemble] = task.count
+        plan.landed(task, task.count * 1e-3)
+    assert counts["other"] == 4000
+    assert min(counts.values()) < 4000
+
+
 def test_a_slow_trajectory_is_a_batch_of_its_own() -> None:
     assert choose(plan_of((sweep_info(), [ensemble(pace=60.0)]))).count == 1
 

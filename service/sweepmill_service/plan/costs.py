@@ -1,40 +1,140 @@
 """Predicted cost of a trajectory before anything of its ensemble was measured."""
 
-from typing import Any
+from collections.abc import Callable, Mapping
+from math import log2
+from typing import Any, Final, NamedTuple
 
 from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.language.geometry import number_of_places
 
-# Core-seconds of the stabilizer engine on one core, to within a factor of 2 from 8 to 1024 sites and for rates from
-# 0.02 to 0.5: a constant per trajectory, and per site and layer a part that grows with the length of the vectors.
-PER_TRAJECTORY = 5e-6
-PER_PLACE = 2.5e-8
-PER_PLACE_AND_SITE = 1.5e-11
-PER_CLUSTER_PLACE = 3e-8  # the cluster engine is nearly linear in the places
-REFERENCE = 200.0  # the signed simulation over the stabilizer engine
-BRICKWORK = 1.5  # places per site of a layer of the family that the constants were measured on
+
+class Work(NamedTuple):
+    """What the cost of one trajectory depends on, all else being a small factor."""
+
+    kind: str
+    sites: int
+    layers: int
+    density: float = 1.0
+    """Places of a layer per site, in units of brickwork with one round of measurements."""
+
+
+def _local(work: Work) -> float:
+    """Columns of bits: per place a constant and a part that grows with the length of the columns."""
+    return work.sites * work.layers * (2.5e-8 + 1.5e-11 * work.sites)
+
+
+def _channels(work: Work) -> float:
+    """The same with paired logical rows, twice as many."""
+    return 2.5 * _local(work)
+
+
+def _spread(work: Work) -> float:
+    """Gates between distant sites: rows have no short windows, and a measurement visits every column."""
+    return work.sites * work.layers * (6e-8 + 4e-10 * work.sites + 6e-13 * work.sites**2)
+
+
+def _clusters(work: Work) -> float:
+    return 8e-9 * work.sites * work.layers
+
+
+def _signed(work: Work) -> float:
+    """The signed simulation: microseconds per operation, and tableaus quadratic in the sites at every reading."""
+    return work.sites * work.layers * 2e-5 * (1 + log2(work.sites))
+
+
+# Core-seconds on one core of a server processor, within a small factor from 8 sites to 1024 and rates from 0.02 to 0.5.
+PER_TRAJECTORY: Final = 5e-6
+KINDS: Final[Mapping[str, Callable[[Work], float]]] = {
+    "local": _local,
+    "channels": _channels,
+    "spread": _spread,
+    "clusters": _clusters,
+    "signed": _signed,
+}
+FAMILY_KINDS: Final[Mapping[str, str]] = {
+    "hybrid-clifford": "local",
+    "hybrid-clifford-square": "spread",
+    "hybrid-clifford-long-range": "spread",
+    "projective-ising": "clusters",
+    "edge-bath": "channels",
+    "rotated-clifford": "channels",
+}
+BRICKWORK: Final = 1.5
+"""Places per site of brickwork with one round of measurements."""
+
+
+def work_of(ensemble: Ensemble) -> Work:
+    """The work of one trajectory. Reference qubits count as sites."""
+    sites = ensemble.sites + ensemble.references
+    if ensemble.parameters["engine"] == "reference":
+        return Work("signed", sites, ensemble.layers, _density(ensemble))
+    if ensemble.family == LAYERED:
+        return Work(_layered_kind(ensemble), sites, ensemble.layers, _density(ensemble))
+    kind = FAMILY_KINDS[ensemble.family]
+    if kind == "local" and ensemble.parameters["initial_state"] == "mixed":
+        kind = "channels"
+    return Work(kind, sites, ensemble.layers)
+
+
+def _density(ensemble: Ensemble) -> float:
+    if ensemble.family != LAYERED:
+        return 1.0
+    layers = ensemble.parameters["repeat"]
+    places = sum(number_of_places(step["on"], ensemble.sites, ensemble.periodic) for layer in layers for step in layer)
+    return places / len(layers) / ensemble.sites / BRICKWORK
+
+
+def _layered_kind(ensemble: Ensemble) -> str:
+    steps = [step for layer in ensemble.parameters["repeat"] for step in layer]
+    if any(_far(step["on"], ensemble.sites) for step in steps):
+        return "spread"
+    return "channels" if any(map(_loses, steps)) or ensemble.parameters["initial_state"] == "mixed" else "local"
+
+
+def _far(on: Any, sites: int) -> bool:
+    """Does it couple sites that are not neighbors?"""
+    if isinstance(on, str) or "places" not in on:
+        return not isinstance(on, str) and "random_pairs" in on
+    return any(max(place) - min(place) not in (len(place) - 1, sites - 1) for place in on["places"])
+
+
+def _loses(step: Any) -> bool:
+    """Does it turn pure states into mixed ones?"""
+    if "choose" in step:
+        return any(_loses(inner) for branch in step["choose"] for inner in branch["steps"])
+    return "depolarise" in step or "reset" in step or step.get("recorded", True) is False
+
+
+def seconds_of(work: Work) -> float:
+    """Core-seconds of one trajectory, to within a small factor."""
+    return PER_TRAJECTORY + work.density * KINDS[work.kind](work)
 
 
 def default_seconds_per_trajectory(ensemble: Ensemble) -> float:
-    """Core-seconds of one trajectory, to within a small factor."""
-    places = ensemble.layers * _places_of_a_layer(ensemble)
-    if ensemble.parameters["engine"] == "reference":
-        return PER_TRAJECTORY + REFERENCE * places * PER_PLACE
-    if ensemble.family == "projective-ising":
-        return PER_TRAJECTORY + places * PER_CLUSTER_PLACE
-    return PER_TRAJECTORY + places * (PER_PLACE + PER_PLACE_AND_SITE * (ensemble.sites + ensemble.references))
+    """Core-seconds of one trajectory of an ensemble, to within a small factor."""
+    return seconds_of(work_of(ensemble))
 
 
-def _places_of_a_layer(ensemble: Ensemble) -> float:
-    """Places in units of those that brickwork has per site."""
-    if ensemble.family != LAYERED:
-        return ensemble.sites
-    layers = ensemble.parameters["repeat"]
-    return sum(_places(step, ensemble) for layer in layers for step in layer) / len(layers) / BRICKWORK
+def what_would_pass(work: Work, factor: float, limit: float) -> tuple[int, int]:
+    """Most layers at these sites, and most sites at as many layers per site, within ``limit`` seconds.
+
+    ``factor``: what trajectories take over the default cost. Zero where nothing passes.
+    """
+
+    def passes(sites: int, layers: int) -> bool:
+        return factor * seconds_of(work._replace(sites=sites, layers=layers)) <= limit
+
+    layers = _largest(work.layers, lambda n: passes(work.sites, n))
+    return layers, _largest(work.sites, lambda n: passes(n, max(1, round(n * work.layers / work.sites))))
 
 
-def _places(step: Any, ensemble: Ensemble) -> int:
-    return number_of_places(step["on"], ensemble.sites, ensemble.periodic)
+def _largest(upper: int, passes: Callable[[int], bool]) -> int:
+    """The largest number up to ``upper`` that passes, 0 if none does; whoever passes, so do the smaller ones."""
+    low, high = 0, upper
+    while low < high:
+        middle = (low + high + 1) // 2
+        low, high = (middle, high) if passes(middle) else (low, middle - 1)
+    return low
 
 
 class Calibration:

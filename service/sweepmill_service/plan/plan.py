@@ -3,6 +3,7 @@
 It is kept in memory, follows the store by increments and is rebuilt from it at start; nothing in it must be saved.
 """
 
+from collections import defaultdict
 from collections.abc import Collection, Iterable
 from dataclasses import dataclass, field, replace
 from itertools import count
@@ -26,6 +27,7 @@ class EnsembleInfo:
     judged: int
     default_seconds: float
     measured_seconds: float | None
+    kind: str = ""  # of work: ensembles of one kind learn from each other
     stuck: bool = False
     reaches: dict[str, Reach] = field(default_factory=dict)
     islands: dict[str, dict[int, int]] = field(default_factory=dict)
@@ -42,7 +44,7 @@ class Plan:
         self.under_way: dict[str, Task] = {}
         self.stuck: set[str] = set()
         self.share = FairShare()
-        self.calibration = Calibration()
+        self.calibrations: defaultdict[str, Calibration] = defaultdict(Calibration)
         self._numbers = count(1)  # of versions of entries and of tasks: none ever returns
 
     # --- sweeps come, change and go
@@ -125,7 +127,7 @@ class Plan:
             latest = seconds / task.count
             before = entry.measured_seconds
             if before is None:
-                self.calibration.note(entry.default_seconds, latest)
+                entry.calibration.note(entry.default_seconds, latest)
             entry.measured_seconds = latest if before is None else (before + latest) / 2
 
     def lost(self, task: Task, failures: int | None = None) -> None:
@@ -199,7 +201,8 @@ class Plan:
     def _entry(self, one: EnsembleInfo) -> Entry:
         entry = self.entries.get(one.key)
         if entry is None:
-            entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds, self.calibration)
+            calibration = self.calibrations[one.kind]
+            entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds, calibration)
         entry.stuck = one.stuck
         (self.stuck.add if one.stuck else self.stuck.discard)(one.key)
         entry.faults = dict(one.faults)
