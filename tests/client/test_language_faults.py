@@ -82,6 +82,7 @@ MEANING: list[tuple[dict[str, Any], str, str]] = [
     (on(PAIRS, apply="uniform-clifford", fixed="trajectory"), f"{STEP}.fixed", "drawn anew in every layer"),
     (layered([{"apply": "cz", "on": "bonds", "rotated": True}]), f"{STEP}.rotated", "cz is a definite one"),
     (layered([{"apply": "uniform-clifford", "on": "sites", "rotated": True}]), f"{STEP}.rotated", "two sites"),
+    (layered([GATES | {"rotated": True, "fixed": "ensemble"}]), f"{STEP}.rotated", "its projections are forced"),
     (on({"places": [[0, 1], [2]]}), f"{STEP}.on.places[1]", "equally many sites: 2 in the first, 1 here"),
     (on({"places": [[0, 1], [2, 2]]}), f"{STEP}.on.places[1]", "distinct"),
     (on({"places": [[0, 1, 2, 3, 4]]}), f"{STEP}.on.places[0]", "1 to 4 sites, got 5"),

@@ -86,6 +86,8 @@ def _gate_faults(visit: Visit, step: Apply) -> Iterator[Fault]:
         yield Fault(f"{visit.path}.fixed", "the places are drawn anew in every layer, so no gate belongs to a place")
     if step.rotated and not random:
         yield Fault(f"{visit.path}.rotated", f"only a random gate can be rotated, {step.apply} is a definite one")
+    if step.rotated and step.fixed == "ensemble":
+        yield Fault(f"{visit.path}.rotated", "its projections are forced: the gate has to be drawn for each trajectory")
     if step.rotated and width == 1:
         yield Fault(f"{visit.path}.rotated", "only a gate of two sites can be rotated")
 
