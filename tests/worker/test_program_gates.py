@@ -7,25 +7,13 @@ import pytest
 import stim
 from numpy.typing import NDArray
 
+from support.cliffords import ONE, Matrix, class_tableau
 from sweepmill_worker.clifford.classes import GATE_CLASSES
 from sweepmill_worker.program.gates import named_gate, random_classes
 from sweepmill_worker.program.operations import ONE_SITE_CLASSES
 from sweepmill_worker.program.rotation import rotated_table
 
-Matrix = NDArray[np.complex128]
-ONE = {
-    "I": np.eye(2),
-    "X": np.array([[0, 1], [1, 0]]),
-    "Y": np.array([[0, -1j], [1j, 0]]),
-    "Z": np.diag([1, -1]),
-}
 PAULIS: list[Matrix] = [np.kron(ONE[a], ONE[b]).astype(complex) for a, b in product("IXYZ", repeat=2)]
-
-
-def class_tableau(matrix: NDArray[np.uint8]) -> stim.Tableau:
-    """The tableau with this symplectic part and positive signs."""
-    images = [stim.PauliString.from_numpy(xs=row[0::2].astype(bool), zs=row[1::2].astype(bool)) for row in matrix]
-    return stim.Tableau.from_conjugated_generators(xs=images[0::2], zs=images[1::2])
 
 
 def unitary(number: int) -> Matrix:

@@ -11,6 +11,8 @@ import numba
 from numba.core import config as numba_config
 from platformdirs import user_cache_path
 
+from sweepmill_worker.parts import PartCompiler
+
 F = TypeVar("F", bound=Callable[..., Any])
 
 KERNEL_FOLDERS = ("clifford", "clusters", "program")
@@ -22,7 +24,7 @@ def _sources_digest() -> str:
     package = Path(__file__).parent
     digest = hashlib.sha256()
     folders = [path for name in KERNEL_FOLDERS for path in sorted((package / name).glob("*.py"))]
-    for path in [package / "jit.py", package / "words.py", *folders]:
+    for path in [package / "jit.py", package / "parts.py", package / "words.py", *folders]:
         digest.update(path.read_bytes())
     return digest.hexdigest()[:12]
 
@@ -45,7 +47,7 @@ numba_config.CACHE_DIR = str(cache_directory())
 # No reference counts (an atomic operation per array and call): kernels borrow every array and allocate none.  No
 # wrappers where nobody calls from Python or C: making them took 40 % of the time to compile.
 _OPTIONS = {"nogil": True, "error_model": "numpy", "_nrt": False, "no_cfunc_wrapper": True}
-_INNER = {**_OPTIONS, "no_cpython_wrapper": True}
+_INNER = {**_OPTIONS, "no_cpython_wrapper": True, "pipeline_class": PartCompiler}
 
 
 def entry(function: F) -> F:

@@ -37,7 +37,7 @@ class Program:
     """Numbered ones: those of `repeat`, then those of `after`."""
     before: int
     tables: t.Tables
-    places: NDArray[np.int32]
+    places: NDArray[np.int64]
     words: int
     """Random words at hand."""
     drawn: int
@@ -159,8 +159,8 @@ def _layout(steps: Steps, parts: Sequence[Sequence[Any]], layers: int) -> Layout
     return layout
 
 
-def _place_rows(steps: Steps) -> NDArray[np.int32]:
-    rows = np.full((len(steps.places), WIDEST), -1, dtype=np.int32)
+def _place_rows(steps: Steps) -> NDArray[np.int64]:
+    rows = np.full((len(steps.places), WIDEST), -1, dtype=np.int64)
     for row, place in zip(rows, steps.places, strict=True):
         row[: len(place)] = place
     return rows
@@ -179,8 +179,8 @@ def _tables(steps: Steps, layout: Layout, before: int, after: int, repeated: int
         lists=np.cumsum([0, *map(len, steps.tops)], dtype=np.int64),
         sequence=_table(layout.sequence, 4),
         levels=np.array(steps.levels.levels, dtype=np.uint64),
-        classes=np.array(steps.classes, dtype=np.int32),
-        rotated=rotated_table() if rows[:, t.ROTATED].any() else np.zeros((0, 4), np.int32),
+        classes=np.array(steps.classes, dtype=np.int64),
+        rotated=rotated_table() if rows[:, t.ROTATED].any() else np.zeros((0, 4), np.int64),
         disorder=_table(steps.levels.disorder, 8),
         curves=np.array(steps.levels.curves, dtype=np.int64).reshape(-1, NODES),
         blocks=np.concatenate([np.zeros(0, np.uint32), *layout.blocks]),

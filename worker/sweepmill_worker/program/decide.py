@@ -101,4 +101,4 @@ def detail_of_gate(tables: Tables, desk: Desk, step: int, place: int, base: int)
     product = np.uint64(item(desk.words, at)) * np.uint64(count)
     chosen = item(tables.classes, tables.steps[step, CLASSES_AT] + np.int64(product >> _32))
     frame = ((product & _LOW) << np.uint64(2 * tables.steps[step, WIDTH])) >> _32
-    return int(chosen) << 4 | int(frame)
+    return int(chosen << 4 | np.int64(frame))

@@ -68,6 +68,17 @@ def named_gate(name: str, sites: int) -> tuple[int, int]:
         raise ValueError(f"no Clifford gate is called {name}") from error
     if len(tableau) != sites:
         raise ValueError(f"{name} acts on {len(tableau)} sites, not {sites}")
+    return _class_and_frame(tableau)
+
+
+@cache
+def bell_class() -> int:
+    """The gate that turns |00> into a Bell pair."""
+    return _class_and_frame(stim.Circuit("H 0\nCX 0 1").to_tableau())[0]
+
+
+def _class_and_frame(tableau: stim.Tableau) -> tuple[int, int]:
+    sites = len(tableau)
     images = [image for q in range(sites) for image in (tableau.x_output(q), tableau.z_output(q))]
     matrix = np.array([[bit for q in range(sites) for bit in _bits(image[q])] for image in images], dtype=np.uint8)
     table = GATE_CLASSES if sites == 2 else ONE_SITE_CLASSES

@@ -24,12 +24,12 @@ _LETTERS = (0, 3, 1, 2)  # of x z = 00, 01, 10, 11: I 0, X 1, Y 2, Z 3
 
 
 @cache
-def rotated_table() -> NDArray[np.int32]:
-    """int32[720, 4]: number of projections, the letters of the first and of the second, and the class of the gate.
+def rotated_table() -> NDArray[np.int64]:
+    """int64[720, 4]: number of projections, the letters of the first and of the second, and the class of the gate.
 
     Letters are base-4 digits, 0 for a projection that is not there.  Of several gates that will do, the first.
     """
-    return np.array([rotated(number) for number in range(len(GATE_CLASSES))], dtype=np.int32)
+    return np.array([rotated(number) for number in range(len(GATE_CLASSES))], dtype=np.int64)
 
 
 @cache

@@ -6,7 +6,7 @@ from typing import Any
 
 from sweepmill_worker.program import kinds
 from sweepmill_worker.program import tables as t
-from sweepmill_worker.program.gates import named_gate, random_classes
+from sweepmill_worker.program.gates import bell_class, named_gate, random_classes
 from sweepmill_worker.program.layout import Segments
 from sweepmill_worker.program.operations import (
     DEPOLARISE,
@@ -20,6 +20,7 @@ from sweepmill_worker.program.operations import (
 )
 from sweepmill_worker.program.places import Places, Where, where
 from sweepmill_worker.program.rates import PROBABILITY, WEIGHT, Levels, largest
+from sweepmill_worker.program.roads import road
 
 Step = Mapping[str, Any]
 Row = list[int]
@@ -57,6 +58,8 @@ class Steps:
             raise ValueError(f"a layer has at most {kinds.SLOTS} steps, got {len(self.rows) - begin}")
         for top in tops:
             self._link(top, -1)
+            row = self.rows[top]
+            row[t.ROAD], row[t.PARITY] = road(row, self.wheres[top], self.sites, self.periodic)
         self.tops.append(tops)
 
     def most_operations(self, tops: Sequence[int]) -> int:
@@ -189,6 +192,7 @@ class Steps:
             if row[t.WIDTH] != 1:
                 raise ValueError(f"swap_in: places have one site, got {row[t.WIDTH]}")
             row[t.CODE], row[t.REFERENCE] = SWAP_IN, self.sites + self.references
+            row[t.DETAIL] = bell_class()
             self.references += row[t.PLACES]
         else:
             raise ValueError(f"a step applies, measures, depolarises, resets, swaps in or chooses, got {dict(step)}")

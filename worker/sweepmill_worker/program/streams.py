@@ -66,8 +66,8 @@ def draw_pairs(
     """Disjoint pairs."""
     free, law, first = tables.sites, tables.steps[number, STREAM_AT], tables.steps[number, FIRST]
     for site in range(free):
-        put(desk.free, site, np.int32(site))
-        put(desk.position, site, np.int32(site))
+        put(desk.free, site, site)
+        put(desk.position, site, site)
     for pair in range(tables.steps[number, PLACES]):
         site = uniform_site(desk, free, kind, word, k, key)
         free = take(desk, site, free)
@@ -104,10 +104,10 @@ def uniform_site(desk: Desk, free: int, kind: int, word: int, k: np.uint64, key:
 @part
 def take(desk: Desk, site: int, free: int) -> int:
     """Pair the site; how many are left?"""
-    at, last = np.int64(item(desk.position, site)), item(desk.free, free - 1)
+    at, last = item(desk.position, site), item(desk.free, free - 1)
     put(desk.free, at, last)
-    put(desk.position, np.int64(last), np.int32(at))
-    put(desk.position, site, np.int32(-1))
+    put(desk.position, last, at)
+    put(desk.position, site, -1)
     return free - 1
 
 

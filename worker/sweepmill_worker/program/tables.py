@@ -28,7 +28,7 @@ CLASSES_AT: Final = 12
 CLASSES: Final = 13
 """Number of classes a gate is drawn from; 0 for a definite gate."""
 DETAIL: Final = 14
-"""16 * class + frame of a definite gate; letters of a measurement."""
+"""16 * class + frame of a definite gate; letters of a measurement; class of the gate that makes a Bell pair."""
 ROTATED: Final = 15
 FLAGS: Final = 16
 REFERENCE: Final = 17
@@ -85,9 +85,9 @@ class Tables(NamedTuple):
     """[before + span + after, 4]: list of layers, the blocks of words to fill when it is reached, its first word."""
     levels: NDArray[np.uint64]
     """Thresholds of rates and integer weights of branches."""
-    classes: NDArray[np.int32]
+    classes: NDArray[np.int64]
     """Classes of random gates."""
-    rotated: NDArray[np.int32]
+    rotated: NDArray[np.int64]
     """[720, 4], or [0, 4] where nothing is rotated."""
     disorder: NDArray[np.int64]
     """[quenched rates and weights, 8]"""
@@ -118,19 +118,19 @@ class Tables(NamedTuple):
 class Desk(NamedTuple):
     """What drawing writes."""
 
-    places: NDArray[np.int32]
+    places: NDArray[np.int64]
     """[places, 4]: sites; the rows of random places are rewritten whenever they are drawn."""
     words: NDArray[np.uint32]
     """The fixed blocks, then those of the layers at hand."""
     drawn: NDArray[np.uint64]
     """Quenched rates and weights of the trajectory."""
-    operations: NDArray[np.int32]
+    operations: NDArray[np.int64]
     """[most, 4]: code, step, place, detail.  In `code` a projection of a rotated gate has 256 * (1 + its ordinal)."""
     ends: NDArray[np.int64]
     """Where each top-level step of the layer ends in `operations`."""
-    free: NDArray[np.int32]
+    free: NDArray[np.int64]
     """Sites not yet paired ..."""
-    position: NDArray[np.int32]
+    position: NDArray[np.int64]
     """... and where each stands among them, -1 for a paired one."""
     stream: NDArray[np.uint32]
     stream_blocks: NDArray[np.uint32]
