@@ -15,6 +15,7 @@ from sweepmill_worker.clifford.engine import HybridChain, Readings, run
 from sweepmill_worker.clifford.roads import plan
 from sweepmill_worker.clifford.state import State
 from sweepmill_worker.clifford.trajectories import Results
+from sweepmill_worker.observables.probes import of_regions
 from sweepmill_worker.program.compile import MAX_SITES, compile_program
 from sweepmill_worker.program.execute import run_trajectories
 from sweepmill_worker.program.listing import new_desk
@@ -71,9 +72,6 @@ def anything(sites: int, boundary: str, loses: bool) -> Form:
     lost: list[dict[str, Any]] = []
     if loses:
         lost += [{"depolarise": True, "on": "sites", "rate": 0.02}, {"reset": True, "on": {"places": [[1]]}}]
-        {"depolarise": True, "on": "sites", "rate": 0.02},
-        {"reset": True, "on": {"places": [[1]]}},
-    ] * loses
     first: list[dict[str, Any]] = [
         {"apply": "uniform-clifford", "on": {"random_pairs": {"count": "all", "exponent": 2}}},
         {"measure": "XYZ", "on": {"blocks": {"width": 3}}, "rate": 0.05},
@@ -105,7 +103,7 @@ def test_rows_stay_independent_and_commuting_inside_their_windows(sites: int, bo
         circuit_of(program, KEY),
         program.tables,
         new_desk(program, KEY),
-        plan(program.total, program.mixed, []),
+        plan(of_regions(program.sites, [], program.references), program.mixed),
         np.zeros(0, dtype=np.int64),
         np.uint64(3),
         results,

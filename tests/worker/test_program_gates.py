@@ -8,6 +8,7 @@ import stim
 from numpy.typing import NDArray
 
 from support.cliffords import ONE, Matrix, class_tableau
+from sweepmill.language.gates import GATES
 from sweepmill_worker.clifford.classes import GATE_CLASSES
 from sweepmill_worker.program.gates import named_gate, random_classes
 from sweepmill_worker.program.operations import ONE_SITE_CLASSES
@@ -37,6 +38,12 @@ def test_a_named_gate_is_its_class_followed_by_its_frame(name: str, stim_name: s
     letters = [frame // 4 ** (sites - 1 - q) % 4 for q in range(sites)]
     pauli = stim.PauliString("".join("IXYZ"[letter] for letter in letters)).to_tableau()
     assert class_tableau(table[number]).then(pauli) == expected
+
+
+def test_every_gate_of_the_language_is_known() -> None:
+    for name, widths in GATES.items():
+        for sites in widths:
+            assert random_classes(name, sites) is not None or named_gate(name, sites)
 
 
 def test_unknown_names_and_wrong_numbers_of_sites_are_refused() -> None:

@@ -21,6 +21,9 @@ from llvmlite.binding import get_host_cpu_name  # type: ignore[import-untyped]
 
 from sweepmill_worker.clifford.engine import MAX_SITES, HybridChain, run
 from sweepmill_worker.jit import cache_directory
+from sweepmill_worker.program.compile import compile_program
+from sweepmill_worker.program.listing import operations
+from sweepmill_worker.program.run import run_program
 from sweepmill_worker.words import GATE, words
 
 SIZES: Final = (2, 66, 130, 258)
@@ -37,7 +40,15 @@ def _chains(sites_up_to: int) -> None:
         run(chain, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
 
 
-JOBS: Final[Mapping[str, Callable[[int], None]]] = {"chains": _chains}
+def _programs(sites_up_to: int) -> None:
+    for sites in _sizes(sites_up_to):
+        form = {"sites": sites, "layers": 1, "repeat": [[{"measure": "Z", "on": "sites"}]]}
+        program = compile_program(form)
+        run_program(program, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
+        list(operations(program, (0, 0), 0))
+
+
+JOBS: Final[Mapping[str, Callable[[int], None]]] = {"chains": _chains, "programs": _programs}
 """What has entry points of its own; each takes the largest number of sites."""
 
 

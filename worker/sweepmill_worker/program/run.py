@@ -10,11 +10,13 @@ import numpy as np
 from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk as new_reading_desk
 from sweepmill_worker.clifford.engine import MASKS, Readings
-from sweepmill_worker.clifford.roads import Plan, Region, plan
+from sweepmill_worker.clifford.roads import Plan, plan
 from sweepmill_worker.clifford.state import aligned
 from sweepmill_worker.clifford.trajectories import Results
+from sweepmill_worker.observables.probes import Probes, Region, of_regions
 from sweepmill_worker.program.compile import Program
 from sweepmill_worker.program.execute import INITIAL_STATES, Circuit, run_trajectories
+from sweepmill_worker.program.kinds import ENSEMBLE_TRAJECTORY
 from sweepmill_worker.program.listing import new_desk
 from sweepmill_worker.program.operations import ONE_SITE_CLASSES
 from sweepmill_worker.program.products import roomy_state
@@ -37,25 +39,38 @@ def run_program(
     sorted tuples of distinct sites, references included.  Raises ValueError, naming the argument, for anything out of
     range.
     """
-    _check(program, key_words, first, count, read_layers, regions)
-    return run_plan(program, key_words, first, count, read_layers, plan(program.total, program.mixed, regions))
+    for region in regions:
+        if not all(map(lt, region, region[1:])):
+            raise ValueError(f"regions: sites must ascend, got {region}")
+        if region and not 0 <= region[0] <= region[-1] < program.total:
+            raise ValueError(f"regions: sites are 0 .. {program.total - 1}, got {region}")
+    probes = of_regions(program.sites, regions, program.references)
+    return run_probes(program, key_words, first, count, read_layers, probes)
+
+
+def run_probes(
+    program: Program, key_words: tuple[int, int], first: int, count: int, read_layers: Sequence[int], probes: Probes
+) -> Readings:
+    """`run_program` with any probes instead of regions: the last axis of `entropies` is that of their layout."""
+    _check(program, key_words, first, count, read_layers)
+    return run_plan(program, key_words, first, count, read_layers, plan(probes, program.mixed))
 
 
 def run_plan(
     program: Program, key_words: tuple[int, int], first: int, count: int, read_layers: Sequence[int], chosen: Plan
 ) -> Readings:
-    """`run_program` with the roads already chosen and nothing checked."""
+    """`run_probes` with the roads already chosen and nothing checked."""
     state, lanes = roomy_state(program.total, program.mixed)
     spare, _ = roomy_state(program.total, program.mixed)
     results = Results(
-        entropies=np.zeros((count, len(read_layers), len(chosen.kinds)), dtype=np.int32),
+        entropies=np.zeros((count, len(read_layers), chosen.size), dtype=np.int32),
         random=np.zeros((count, program.layers), dtype=np.int32),
         measured=np.zeros((count, program.layers), dtype=np.int32),
     )
     run_trajectories(
         state,
         new_reading_desk(spare),
-        new_matrix(state, lanes, wanted=len(chosen.toggle_ends) > 0),
+        new_matrix(state, lanes, wanted=len(chosen.others.ends) + len(chosen.negativities.ends) > 0),
         circuit_of(program, key_words),
         program.tables,
         new_desk(program, key_words),
@@ -82,24 +97,12 @@ def circuit_of(program: Program, key_words: tuple[int, int]) -> Circuit:
     )
 
 
-def _check(
-    program: Program,
-    key_words: tuple[int, int],
-    first: int,
-    count: int,
-    read_layers: Sequence[int],
-    regions: Sequence[Region],
-) -> None:
+def _check(program: Program, key_words: tuple[int, int], first: int, count: int, read_layers: Sequence[int]) -> None:
     if not all(0 <= word < 2**32 for word in key_words):
         raise ValueError(f"key_words: must be two 32-bit words, got {key_words}")
-    if first < 0 or count < 0 or first + count > 2**64 - 1:
+    if first < 0 or count < 0 or first + count > ENSEMBLE_TRAJECTORY:
         raise ValueError(f"first, count: trajectories are numbered 0 .. 2**64 - 2, got {first}, {count}")
     if any(not 1 <= layer <= program.layers for layer in read_layers):
         raise ValueError(f"read_layers: layers are 1 .. {program.layers}, got {list(read_layers)}")
     if any(a >= b for a, b in pairwise(read_layers)):
         raise ValueError(f"read_layers: must ascend, got {list(read_layers)}")
-    for region in regions:
-        if not all(map(lt, region, region[1:])):
-            raise ValueError(f"regions: sites must ascend, got {region}")
-        if region and not 0 <= region[0] <= region[-1] < program.total:
-            raise ValueError(f"regions: sites are 0 .. {program.total - 1}, got {region}")
