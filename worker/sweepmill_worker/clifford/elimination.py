@@ -61,9 +61,9 @@ def cut_open(state: State, desk: Desk, sites: int, lanes: Lanes) -> None:
     """Copy the columns of the first `sites` sites, and bound the rows' ends."""
     copy, width = desk.copy, len(lanes)
     for chunk in range(state.chunks):
-        first = address(state, chunk, 0, lanes)
+        source, to = address(state, chunk, 0, lanes), address(copy, chunk, 0, lanes)
         for column in range(2 * sites):
-            store(copy.columns, first + column * width, load(state.columns, first + column * width, lanes))
+            store(copy.columns, to + column * width, load(state.columns, source + column * width, lanes))
     for row in range(len(state.start)):
         desk.ends[row] = min(state.end[row], sites - 1)
 
