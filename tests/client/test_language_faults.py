@@ -173,7 +173,8 @@ def test_every_fault_of_the_grammar_is_listed() -> None:
 
 def test_every_fault_of_the_meaning_is_listed_also_those_of_other_fields() -> None:
     spec = layered(
-        [{"apply": "cx", "on": "sites"}, Z | {"rate": P}, {"measure": "ZZ", "on": {"places": [[0, 0]]}}],
+        [{"apply": "cx", "on": "sites"}, Z | {"rate": P}, {"measure": "ZZ", "on": {"places": [[0, 0], [8, 1]]}}],
+        [Z | {"rate": 2}],
         sites=[8, 8],
         parameters={"q": 0.1},
     )
@@ -182,6 +183,8 @@ def test_every_fault_of_the_meaning_is_listed_also_those_of_other_fields() -> No
         "circuit.repeat[0][0].apply",
         "circuit.repeat[0][1].rate.parameter",
         "circuit.repeat[0][2].on.places[0]",
+        "circuit.repeat[0][2].on.places[1]",
+        "circuit.repeat[1][0].rate",
         "circuit.sites[1]",
     ]
 

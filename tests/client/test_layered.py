@@ -162,6 +162,14 @@ def test_the_specification_keeps_parameters_by_name_and_synonyms_folded() -> Non
     }
 
 
+def test_spellings_that_no_size_tells_apart_are_folded_in_the_specification_too() -> None:
+    constant = {"profile": "list", "by": "site", "values": [0.5, 0.5]}
+    one = layered(
+        [Z | {"on": {"blocks": {"width": 1}}, "rate": constant}, {"apply": "CX", "on": {"blocks": {"width": 2}}}]
+    )
+    assert Sweep.parse(one).key == Sweep.parse(layered([Z | {"rate": 0.5}, {"apply": "cx", "on": "bonds"}])).key
+
+
 NUMBERS = st.integers(0, 1000).map(lambda n: n / 1000)
 RATES = st.one_of(
     NUMBERS,

@@ -14,7 +14,7 @@ from sweepmill.families.block import Block, Values, column
 from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite
 from sweepmill.frozen import FrozenTable, freeze
 from sweepmill.language.forms import Chain, Resolution, written_form
-from sweepmill.language.grammar import grammar_faults
+from sweepmill.language.grammar import grammar_faults, literal_faults
 from sweepmill.language.program import Program
 from sweepmill.language.steps import LayerList
 
@@ -50,13 +50,22 @@ class Layered(Block):
 
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""
-        found = [*self._name_faults(path), *grammar_faults(self.program, self.parameters, path)]
-        found += [fault for chain in self._chains() for fault in chain.faults(self.program, path)] if not found else []
+        found = list(self._language_faults(path))
         if not found:
             yield from super().ensembles(path, faults)
             return
         self.columns(path, faults)  # its faults belong on the list, too
-        faults.extend(dict.fromkeys(found))
+        faults.extend(dict.fromkeys([*found, *literal_faults(self.program, path)]))
+
+    def _language_faults(self, path: str) -> Iterator[Fault]:
+        """What is wrong with the circuit at every value of the parameters."""
+        chains = self._chains()
+        misplaced = [fault for chain in chains for fault in chain.place_faults(self.program, path)]
+        found = [*self._name_faults(path), *grammar_faults(self.program, self.parameters, path), *misplaced]
+        yield from found
+        if not found:
+            for chain in chains:
+                yield from chain.forced_faults(self.program, path)
 
     @cached_property
     def program(self) -> Program:

@@ -8,9 +8,10 @@ from typing import Any
 
 from sweepmill.errors import Fault
 from sweepmill.language.gates import RANDOM_GATES
-from sweepmill.language.geometry import covered, on_form, place_faults
-from sweepmill.language.places import RandomPairs
-from sweepmill.language.program import Program, visits
+from sweepmill.language.geometry import covered, on_form, place_faults, word_of
+from sweepmill.language.numbers import ListProfile
+from sweepmill.language.places import Blocks, RandomPairs, Sublattice
+from sweepmill.language.program import Program, parameters_in, visits
 from sweepmill.language.rates import rate_faults, rate_form, value_of, weight_faults
 from sweepmill.language.steps import Apply, Branch, Choose, Measure
 
@@ -22,20 +23,17 @@ class Chain:
         self.sites = sites
         self.periodic = periodic
 
-    def faults(self, program: Program, path: str) -> Iterator[Fault]:
-        """Faults of the places of a circuit without faults of grammar."""
-        misplaced = [
-            fault
-            for visit in visits(program, path)
-            if not visit.inside
-            for fault in place_faults(visit.on, visit.on_path, self.sites, self.periodic)
-        ]
-        yield from misplaced
-        if not misplaced:
-            yield from self._forced_faults(program, path)
+    def place_faults(self, program: Program, path: str) -> Iterator[Fault]:
+        """Places that are not there at this size."""
+        for visit in visits(program, path):
+            if not visit.inside:
+                yield from place_faults(visit.on, visit.on_path, self.sites, self.periodic)
 
-    def _forced_faults(self, program: Program, path: str) -> Iterator[Fault]:
-        """Outcomes may be forced only where random gates make both outcomes of every sign pattern equally likely."""
+    def forced_faults(self, program: Program, path: str) -> Iterator[Fault]:
+        """Outcomes may be forced only where random gates make both outcomes of every sign pattern equally likely.
+
+        The places must be without faults.
+        """
         forced = [v for v in visits(program, path) if isinstance(v.step, Measure) and v.step.forced]
         if not forced:
             return
@@ -115,6 +113,10 @@ def written_form(part: Any) -> Any:
     """A piece of the language as plain data with its parameters by name: synonyms folded, defaults left out."""
     if isinstance(part, Branch):
         return {"weight": written_form(part.weight), "steps": written_form(part.steps)}
+    if isinstance(part, ListProfile) and not any(parameters_in(part, "")):
+        return rate_form(part, {})
+    if isinstance(part, Blocks | Sublattice) and (word := word_of(part)):
+        return word
     if isinstance(part, tuple):
         return [written_form(item) for item in part]
     if not hasattr(type(part), "model_fields"):

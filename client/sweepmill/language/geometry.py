@@ -128,6 +128,13 @@ def on_form(on: Any, sites: int, periodic: bool, exponent: float = 0) -> Any:
     return on
 
 
+def word_of(on: Blocks | Sublattice) -> str | None:
+    """The word that means the same at every size, if there is one."""
+    rule = on.blocks if isinstance(on, Blocks) else on.sublattice
+    width = on.blocks.width if isinstance(on, Blocks) else 1
+    return {1: "sites", 2: "bonds"}.get(int(width)) if (rule.first, rule.every) == (0, 1) else None
+
+
 def _folded(width: int, first: int, every: int, sites: int, periodic: bool) -> Any:
     wanted = _blocks(width, first, every, sites, periodic)
     for word, size in WORDS.items():

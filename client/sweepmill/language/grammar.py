@@ -8,6 +8,7 @@ from sweepmill.language.gates import GATES, RANDOM_GATES
 from sweepmill.language.numbers import Disorder, Stripe
 from sweepmill.language.places import WIDEST_PLACE, Places, is_random, place_width
 from sweepmill.language.program import Program, Visit, disorders_in, layers_of, parameters_in, steps_of, visits
+from sweepmill.language.rates import rate_faults, rate_form
 from sweepmill.language.refusal import near
 from sweepmill.language.steps import Apply, Choose, Measure, SwapIn
 
@@ -121,6 +122,13 @@ def _number_faults(visit: Visit) -> Iterator[Fault]:
             yield Fault(where, "the places are drawn anew in every layer, so no quenched value belongs to a place")
         if isinstance(rate, Stripe) and rate.width > rate.period:
             yield Fault(f"{where}.width", f"exceeds the period, {rate.period}")
+
+
+def literal_faults(program: Program, path: str) -> Iterator[Fault]:
+    """What is wrong with rates whose values are all written out."""
+    for visit in visits(program, path):
+        if not isinstance(visit.step, Choose | SwapIn) and not any(parameters_in(visit.step.rate, "")):
+            yield from rate_faults(rate_form(visit.step.rate, {}), f"{visit.path}.rate")
 
 
 def rates_of(visit: Visit) -> Iterator[tuple[str, Any]]:
