@@ -11,6 +11,7 @@ from functools import cache
 
 import numpy as np
 import stim
+from numpy.typing import NDArray
 
 from support.stabilizer_enumeration import Group, reduced, restricted
 from support.stim_oracle import rank, tableau
@@ -111,6 +112,12 @@ class Legs:
         old = row >> 2 * a & 3 | (row >> 2 * b & 3) << 2
         change = old ^ images[old]
         return row ^ (change & 3) << 2 * a ^ (change >> 2) << 2 * b
+
+    def single(self, matrix: NDArray[np.uint8], leg: int) -> None:
+        """Conjugate a leg by a class of one site: rows are the images (x, z) of X and Z."""
+        of_x, of_z = (int(row[0]) | int(row[1]) << 1 for row in matrix)
+        images = [0, of_x, of_z, of_x ^ of_z]
+        self.rows = [row ^ (row >> 2 * leg & 3 ^ images[row >> 2 * leg & 3]) << 2 * leg for row in self.rows]
 
     def rotated(self, gate_class: int, a: int, b: int) -> None:
         """The sideways tensor of a class on the slices (a, b) of the right site."""

@@ -62,7 +62,7 @@ def z_of(samples: NDArray[np.floating | np.integer], expected: float, error: flo
 
 @pytest.mark.parametrize("rate", [0.3, 0.5])
 def test_the_sampler_agrees_with_the_enumeration(rate: float) -> None:
-    """False-alarm probability: half of the share ``ising``, split over all comparisons of both rates."""
+    """False-alarm probability: a fifth of the share ``ising`` for each rate."""
     z = []
     for sites, periodic in ((2, False), (4, False), (4, True), (6, True)):
         regions = [(0,), tuple(range(sites // 2)), (0, sites // 2)] if sites > 2 else [(0,)]
@@ -81,7 +81,7 @@ def test_the_sampler_agrees_with_the_enumeration(rate: float) -> None:
             bonds = sites if periodic else sites - 1
             for kind, measured in enumerate((bonds * rate, sites * (1 - rate))):
                 z.append(z_of(readings.random_by_kind[:, layer - 1, kind], chain.randomness[kind] * measured))
-    assert np.abs(z).max() < z_limit("ising", 2 * 2 * len(z))
+    assert np.abs(z).max() < z_limit("ising", 5 * len(z))
 
 
 LIMIT = 6 - 3 * sqrt(3)

@@ -9,7 +9,11 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
+from support.budget import z_limit
+from support.programs import form
 from support.purity import emitted, purities, scaled_bath_purities, scaled_bulk_purities
+from support.sampled import deviations, executed, intervals, sampled
+from sweepmill.ensemble import Ensemble
 
 # Six sites, bath after every layer: layers: purity of the whole chain, of sites 0 .. 2, of sites 1 .. 5.
 EVERY_LAYER = {
@@ -92,3 +96,32 @@ def test_the_entropy_of_bulk_windows_has_three_halves_of_a_logarithm() -> None:
     amplitudes = [scaled[w - 1] * w**1.5 for w in (400, 1600)]
     assert amplitudes == pytest.approx([7.158628, 7.328787], abs=1e-6)
     assert scaled[7999] * 8000**1.5 == pytest.approx(250 / 27 * sqrt(2 / pi), rel=3e-3)
+
+
+def exact_purities(sites: int, layers: int, bath: int) -> NDArray[np.float64]:
+    f = purities(sites, layers, bath)
+    return np.array([f[region[0], region[-1] + 1] for region in intervals(sites)])
+
+
+def test_sampled_purities_follow_the_recursion_with_a_bath() -> None:
+    """False-alarm probability: the share ``edge-bath``. All intervals; 2^-S is well sampled while S is small."""
+    z = []
+    for sites, reads in ((3, [1, 2, 3, 8]), (4, [1, 3, 4, 5]), (6, [1, 3, 5, 10])):
+        ensemble = Ensemble.of("edge-bath", sites=sites, layers=max(reads))
+        found = 2.0 ** -sampled(ensemble, 40_000, reads, intervals(sites)).entropies
+        z.append(deviations(found, np.array([exact_purities(sites, layers, bath=1) for layers in reads])))
+    bricks = [{"apply": "uniform-clifford", "on": f"bonds-from-{parity}"} for parity in (0, 1)]
+    circuit = form(5, 5, [[bricks[0]], [bricks[1], {"depolarise": True, "on": {"places": [[0]]}}]], boundary="open")
+    found = 2.0 ** -executed(circuit, (0xBA7, 2), 40_000, [2, 3, 4, 5], intervals(5)).entropies
+    z.append(deviations(found, np.array([exact_purities(5, layers, bath=2) for layers in (2, 3, 4, 5)])))
+    everything = np.concatenate(z)
+    assert np.abs(everything).max() < z_limit("edge-bath", len(everything))
+
+
+def test_an_even_layer_adds_no_entropy_and_the_chain_ends_maximally_mixed() -> None:
+    whole = [tuple(range(5))]
+    ensemble = Ensemble.of("edge-bath", sites=5, layers=400)
+    entropies = sampled(ensemble, 200, [*range(1, 21), 400], whole).entropies[:, :, 0]
+    np.testing.assert_array_equal(entropies[:, 1:20:2], entropies[:, :20:2])
+    assert (np.diff(entropies, axis=1) >= 0).all()  # the bath is unital: no circuit loses entropy of the whole chain
+    assert (entropies[:, -1] == 5).all()

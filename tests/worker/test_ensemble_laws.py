@@ -1,13 +1,12 @@
 """Averages over many trajectories against exact laws and an independent Monte Carlo."""
 
-from math import prod
-
 import numpy as np
 import pytest
 from numpy.typing import NDArray
 
 from support.budget import chi_square_limit, z_limit
 from support.purity import purities
+from support.random_states import stabilizer_law
 from sweepmill_worker.clifford.engine import HybridChain, run
 
 
@@ -35,23 +34,6 @@ def test_mean_purities_follow_the_recursion() -> None:
         z.append((purity.mean(axis=0) - exact)[varies] / (purity.std(axis=0)[varies] / len(purity) ** 0.5))
     everything = np.concatenate(z)
     assert np.abs(everything).max() < z_limit("purity-recursion", len(everything))
-
-
-def stabilizer_law(a: int, b: int) -> NDArray[np.float64]:
-    """P(S = 0 .. a) between a and b >= a sites of a uniformly random stabilizer state.
-
-    Exact entanglement probability distribution of bi-partite randomised stabilizer states, QIC 6, 527 (2006),
-    quant-ph/0511119 (from memory; counted again as isotropic subspaces times symplectic matchings).
-    """
-
-    def isotropic(n: int, m: int) -> float:
-        return float(prod((2 ** (2 * n - i) - 2**i) / (2**m - 2**i) for i in range(m)))
-
-    def symplectic(k: int) -> int:
-        return int(2 ** (k * k) * prod(4**i - 1 for i in range(1, k + 1)))
-
-    states = prod(2**i + 1 for i in range(1, a + b + 1))
-    return np.array([isotropic(a, a - k) * isotropic(b, b - k) * symplectic(k) / states for k in range(a + 1)])
 
 
 def test_the_law_of_random_stabilizer_states_has_its_known_moments() -> None:
