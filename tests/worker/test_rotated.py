@@ -65,6 +65,19 @@ def test_every_circuit_has_one_entropy_in_both_directions(product: bool) -> None
             assert columns.legs.certain == 0
 
 
+@pytest.mark.parametrize(("sites", "layers"), [(3, 9), (6, 11), (12, 12)])
+def test_sampled_edge_baths_have_the_entropies_of_their_columns(sites: int, layers: int) -> None:
+    ensemble = Ensemble.of("edge-bath", sites=sites, layers=layers)
+    found = sampled(ensemble, 12, range(1, layers + 1), [tuple(range(sites))]).entropies[:, :, 0]
+    for k in range(12):
+        gates = {}
+        for layer in operations(compile_program(layered_form(ensemble)), ensemble.key_words, k):
+            for row in layer.rows[layer.rows[:, op.CODE] == op.GATE]:
+                gates[layer.number, int(row[op.SITE])] = int(row[op.CLASS])
+        columns = Columns(sites, layers, gates, product=True)
+        assert found[k].tolist() == [columns.entropy(layer) + layer % 2 for layer in range(1, layers + 1)]
+
+
 def test_a_bath_after_an_even_layer_finds_the_qubit_it_gave() -> None:
     gates = random_gates(6, 12, drawer(5))
     bath, entropies = Bath(6, gates, mixed=False), []
