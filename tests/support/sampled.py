@@ -5,12 +5,12 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from sweepmill_worker.program.run import run_program
 
 from sweepmill.ensemble import Ensemble
 from sweepmill.presets import layered_form
 from sweepmill_worker.clifford.engine import Readings
 from sweepmill_worker.program.compile import compile_program
+from sweepmill_worker.program.run import run_program
 
 Region = tuple[int, ...]
 
