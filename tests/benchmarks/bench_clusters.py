@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
-from sweepmill_worker.clusters.engine import ClusterChain, run_clusters, working_bytes
+from sweepmill_worker.clusters.engine import ClusterChain, run_cluster_probes, working_bytes
 from sweepmill_worker.observables.probes import Probes
 
 KEY = (0x5EED5EED, 0x0B5E55ED)
@@ -56,7 +56,7 @@ def compare(sites: int) -> tuple[float, float]:
     probes = Probes(sites, arcs=np.array([(0, sites // 2)]), cluster_order=True)
     ours, theirs = [], []
     for turn in range(ROUNDS):
-        ours.append(sites * steps / timed(partial(run_clusters, chain, KEY, turn, 1, [steps], probes)) / 1e6)
+        ours.append(sites * steps / timed(partial(run_cluster_probes, chain, KEY, turn, 1, [steps], probes)) / 1e6)
         theirs.append(sites * slow / timed(partial(by_components, sites, slow, draw)) / 1e6)
     return median(ours), median(theirs)
 
@@ -66,7 +66,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0] if __doc__ else None)
     parser.add_argument("--quick", action="store_true", help="leave out a million sites")
     sizes = [1000, 10_000, 100_000] if parser.parse_args().quick else [1000, 10_000, 100_000, 1_000_000]
-    run_clusters(ClusterChain(8, 1, True, HALF, HALF), KEY, 0, 1, [], Probes(8, arcs=np.array([(0, 4)])))
+    run_cluster_probes(ClusterChain(8, 1, True, HALF, HALF), KEY, 0, 1, [], Probes(8, arcs=np.array([(0, 4)])))
     print(f"{'sites':>8} {'engine':>10} {'scipy':>10} {'ratio':>6} {'memory':>10}   million site-steps per second; MB")
     for sites in sizes:
         ours, theirs = compare(sites)

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from support.budget import chi_square_limit, z_limit
 from support.partitions import Partition, PartitionChain, entropy
-from sweepmill_worker.clusters.engine import ClusterChain, ClusterReadings, run_clusters
+from sweepmill_worker.clusters.engine import ClusterChain, ClusterReadings, run_cluster_probes
 from sweepmill_worker.observables.probes import Probes
 
 # Entropy of the half chain in bits after X of steps 1 and 3, in the steady state after X and after ZZ; random outcomes
@@ -68,7 +68,7 @@ def test_the_sampler_agrees_with_the_enumeration(rate: float) -> None:
         regions = [(0,), tuple(range(sites // 2)), (0, sites // 2)] if sites > 2 else [(0,)]
         law = law_of(sites, periodic, rate, 20)
         probes = Probes(sites, sets=tuple(regions), cluster_order=True)
-        readings = run_clusters(law, (0x15146, sites), 0, COUNT, [1, 3, 20], probes)
+        readings = run_cluster_probes(law, (0x15146, sites), 0, COUNT, [1, 3, 20], probes)
         chain, done = PartitionChain(sites, periodic, rate), 0
         for read, layer in enumerate((1, 3, 20)):
             chain.advance(layer - done)
@@ -106,7 +106,7 @@ def critical(sites: int, periodic: bool) -> ClusterReadings:
     reads = range(4 * sites, 5 * sites + 1, sites // 8)
     key = (0xC417, 2 * sites + periodic)
     probes = Probes(sites, ring=True) if periodic else Probes(sites, arcs=np.array([(0, sites // 2)]))
-    return run_clusters(law, key, 0, TRAJECTORIES[sites], reads, probes)
+    return run_cluster_probes(law, key, 0, TRAJECTORIES[sites], reads, probes)
 
 
 def half_entropies(sites: int, periodic: bool) -> NDArray[np.float64]:

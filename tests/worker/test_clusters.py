@@ -18,6 +18,7 @@ from sweepmill_worker.clusters.engine import (
     MAX_SITES,
     ClusterChain,
     describe,
+    run_cluster_probes,
     run_clusters,
     working_bytes,
 )
@@ -48,7 +49,7 @@ def regions_of(sites: int, seed: int) -> list[tuple[int, ...]]:
 def test_everything_read_agrees_with_a_simulation_in_plain_python(sites: int, periodic: bool, rate: float) -> None:
     law, reads = chain(sites, 12, periodic, rate), [1, 2, 5, 12]
     probes = everything(sites, seed=sites)
-    readings = run_clusters(law, KEY, 3, 2, reads, probes)
+    readings = run_cluster_probes(law, KEY, 3, 2, reads, probes)
     for index in range(2):
         partition = tuple(range(sites))
         for number, layer in enumerate(describe(law, KEY, 3 + index), start=1):
@@ -119,7 +120,7 @@ def plain(partition: tuple[int, ...], probes: Probes) -> list[int]:
 @pytest.mark.parametrize(("sites", "periodic"), SIZES)
 def test_circuits_agree_with_stim(sites: int, periodic: bool, rate: float) -> None:
     law, reads, regions = chain(sites, 10, periodic, rate), [1, 3, 10], regions_of(sites, seed=1)
-    readings = run_clusters(law, KEY, 8, 1, reads, of_regions(sites, regions))
+    readings = run_clusters(law, KEY, 8, 1, reads, regions)
     oracle = Reference(HybridChain(sites, 0, False, False, 0))
     oracle.simulator.h(*range(sites))
     for number, layer in enumerate(describe(law, KEY, 8), start=1):
@@ -138,14 +139,14 @@ def test_circuits_agree_with_stim(sites: int, periodic: bool, rate: float) -> No
 @pytest.mark.parametrize("first", [0, 2**32 - 3, 2**63])
 def test_a_batch_is_the_sum_of_its_pieces(first: int) -> None:
     law, probes = chain(40, 9, True, 0.5), everything(40, seed=2)
-    whole = run_clusters(law, KEY, first, 7, [2, 9], probes)
-    pieces = [run_clusters(law, KEY, first + a, b - a, [2, 9], probes) for a, b in pairwise([0, 1, 1, 5, 7])]
+    whole = run_cluster_probes(law, KEY, first, 7, [2, 9], probes)
+    pieces = [run_cluster_probes(law, KEY, first + a, b - a, [2, 9], probes) for a, b in pairwise([0, 1, 1, 5, 7])]
     for field in ("entropies", "random", "measured", "random_by_kind", "measured_by_kind"):
         np.testing.assert_array_equal(getattr(whole, field), np.concatenate([getattr(p, field) for p in pieces]))
 
 
 def test_a_longer_circuit_begins_with_the_shorter_one() -> None:
-    short, long = (run_clusters(chain(20, n, False, 0.5), KEY, 0, 9, [5], of_regions(20, [(0, 1, 2)])) for n in (5, 15))
+    short, long = (run_clusters(chain(20, n, False, 0.5), KEY, 0, 9, [5], [(0, 1, 2)]) for n in (5, 15))
     np.testing.assert_array_equal(short.entropies, long.entropies)
     np.testing.assert_array_equal(short.random_by_kind, long.random_by_kind[:, :5])
 
@@ -155,7 +156,7 @@ def test_long_chains_whose_words_come_in_pieces_agree_with_connected_components(
     law = chain(sites, 4, periodic, 0.6)
     lengths = [sites // 2, 1, sites // 3, sites - 1]
     probes = Probes(sites, arcs=np.array([(0, x) for x in lengths]), cluster_order=True)
-    readings = run_clusters(law, KEY, 0, 1, [4], probes)
+    readings = run_cluster_probes(law, KEY, 0, 1, [4], probes)
     labels: NDArray[np.signedinteger] = np.arange(sites)
     for layer in describe(law, KEY, 0):
         left, right = labels[np.array(layer.bonds)].T
@@ -170,18 +171,18 @@ def test_long_chains_whose_words_come_in_pieces_agree_with_connected_components(
 
 def test_without_bonds_all_stay_alone_and_without_sites_all_become_one() -> None:
     probes = Probes(100, ring=True, cluster_order=True)
-    alone = run_clusters(chain(100, 3, True, 0.0), KEY, 0, 2, [3], probes)
+    alone = run_cluster_probes(chain(100, 3, True, 0.0), KEY, 0, 2, [3], probes)
     assert (alone.random == 0).all()
     assert (alone.measured == 100).all()
     assert (alone.entropies == [*[0] * 100, 100]).all()
-    one = run_clusters(chain(100, 3, True, 1.0), KEY, 0, 2, [3], probes)
+    one = run_cluster_probes(chain(100, 3, True, 1.0), KEY, 0, 2, [3], probes)
     assert one.random[0].tolist() == [99, 0, 0]
     assert (one.entropies == [*[100] * 99, 0, 100**2]).all()
 
 
 def test_the_largest_chain_runs_in_the_memory_it_states() -> None:
     law = chain(MAX_SITES, 2, True, 0.5)
-    readings = run_clusters(law, KEY, 0, 1, [2], Probes(MAX_SITES, ring=True))
+    readings = run_cluster_probes(law, KEY, 0, 1, [2], Probes(MAX_SITES, ring=True))
     assert readings.measured_by_kind.sum() == pytest.approx(2 * MAX_SITES, rel=0.01)
     rings = readings.entropies[0, 0]
     assert rings[-1] == 0
@@ -224,4 +225,4 @@ def test_chains_out_of_range_are_refused(change: dict[str, int], message: str) -
 def test_arguments_out_of_range_are_refused(change: dict[str, object], message: str) -> None:
     fields: dict[str, object] = {"key_words": KEY, "first": 0, "count": 1, "read_layers": [1], "probes": Probes(8)}
     with pytest.raises(ValueError, match=message):
-        run_clusters(chain(8, 4, True, 0.5), **(fields | change))  # type: ignore[arg-type]
+        run_cluster_probes(chain(8, 4, True, 0.5), **(fields | change))  # type: ignore[arg-type]

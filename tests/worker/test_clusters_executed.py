@@ -10,7 +10,6 @@ from support.sampled import deviations, executed, intervals, sampled
 from sweepmill.ensemble import Ensemble
 from sweepmill_worker.clusters.engine import run_clusters
 from sweepmill_worker.clusters.ensembles import cluster_chain
-from sweepmill_worker.observables.probes import of_regions
 
 
 @pytest.mark.parametrize("bond_rate", [0.0, 0.3, 0.5, 0.123456789012, 1.0])
@@ -19,7 +18,7 @@ def test_both_engines_give_the_same_trajectories(sites: int, boundary: str, bond
     ensemble = Ensemble.of("projective-ising", sites=sites, boundary=boundary, bond_rate=bond_rate, layers=20)
     reads, regions = [1, 2, 3, 20], [*intervals(sites), (0, sites - 1)][-60:]
     stabilizers = sampled(ensemble, 25, reads, regions)
-    clusters = run_clusters(cluster_chain(ensemble), ensemble.key_words, 0, 25, reads, of_regions(sites, regions))
+    clusters = run_clusters(cluster_chain(ensemble), ensemble.key_words, 0, 25, reads, regions)
     np.testing.assert_array_equal(clusters.entropies, stabilizers.entropies)
     np.testing.assert_array_equal(clusters.random, stabilizers.random)
     np.testing.assert_array_equal(clusters.measured, stabilizers.measured)

@@ -70,7 +70,7 @@ class HybridChain:
 class Readings:
     """What was read off `count` trajectories, in the order of k."""
 
-    entropies: NDArray[np.int32]
+    entropies: NDArray[np.signedinteger]
     """[count, reads, regions], in bits, after the measurements of the layer; or the integers of other probes."""
     random: NDArray[np.int32]
     """[count, layers]: outcomes with Born probability 1/2."""

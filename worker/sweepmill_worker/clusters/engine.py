@@ -9,6 +9,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
+from sweepmill_worker.clifford.engine import Readings
 from sweepmill_worker.clusters.state import new_state
 from sweepmill_worker.clusters.trajectories import (
     BOND_KIND,
@@ -19,10 +20,19 @@ from sweepmill_worker.clusters.trajectories import (
     run_batch,
 )
 from sweepmill_worker.clusters.wanted import wanted
-from sweepmill_worker.observables.probes import Probes
+from sweepmill_worker.observables.probes import Probes, Region, of_regions
 from sweepmill_worker.words import words
 
-__all__ = ["MAX_SITES", "ClusterChain", "ClusterLayer", "ClusterReadings", "describe", "run_clusters", "working_bytes"]
+__all__ = [
+    "MAX_SITES",
+    "ClusterChain",
+    "ClusterLayer",
+    "ClusterReadings",
+    "describe",
+    "run_cluster_probes",
+    "run_clusters",
+    "working_bytes",
+]
 
 MAX_SITES: Final = 2**20
 """Sums of squared sizes and of intervals stay far within 64 bits; see `working_bytes`."""
@@ -56,25 +66,13 @@ class ClusterChain:
 
 
 @dataclass(frozen=True)
-class ClusterReadings:
-    """What was read off `count` trajectories, in the order of k."""
+class ClusterReadings(Readings):
+    """What was read off `count` trajectories, in the order of k; 64-bit integers, and counts by kind as well."""
 
-    entropies: NDArray[np.int64]
-    """[count, reads, integers]: those of `Probes.layout`; of regions only, their entropies in bits."""
     random_by_kind: NDArray[np.int32]
     """[count, layers, 2]: random outcomes of ZZ and of X."""
     measured_by_kind: NDArray[np.int32]
     """[count, layers, 2]: measurements of ZZ and of X."""
-
-    @property
-    def random(self) -> NDArray[np.int32]:
-        """[count, layers]: random outcomes of either kind."""
-        return np.asarray(self.random_by_kind.sum(axis=2, dtype=np.int32))
-
-    @property
-    def measured(self) -> NDArray[np.int32]:
-        """[count, layers]: measurements of either kind."""
-        return np.asarray(self.measured_by_kind.sum(axis=2, dtype=np.int32))
 
 
 @dataclass(frozen=True)
@@ -96,13 +94,27 @@ def run_clusters(
     first: int,
     count: int,
     read_layers: Sequence[int],
-    probes: Probes,
+    regions: Sequence[Region],
 ) -> ClusterReadings:
     """Sample trajectories first .. first + count - 1.
 
-    key_words: the first two 32-bit words of the ensemble key.  read_layers: ascending, 0 excluded.  Sums over
-    intervals cost a time linear in L, arcs and sets a time for the sites in which each differs from the last.  Raises
-    ValueError, naming the argument, for anything out of range.
+    key_words: the first two 32-bit words of the ensemble key.  read_layers: ascending, 0 excluded.  regions: sorted
+    tuples of distinct sites.  Raises ValueError, naming the argument, for anything out of range.
+    """
+    return run_cluster_probes(chain, key_words, first, count, read_layers, of_regions(chain.sites, regions))
+
+
+def run_cluster_probes(
+    chain: ClusterChain,
+    key_words: tuple[int, int],
+    first: int,
+    count: int,
+    read_layers: Sequence[int],
+    probes: Probes,
+) -> ClusterReadings:
+    """`run_clusters` with any probes instead of regions: the last axis of `entropies` is that of their layout.
+
+    Sums over intervals cost a time linear in L, arcs and sets a time for the sites in which each differs from the last.
     """
     _check(chain, key_words, first, count, read_layers, probes)
     results = Results(
@@ -120,7 +132,13 @@ def run_clusters(
         np.uint64(first),
         results,
     )
-    return ClusterReadings(results.entropies, results.random, results.measured)
+    return ClusterReadings(
+        entropies=results.entropies,
+        random=results.random.sum(axis=2, dtype=np.int32),
+        measured=results.measured.sum(axis=2, dtype=np.int32),
+        random_by_kind=results.random,
+        measured_by_kind=results.measured,
+    )
 
 
 def describe(chain: ClusterChain, key_words: tuple[int, int], k: int) -> tuple[ClusterLayer, ...]:
