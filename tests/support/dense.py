@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sweepmill_worker.program import operations as op
-from sweepmill_worker.reference.paulis import row_pauli, row_sites, row_tableau
+from sweepmill_worker.reference.paulis import Row, row_pauli, row_sites, row_tableau
 
 Matrix = NDArray[np.complex128]
 PAULIS: dict[str, Matrix] = {
@@ -37,9 +37,9 @@ def start(initial_state: str, qubits: int) -> Matrix:
     return _kron([one / 2] * qubits)
 
 
-def apply(state: Matrix, row: NDArray[np.int32], qubits: int, outcome: int) -> Matrix:
+def apply(state: Matrix, row: Row, qubits: int, outcome: int) -> Matrix:
     """One operation; of a measurement the branch of `outcome`, not normalized, so that traces are probabilities."""
-    match int(row[op.CODE]):
+    match row[op.CODE]:
         case op.GATE:
             gate = _on(row_tableau(row).to_unitary_matrix(endian="big"), row_sites(row), qubits)
             return _matrix(gate @ state @ gate.conj().T)

@@ -41,7 +41,7 @@ def dense_branch(rows: NDArray[np.int32], initial_state: str, outcomes: list[int
     """The state after these outcomes, its trace their probability; forced outcomes are +1."""
     state = dense.start(initial_state, QUBITS)
     left = iter(outcomes)
-    for row in rows:
+    for row in rows.tolist():
         recorded = row[op.CODE] == op.MEASURE and row[op.FLAGS] == op.RECORDED
         state = dense.apply(state, row, QUBITS, next(left) if recorded else 0)
     return state

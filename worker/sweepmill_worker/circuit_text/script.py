@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from sweepmill_worker.circuit_text.gates import named_gates
 from sweepmill_worker.program import operations as op
-from sweepmill_worker.reference.paulis import row_pauli, row_sites, swapped
+from sweepmill_worker.reference.paulis import Row, row_pauli, row_sites, swapped
 
 MEASURE: Final = "MEASURE"
 FORCED: Final = "FORCED"
@@ -54,13 +54,13 @@ class Script:
 
     def layer(self, rows: NDArray[np.int32], name: str) -> None:
         """Append the operations of one layer."""
-        for gates, others in _runs(rows):
+        for gates, others in _runs(rows.tolist()):
             self._gates(gates)
             for row in others:
                 self._operation(row)
         self.instructions.append(Instruction(LAYER, (), note=name))
 
-    def _gates(self, rows: list[NDArray[np.int32]]) -> None:
+    def _gates(self, rows: list[Row]) -> None:
         """Gates on disjoint sites: those on pairs first, equal names together."""
         named = [
             [(gate.name, tuple(sites[q] for q in gate.qubits)) for gate in named_gates(*_numbers(row))]
@@ -75,8 +75,8 @@ class Script:
         for name, qubits in (gate for stage in stages for gate in stage):
             self._add(name, *qubits)
 
-    def _operation(self, row: NDArray[np.int32]) -> None:
-        match int(row[op.CODE]):
+    def _operation(self, row: Row) -> None:
+        match row[op.CODE]:
             case op.MEASURE:
                 self._measure(row)
             case op.DEPOLARISE:
@@ -92,7 +92,7 @@ class Script:
                 self._add("H", site)
                 self._add("CX", site, reference)
 
-    def _measure(self, row: NDArray[np.int32]) -> None:
+    def _measure(self, row: Row) -> None:
         letters, sites = row_pauli(row)
         if not row[op.FLAGS]:
             (coin,) = self._discard(1)
@@ -124,14 +124,14 @@ class Script:
         self.instructions.append(Instruction(name, qubits, note=note))
 
 
-def _numbers(row: NDArray[np.int32]) -> tuple[int, int, int]:
-    return int(row[op.CLASS]), int(row[op.FRAME]), int(row[op.SITES])
+def _numbers(row: Row) -> tuple[int, int, int]:
+    return row[op.CLASS], row[op.FRAME], row[op.SITES]
 
 
-def _runs(rows: Iterable[NDArray[np.int32]]) -> Iterator[tuple[list[NDArray[np.int32]], list[NDArray[np.int32]]]]:
+def _runs(rows: Iterable[Row]) -> Iterator[tuple[list[Row], list[Row]]]:
     """Gates on disjoint sites and what follows them, in turns; the order of what shares a site is kept."""
-    gates: list[NDArray[np.int32]] = []
-    others: list[NDArray[np.int32]] = []
+    gates: list[Row] = []
+    others: list[Row] = []
     busy: set[int] = set()
     for row in rows:
         is_gate = row[op.CODE] == op.GATE

@@ -1,17 +1,18 @@
 """Rows of a circuit as stim's objects: gates with their signs, Pauli products with their letters."""
 
+from collections.abc import Sequence
 from functools import lru_cache
 from typing import Any, Final
 
-import numpy as np
 import stim
-from numpy.typing import NDArray
 
 from sweepmill_worker.clifford.classes import GATE_CLASSES
 from sweepmill_worker.program.operations import CLASS, FRAME, LETTERS, ONE_SITE_CLASSES, SITE, SITES
 
 LETTER_NAMES: Final = "IXYZ"
 
+Row = Sequence[int]
+"""One operation, see `program/operations.py`: a list, since columns are taken one by one."""
 Pauli = tuple[str, tuple[int, ...]]
 """A product of Paulis: letters, and the qubit of each."""
 
@@ -21,26 +22,26 @@ def letters_of(number: int, sites: int) -> str:
     return "".join(LETTER_NAMES[number >> 2 * (sites - 1 - i) & 3] for i in range(sites))
 
 
-def row_sites(row: NDArray[np.int32]) -> tuple[int, ...]:
+def row_sites(row: Row) -> tuple[int, ...]:
     """The sites a row acts on."""
-    return tuple(row[SITE : SITE + int(row[SITES])].tolist())
+    return tuple(row[SITE : SITE + row[SITES]])
 
 
-def swapped(row: NDArray[np.int32]) -> tuple[int, int]:
+def swapped(row: Row) -> tuple[int, int]:
     """The site and the reference qubit of a swap, which stands behind the sites of its row."""
-    return int(row[SITE]), int(row[SITE + 1])
+    return row[SITE], row[SITE + 1]
 
 
-def row_pauli(row: NDArray[np.int32]) -> Pauli:
+def row_pauli(row: Row) -> Pauli:
     """The Pauli product of a row: one letter X, Y or Z per site, sites with an identity left out."""
-    pairs = zip(letters_of(int(row[LETTERS]), int(row[SITES])), row_sites(row), strict=True)
+    pairs = zip(letters_of(row[LETTERS], row[SITES]), row_sites(row), strict=True)
     kept = [(letter, site) for letter, site in pairs if letter != "I"]
     return "".join(letter for letter, _ in kept), tuple(site for _, site in kept)
 
 
-def row_tableau(row: NDArray[np.int32]) -> Any:
+def row_tableau(row: Row) -> Any:
     """The signed gate of a row, as `stim.Tableau`."""
-    return gate_tableau(int(row[CLASS]), int(row[FRAME]), int(row[SITES]))
+    return gate_tableau(row[CLASS], row[FRAME], row[SITES])
 
 
 @lru_cache(maxsize=16 * 720 + 24)

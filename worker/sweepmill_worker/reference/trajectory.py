@@ -17,7 +17,7 @@ import stim
 from numpy.typing import NDArray
 
 from sweepmill_worker.program import operations as op
-from sweepmill_worker.reference.paulis import Pauli, row_pauli, row_sites, row_tableau, swapped
+from sweepmill_worker.reference.paulis import Pauli, Row, row_pauli, row_sites, row_tableau, swapped
 from sweepmill_worker.reference.record import Measurement, Record
 from sweepmill_worker.reference.state import SignedState
 from sweepmill_worker.words import fill
@@ -40,14 +40,14 @@ class SignedTrajectory:
     def play(self, rows: NDArray[np.int32], number: int, bit: Bit) -> tuple[int, int]:
         """Do the operations of layer `number`; the counts of its random and of all its recorded measurements."""
         done = len(self.record.measurements)
-        for row in rows:
+        for row in rows.tolist():
             self._do(row, number, bit)
         new = self.record.measurements[done:]
         return sum(one.random for one in new), len(new)
 
-    def _do(self, row: NDArray[np.int32], number: int, bit: Bit) -> None:
+    def _do(self, row: Row, number: int, bit: Bit) -> None:
         sites = row_sites(row)
-        match int(row[op.CODE]):
+        match row[op.CODE]:
             case op.GATE:
                 self.state.gate(row_tableau(row), sites)
             case op.MEASURE:
@@ -65,8 +65,8 @@ class SignedTrajectory:
             case code:
                 raise ValueError(f"no operation has the code {code}")
 
-    def _measure(self, row: NDArray[np.int32], pauli: Pauli, number: int, bit: Bit) -> None:
-        flags = int(row[op.FLAGS])
+    def _measure(self, row: Row, pauli: Pauli, number: int, bit: Bit) -> None:
+        flags = row[op.FLAGS]
         if not flags & (op.RECORDED | op.FORCED):
             self.state.dephase(pauli)
             return
@@ -74,7 +74,7 @@ class SignedTrajectory:
         if flags & op.FORCED:
             self._force(pauli, expected)
             return
-        outcome = (1 - expected) // 2 if expected else bit(int(row[op.KIND]), int(row[op.PLACE]))
+        outcome = (1 - expected) // 2 if expected else bit(row[op.KIND], row[op.PLACE])
         if not expected:
             self.state.project(pauli, outcome)
         letters, sites = pauli
