@@ -13,7 +13,7 @@ from sweepmill_worker.clusters.engine import working_bytes as cluster_bytes
 from sweepmill_worker.clusters.ensembles import cluster_chain
 from sweepmill_worker.observables.probes import Probes
 from sweepmill_worker.program.compile import Program, compile_program
-from sweepmill_worker.program.run import run_program_probes
+from sweepmill_worker.program.run import run_probes as run_program_probes
 from sweepmill_worker.reference.engine import run_reference
 
 Read = Callable[[Ensemble, int, int, Sequence[int], Probes], Readings]

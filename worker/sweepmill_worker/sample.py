@@ -7,7 +7,6 @@ No database, no network, no clock in the result, no global state. Trajectory k d
 import platform
 import time
 from collections.abc import Mapping, Sequence
-from decimal import Decimal
 from functools import cache
 from importlib.metadata import version
 from typing import Any
@@ -19,7 +18,7 @@ from sweepmill.observation import observation_from_normal_form
 from sweepmill.revisions import FAMILY_REVISIONS, results_revision
 from sweepmill.times import Reading, readings
 from sweepmill_worker.batch import Batch
-from sweepmill_worker.clifford.engine import HybridChain, run_probes
+from sweepmill_worker.engines import engine_of
 from sweepmill_worker.observables.plan import ProbePlan, plan_probes
 from sweepmill_worker.observables.values import Values, values_of
 
@@ -79,7 +78,7 @@ def trajectory_values(ensemble: Ensemble, observations: Sequence[Any], k: int) -
 @cache
 def versions() -> dict[str, str]:
     """Versions of everything that could change a result, for provenance."""
-    names = ("sweepmill", "numpy", "numba")
+    names = ("sweepmill", "numpy", "numba", "stim")
     return {"python": platform.python_version(), **{name: version(name) for name in names}}
 
 
@@ -94,17 +93,6 @@ def _check(ensemble: Ensemble, observations: Sequence[Any], first: int, count: i
     for item in observations:
         if fault := item.fault(ensemble):
             raise ValueError(f"{item.quantity}.{fault[0]}: {fault[1]}")
-
-
-def _chain(ensemble: Ensemble) -> HybridChain:
-    rate = Decimal(repr(ensemble.parameters["measurement_rate"]))
-    return HybridChain(
-        sites=ensemble.sites,
-        layers=ensemble.layers,
-        periodic=ensemble.periodic,
-        mixed=ensemble.parameters["initial_state"] == "mixed",
-        threshold=int(rate * 2**32),
-    )
 
 
 def _plan(ensemble: Ensemble, observations: Sequence[Any]) -> ProbePlan:
@@ -124,7 +112,7 @@ def _read_layers(times: Sequence[tuple[Reading, ...]], plan: ProbePlan) -> list[
 def _read(ensemble: Ensemble, observations: Sequence[Any], plan: ProbePlan, first: int, count: int) -> list[Values]:
     times = _times(ensemble, observations)
     layers = _read_layers(times, plan)
-    counts = run_probes(_chain(ensemble), ensemble.key_words, first, count, layers, plan.probes)
+    counts = engine_of(ensemble).read(ensemble, first, count, layers, plan.probes)
     index = {n: i for i, n in enumerate(layers)}
     return [
         values_of(item, counts, when, index, indices, signs)
