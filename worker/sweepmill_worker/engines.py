@@ -7,9 +7,7 @@ from typing import NamedTuple
 from sweepmill.ensemble import Ensemble
 from sweepmill.presets import layered_form
 from sweepmill_worker.clifford.engine import HybridChain, Readings, run_probes
-from sweepmill_worker.clifford.engine import working_bytes as chain_bytes
 from sweepmill_worker.clusters.engine import run_cluster_probes
-from sweepmill_worker.clusters.engine import working_bytes as cluster_bytes
 from sweepmill_worker.clusters.ensembles import cluster_chain
 from sweepmill_worker.observables.probes import Probes
 from sweepmill_worker.program.compile import Program, compile_program
@@ -25,8 +23,6 @@ class Engine(NamedTuple):
     name: str
     read: Read
     """(ensemble, first, count, layers to read in ascending order, probes) to what was read off the trajectories."""
-    working_bytes: Callable[[Ensemble], int]
-    """Upper estimate of an engine's own memory, readings apart."""
 
 
 def engine_of(ensemble: Ensemble) -> Engine:
@@ -77,12 +73,7 @@ def _read_signed(ensemble: Ensemble, first: int, count: int, layers: Sequence[in
     return run_reference(program_of(ensemble), ensemble.key_words, first, count, layers, probes)
 
 
-def _program_bytes(ensemble: Ensemble) -> int:
-    program = program_of(ensemble)
-    return chain_bytes(program.total, program.mixed) + 2 * program.places.nbytes + 100 * program.most_operations
-
-
-CHAIN = Engine("chain", _read_chain, lambda e: chain_bytes(e.sites, e.parameters["initial_state"] == "mixed"))
-PROGRAM = Engine("program", _read_program, _program_bytes)
-CLUSTERS = Engine("clusters", _read_clusters, lambda e: cluster_bytes(e.sites))
-SIGNED = Engine("signed", _read_signed, lambda e: 1)
+CHAIN = Engine("chain", _read_chain)
+PROGRAM = Engine("program", _read_program)
+CLUSTERS = Engine("clusters", _read_clusters)
+SIGNED = Engine("signed", _read_signed)

@@ -20,6 +20,7 @@ from filelock import FileLock
 from llvmlite.binding import get_host_cpu_name  # type: ignore[import-untyped]
 
 from sweepmill_worker.clifford.engine import MAX_SITES, HybridChain, run
+from sweepmill_worker.clusters.engine import ClusterChain, run_clusters
 from sweepmill_worker.jit import cache_directory
 from sweepmill_worker.program.compile import compile_program
 from sweepmill_worker.program.listing import operations
@@ -48,7 +49,11 @@ def _programs(sites_up_to: int) -> None:
         list(operations(program, (0, 0), 0))
 
 
-JOBS: Final[Mapping[str, Callable[[int], None]]] = {"chains": _chains, "programs": _programs}
+def _clusters(_: int) -> None:
+    run_clusters(ClusterChain(2, 1, False, 2**31, 2**31), (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
+
+
+JOBS: Final[Mapping[str, Callable[[int], None]]] = {"chains": _chains, "programs": _programs, "clusters": _clusters}
 """What has entry points of its own; each takes the largest number of sites."""
 
 
