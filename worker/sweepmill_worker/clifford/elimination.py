@@ -45,6 +45,8 @@ class Desk(NamedTuple):
     """Per row another one that begins there, too, or -1."""
     counts: NDArray[np.int32]
     """Room for a count per position or length, and a few more."""
+    basis: Words
+    """Room for 64 words: independent columns of up to 64 rows."""
 
 
 def new_desk(copy: State) -> Desk:
@@ -53,7 +55,7 @@ def new_desk(copy: State) -> Desk:
     ends, left, right = (aligned(slots, np.int16) for _ in range(3))
     ranks, heads, following, counts = (np.zeros(n, dtype=np.int32) for n in (sites + 1, sites, slots, sites + 4))
     rows = aligned(len(copy.stabilizers), np.uint64)
-    return Desk(copy, ends, left, right, ranks, rows, heads, following, counts)
+    return Desk(copy, ends, left, right, ranks, rows, heads, following, counts, aligned(64, np.uint64))
 
 
 @step
@@ -120,14 +122,6 @@ def copy_rows(to: Words, first: Words, second: Words) -> None:
     """to = first | second."""
     for word in range(len(to)):
         to[word] = first[word] | second[word]
-
-
-@part
-def rank_prefixes(state: State, desk: Desk, sites: int, lanes: Lanes) -> None:
-    """Leave in desk.ranks the ranks of all prefixes 0 .. x - 1: S(x) = ranks[x] - x, pure or mixed."""
-    cut_open(state, desk, sites, lanes)
-    copy_rows(desk.copy.stabilizers, state.stabilizers, state.logicals)
-    sweep(desk, sites, False, desk.left, lanes)
 
 
 @step

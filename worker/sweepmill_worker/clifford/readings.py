@@ -4,9 +4,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sweepmill_worker.clifford.commutators import Matrix, half_rank, toggle
-from sweepmill_worker.clifford.elimination import Desk, clip, mark, rank_prefixes
+from sweepmill_worker.clifford.elimination import Desk, clip, mark
 from sweepmill_worker.clifford.informations import read_informations
 from sweepmill_worker.clifford.intervals import add_around, count_lengths, count_rows, read_arcs, sum_line
+from sweepmill_worker.clifford.prefixes import rank_prefixes
 from sweepmill_worker.clifford.roads import Others, Plan
 from sweepmill_worker.clifford.state import Lanes, State, address
 from sweepmill_worker.clifford.vectors import load, store
