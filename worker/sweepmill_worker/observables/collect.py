@@ -15,14 +15,14 @@ class Regions:
     def __init__(self, sites: int) -> None:
         self.sites = sites
         self._sets: dict[Region, int] = {}
-        self._arcs = np.zeros(sites * (sites + 1), dtype=bool)
+        self._arcs: Codes = np.zeros(0, dtype=np.int64)  # ascending, each once
 
     def codes(self, rows: list[Terms], translations: int) -> Codes:
         """[positions, translations, K] codes of all translations of some rows of K regions."""
         offsets = np.arange(translations)
         found = np.array([[self._shifted(region, offsets) for region in terms] for terms in rows], dtype=np.int64)
         found = np.moveaxis(found, 2, 1)
-        self._arcs[found[found >= 0]] = True
+        self._arcs = np.union1d(self._arcs, found[found >= 0])
         return found
 
     def _shifted(self, region: Region | range, offsets: Codes) -> Codes:
@@ -43,12 +43,11 @@ class Regions:
 
     def arcs(self) -> NDArray[np.int64]:
         """[n, 2]: first site and length."""
-        return np.stack(np.divmod(np.flatnonzero(self._arcs), self.sites + 1), axis=1)
+        return np.stack(np.divmod(self._arcs, self.sites + 1), axis=1)
 
     def indices(self, codes: Codes) -> Codes:
         """Where the regions stand in the list of all arcs, then all sets."""
-        ordinals = np.cumsum(self._arcs)
-        return np.where(codes >= 0, ordinals[np.maximum(codes, 0)] - 1, ordinals[-1] - 1 - codes)
+        return np.where(codes >= 0, np.searchsorted(self._arcs, codes), len(self._arcs) - 1 - codes)
 
 
 def shifted(region: Region | range, offset: int, sites: int) -> Region:
