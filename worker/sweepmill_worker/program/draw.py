@@ -5,7 +5,7 @@ The places of a step are handled in order, step after step; of a choice, all tha
 
 import numpy as np
 
-from sweepmill_worker.clifford.vectors import item
+from sweepmill_worker.clifford.vectors import item, put
 from sweepmill_worker.jit import entry, part
 from sweepmill_worker.program.decide import chosen_step, detail_of_gate, happens, threshold
 from sweepmill_worker.program.operations import GATE, MEASURE
@@ -21,7 +21,9 @@ from sweepmill_worker.program.tables import (
     DETAIL,
     FILL_FROM,
     FILL_TO,
+    FIXED,
     FOLLOW,
+    GATE_AT,
     LAW,
     LAYER_LIST,
     LOW,
@@ -43,6 +45,9 @@ from sweepmill_worker.words import fill
 
 PROJECTION = 256
 """Added to the code of a projection that belongs to a rotated gate, times 1 + its ordinal."""
+
+ALL_PAIRS = 720
+"""Classes of a uniform gate on two sites: their table is the identity."""
 
 _32 = np.uint64(32)
 
@@ -125,20 +130,41 @@ def draw_step(tables: Tables, desk: Desk, top: int, base: int, index: int, count
 @part
 def draw_gates(tables: Tables, desk: Desk, top: int, base: int, count: int) -> int:
     """A gate on every place."""
-    for place in range(tables.steps[top, PLACES]):
-        write(desk, count + place, GATE, top, place, detail_of_gate(tables, desk, top, place, base))
-    return int(count + tables.steps[top, PLACES])
+    beyond = count + tables.steps[top, PLACES]
+    if tables.steps[top, CLASSES] == ALL_PAIRS and not tables.steps[top, FIXED]:
+        at = base + tables.steps[top, GATE_AT] - count
+        for row in range(count, beyond):  # the class stands for itself: 16 * class + frame in one product
+            word = np.uint64(item(desk.words, at + row))
+            put(desk.details, row, np.int64((word * np.uint64(16 * ALL_PAIRS)) >> _32))
+    else:
+        for row in range(count, beyond):
+            put(desk.details, row, detail_of_gate(tables, desk, top, row - count, base))
+    for row in range(count, beyond):
+        put(desk.ordinals, row, row - count)
+    label(desk, count, beyond, GATE, top)
+    return int(beyond)
 
 
 @part
 def draw_measurements(tables: Tables, desk: Desk, top: int, base: int, index: int, count: int) -> int:
     """Measurements at one rate for all places: written without a branch, kept or overwritten by the next."""
-    limit, detail = threshold(tables, desk, top, 0, index), tables.steps[top, DETAIL]
+    limit, beyond = threshold(tables, desk, top, 0, index), count
     at = base + tables.steps[top, PRIMARY_AT]
     for place in range(tables.steps[top, PLACES]):
-        write(desk, count, MEASURE, top, place, detail)
-        count += int(np.uint64(item(desk.words, at + place)) < limit)
-    return count
+        put(desk.ordinals, beyond, place)
+        beyond += int(np.uint64(item(desk.words, at + place)) < limit)
+    for row in range(count, beyond):
+        put(desk.details, row, tables.steps[top, DETAIL])
+    label(desk, count, beyond, MEASURE, top)
+    return beyond
+
+
+@part
+def label(desk: Desk, first: int, beyond: int, code: int, here: int) -> None:
+    """Operations of one step."""
+    for row in range(first, beyond):
+        put(desk.codes, row, code)
+        put(desk.acting, row, here)
 
 
 @part
@@ -168,10 +194,10 @@ def append(tables: Tables, desk: Desk, here: int, place: int, base: int, count: 
 @part
 def write(desk: Desk, row: int, code: int, here: int, place: int, detail: int) -> None:
     """One operation."""
-    desk.operations[row, 0] = code
-    desk.operations[row, 1] = here
-    desk.operations[row, 2] = place
-    desk.operations[row, 3] = detail
+    put(desk.codes, row, code)
+    put(desk.acting, row, here)
+    put(desk.ordinals, row, place)
+    put(desk.details, row, detail)
 
 
 @entry

@@ -7,19 +7,19 @@ from numpy.typing import NDArray
 
 from sweepmill_worker.clifford.commutators import Matrix
 from sweepmill_worker.clifford.elimination import Desk as ReadingDesk
-from sweepmill_worker.clifford.moves import gate, gate_layer
+from sweepmill_worker.clifford.moves import gate, gate_layer, measure
 from sweepmill_worker.clifford.readings import read
 from sweepmill_worker.clifford.roads import Plan
 from sweepmill_worker.clifford.state import Halves, Lanes, State, erase, insert, reset, write_one_hot
 from sweepmill_worker.clifford.trajectories import Results
-from sweepmill_worker.clifford.vectors import put
+from sweepmill_worker.clifford.vectors import item, put
 from sweepmill_worker.clifford.windows import grow
 from sweepmill_worker.jit import entry, part
 from sweepmill_worker.program.draw import begin_trajectory, draw_layer
-from sweepmill_worker.program.moves import X, Z, gate_on_pair, gate_on_site, measure_site, single, turn
+from sweepmill_worker.program.moves import X, Z, gate_on_pair, gate_on_site, single, turn
 from sweepmill_worker.program.operations import DEPOLARISE, FORCED, GATE, MEASURE, RECORDED, SWAP_IN
 from sweepmill_worker.program.products import Product, dephase, measure_product
-from sweepmill_worker.program.roads import BRICKS, SOME_BRICKS
+from sweepmill_worker.program.roads import BRICKS, SITES, SOME_BRICKS
 from sweepmill_worker.program.tables import (
     DETAIL,
     FIRST,
@@ -88,7 +88,7 @@ def bricks(
     parity = tables.steps[top, PARITY]
     done = end - (1 if tables.periodic and parity == 1 and not circuit.ring else 0)
     for row in range(begin, done):
-        put(circuit.classes, row - begin, desk.operations[row, 3] >> 4)
+        put(circuit.classes, row - begin, item(desk.details, row) >> 4)
     gate_layer(state, parity, circuit.classes, done - begin, circuit.ring, circuit.masks, lanes)
     return done
 
@@ -101,21 +101,35 @@ def some_bricks(
     first = tables.steps[top, FIRST]
     for chunk in range(state.chunks):
         for row in range(begin, end):
-            place = first + desk.operations[row, 2]
+            place = first + item(desk.ordinals, row)
             left, right = desk.places[place, 0], desk.places[place, 1]
-            gate(state, chunk, left, right, circuit.masks, 16 * (desk.operations[row, 3] >> 4), lanes)
+            gate(state, chunk, left, right, circuit.masks, 16 * (item(desk.details, row) >> 4), lanes)
     if begin < end:
         grow(state, tables.steps[top, PARITY], circuit.ring)
     return end
 
 
 @part
+def measure_sites(state: State, tables: Tables, desk: Desk, top: int, begin: int, end: int, lanes: Lanes) -> int:
+    """Measure a letter of some sites; how many outcomes were random?"""
+    letter, first, random = tables.steps[top, DETAIL], tables.steps[top, FIRST], 0
+    for row in range(begin, end):
+        site = desk.places[first + item(desk.ordinals, row), 0]
+        if letter != Z:
+            turn(state, site, letter, lanes)
+        random += measure(state, site, lanes)
+        if letter != Z:
+            turn(state, site, letter, lanes)
+    return random
+
+
+@part
 def product_of(tables: Tables, desk: Desk, row: int) -> Product:
     """The Pauli product of a measurement."""
-    step = desk.operations[row, 1]
-    place = tables.steps[step, FIRST] + desk.operations[row, 2]
+    step = item(desk.acting, row)
+    place = tables.steps[step, FIRST] + item(desk.ordinals, row)
     sites = (desk.places[place, 0], desk.places[place, 1], desk.places[place, 2], desk.places[place, 3])
-    return Product(tables.steps[step, WIDTH], sites, desk.operations[row, 3])
+    return Product(tables.steps[step, WIDTH], sites, item(desk.details, row))
 
 
 @part
@@ -124,15 +138,12 @@ def run_measurement(
 ) -> tuple[int, int]:
     """(random, counted) outcomes."""
     product = product_of(tables, desk, row)
-    flags = tables.steps[desk.operations[row, 1], FLAGS]
-    projected = desk.operations[row, 0] != MEASURE  # of a rotated gate
+    flags = tables.steps[item(desk.acting, row), FLAGS]
+    projected = item(desk.codes, row) != MEASURE  # of a rotated gate
     if flags & RECORDED == 0 and not projected:
         dephase(state, product, circuit.ring, lanes)
         return 0, 0
-    if product.size == 1:
-        random = measure_site(state, product.sites[0], product.letters, lanes)
-    else:
-        random = measure_product(state, product, circuit.ring, lanes)
+    random = measure_product(state, product, circuit.ring, lanes)
     counted = int(not projected and flags & FORCED == 0)
     return int(random) * counted, counted
 
@@ -152,16 +163,16 @@ def run_operation(
     state: State, circuit: Circuit, tables: Tables, desk: Desk, row: int, lanes: Lanes
 ) -> tuple[int, int]:
     """(random, counted) outcomes."""
-    code, step = desk.operations[row, 0], desk.operations[row, 1]
+    code, step = item(desk.codes, row), item(desk.acting, row)
     if code & 255 == MEASURE:
         return run_measurement(state, circuit, tables, desk, row, lanes)
-    place, chosen = tables.steps[step, FIRST] + desk.operations[row, 2], desk.operations[row, 3] >> 4
+    place, chosen = tables.steps[step, FIRST] + item(desk.ordinals, row), item(desk.details, row) >> 4
     one, other, width = desk.places[place, 0], desk.places[place, 1], tables.steps[step, WIDTH]
     if code != GATE:
         for ordinal in range(width):
             run_channel(state, circuit, desk.places[place, ordinal], code != DEPOLARISE, lanes)
     if code == SWAP_IN:
-        other, width, chosen = tables.steps[step, REFERENCE] + desk.operations[row, 2], 2, tables.steps[step, DETAIL]
+        other, width, chosen = tables.steps[step, REFERENCE] + item(desk.ordinals, row), 2, tables.steps[step, DETAIL]
     if code in (GATE, SWAP_IN):
         if width == 1:
             gate_on_site(state, one, circuit.single_masks, chosen, lanes)
@@ -184,6 +195,10 @@ def run_layer(
             begin = bricks(state, circuit, tables, desk, top, begin, end, lanes)
         elif tables.steps[top, ROAD] == SOME_BRICKS:
             begin = some_bricks(state, circuit, tables, desk, top, begin, end, lanes)
+        elif tables.steps[top, ROAD] == SITES:
+            random += measure_sites(state, tables, desk, top, begin, end, lanes)
+            counted += end - begin
+            begin = end
         for row in range(begin, end):
             more_random, more_counted = run_operation(state, circuit, tables, desk, row, lanes)
             random += more_random

@@ -48,7 +48,10 @@ def new_desk(program: Program, key_words: tuple[int, int]) -> t.Desk:
         places=program.places.copy(),
         words=np.zeros(program.words, np.uint32),
         drawn=np.zeros(program.drawn, np.uint64),
-        operations=np.zeros((program.most_operations + 1, 4), np.int64),
+        codes=np.zeros(program.most_operations + 1, np.int64),
+        acting=np.zeros(program.most_operations + 1, np.int64),
+        ordinals=np.zeros(program.most_operations + 1, np.int64),
+        details=np.zeros(program.most_operations + 1, np.int64),
         ends=np.zeros(int(np.diff(tables.lists).max()) + 1, np.int64),
         free=np.zeros(program.sites, np.int64),
         position=np.zeros(program.sites, np.int64),
@@ -64,7 +67,7 @@ def new_desk(program: Program, key_words: tuple[int, int]) -> t.Desk:
 
 
 def _rows(tables: t.Tables, desk: t.Desk, count: int) -> NDArray[np.int32]:
-    code, step, place, detail = desk.operations[:count].T
+    code, step, place, detail = (part[:count] for part in (desk.codes, desk.acting, desk.ordinals, desk.details))
     steps, code, projection = tables.steps[step], code & 255, code >> 8
     rows = np.zeros((count, op.COLUMNS), np.int32)
     rows[:, op.CODE], rows[:, op.SITES] = code, steps[:, t.WIDTH]

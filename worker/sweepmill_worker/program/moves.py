@@ -1,6 +1,6 @@
 """One operation on the state."""
 
-from sweepmill_worker.clifford.moves import gate, measure
+from sweepmill_worker.clifford.moves import gate
 from sweepmill_worker.clifford.state import Halves, Lanes, State, address
 from sweepmill_worker.clifford.vectors import item, load, splat_half, store
 from sweepmill_worker.jit import part
@@ -42,17 +42,6 @@ def turn(state: State, site: int, letter: int, lanes: Lanes) -> None:
             store(state.columns, to_x + len(lanes), x)
         else:
             store(state.columns, to_x, x ^ z)
-
-
-@part
-def measure_site(state: State, site: int, letter: int, lanes: Lanes) -> bool:
-    """Measure X, Y or Z of a site; was the outcome random?"""
-    if letter != Z:
-        turn(state, site, letter, lanes)
-    random = measure(state, site, lanes)
-    if letter != Z:
-        turn(state, site, letter, lanes)
-    return random
 
 
 @part

@@ -124,10 +124,16 @@ class Desk(NamedTuple):
     """The fixed blocks, then those of the layers at hand."""
     drawn: NDArray[np.uint64]
     """Quenched rates and weights of the trajectory."""
-    operations: NDArray[np.int64]
-    """[most, 4]: code, step, place, detail.  In `code` a projection of a rotated gate has 256 * (1 + its ordinal)."""
+    codes: NDArray[np.int64]
+    """Of each operation its code: of a projection that belongs to a rotated gate plus 256 * (1 + its ordinal)."""
+    acting: NDArray[np.int64]
+    """Its step."""
+    ordinals: NDArray[np.int64]
+    """Its place in the step."""
+    details: NDArray[np.int64]
+    """Its gate, 16 * class + frame, or its letters."""
     ends: NDArray[np.int64]
-    """Where each top-level step of the layer ends in `operations`."""
+    """Where the operations of each top-level step of the layer end."""
     free: NDArray[np.int64]
     """Sites not yet paired ..."""
     position: NDArray[np.int64]
