@@ -132,3 +132,28 @@ def test_the_size_of_a_total_counts_its_coordinates() -> None:
         accumulator_bytes(RING, observed(quantity="entropy", region=region)) for region in ("half", "every-interval")
     ]
     assert sizes[1] > 5 * sizes[0]
+
+
+def test_translations_are_those_of_a_ring() -> None:
+    averaged = observed(quantity="entropy", average_translations=True)
+    lattice = Ensemble.of("hybrid-clifford-square", width=4, height=4, measurement_rate=0.1, layers=8)
+    assert averaged.fault(RING) is None
+    for ensemble, message in ((LINE, "this one is open"), (lattice, "this is a lattice")):
+        field, found = averaged.fault(ensemble) or ("", "")
+        assert field == "average_translations"
+        assert message in found
+    for quantity in ("generator-lengths", "site-environment-information"):
+        assert observed(quantity=quantity).fault(RING) is None
+        assert observed(quantity=quantity).fault(lattice) is not None
+
+
+def test_reference_entropy_needs_reference_qubits_and_has_as_many_values_as_they_allow() -> None:
+    item = observation_from_normal_form({"quantity": "reference-entropy", "revision": 1, "histogram": True})
+    few, many = (
+        Ensemble.of("hybrid-clifford", sites=8, measurement_rate=0.1, layers=6, references=references)
+        for references in (1, 8)
+    )
+    assert item.fault(few) is None
+    assert item.fault(RING) == ("quantity", "the ensemble has no reference qubits")
+    assert item.region_label() == "references"
+    assert accumulator_bytes(few, item) < accumulator_bytes(many, item)

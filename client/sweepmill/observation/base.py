@@ -62,7 +62,7 @@ class Averageable(BaseObservation):
         if ensemble.family == LATTICE:
             return "average_translations", "translations are those of a ring, and this is a lattice"
         if not ensemble.periodic:
-            return "average_translations", "only a periodic chain has translations, got boundary = 'open'"
+            return "average_translations", "only a periodic chain has translations, and this one is open"
         return None
 
 

@@ -5,7 +5,7 @@ from typing import Final
 from sweepmill.ensemble import Ensemble
 
 CLUSTERS: Final = "projective-ising"
-"""The family that is sampled as clusters of sites, which give all that other engines give, unless the reference engine is asked for."""
+"""The family that is sampled as clusters of sites unless the reference engine is asked for."""
 
 
 def engine_fault(quantity: str, ensemble: Ensemble) -> tuple[str, str] | None:
