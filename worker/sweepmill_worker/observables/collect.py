@@ -22,7 +22,8 @@ class Regions:
         offsets = np.arange(translations)
         found = np.array([[self._shifted(region, offsets) for region in terms] for terms in rows], dtype=np.int64)
         found = np.moveaxis(found, 2, 1)
-        self._arcs = np.union1d(self._arcs, found[found >= 0])
+        ascending = np.sort(np.concatenate([self._arcs, found[found >= 0]]))
+        self._arcs = ascending[np.diff(ascending, prepend=-1) > 0]
         return found
 
     def _shifted(self, region: Region | range, offsets: Codes) -> Codes:
