@@ -3,14 +3,15 @@
 import numpy as np
 import pytest
 
+from support.all_probes import all_probes
 from support.families import LARGE, SMALL, label, regions_of
 from support.random_programs import random_ensemble
 from support.signed import entropies
 from sweepmill.ensemble import Ensemble
 from sweepmill.presets import layered_form
 from sweepmill_worker.program.compile import compile_program
-from sweepmill_worker.program.run import run_program
-from sweepmill_worker.reference.engine import play
+from sweepmill_worker.program.run import run_probes, run_program
+from sweepmill_worker.reference.engine import play, run_reference
 
 
 def compare(ensemble: Ensemble, k: int, reads: list[int]) -> None:
@@ -34,6 +35,18 @@ def compare(ensemble: Ensemble, k: int, reads: list[int]) -> None:
 def test_small_circuits_of_every_family_agree_with_stim(ensemble: Ensemble) -> None:
     for k in range(3):
         compare(ensemble, k, [1, 2, 3, 5, 8, 9])
+
+
+@pytest.mark.parametrize("ensemble", [one for one in SMALL if 4 <= one.sites <= 8], ids=label)
+def test_every_probe_of_every_family_agrees_with_stim(ensemble: Ensemble) -> None:
+    """Negativities, lengths of generators and all else that depends on no sign, reference qubits included."""
+    program = compile_program(layered_form(ensemble))
+    probes = all_probes(program.sites, program.references, seed=3)
+    expected = run_reference(program, ensemble.key_words, 6, 2, [1, 4, 9], probes)
+    found = run_probes(program, ensemble.key_words, 6, 2, [1, 4, 9], probes)
+    np.testing.assert_array_equal(found.entropies, expected.entropies)
+    np.testing.assert_array_equal(found.random, expected.random)
+    np.testing.assert_array_equal(found.measured, expected.measured)
 
 
 @pytest.mark.parametrize("ensemble", LARGE, ids=label)
