@@ -78,7 +78,7 @@ def _compile(text: str) -> Program:
     parts = [form.get("before", []), form["repeat"], form.get("after", [])]
     steps = _steps(form, parts)
     mixed = form.get("initial_state", "zeros") == "mixed" or _loses(steps, len(parts[0]))
-    _check_size(form["sites"], steps.references, mixed)
+    _check_size(form["sites"], steps.references)
     layout = _layout(steps, parts, form["layers"])
     return Program(
         sites=form["sites"],
@@ -107,7 +107,7 @@ def _steps(form: Mapping[str, Any], parts: Sequence[Sequence[Any]]) -> Steps:
     return steps
 
 
-def _check_size(sites: int, references: int, mixed: bool) -> None:
+def _check_size(sites: int, references: int) -> None:
     if sites + references > MAX_SITES:
         beside = f" beside {references} references" if references else ""
         raise ValueError(f"sites: at most {MAX_SITES - references}{beside}, got {sites}")
