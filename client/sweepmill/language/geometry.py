@@ -137,8 +137,9 @@ def word_of(on: Blocks | Sublattice) -> str | None:
 
 def _folded(width: int, first: int, every: int, sites: int, periodic: bool) -> Any:
     wanted = _blocks(width, first, every, sites, periodic)
+    odd_ring = periodic and sites % 2
     for word, size in WORDS.items():
-        if size == width and _word(word, sites, periodic) == wanted:
+        if size == width and _word(word, sites, periodic) == wanted and not (word == "bonds-from-1" and odd_ring):
             return word
     start: dict[str, int] = {"from": first} if first else {}
     if width == 1:
