@@ -152,6 +152,8 @@ class Steps:
     def _apply(self, row: Row, step: Step) -> None:
         row[t.CODE], row[t.ROTATED] = GATE, int(bool(step.get("rotated", False)))
         self._happens(row, step)
+        if not row[t.PLACES]:  # nor a number of sites that could fit the gate
+            return
         name, width = step["apply"], row[t.WIDTH]
         classes = random_classes(name, width)
         if row[t.ROTATED] and (classes is None or width != 2):
@@ -180,7 +182,7 @@ class Steps:
             raise ValueError(f"a place has at most {WIDEST} sites, got {row[t.WIDTH]}")
         if "measure" in step:
             row[t.CODE], letters = MEASURE, step["measure"]
-            if len(letters) != row[t.WIDTH] or set(letters) - set("XYZ"):
+            if (row[t.PLACES] and len(letters) != row[t.WIDTH]) or set(letters) - set("XYZ"):
                 raise ValueError(f"measure: one letter X, Y or Z for each of {row[t.WIDTH]} sites, got {letters}")
             row[t.DETAIL] = int(letters.translate(str.maketrans("XYZ", "123")), 4)
             row[t.FLAGS] = RECORDED * step.get("recorded", True) + FORCED * step.get("forced", False)
