@@ -34,8 +34,8 @@ class Writer:
 
     def __init__(self, draw: random.Random, sites: int) -> None:
         self.draw, self.sites = draw, sites
-        self.boundary = "open" if sites % 2 else draw.choice(["periodic", "open"])
-        self.swaps = 0 if self.boundary == "open" else 2
+        self.boundary = draw.choice(["periodic", "open"])
+        self.swaps = 0
 
     def layer(self, part: str) -> list[Step]:
         """Up to five steps."""
@@ -87,7 +87,8 @@ class Writer:
         """Places, and whether they are the same in every layer."""
         count = self.draw.randint(1, 3)
         listed = [self.draw.sample(range(self.sites), width) for _ in range(count)]
-        first = self.draw.randrange(self.sites - width + 1)
+        first = self.draw.randrange(self.sites)
+        odd_ring = self.boundary == "periodic" and self.sites % 2
         choices: list[tuple[Any, bool]] = [
             ({"places": listed}, True),
             ({"blocks": {"width": width, "from": first, "every": self.draw.randint(1, 3)}}, True),
@@ -96,7 +97,7 @@ class Writer:
             choices += [("sites", True), ({"sublattice": {"from": first, "every": 2}}, True)]
             choices += [({"random_sequential": {"count": count, "of": "sites"}}, False)]
         if width == 2:
-            choices += [("bonds", True), ("bonds-from-0", True)] + ([("bonds-from-1", True)] if self.sites > 2 else [])
+            choices += [("bonds", True), ("bonds-from-0", True)] + ([] if odd_ring else [("bonds-from-1", True)])
             choices += [({"random_sequential": {"count": count, "of": "bonds"}}, False)]
             pairs = {"count": self.draw.randint(1, self.sites // 2), "exponent": self.draw.choice([0, 1, 2.5])}
             choices += [({"random_pairs": pairs}, False)]

@@ -66,3 +66,33 @@ def test_random_circuits_written_as_data_agree_with_stim(block: int) -> None:
 def test_large_circuits_written_as_data_agree_with_stim(seed: int, sites: int) -> None:
     ensemble = random_ensemble(seed, sites, 8)
     compare(ensemble, seed, [1, 3, ensemble.layers])
+
+
+def test_gates_across_the_end_of_a_ring_with_references_are_followed_by_products() -> None:
+    """Products choose their pivot by the extent of rows, which such a gate lengthens without going around."""
+    form = {
+        "family": "layered",
+        "revision": 1,
+        "sites": 4,
+        "initial_state": "mixed",
+        "layers": 1,
+        "before": [[{"swap_in": "reference", "on": {"places": [[3]]}}]],
+        "repeat": [[{"apply": "cx", "on": {"places": [[3, 0]]}}]],
+        "after": [[{"measure": "YY", "on": {"places": [[0, 1]]}}, {"measure": "YY", "on": {"places": [[3, 0]]}}]],
+    }
+    compare(Ensemble.from_normal_form(form), 0, [1, 2])
+
+
+@pytest.mark.parametrize("on", [{"places": []}, {"blocks": {"width": 2, "from": 3}}])
+def test_a_step_without_places_does_nothing(on: dict[str, object]) -> None:
+    form = {
+        "family": "layered",
+        "revision": 1,
+        "sites": 4,
+        "boundary": "open",
+        "layers": 2,
+        "repeat": [
+            [{"apply": "uniform-clifford", "on": "sites"}, {"apply": "cx", "on": on}, {"measure": "ZZ", "on": on}]
+        ],
+    }
+    compare(Ensemble.from_normal_form(form), 0, [1, 2])

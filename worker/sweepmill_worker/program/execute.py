@@ -32,6 +32,7 @@ from sweepmill_worker.program.tables import (
     Desk,
     Tables,
 )
+from sweepmill_worker.program.windows import extend_over
 
 ZEROS, PLUS, MIXED = 0, 1, 2
 INITIAL_STATES: Final = {"zeros": ZEROS, "plus": PLUS, "mixed": MIXED}
@@ -104,6 +105,11 @@ def some_bricks(
             place = first + item(desk.ordinals, row)
             left, right = desk.places[place, 0], desk.places[place, 1]
             gate(state, chunk, left, right, circuit.masks, 16 * (item(desk.details, row) >> 4), lanes)
+    for row in range(begin, end):  # with references no window goes around the ring
+        place = first + item(desk.ordinals, row)
+        left, right = desk.places[place, 0], desk.places[place, 1]
+        if left > right and not circuit.ring:
+            extend_over(state, left, right, circuit.ring, lanes)
     if begin < end:
         grow(state, tables.steps[top, PARITY], circuit.ring)
     return end
