@@ -9,6 +9,7 @@ from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
 from sweepmill_worker.clifford.engine import MASKS
 from sweepmill_worker.clifford.roads import plan
+from sweepmill_worker.clifford.slots import new_census
 from sweepmill_worker.clifford.state import Lanes, State, new_state
 from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
 from sweepmill_worker.observables.probes import Probes
@@ -23,6 +24,7 @@ def final_state(sites: int, layers: int, periodic: bool, mixed: bool, rate: floa
         new_matrix(state, lanes, wanted=False),
         Circuit(layers, periodic, mixed, int(rate * 2**32), MASKS, (1, 2)),
         new_supply(sites),
+        new_census(state),
         plan(Probes(sites), mixed),
         np.zeros(0, dtype=np.int64),
         np.uint64(3),

@@ -13,7 +13,8 @@ from sweepmill_worker.clifford.classes import GATE_CLASSES, column_masks
 from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
 from sweepmill_worker.clifford.roads import Plan, plan
-from sweepmill_worker.clifford.state import aligned, new_state
+from sweepmill_worker.clifford.slots import new_census
+from sweepmill_worker.clifford.state import new_state
 from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
 from sweepmill_worker.observables.probes import Probes, Region, of_regions
 from sweepmill_worker.words import GATE, MEASURE, words
@@ -35,8 +36,7 @@ MAX_SITES: Final = 4096
 MAX_LAYERS: Final = 2**24
 """Far beyond any ensemble; layers are 32-bit counters of the random words."""
 
-MASKS = aligned(16 * len(GATE_CLASSES), np.uint32)
-MASKS[:] = column_masks()
+MASKS = column_masks()
 
 
 @dataclass(frozen=True)
@@ -133,6 +133,7 @@ def run_plan(
         new_matrix(state, lanes, wanted=len(chosen.others.ends) + len(chosen.negativities.ends) > 0),
         Circuit(chain.layers, chain.periodic, chain.mixed, chain.threshold, MASKS, key_words),
         new_supply(chain.sites),
+        new_census(state),
         chosen,
         np.array(read_layers, dtype=np.int64),
         np.uint64(first),

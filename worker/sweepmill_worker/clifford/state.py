@@ -9,6 +9,7 @@ Invariants between layers:
 I1  The rows in use are independent; the stabilizers commute and generate the group modulo signs.
 I2  A row is the identity outside its window, the sites start .. end modulo L, with 0 <= start < L and
     start <= end < start + L.  Rows whose window wraps (end >= L) are marked.  Windows are bounds, not always tight.
+I3  The rows of a chunk are the identity outside the blocks of sites that are marked for it.
 
 A mixed state of rank r also keeps 2 (L - r) logical rows, in pairs that anticommute within the pair and commute with
 everything else.  They are the sites' part of a purification by L - r reference qubits, and they turn two questions
@@ -23,6 +24,10 @@ from numpy.typing import NDArray
 
 from sweepmill_worker.clifford.vectors import GROUP, Value, load, one_hot, store
 from sweepmill_worker.jit import part
+
+ALL_BLOCKS = np.uint64(0xFFFFFFFFFFFFFFFF)
+STEP = 4
+"""Columns that `moves.add_pivot` takes at a time."""
 
 T = TypeVar("T", bound=np.generic)
 Words = NDArray[np.uint64]
@@ -48,8 +53,10 @@ class State(NamedTuple):
     end: Shorts
     wrapping: Words
     """Bit r: the window of row r wraps around the ring."""
-    homes: Shorts
-    """Room of a search over several chunks: the chunk of the best row of each lane."""
+    block: int
+    """Sites come in blocks of 2 ** block, at most 64 of them."""
+    marks: Words
+    """Bit b of word c: rows of chunk c may act on sites of block b.  See `marks`."""
     bit_vectors: Words
     """64 vectors: bit b in every lane.  In memory, lest the compiler turn vector tests into scalar ones."""
 
@@ -72,10 +79,12 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
     rows = 2 * sites if mixed else sites
     lanes = lanes_for(rows)
     chunks = -(-rows // (64 * lanes))
-    stride = 2 * sites + (1 if chunks > 1 else 0)  # one odd column keeps chunks of a site in different cache sets
+    stride = 2 * sites + STEP - 1  # spare columns stay empty; an odd number: chunks of a site in different cache sets
     slots = 64 * lanes * chunks
     columns = aligned(chunks * stride * lanes, np.uint64)
     stabilizers, logicals, wrapping = (aligned(chunks * lanes, np.uint64) for _ in range(3))
+    marks = aligned(-(-chunks // 8) * 8, np.uint64)
+    marks[:chunks] = ALL_BLOCKS
     bit_vectors = aligned(64 * lanes, np.uint64)
     bit_vectors[:] = np.repeat(np.uint64(1) << np.arange(64, dtype=np.uint64), lanes)
     state = State(
@@ -89,7 +98,8 @@ def new_state(sites: int, mixed: bool) -> tuple[State, Lanes]:
         start=aligned(slots, np.int16),
         end=aligned(slots, np.int16),
         wrapping=wrapping,
-        homes=aligned(GROUP, np.int16),
+        block=max(1, (sites - 1).bit_length() - 6),
+        marks=marks,
         bit_vectors=bit_vectors,
     )
     return state, (0,) * lanes
@@ -101,6 +111,7 @@ def reset(state: State, mixed: bool, lanes: Lanes) -> None:
     state.start[:] = 0
     state.end[:] = 0
     state.wrapping[:] = 0
+    state.marks[: state.chunks] = ALL_BLOCKS
     mark_first(state.stabilizers, 0 if mixed else state.sites)
     mark_first(state.logicals, 2 * state.sites if mixed else 0)
     for column in range(2 * state.sites):
@@ -128,10 +139,16 @@ def address(state: State, chunk: int, column: int, lanes: Lanes) -> int:
 
 @part
 def write_one_hot(state: State, column: int, row: int, lanes: Lanes) -> None:
-    """Column = the single bit `row` (nothing if row < 0), as whole vectors."""
+    """Column = the single bit `row` (nothing if row < 0)."""
     for chunk in range(state.chunks):
-        bit = one_hot(row - 64 * len(lanes) * chunk, lanes)
-        store(state.columns, address(state, chunk, column, lanes), bit)
+        write_chunk(state, chunk, column, row, lanes)
+
+
+@part
+def write_chunk(state: State, chunk: int, column: int, row: int, lanes: Lanes) -> None:
+    """One chunk of a column = the single bit `row`, as a whole vector; nothing if the row lies outside."""
+    bit = one_hot(row - rows_per_chunk(lanes) * chunk, lanes)
+    store(state.columns, address(state, chunk, column, lanes), bit)
 
 
 @part

@@ -5,13 +5,15 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from sweepmill_worker.clifford.classes import Masks
 from sweepmill_worker.clifford.commutators import Matrix
 from sweepmill_worker.clifford.elimination import Desk
 from sweepmill_worker.clifford.moves import gate_layer, measure
 from sweepmill_worker.clifford.readings import read
 from sweepmill_worker.clifford.roads import Plan
-from sweepmill_worker.clifford.state import Halves, Lanes, State, reset
-from sweepmill_worker.clifford.vectors import item, put
+from sweepmill_worker.clifford.slots import Census, tidy
+from sweepmill_worker.clifford.state import Lanes, State, reset
+from sweepmill_worker.clifford.vectors import GROUP, below, item, put, trailing_zeros, without_lowest
 from sweepmill_worker.jit import entry, part
 from sweepmill_worker.words import GATE, MEASURE, counters, fill
 
@@ -26,8 +28,8 @@ class Circuit(NamedTuple):
     periodic: bool
     mixed: bool
     threshold: int
-    masks: Halves
-    """Column masks of the gate classes."""
+    masks: Masks
+    """Of the gate classes."""
     key: tuple[int, int]
 
 
@@ -60,7 +62,7 @@ def new_supply(sites: int) -> Supply:
     return Supply(
         places=np.tile(places, at_once),
         layers=np.repeat(np.arange(at_once, dtype=np.uint32), len(places)),
-        words=np.empty(4 * len(places) * at_once, dtype=np.uint32),
+        words=np.empty(4 * len(places) * at_once + GROUP, dtype=np.uint32),
         gate_words=4 * len(gates),
         layer_words=4 * len(places),
         classes=np.empty(sites // 2 + 1, dtype=np.int64),
@@ -78,11 +80,18 @@ def draw_classes(supply: Supply, base: int, bonds: int) -> None:
 
 @part
 def draw_measured(supply: Supply, base: int, sites: int, threshold: int) -> int:
-    """List the measured sites of a layer; how many?"""
+    """List the measured sites of a layer, those with word < threshold; how many?"""
     count = 0
-    for site in range(sites):
-        put(supply.measured, count, site)
-        count += int(np.uint64(item(supply.words, base + site)) < np.uint64(threshold))
+    if threshold == 0:
+        return count
+    for first in range(0, sites, GROUP):
+        chosen = np.uint64(below(supply.words, base + first, np.uint32(threshold - 1)))
+        if sites - first < GROUP:
+            chosen &= (np.uint64(1) << np.uint64(sites - first)) - np.uint64(1)
+        while chosen != 0:
+            put(supply.measured, count, first + trailing_zeros(chosen))
+            chosen = without_lowest(chosen)
+            count += 1
     return count
 
 
@@ -112,6 +121,7 @@ def run_batch(
     matrix: Matrix,
     circuit: Circuit,
     supply: Supply,
+    census: Census,
     plan: Plan,
     read_layers: NDArray[np.int64],
     first: np.uint64,
@@ -119,7 +129,7 @@ def run_batch(
     lanes: Lanes,
 ) -> None:
     """Trajectories first, first + 1, ...; read_layers ascend."""
-    at_once = len(supply.words) // supply.layer_words
+    at_once = 4 * len(supply.places) // supply.layer_words
     for index in range(len(results.random)):
         reset(state, circuit.mixed, lanes)
         reads = 0
@@ -128,6 +138,8 @@ def run_batch(
             if ahead == 0:
                 fill(supply.words, supply.places, supply.layers, layer, first + np.uint64(index), circuit.key)
             base = ahead * supply.layer_words
+            if census.every and (layer - 1) % census.every == 0:
+                tidy(state, census, lanes)
             random, measured = run_layer(state, circuit, supply, (layer - 1) & 1, base, lanes)
             results.random[index, layer - 1] = random
             results.measured[index, layer - 1] = measured

@@ -10,9 +10,12 @@ import operator
 from collections.abc import Callable
 from typing import Any
 
+import numpy as np
 from llvmlite import ir  # type: ignore[import-untyped]
 from numba.core import cgutils, types
 from numba.extending import intrinsic, lower_builtin, models, register_model, type_callable
+
+from sweepmill_worker.jit import part
 
 GROUP = 32
 """Rows in one vector of shorts."""
@@ -110,6 +113,20 @@ def load_shorts(typing: Any, array: Any, offset: Any) -> Any:
 
 
 @_intrinsic
+def below(typing: Any, halves: Any, offset: Any, bound: Any) -> Any:
+    """32 unsigned words of an array, any alignment: which are at most `bound`?  As the bits of a word."""
+    vector = Vector(32, GROUP)
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        loaded = builder.load(_pointer(context, builder, halves, arguments[0], arguments[1], vector))
+        loaded.align = 4
+        truth = builder.icmp_unsigned("<=", loaded, _splat(builder, arguments[2], vector))
+        return builder.bitcast(truth, ir.IntType(GROUP))
+
+    return types.uint32(halves, offset, bound), codegen
+
+
+@_intrinsic
 def store(typing: Any, array: Any, offset: Any, value: Any) -> Any:
     """Write a vector of words or shorts to array[offset : ...]; aligned."""
 
@@ -189,6 +206,19 @@ def any_bit(typing: Any, value: Any) -> Any:
         return context.cast(builder, set_, types.boolean, types.boolean)
 
     return types.boolean(value), codegen
+
+
+@_intrinsic
+def filled_halves(typing: Any, value: Any) -> Any:
+    """The bits of a word: which 32-bit halves of the vector are not zero?"""
+    halves = Vector(32, 2 * value.count)
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        split = builder.bitcast(arguments[0], _llvm(halves))
+        filled = builder.icmp_unsigned("!=", split, ir.Constant(_llvm(halves), None))
+        return builder.zext(builder.bitcast(filled, ir.IntType(halves.count)), ir.IntType(64))
+
+    return types.uint64(value), codegen
 
 
 @_intrinsic
@@ -273,6 +303,16 @@ def bits(typing: Any, truth: Any) -> Any:
 
 
 @_intrinsic
+def bits_of_eight(typing: Any, truth: Any) -> Any:
+    """8 truth values as the lowest bits of a word."""
+
+    def codegen(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        return builder.zext(builder.bitcast(arguments[0], ir.IntType(8)), ir.IntType(64))
+
+    return types.uint64(truth), codegen
+
+
+@_intrinsic
 def item(typing: Any, array: Any, index: Any) -> Any:
     """array[index] for index >= 0: spares the selects by which numba serves negative indices."""
 
@@ -340,3 +380,9 @@ def trailing_zeros(typing: Any, word: Any) -> Any:
         return builder.cttz(arguments[0], ir.IntType(1)(1))
 
     return types.int64(types.uint64), codegen
+
+
+@part
+def without_lowest(word: np.uint64) -> np.uint64:
+    """The word with its lowest set bit cleared."""
+    return word & (word - np.uint64(1))

@@ -1,7 +1,10 @@
 """Windows of rows: growth with a layer of gates, union with a pivot's, and the search for the shortest row."""
 
+from typing import Final
+
 import numpy as np
 
+from sweepmill_worker.clifford.marks import chunks_at
 from sweepmill_worker.clifford.state import (
     Lanes,
     Shorts,
@@ -18,6 +21,7 @@ from sweepmill_worker.clifford.vectors import (
     any_bit,
     bits,
     choose,
+    filled_halves,
     first_true,
     half,
     higher,
@@ -31,14 +35,16 @@ from sweepmill_worker.clifford.vectors import (
     splat_short,
     store,
     tagged,
+    trailing_zeros,
     truths,
+    without_lowest,
 )
-from sweepmill_worker.jit import part
+from sweepmill_worker.jit import part, step
 
-NOBODY = 65535
-"""A tagged key above that of any row."""
-LONGEST = 4094
-"""Keys saturate here, so that with any tag they stay below NOBODY."""
+NOBODY: Final = 65535
+"""A key above that of any row."""
+LONGEST: Final = 4094
+"""Keys have 12 bits for a length; rows at least as long as this are told apart one by one."""
 
 
 @part
@@ -67,52 +73,74 @@ def keep(state: State, group: int, start: Value, end: Value) -> None:
 
 @part
 def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: Shorts, lanes: Lanes) -> int:
-    """Among the permitted rows with a bit in the column, one with the smallest end - start; -1 if there are none.
-
-    Dense and free of data-dependent branches within a chunk; empty chunks are skipped where there are several.
-    A key carries the number of its group, so that a minimum per lane tells the row.
-    """
-    best = splat_short(NOBODY)
-    for chunk in range(state.chunks):
-        base = 2 * address(state, chunk, column, lanes)
-        first = chunk * groups_per_chunk(lanes)
-        if state.chunks > 1 and not occupied(state, base, permitted, first, lanes):
-            continue
-        here = splat_short(NOBODY)
-        for group in range(groups_per_chunk(lanes)):
-            rows = truths(half(state.columns, base + group) & half(permitted, first + group))
-            at = GROUP * (first + group)
-            length = lower(load_shorts(ends, at) - load_shorts(starts, at), splat_short(LONGEST))
-            here = choose(rows, lower_unsigned(here, tagged(length, group)), here)
-        if state.chunks > 1:
-            homes = load_shorts(state.homes, 0)
-            store(state.homes, 0, choose(lower_unsigned(here, best) == best, homes, splat_short(chunk)))
-        best = lower_unsigned(here, best)
-    key = least(best)
-    if key == NOBODY:
-        return -1
-    lane = first_true(best == splat_short(key))
-    chunk = item(state.homes, lane) if state.chunks > 1 else 0
-    row: int = chunk * rows_per_chunk(lanes) + GROUP * (key & 15) + lane
-    return row
+    """Among the permitted rows with a bit in the column, one with the smallest end - start; -1 if there are none."""
+    best, smallest_length = -1, NOBODY
+    chunks = chunks_at(state, column >> 1)
+    while chunks != 0:
+        chunk = trailing_zeros(chunks)
+        chunks = without_lowest(chunks)
+        rows = column_chunk(state, chunk, column, lanes) & load(permitted, chunk * len(lanes), lanes)
+        groups = filled_halves(rows)
+        if groups != 0:
+            length, row = smallest_in_groups(state, chunk, column, groups, permitted, starts, ends, lanes)
+            if length < smallest_length:
+                best, smallest_length = row, length
+    return best
 
 
 @part
-def occupied(state: State, base: int, permitted: Words, first: int, lanes: Lanes) -> bool:
-    """Has the chunk of a column any permitted row?"""
-    found = np.uint32(0)
-    for group in range(groups_per_chunk(lanes)):
-        found |= half(state.columns, base + group) & half(permitted, first + group)
-    return bool(found != 0)
+def smallest_in_groups(
+    state: State,
+    chunk: int,
+    column: int,
+    groups: np.uint64,
+    permitted: Words,
+    starts: Shorts,
+    ends: Shorts,
+    lanes: Lanes,
+) -> tuple[int, int]:
+    """Its length and number, in one chunk of which these groups of 32 rows have any.
+
+    Skipping the other groups is most of the speed at high rates.  A key carries the number of its group, so that a
+    minimum per lane tells the row.
+    """
+    base, first = 2 * address(state, chunk, column, lanes), chunk * groups_per_chunk(lanes)
+    best, remaining = splat_short(NOBODY), groups
+    while remaining != 0:
+        group = trailing_zeros(remaining)
+        remaining = without_lowest(remaining)
+        rows = truths(half(state.columns, base + group) & half(permitted, first + group))
+        at = GROUP * (first + group)
+        length = lower(load_shorts(ends, at) - load_shorts(starts, at), splat_short(LONGEST))
+        best = choose(rows, lower_unsigned(best, tagged(length, group)), best)
+    key = least(best)
+    if key >> 4 == LONGEST:
+        return smallest_one_by_one(state, chunk, column, permitted, starts, ends, lanes)
+    return key >> 4, GROUP * (first + (key & 15)) + first_true(best == splat_short(key))
+
+
+@step
+def smallest_one_by_one(
+    state: State, chunk: int, column: int, permitted: Words, starts: Shorts, ends: Shorts, lanes: Lanes
+) -> tuple[int, int]:
+    """The same, where all rows are too long for the keys."""
+    best, smallest_length = -1, NOBODY
+    for word in range(len(lanes)):
+        rows = item(state.columns, address(state, chunk, column, lanes) + word)
+        rows &= item(permitted, chunk * len(lanes) + word)
+        while rows != 0:
+            row = chunk * rows_per_chunk(lanes) + 64 * word + trailing_zeros(rows)
+            rows = without_lowest(rows)
+            length = np.int64(item(ends, row)) - np.int64(item(starts, row))
+            if length < smallest_length:
+                best, smallest_length = row, length
+    return smallest_length, best
 
 
 @part
 def unite(state: State, site: int, pivot: int, lanes: Lanes) -> None:
     """Windows of the rows that anticommute with Z of the site: union with the pivot's.  The pivot's: the site."""
-    around = False
-    for chunk in range(state.chunks):
-        wrapping = load(state.wrapping, chunk * len(lanes), lanes)
-        around |= any_bit(column_chunk(state, chunk, 2 * site, lanes) & wrapping)
+    around = any_wraps(state, site, lanes)
     if around:
         unite_around(state, site, item(state.start, pivot), item(state.end, pivot), lanes)
     else:
@@ -121,14 +149,30 @@ def unite(state: State, site: int, pivot: int, lanes: Lanes) -> None:
 
 
 @part
+def any_wraps(state: State, site: int, lanes: Lanes) -> bool:
+    """Does the window of any anticommuting row wrap around the ring?"""
+    around, chunks = False, chunks_at(state, site)
+    while chunks != 0:
+        chunk = trailing_zeros(chunks)
+        chunks = without_lowest(chunks)
+        wrapping = load(state.wrapping, chunk * len(lanes), lanes)
+        around |= any_bit(column_chunk(state, chunk, 2 * site, lanes) & wrapping)
+    return around
+
+
+@part
 def unite_straight(state: State, site: int, pivot_start: int, pivot_end: int, lanes: Lanes) -> None:
     """Where no window wraps."""
     start_bound, end_bound = splat_short(pivot_start), splat_short(pivot_end)
-    for chunk in range(state.chunks):
-        if state.chunks > 1 and not any_bit(column_chunk(state, chunk, 2 * site, lanes)):
-            continue
+    chunks = chunks_at(state, site)
+    while chunks != 0:
+        chunk = trailing_zeros(chunks)
+        chunks = without_lowest(chunks)
         base = 2 * address(state, chunk, 2 * site, lanes)
-        for group in range(groups_per_chunk(lanes)):
+        groups = filled_halves(column_chunk(state, chunk, 2 * site, lanes))
+        while groups != 0:
+            group = trailing_zeros(groups)
+            groups = without_lowest(groups)
             rows = truths(half(state.columns, base + group))
             at = GROUP * (chunk * groups_per_chunk(lanes) + group)
             start, end = load_shorts(state.start, at), load_shorts(state.end, at)

@@ -5,6 +5,7 @@ from typing import Final, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from sweepmill_worker.clifford.classes import Masks
 from sweepmill_worker.clifford.commutators import Matrix
 from sweepmill_worker.clifford.elimination import Desk as ReadingDesk
 from sweepmill_worker.clifford.moves import gate, gate_layer, measure
@@ -47,10 +48,10 @@ class Circuit(NamedTuple):
     """Has the state logical rows?"""
     ring: bool
     """Do windows wrap?  Only on a ring without references."""
-    masks: Halves
-    """Column masks of the classes of two-site gates."""
+    masks: Masks
+    """Of the classes of two-site gates."""
     single_masks: Halves
-    """Likewise of one-site gates."""
+    """Column masks of the classes of one-site gates."""
     classes: NDArray[np.int64]
     """Room for the classes of a layer of bricks."""
     key: tuple[int, int]
@@ -104,7 +105,7 @@ def some_bricks(
         for row in range(begin, end):
             place = first + item(desk.ordinals, row)
             left, right = desk.places[place, 0], desk.places[place, 1]
-            gate(state, chunk, left, right, circuit.masks, 16 * (item(desk.details, row) >> 4), lanes)
+            gate(state, chunk, left, right, circuit.masks, item(desk.details, row) >> 4, lanes)
     for row in range(begin, end):  # with references no window goes around the ring
         place = first + item(desk.ordinals, row)
         left, right = desk.places[place, 0], desk.places[place, 1]

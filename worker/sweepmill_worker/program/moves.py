@@ -1,5 +1,6 @@
 """One operation on the state."""
 
+from sweepmill_worker.clifford.classes import Masks
 from sweepmill_worker.clifford.moves import gate
 from sweepmill_worker.clifford.state import Halves, Lanes, State, address
 from sweepmill_worker.clifford.vectors import item, load, splat_half, store
@@ -11,11 +12,11 @@ X, Y, Z = 1, 2, 3
 
 
 @part
-def gate_on_pair(state: State, one: int, other: int, masks: Halves, chosen: int, ring: bool, lanes: Lanes) -> None:
+def gate_on_pair(state: State, one: int, other: int, masks: Masks, chosen: int, ring: bool, lanes: Lanes) -> None:
     """A class of two-site gates on any two sites."""
     extend_over(state, one, other, ring, lanes)
     for chunk in range(state.chunks):
-        gate(state, chunk, one, other, masks, 16 * chosen, lanes)
+        gate(state, chunk, one, other, masks, chosen, lanes)
 
 
 @part
