@@ -68,6 +68,17 @@ def test_all_roads_give_the_same_entropies(sites: int, periodic: bool, mixed: bo
         equal(results[0], other)
 
 
+@pytest.mark.parametrize(
+    ("sites", "periodic", "mixed"), [(600, True, False), (1100, False, False), (300, True, True), (900, False, True)]
+)
+@pytest.mark.parametrize("rate", [0.04, 0.3])
+def test_sorting_rows_into_chunks_changes_no_number(sites: int, periodic: bool, mixed: bool, rate: float) -> None:
+    chain = HybridChain(sites, 100, periodic, mixed, int(rate * 2**32))
+    cuts = [tuple(range(x)) for x in range(0, sites, 50)]
+    chosen = plan(of_regions(sites, cuts), mixed)
+    equal(*(run_plan(chain, KEY, 3, 1, [31, 65, 100], chosen, sorting) for sorting in (True, False)))
+
+
 def test_roads_are_chosen_by_the_shape_of_the_regions() -> None:
     def roads(mixed: bool, *regions: tuple[int, ...], references: int = 0) -> list[int]:
         found: Plan = plan(of_regions(8, regions, references), mixed)

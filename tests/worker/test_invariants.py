@@ -49,7 +49,7 @@ CASES = [
     for sites, periodic in ((2, True), (7, False), (64, True), (65, False), (150, True), (300, True))
     for mixed in (False, True)
     for layers, rate in ((1, 0.5), (24, 0.1), (41, 0.25))
-]
+] + [(600, 100, True, False, 0.25), (1030, 70, False, False, 0.3), (600, 70, False, True, 0.3)]
 
 
 @pytest.mark.parametrize(("sites", "layers", "periodic", "mixed", "rate"), CASES)
@@ -71,6 +71,7 @@ def test_rows_are_independent_commute_and_stay_in_their_windows(
     expected[pairs, state.partner[pairs]] = 1
     np.testing.assert_array_equal(anticommuting, expected)
     check_windows(state, rows, used)
+    check_marks(state, rows)
 
 
 def check_windows(state: State, rows: NDArray[np.uint8], used: NDArray[np.int64]) -> None:
@@ -82,3 +83,23 @@ def check_windows(state: State, rows: NDArray[np.uint8], used: NDArray[np.int64]
         assert wrapping[row] == (end >= state.sites)
         support = np.flatnonzero(rows[row, 0::2] | rows[row, 1::2])
         assert ((support - start) % state.sites <= end - start).all()
+
+
+def check_marks(state: State, rows: NDArray[np.uint8]) -> None:
+    chunks = np.arange(len(rows)) // (len(rows) // state.chunks)
+    acting = rows[:, 0::2] | rows[:, 1::2]
+    for chunk in range(state.chunks):
+        sites = np.flatnonzero(acting[chunks == chunk].any(axis=0))
+        assert all(int(state.marks[chunk]) >> (int(site) >> state.block) & 1 for site in sites)
+
+
+def marked_blocks(state: State) -> int:
+    blocks = ((state.sites - 1) >> state.block) + 1
+    return sum((int(marks) & ((1 << blocks) - 1)).bit_count() for marks in state.marks)
+
+
+def test_rows_of_neighboring_sites_share_chunks() -> None:
+    state, _ = final_state(2000, 64, True, False, 0.3)
+    blocks = ((state.sites - 1) >> state.block) + 1
+    assert state.chunks == 4
+    assert marked_blocks(state) < 2 * blocks  # 4 without sorting; a quarter and the margins for each chunk with it

@@ -14,7 +14,7 @@ from sweepmill_worker.clifford.commutators import new_matrix
 from sweepmill_worker.clifford.elimination import new_desk
 from sweepmill_worker.clifford.roads import Plan, plan
 from sweepmill_worker.clifford.slots import new_census
-from sweepmill_worker.clifford.state import new_state
+from sweepmill_worker.clifford.state import STEP, lanes_for, new_state
 from sweepmill_worker.clifford.trajectories import Circuit, Results, new_supply, run_batch
 from sweepmill_worker.observables.probes import Probes, Region, of_regions
 from sweepmill_worker.words import GATE, MEASURE, words
@@ -29,10 +29,11 @@ __all__ = [
     "describe",
     "run",
     "run_probes",
+    "working_bytes",
 ]
 
 MAX_SITES: Final = 4096
-"""The keys of the search for the shortest row hold lengths of 12 bits."""
+"""A bound of what is tested: windows of 16 bits would bear 16,383 sites."""
 MAX_LAYERS: Final = 2**24
 """Far beyond any ensemble; layers are 32-bit counters of the random words."""
 
@@ -118,8 +119,12 @@ def run_plan(
     count: int,
     read_layers: Sequence[int],
     chosen: Plan,
+    sorting: bool = True,
 ) -> Readings:
-    """`run` with the roads already chosen and nothing checked."""
+    """`run` with the roads already chosen and nothing checked.
+
+    Without sorting of the slots (see `slots`) the numbers are the same.
+    """
     state, lanes = new_state(chain.sites, chain.mixed)
     spare, _ = new_state(chain.sites, chain.mixed)
     results = Results(
@@ -133,7 +138,7 @@ def run_plan(
         new_matrix(state, lanes, wanted=len(chosen.others.ends) + len(chosen.negativities.ends) > 0),
         Circuit(chain.layers, chain.periodic, chain.mixed, chain.threshold, MASKS, key_words),
         new_supply(chain.sites),
-        new_census(state),
+        new_census(state, sorting),
         chosen,
         np.array(read_layers, dtype=np.int64),
         np.uint64(first),
@@ -141,6 +146,19 @@ def run_plan(
         lanes,
     )
     return Readings(*results)
+
+
+def working_bytes(sites: int, mixed: bool) -> int:
+    """A bound on the memory that `run` needs at a time, besides the results and the plan; it grows as L**2.
+
+    Columns of the state and of its copy for readings, and two matrices of commutators (only asked-for regions that are
+    no intervals need them); then what is kept per slot and per site.
+    """
+    rows = 2 * sites if mixed else sites
+    lanes = lanes_for(rows)
+    slots = -(-rows // (64 * lanes)) * 64 * lanes
+    columns, commutators = slots * (2 * sites + STEP) // 8, slots * slots // 8
+    return 2 * columns + 2 * commutators + 64 * slots + 64 * sites + 32_768
 
 
 def describe(chain: HybridChain, key_words: tuple[int, int], k: int) -> tuple[Layer, ...]:

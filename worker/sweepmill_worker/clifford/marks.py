@@ -10,7 +10,16 @@ from typing import Final
 import numpy as np
 
 from sweepmill_worker.clifford.state import ALL_BLOCKS, Lanes, State, groups_per_chunk
-from sweepmill_worker.clifford.vectors import bits_of_eight, item, load, nonzero, put, splat, trailing_zeros, without_lowest
+from sweepmill_worker.clifford.vectors import (
+    bits_of_eight,
+    item,
+    load,
+    nonzero,
+    put,
+    splat,
+    trailing_zeros,
+    without_lowest,
+)
 from sweepmill_worker.jit import part
 
 EIGHT: Final = (0,) * 8

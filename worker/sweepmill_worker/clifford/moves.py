@@ -36,7 +36,9 @@ from sweepmill_worker.jit import part
 
 
 @part
-def image(patterns: Words, at: int, x_left: Value, z_left: Value, x_right: Value, z_right: Value, lanes: Lanes) -> Value:
+def image(
+    patterns: Words, at: int, x_left: Value, z_left: Value, x_right: Value, z_right: Value, lanes: Lanes
+) -> Value:
     """One new column of a gate: the sum of the old ones in the pattern that starts at `at`."""
     return (
         (x_left & splat(item(patterns, at), lanes))
@@ -53,7 +55,7 @@ def gate(state: State, chunk: int, left: int, right: int, masks: Masks, chosen: 
     to_right = address(state, chunk, 2 * right, lanes)
     a, b = load(state.columns, to_left, lanes), load(state.columns, to_left + len(lanes), lanes)
     c, d = load(state.columns, to_right, lanes), load(state.columns, to_right + len(lanes), lanes)
-    code = np.int64(item(masks.codes, chosen))
+    code = int(np.int64(item(masks.codes, chosen)))
     x_left = image(masks.patterns, code & 255, a, b, c, d, lanes)
     z_left = image(masks.patterns, code >> 8 & 255, a, b, c, d, lanes)
     x_right = image(masks.patterns, code >> 16 & 255, a, b, c, d, lanes)
@@ -68,7 +70,7 @@ def gate(state: State, chunk: int, left: int, right: int, masks: Masks, chosen: 
 def gate_layer(
     state: State, parity: int, classes: NDArray[np.int64], bonds: int, periodic: bool, masks: Masks, lanes: Lanes
 ) -> None:
-    """Apply gates to the bonds (parity, parity + 1), (parity + 2, parity + 3), ...: chunk by chunk, where it may act."""
+    """Apply gates to the bonds (parity, parity + 1), (parity + 2, parity + 3), ...; of each chunk, where it may act."""
     for chunk in range(state.chunks):
         blocks = item(state.marks, chunk)
         while blocks != 0:
@@ -129,6 +131,14 @@ def multiply(state: State, chunk: int, site: int, start: int, end: int, pivot: i
         if not any_bit(rows):
             return
         mark(state, chunk, start, end)
+    add_over_window(state, chunk, rows, start, end, pivot, lanes)
+
+
+@part
+def add_over_window(state: State, chunk: int, rows: Value, start: int, end: int, pivot: int, lanes: Lanes) -> None:
+    """Multiply the pivot, whose window is start .. end modulo L, into some rows of a chunk."""
+    if end - start + 1 == state.sites:  # from site 0, lest the steps of the second part reach into the first
+        start, end = 0, state.sites - 1
     add_pivot(state, chunk, rows, 2 * start, 2 * min(end + 1, state.sites), pivot, lanes)
     add_pivot(state, chunk, rows, 0, 2 * (end + 1 - state.sites), pivot, lanes)
 
@@ -142,9 +152,10 @@ def write_site(state: State, chunk: int, site: int, row: int, lanes: Lanes) -> N
 
 @part
 def add_pivot(state: State, chunk: int, rows: Value, first: int, beyond: int, pivot: int, lanes: Lanes) -> None:
-    """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit; the pivot has none just beyond them.
+    """Add `rows` to the columns first .. beyond - 1 that have the pivot's bit, and maybe to those of one more site.
 
-    Columns are taken four at a time, which spares the processor most surprises about the end of the loop.
+    Columns are taken four at a time, which spares the processor most surprises about the end of the loop.  A site
+    beyond must be empty for the pivot; or a spare one, which nobody reads.
     """
     bit, nothing = bit_of(state, pivot, lanes), splat(np.uint64(0), lanes)
     to = address(state, chunk, 0, lanes)

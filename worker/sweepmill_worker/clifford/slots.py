@@ -68,7 +68,7 @@ def place(state: State, row: int) -> int:
     start, end = np.int64(item(state.start, row)), np.int64(item(state.end, row))
     if LONG * (end - start) > state.sites:
         return state.sites
-    middle = (start + end) >> 1
+    middle = int((start + end) >> 1)
     return middle - state.sites if middle >= state.sites else middle
 
 
@@ -144,8 +144,8 @@ def exchange_bits(words: Words, word: int, bit: int, other_word: int, other_bit:
 
 @part
 def exchange_partners(state: State, row: int, other: int) -> None:
-    """Logical rows keep their partners, wherever these are."""
-    if state.partner[row] == other:
+    """Logical rows keep their partners, wherever these are; entries of other rows mean nothing."""
+    if state.partner[row] == other and state.partner[other] == row:
         return
     state.partner[row], state.partner[other] = state.partner[other], state.partner[row]
     for moved in (row, other):

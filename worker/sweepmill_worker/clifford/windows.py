@@ -131,7 +131,7 @@ def smallest_one_by_one(
         while rows != 0:
             row = chunk * rows_per_chunk(lanes) + 64 * word + trailing_zeros(rows)
             rows = without_lowest(rows)
-            length = np.int64(item(ends, row)) - np.int64(item(starts, row))
+            length = int(np.int64(item(ends, row)) - np.int64(item(starts, row)))
             if length < smallest_length:
                 best, smallest_length = row, length
     return smallest_length, best

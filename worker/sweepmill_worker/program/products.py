@@ -8,7 +8,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from sweepmill_worker.clifford.moves import add_pivot, promote
+from sweepmill_worker.clifford.moves import add_over_window, promote
 from sweepmill_worker.clifford.state import (
     Lanes,
     State,
@@ -122,8 +122,7 @@ def multiply_pivot(state: State, pivot: int, ring: bool, lanes: Lanes) -> None:
         chunk = (home + turn) % state.chunks
         rows = column_chunk(state, chunk, 2 * state.sites, lanes)
         if state.chunks == 1 or any_bit(rows):
-            add_pivot(state, chunk, rows, 2 * first, 2 * min(last + 1, state.sites), pivot, lanes)
-            add_pivot(state, chunk, rows, 0, 2 * (last + 1 - state.sites), pivot, lanes)
+            add_over_window(state, chunk, rows, first, last, pivot, lanes)
 
 
 @part
