@@ -72,6 +72,18 @@ def keep(state: State, group: int, start: Value, end: Value) -> None:
 
 
 @part
+def groups_to_visit(rows: Value, lanes: Lanes) -> np.uint64:
+    """Bits of the groups of a chunk that have any of the rows; of up to 4 groups all or none.
+
+    So short a loop costs less than a surprise about its end: 2 to 6 % of the time for up to 128 rows.
+    """
+    groups = filled_halves(rows)
+    if len(lanes) <= 2 and groups != 0:
+        return (np.uint64(1) << np.uint64(groups_per_chunk(lanes))) - np.uint64(1)
+    return groups
+
+
+@part
 def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: Shorts, lanes: Lanes) -> int:
     """Among the permitted rows with a bit in the column, one with the smallest end - start; -1 if there are none."""
     best, smallest_length = -1, NOBODY
@@ -80,7 +92,7 @@ def smallest(state: State, column: int, permitted: Words, starts: Shorts, ends: 
         chunk = trailing_zeros(chunks)
         chunks = without_lowest(chunks)
         rows = column_chunk(state, chunk, column, lanes) & load(permitted, chunk * len(lanes), lanes)
-        groups = filled_halves(rows)
+        groups = groups_to_visit(rows, lanes)
         if groups != 0:
             length, row = smallest_in_groups(state, chunk, column, groups, permitted, starts, ends, lanes)
             if length < smallest_length:
@@ -169,7 +181,7 @@ def unite_straight(state: State, site: int, pivot_start: int, pivot_end: int, la
         chunk = trailing_zeros(chunks)
         chunks = without_lowest(chunks)
         base = 2 * address(state, chunk, 2 * site, lanes)
-        groups = filled_halves(column_chunk(state, chunk, 2 * site, lanes))
+        groups = groups_to_visit(column_chunk(state, chunk, 2 * site, lanes), lanes)
         while groups != 0:
             group = trailing_zeros(groups)
             groups = without_lowest(groups)
