@@ -77,7 +77,7 @@ def groups_to_visit(rows: Value, lanes: Lanes) -> np.uint64:
 
     So short a loop costs less than a surprise about its end: 2 to 6 % of the time for up to 128 rows.
     """
-    groups = filled_halves(rows)
+    groups: np.uint64 = filled_halves(rows)
     if len(lanes) <= 2 and groups != 0:
         return (np.uint64(1) << np.uint64(groups_per_chunk(lanes))) - np.uint64(1)
     return groups
