@@ -1,0 +1,64 @@
+"""From tables to physics: critical points, entanglement laws, exponents, and whether a circuit was deep enough.
+
+Everything works on `Points`: means with errors and, where there are any, jackknife replicas over folds of
+trajectories. A fit that does not describe its data says so and withholds its error bar. Needs the extra `analysis`.
+"""
+
+from sweepmill.extras import needing
+
+with needing("sweepmill.analysis", "analysis"):
+    import scipy  # noqa: F401
+
+from sweepmill.analysis.collapse import Collapse, fit_collapse
+from sweepmill.analysis.compare import Candidate, Comparison, fit_growth, fit_laws
+from sweepmill.analysis.crossings import Crossings, fit_crossings
+from sweepmill.analysis.estimate import Estimate
+from sweepmill.analysis.free_energy import CentralCharge, fit_central_charge
+from sweepmill.analysis.goodness import Goodness
+from sweepmill.analysis.jackknife import jackknife_covariance, jackknife_error, replicas_from_folds
+from sweepmill.analysis.laws import DECAY, ENTANGLEMENT, GROWTH, TIMES, Law, chord_length
+from sweepmill.analysis.model_free import ModelFree, fit_model_free
+from sweepmill.analysis.points import Points
+from sweepmill.analysis.scaling import Scaling
+from sweepmill.analysis.shapes import NaturalSpline, Polynomial
+from sweepmill.analysis.steady import Steadiness, steady_yet
+from sweepmill.analysis.tell import Need
+from sweepmill.analysis.times import fit_decay, fit_times, purification_times, settling_depths, times_by_size
+
+__all__ = [
+    "DECAY",
+    "ENTANGLEMENT",
+    "GROWTH",
+    "TIMES",
+    "Candidate",
+    "CentralCharge",
+    "Collapse",
+    "Comparison",
+    "Crossings",
+    "Estimate",
+    "Goodness",
+    "Law",
+    "ModelFree",
+    "NaturalSpline",
+    "Need",
+    "Points",
+    "Polynomial",
+    "Scaling",
+    "Steadiness",
+    "chord_length",
+    "fit_central_charge",
+    "fit_collapse",
+    "fit_crossings",
+    "fit_decay",
+    "fit_growth",
+    "fit_laws",
+    "fit_model_free",
+    "fit_times",
+    "jackknife_covariance",
+    "jackknife_error",
+    "purification_times",
+    "replicas_from_folds",
+    "settling_depths",
+    "steady_yet",
+    "times_by_size",
+]

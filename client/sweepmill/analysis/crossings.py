@@ -1,0 +1,88 @@
+"""Crossings of neighboring sizes, extrapolated to infinite size."""
+
+import json
+from dataclasses import dataclass
+from itertools import pairwise
+from typing import Any
+
+from sweepmill.analysis.crossing import Crossing, crossing
+from sweepmill.analysis.estimate import Estimate, finite, with_error
+from sweepmill.analysis.extrapolate import extrapolate
+from sweepmill.analysis.goodness import ACCEPTABLE, Goodness
+from sweepmill.analysis.points import Points
+from sweepmill.analysis.wording import listed
+from sweepmill.text import aligned
+
+
+@dataclass(frozen=True, eq=False)
+class Crossings:
+    """Result of `fit_crossings`: the table of crossings and p_c = limit of p_c + a L^-power, L the smaller size.
+
+    `estimates` has `p_c`, `amplitude` and, where it was free, `power`; it is empty where fewer than two pairs cross.
+    """
+
+    points: Points
+    table: tuple[Crossing, ...]
+    power: float | None
+    estimates: dict[str, Estimate]
+    goodness: Goodness | None
+    flags: tuple[str, ...]
+
+    def __getitem__(self, name: str) -> Estimate:
+        return self.estimates[name]
+
+    def __str__(self) -> str:
+        sizes = listed(self.points.distinct_sizes())
+        values = ", ".join(f"{name} = {estimate}" for name, estimate in self.estimates.items())
+        data = f"Crossings of neighboring sizes among L = {sizes}"
+        if self.flags:
+            return f"{data} are not to be extrapolated: {'; '.join(self.flags)}" + (f" ({values})." if values else ".")
+        power = "a free power" if self.power is None else f"L^-{self.power:g}"
+        return f"{data}, extrapolated with {power}, give {values} with {self.goodness}."
+
+    def text(self) -> str:
+        """The table of crossings, aligned."""
+        rows = [
+            [f"{c.small:g}, {c.large:g}", with_error(c.place, c.place_error), with_error(c.nu, c.nu_error), c.fault]
+            for c in self.table
+        ]
+        return aligned(["sizes", "crossing", "nu by slopes", "fault"], rows)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Everything as plain values, with the keys of the ensembles it rests on."""
+        names = ("small", "large", "place", "place_error", "nu", "nu_error")
+        rows = [{**{name: finite(getattr(c, name)) for name in names}, "fault": c.fault or None} for c in self.table]
+        return {
+            "analysis": "crossings",
+            "table": rows,
+            "power": self.power,
+            "estimates": {name: estimate.to_dict() for name, estimate in self.estimates.items()},
+            "p_value": None if self.goodness is None else finite(self.goodness.p_value),
+            "flags": list(self.flags),
+            "folds": self.points.folds,
+            "ensembles": self.points.ensembles,
+        }
+
+    def to_json(self) -> str:
+        """`to_dict` as JSON text."""
+        return json.dumps(self.to_dict(), indent=1, allow_nan=False)
+
+
+def fit_crossings(
+    points: Points, degree: int = 3, power: float | None = 1.0, acceptable: float = ACCEPTABLE
+) -> Crossings:
+    """Crossings of every size with the next by local polynomials, extrapolated in L^-power (None: a free power).
+
+    Choose points near the crossings: a local polynomial that does not describe its points is a fault of that pair,
+    which is then left out. Errors by jackknife where there are folds, else propagated; crossings that share a size
+    are correlated, and that is taken into account. Raises ValueError for fewer than two sizes.
+    """
+    sizes = points.distinct_sizes()
+    if len(sizes) < 2:
+        raise ValueError("crossings need at least two sizes")
+    table = tuple(crossing(points, a, b, degree, acceptable) for a, b in pairwise(sizes))
+    good = [one for one in table if not one.fault]
+    if len(good) < 2:
+        return Crossings(points, table, power, {}, None, ("fewer than two pairs cross without fault",))
+    estimates, goodness, flags = extrapolate(points.error, good, power, acceptable)
+    return Crossings(points, table, power, estimates, goodness, flags)

@@ -1,0 +1,91 @@
+"""The common look of the figures of this package."""
+
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from pathlib import Path
+
+from sweepmill.analysis.arrays import Vector
+from sweepmill.analysis.drift import Row
+from sweepmill.extras import needing
+
+with needing("plot()", "analysis"):
+    import matplotlib as mpl
+    from matplotlib.axes import Axes
+    from matplotlib.colors import LinearSegmentedColormap, to_hex
+    from matplotlib.figure import Figure
+    from matplotlib.ticker import ScalarFormatter
+
+_INKS = ("#c8963e", "#5f8a5b", "#3d5a80", "#7a4069")  # ochre to plum, from small sizes to large
+GRAY = "#8a8a8a"
+MARKERS = "osD^vP"
+
+
+@contextmanager
+def sheet(title: str) -> Iterator[tuple[Figure, list[Axes]]]:
+    """A figure with four panels and a title above them."""
+    with mpl.rc_context(
+        {
+            "font.size": 9,
+            "axes.spines.top": False,
+            "axes.spines.right": False,
+            "axes.titlesize": 9,
+            "axes.titlelocation": "left",
+        }
+    ):
+        figure = Figure(figsize=(9.0, 6.4), layout="constrained")
+        panels = [figure.add_subplot(2, 2, place) for place in (1, 2, 3, 4)]
+        figure.suptitle(title, fontsize=9, x=0.01, ha="left", wrap=True)
+        yield figure, panels
+
+
+def inks(count: int) -> list[str]:
+    """So many colors in order."""
+    shades = LinearSegmentedColormap.from_list("inks", _INKS)
+    return [to_hex(shades(i / max(1, count - 1))) for i in range(count)]
+
+
+def marker(index: int) -> str:
+    """The marker of the curve of that number."""
+    return MARKERS[index % len(MARKERS)]
+
+
+def dots(axes: Axes, x: Vector, y: Vector, error: Vector, color: str, index: int, label: str) -> None:
+    """Points with error bars of one standard error."""
+    axes.errorbar(x, y, yerr=error, color=color, marker=marker(index), ms=3.5, lw=0, elinewidth=0.9, label=label)
+
+
+def doublings(axes: Axes) -> None:
+    """x in powers of two, written as plain numbers: sizes and lengths are read that way."""
+    axes.set_xscale("log", base=2)
+    axes.xaxis.set_major_formatter(ScalarFormatter())
+
+
+def residual_panel(axes: Axes, x_label: str) -> None:
+    """Zero and two standard errors to either side."""
+    axes.axhspan(-2, 2, color=GRAY, alpha=0.12, lw=0)
+    axes.axhline(0, color=GRAY, lw=0.8)
+    axes.set(xlabel=x_label, ylabel="(data - fit) / error", title="residuals")
+
+
+def drift_panel(axes: Axes, rows: Sequence[Row], name: str, quoted: tuple[float, float | None]) -> None:
+    """One quantity of every variation, against the quoted value and its error."""
+    value, error = quoted
+    axes.axvline(value, color=GRAY, lw=0.8)
+    if error is not None:
+        axes.axvspan(value - error, value + error, color=GRAY, alpha=0.2, lw=0)
+    for place, row in enumerate(rows):
+        color = _INKS[2] if row.accepted else GRAY
+        width = row.errors[name] if row.accepted else 0.0
+        axes.errorbar([row.values[name]], [place], xerr=[width], marker="o" if row.accepted else "x", ms=4, color=color)
+    axes.set_yticks(range(len(rows)), [row.what for row in rows])
+    axes.invert_yaxis()
+    axes.ticklabel_format(axis="x", useOffset=False)
+    axes.locator_params(axis="x", nbins=4)
+    axes.set(xlabel=name, title="drift (crosses: fits that do not describe their data)")
+
+
+def saved(figure: Figure, path: str | Path | None) -> Figure:
+    """The figure, written to `path` if there is one."""
+    if path is not None:
+        figure.savefig(path, dpi=160)
+    return figure

@@ -1,0 +1,125 @@
+"""Steady yet? The third against the fourth quarter of the layers of every ensemble."""
+
+import json
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any, Literal
+
+import numpy as np
+from scipy import stats
+
+from sweepmill.analysis.arrays import Mask, Vector
+from sweepmill.analysis.estimate import finite, with_error
+from sweepmill.analysis.jackknife import jackknife_error
+from sweepmill.analysis.points import Points
+from sweepmill.text import aligned, short
+
+Verdict = Literal["steady", "still changing", "too noisy to tell"]
+FALSE_ALARM = 0.01  # probability that any of the ensembles is called changing when none is
+TOLERANCE = 0.02  # a change by this share of the mean would matter
+
+
+@dataclass(frozen=True)
+class Quarter:
+    """One ensemble: mean of the third and of the fourth quarter, their difference, its error and the verdict.
+
+    `bound` tells that the error is a bound: without folds, the correlation of layers is unknown.
+    """
+
+    key: str
+    size: float
+    layers: float
+    third: float
+    fourth: float
+    change: float
+    error: float
+    bound: bool
+    verdict: Verdict
+
+    def __str__(self) -> str:
+        return (
+            f"L = {self.size:g}, {self.layers:g} layers: {self.verdict} (from the third to the fourth quarter the mean "
+            f"changed by {with_error(self.change, self.error)}, {100 * self.change / abs(self.third or 1.0):+.2g} %)"
+        )
+
+
+@dataclass(frozen=True)
+class Steadiness:
+    """Result of `steady_yet`: one row per ensemble, and one verdict on all."""
+
+    rows: tuple[Quarter, ...]
+
+    @property
+    def verdict(self) -> Verdict:
+        """The worst of the rows: still changing before too noisy before steady."""
+        found = {row.verdict for row in self.rows}
+        ranks: tuple[Verdict, ...] = ("still changing", "too noisy to tell", "steady")
+        return next(one for one in ranks if one in found)
+
+    def __str__(self) -> str:
+        bad = [row for row in self.rows if row.verdict != "steady"]
+        if not bad:
+            return f"Steady: none of {len(self.rows)} ensembles changed from the third to the fourth quarter of layers."
+        return f"Not shown to be steady, {len(bad)} of {len(self.rows)} ensembles: " + "; ".join(map(str, bad)) + "."
+
+    def text(self) -> str:
+        """All rows, aligned."""
+        head = ["ensemble", "L", "layers", "third", "fourth", "change", "verdict"]
+        rows = [
+            [short(r.key), r.size, r.layers, r.third, r.fourth, with_error(r.change, r.error), r.verdict]
+            for r in self.rows
+        ]
+        return aligned(head, rows)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Everything as plain values, with the keys of the ensembles."""
+        rows = [{name: finite(v) if isinstance(v, float) else v for name, v in vars(row).items()} for row in self.rows]
+        return {"analysis": "steady yet", "verdict": self.verdict, "ensembles": rows}
+
+    def to_json(self) -> str:
+        """`to_dict` as JSON text."""
+        return json.dumps(self.to_dict(), indent=1, allow_nan=False)
+
+
+def steady_yet(points: Points, tolerance: float = TOLERANCE) -> Steadiness:
+    """Judge series mean(x), x the layers, one per ensemble (per size where there are no keys).
+
+    "still changing": the difference of the quarters is beyond noise (all ensembles together raise that alarm falsely
+    with probability 0.01). "steady": it is not, and a change by more than the share `tolerance` of the mean is
+    excluded at two standard errors. Errors by jackknife over the folds, for layers of one trajectory are correlated;
+    without folds a bound is used. Raises ValueError for a series without layers in both quarters.
+    """
+    series = list(_series(points))
+    limit = float(stats.norm.isf(FALSE_ALARM / len(series) / 2))
+    return Steadiness(tuple(_judge(one, limit, tolerance) for one in series))
+
+
+def _series(points: Points) -> Iterator[Points]:
+    blocks = points.blocks() if points.keys else np.unique(points.sizes, return_inverse=True)[1]
+    for block in range(int(blocks.max()) + 1):
+        yield points.taken(np.asarray(blocks == block))
+
+
+def _judge(series: Points, limit: float, tolerance: float) -> Quarter:
+    last = float(series.x.max())
+    third: Mask = (series.x > 0.5 * last) & (series.x <= 0.75 * last)
+    fourth: Mask = series.x > 0.75 * last
+    if not third.any() or not fourth.any():
+        raise ValueError(f"size {series.sizes[0]:g} has no layers in its third or fourth quarter: read more of them")
+    before, after = float(series.mean[third].mean()), float(series.mean[fourth].mean())
+    error, change = _error(series, third, fourth), after - before
+    verdict: Verdict = "steady"
+    if abs(change) > limit * error:
+        verdict = "still changing"
+    elif abs(change) + 2 * error > tolerance * max(abs(before), abs(after)):
+        verdict = "too noisy to tell"
+    key, bound = series.keys[0] if series.keys else "", series.replicas is None
+    return Quarter(key, float(series.sizes[0]), last, before, after, change, error, bound, verdict)
+
+
+def _error(series: Points, third: Mask, fourth: Mask) -> float:
+    if series.replicas is None:
+        return float(series.error[third].mean() + series.error[fourth].mean())
+    differences: Vector = series.replicas[:, fourth].mean(axis=1) - series.replicas[:, third].mean(axis=1)
+    return max(float(jackknife_error(differences[:, None])[0]), math.ulp(1.0))
