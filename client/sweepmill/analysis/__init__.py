@@ -15,6 +15,7 @@ from sweepmill.analysis.crossings import Crossings, fit_crossings
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.free_energy import CentralCharge, fit_central_charge
 from sweepmill.analysis.goodness import Goodness
+from sweepmill.analysis.histogram import Average, average_of, purity
 from sweepmill.analysis.jackknife import jackknife_covariance, jackknife_error, replicas_from_folds
 from sweepmill.analysis.laws import DECAY, ENTANGLEMENT, GROWTH, TIMES, Law, chord_length
 from sweepmill.analysis.model_free import ModelFree, fit_model_free
@@ -30,6 +31,7 @@ __all__ = [
     "ENTANGLEMENT",
     "GROWTH",
     "TIMES",
+    "Average",
     "Candidate",
     "CentralCharge",
     "Collapse",
@@ -45,6 +47,7 @@ __all__ = [
     "Polynomial",
     "Scaling",
     "Steadiness",
+    "average_of",
     "chord_length",
     "fit_central_charge",
     "fit_collapse",
@@ -57,6 +60,7 @@ __all__ = [
     "jackknife_covariance",
     "jackknife_error",
     "purification_times",
+    "purity",
     "replicas_from_folds",
     "settling_depths",
     "steady_yet",

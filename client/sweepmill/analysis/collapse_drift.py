@@ -15,11 +15,11 @@ NEAR = (0.75, 0.5)  # shares of the largest |u| that are kept when far points ar
 
 def drift_rows(base: Fitted, acceptable: float) -> tuple[Row, ...]:
     """The fit repeated without the smallest sizes, without far points, and with other shapes."""
-    rows = []
+    rows, starts = [], None if base.faults(acceptable) else [base.solution.theta]
     for kind, what, points, form in _variations(base):
         if len(points) <= form.parameters() or len(points.distinct_sizes()) < 2:
             continue
-        varied = Fitted.of(points, form, [base.solution.theta])
+        varied = Fitted.of(points, form, starts)
         rows.append(drift_row(kind, what, base, varied, acceptable))
     return tuple(rows)
 

@@ -102,12 +102,12 @@ def excess_spread(rows: tuple[Row, ...], name: str, variance: float) -> float:
 
 
 def excess(moved: Vector, noise: Vector, variance: float) -> float:
-    """Root of the mean of moved^2 - noise, both [n], with noise the variances of the moves; 0 where it is negative.
+    """Root of the mean of moved^2 - 2 noise, both [n], with noise the variances of the moves; 0 where it is negative.
 
-    That mean is zero on average when there is nothing but noise. Moves count less the noisier they are against the
-    `variance` of the fit itself.
+    Twice the noise, because a smaller margin would widen most errors where there is nothing but noise. Moves count
+    less the noisier they are against the `variance` of the fit itself.
     """
-    return math.sqrt(max(0.0, float(np.average(moved**2 - noise, weights=(noise + variance) ** -2))))
+    return math.sqrt(max(0.0, float(np.average(moved**2 - 2 * noise, weights=(noise + variance) ** -2))))
 
 
 def drift_text(first: Row, rows: tuple[Row, ...]) -> str:

@@ -112,6 +112,6 @@ class Fitted:
         return np.asarray((self.points.mean - fit) / self.points.error)
 
 
-def _best_starts(problem: Problem, frame: Frame, y: Vector, most: int = 3) -> list[Vector]:
+def _best_starts(problem: Problem, frame: Frame, y: Vector, most: int = 2) -> list[Vector]:
     target = problem.whitening.apply(y)
     return sorted(frame.starts(), key=lambda start: float(np.sum(problem.projected(start, target)[0] ** 2)))[:most]

@@ -13,17 +13,22 @@ def quality(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:
     All arguments [n]; about 1 for curves that fall on one, infinite where too few points overlap. The quality S of
     Phys. Rev. B 70, 014418 (2004), from memory.
     """
-    sums = np.zeros((5, len(u)))
+    w, wx, wxx, wy, wxy = np.zeros((5, len(u)))
+    precision = error**-2
     for size in np.unique(sizes):
         of = np.flatnonzero(sizes == size)
         of = of[np.argsort(u[of])]
         above = np.searchsorted(u[of], u)
         inside = (sizes != size) & (above > 0) & (above < len(of))
-        for neighbor in (of[above[inside]], of[above[inside] - 1]):
-            weight = error[neighbor] ** -2
-            x, value = u[neighbor] - u[inside], y[neighbor]  # measured from the point, so the line is wanted at 0
-            sums[:, inside] += weight * np.stack([np.ones_like(x), x, x * x, value, x * value])
-    w, wx, wxx, wy, wxy = sums
+        for shift in (0, 1):
+            neighbor = of[np.clip(above - shift, 0, len(of) - 1)]
+            weight = np.where(inside, precision[neighbor], 0.0)
+            x, value = u[neighbor] - u, y[neighbor]  # measured from the point, so the line is wanted at 0
+            w += weight
+            wx += weight * x
+            wxx += weight * x * x
+            wy += weight * value
+            wxy += weight * x * value
     determinant = w * wxx - wx * wx
     used = determinant > 1e-12 * w * wxx
     if used.mean() < _SHARED:

@@ -2,37 +2,51 @@
 
 import json
 import math
+from collections.abc import Iterator
 from dataclasses import dataclass
-from functools import cached_property
-from typing import Any, Literal
+from typing import Any
 
 import numpy as np
-from scipy.optimize import fmin
 
-from sweepmill.analysis.arrays import Matrix, Vector
+from sweepmill.analysis.arrays import Mask, Matrix, Vector
 from sweepmill.analysis.collapse_drift import NEAR
+from sweepmill.analysis.drift import excess
 from sweepmill.analysis.estimate import Estimate, finite
-from sweepmill.analysis.jackknife import jackknife_error
-from sweepmill.analysis.measures import quality, residual
+from sweepmill.analysis.model_free_search import DRAWS, Measure, Search, error_of, named, perturbed
 from sweepmill.analysis.points import Points
-from sweepmill.analysis.scaling import Frame, Scaling
 from sweepmill.analysis.wording import listed
 
-Measure = Literal["quality", "residual"]
-DRAWS = 64  # synthetic data sets where there are no folds: the error is then known to about 9 %
 _TOO_LARGE = 5.0  # standard deviations of the quality above 1, by the law of chi^2 per point
 
 
 @dataclass(frozen=True, eq=False)
+class Window:
+    """The search on part of the points; `moved` from the one on all, `noise` the error of that by noise alone."""
+
+    kind: str
+    what: str
+    points: int
+    values: dict[str, float]
+    errors: Vector
+    moved: Vector
+    noise: Vector
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain values."""
+        errors = dict(zip(self.values, self.errors.tolist(), strict=True))
+        return {"what": self.what, "points": self.points, "values": self.values, "errors": errors}
+
+
+@dataclass(frozen=True, eq=False)
 class ModelFree:
-    """Result of `fit_model_free`: `value` of the measure, `estimates` by name, `windows` (what, number, estimates)."""
+    """Result of `fit_model_free`: `value` of the measure, `estimates` by name, `windows` with parts of the points."""
 
     points: Points
     measure: Measure
     value: float
     estimates: dict[str, Estimate]
     flags: tuple[str, ...]
-    windows: tuple[tuple[str, int, dict[str, float]], ...]
+    windows: tuple[Window, ...]
 
     def __getitem__(self, name: str) -> Estimate:
         return self.estimates[name]
@@ -44,7 +58,7 @@ class ModelFree:
         if self.flags:
             return f"{data} is not to be quoted: {'; '.join(self.flags)}; the best values are {values}."
         how = f"jackknife over {self.points.folds} folds" if self.points.folds else f"{DRAWS} synthetic data sets"
-        return f"{data} gives {values}; errors are from {how}."
+        return f"{data} gives {values}; errors are from {how} and include the spread between windows."
 
     def to_dict(self) -> dict[str, Any]:
         """Everything as plain values, with the keys of the ensembles it rests on."""
@@ -54,7 +68,7 @@ class ModelFree:
             "value": finite(self.value),
             "estimates": {name: estimate.to_dict() for name, estimate in self.estimates.items()},
             "flags": list(self.flags),
-            "windows": [{"what": what, "points": count, "values": values} for what, count, values in self.windows],
+            "windows": [one.to_dict() for one in self.windows],
             "folds": self.points.folds,
             "ensembles": self.points.ensembles,
         }
@@ -64,90 +78,33 @@ class ModelFree:
         return json.dumps(self.to_dict(), indent=1, allow_nan=False)
 
 
-@dataclass(frozen=True, eq=False)
-class _Search:
-    frame: Frame
-    error: Vector
-    measure: Measure
-
-    @cached_property
-    def bounds(self) -> tuple[Vector, Vector, Vector]:
-        return self.frame.bounds()
-
-    def cost(self, theta: Vector, y: Vector) -> float:
-        lower, upper, _ = self.bounds
-        if (theta <= lower).any() or (theta >= upper).any():
-            return math.inf
-        sizes = self.frame.sizes
-        lift = (sizes / sizes.min()) ** self.frame.values(theta)["zeta_over_nu"]
-        of = quality if self.measure == "quality" else residual
-        return of(self.frame.scaled(theta, self.frame.x, sizes), y * lift, self.error * lift, sizes)
-
-    def best(self, y: Vector, start: Vector, step: Vector) -> Vector:
-        """Downhill simplex from corners at the steps, in units of them so that one tolerance serves all."""
-        corners = np.vstack([np.zeros(len(start)), np.eye(len(start))])
-
-        def cost(at: Vector) -> float:
-            return self.cost(start + at * step, y)
-
-        found = fmin(cost, corners[0], xtol=3e-3, ftol=1e-3, maxfun=300, disp=False, initial_simplex=corners)
-        return np.asarray(start + found * step)
-
-    def from_grid(self, y: Vector) -> Vector:
-        grid = sorted(self.frame.starts(), key=lambda theta: self.cost(theta, y))[:2]
-        _, upper, typical = self.bounds
-        rough = [self.best(y, start, np.where(start + 0.1 * typical < upper, 0.1, -0.1) * typical) for start in grid]
-        return self.best(y, min(rough, key=lambda theta: self.cost(theta, y)), 0.01 * typical)
-
-
 def fit_model_free(points: Points, zeta: float | None = 0.0, measure: Measure = "quality") -> ModelFree:
     """Minimize a measure of collapse over p_c, nu and, where given as None, zeta.
 
     Errors are by jackknife over the folds, or from synthetic data around the means with a fixed seed where there are
-    none. A quality far above 1 is flagged and the errors withheld; neighbors must be close enough for straight lines.
-    Raises ValueError for fewer than two sizes, or curves that overlap nowhere.
+    none, with the spread between windows as far as noise does not explain it. A quality far above 1 is flagged and the
+    errors withheld; points must be close enough for straight lines between them. Raises ValueError for fewer than two
+    sizes, or curves that hardly overlap.
     """
     if len(points.distinct_sizes()) < 2:
         raise ValueError("finite-size scaling needs at least two sizes")
-    theta, value = _minimum(points, zeta, measure)
+    search = Search.of(points, zeta, measure)
+    theta = search.from_grid(points.mean)
+    value = search.cost(theta, points.mean)
     if math.isinf(value):
         raise ValueError("the curves of different sizes overlap too little to be compared")
-    flags = _flags(points, value, measure)
-    errors = _errors(points, zeta, measure, theta)
-    values = _named(theta)
+    values, flags = named(theta), _flags(points, value, measure)
+    if flags:
+        unknown = {name: Estimate(one, math.nan, 0.0, flags[0]) for name, one in values.items()}
+        return ModelFree(points, measure, value, unknown, flags, ())
+    data = perturbed(points)
+    found = search.again(data, theta)
+    errors, windows = error_of(points, found), tuple(_windows(points, zeta, measure, theta, data, found))
     estimates = {
-        name: Estimate(values[name], error, 0.0, flags[0] if flags else "")
-        for name, error in zip(values, errors.tolist(), strict=True)
+        name: Estimate(one, float(errors[index]), _spread(windows, index, float(errors[index])), "")
+        for index, (name, one) in enumerate(values.items())
     }
-    return ModelFree(points, measure, value, estimates, flags, _windows(points, zeta, measure, theta))
-
-
-def _search(points: Points, zeta: float | None, measure: Measure) -> _Search:
-    return _Search(Frame.of(Scaling(zeta=zeta), points), points.error, measure)
-
-
-def _minimum(points: Points, zeta: float | None, measure: Measure) -> tuple[Vector, float]:
-    search = _search(points, zeta, measure)
-    theta = search.from_grid(points.mean)
-    return theta, search.cost(theta, points.mean)
-
-
-def _named(theta: Vector) -> dict[str, float]:
-    named = {"p_c": float(theta[0]), "nu": float(1 / theta[1])}
-    return named | ({"zeta": float(theta[2] / theta[1])} if len(theta) > 2 else {})
-
-
-def _errors(points: Points, zeta: float | None, measure: Measure, theta: Vector) -> Vector:
-    search = _search(points, zeta, measure)
-    step = 0.01 * search.bounds[2]
-
-    def values(data: Matrix) -> Matrix:
-        return np.array([list(_named(search.best(y, theta, step)).values()) for y in data])
-
-    if points.replicas is not None:
-        return jackknife_error(values(points.replicas))
-    noise = np.random.default_rng(0).standard_normal((DRAWS, len(points)))
-    return np.asarray(values(points.mean + noise * points.error).std(axis=0, ddof=1))
+    return ModelFree(points, measure, value, estimates, flags, windows)
 
 
 def _flags(points: Points, value: float, measure: Measure) -> tuple[str, ...]:
@@ -158,11 +115,36 @@ def _flags(points: Points, value: float, measure: Measure) -> tuple[str, ...]:
 
 
 def _windows(
-    points: Points, zeta: float | None, measure: Measure, theta: Vector
-) -> tuple[tuple[str, int, dict[str, float]], ...]:
-    u = np.abs(Frame.of(Scaling(zeta=zeta), points).scaled(theta, points.x, points.sizes))
-    parts = [(f"L >= {size:g}", points.taken(points.sizes >= size)) for size in points.distinct_sizes()[1:-1]]
-    parts += [(f"|u| <= {share * u.max():.3g}", points.taken(u <= share * u.max())) for share in NEAR]
-    kept = [(what, part) for what, part in parts if len(part) >= 8 and len(part.distinct_sizes()) > 1]
-    found = [(what, part, *_minimum(part, zeta, measure)) for what, part in kept]
-    return tuple((what, len(part), _named(at)) for what, part, at, value in found if math.isfinite(value))
+    points: Points, zeta: float | None, measure: Measure, theta: Vector, data: Matrix, found: Matrix
+) -> Iterator[Window]:
+    base = np.array(list(named(theta).values()))
+    for kind, what, keep in _parts(points, Search.of(points, zeta, measure), theta):
+        part = points.taken(keep)
+        search = Search.of(part, zeta, measure)
+        if len(part) < 8 or len(part.distinct_sizes()) < 2 or math.isinf(search.cost(theta, part.mean)):
+            continue
+        there = search.best(part.mean, theta, 0.1 * search.bounds[2])
+        again, values = search.again(data[:, keep], there), named(there)
+        moved, noise = np.array(list(values.values())) - base, error_of(points, again - found)
+        yield Window(kind, what, len(part), values, error_of(points, again), moved, noise)
+
+
+def _parts(points: Points, search: Search, theta: Vector) -> Iterator[tuple[str, str, Mask]]:
+    for size in points.distinct_sizes()[1:-1]:
+        yield "sizes", f"L >= {size:g}", points.sizes >= size
+    u = np.abs(search.frame.scaled(theta, points.x, points.sizes))
+    for share in NEAR:
+        yield "window", f"|u| <= {share * u.max():.3g}", u <= share * u.max()
+
+
+def _spread(windows: tuple[Window, ...], index: int, error: float) -> float:
+    spreads = [0.0]
+    for kind in {one.kind for one in windows}:
+        same = [one for one in windows if one.kind == kind]
+        moved, noise = (np.array([column[index] for column in columns]) for columns in _columns(same))
+        spreads.append(excess(moved, noise**2, error**2))
+    return max(spreads)
+
+
+def _columns(windows: list[Window]) -> tuple[list[Vector], list[Vector]]:
+    return [one.moved for one in windows], [one.noise for one in windows]

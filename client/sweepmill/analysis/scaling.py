@@ -120,8 +120,8 @@ class Frame:
         low, high = float(self.x.min()), float(self.x.max())
         others = {"zeta_over_nu": 0.0, "omega": 1.0, "bend": 0.0}
         tail = [others[name] for name in self.form.names()[2:]]
-        places = np.linspace(low, high, 13)[1:-1]
-        return [np.array([place, slope, *tail]) for place in places for slope in (0.35, 0.6, 0.85, 1.2, 2.0)]
+        places = np.linspace(low, high, 9)[1:-1]
+        return [np.array([place, slope, *tail]) for place in places for slope in (0.4, 0.75, 1.2, 2.0)]
 
 
 def _middle(u: Vector) -> float:
