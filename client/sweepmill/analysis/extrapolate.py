@@ -7,7 +7,6 @@ from scipy import linalg
 
 from sweepmill.analysis.arrays import Matrix, Vector
 from sweepmill.analysis.crossing import Crossing
-from sweepmill.analysis.drift import excess
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.goodness import Goodness, judge
 from sweepmill.analysis.jackknife import jackknife_covariance
@@ -20,7 +19,7 @@ POWERS = (0.3, 8.0)
 def extrapolate(
     error: Vector, crossings: list[Crossing], power: float | None, acceptable: float
 ) -> tuple[dict[str, Estimate], Goodness, tuple[str, ...]]:
-    """Estimates of `p_c`, `amplitude` and, if free, `power`; the goodness of the fit; why errors are withheld.
+    """Estimates of `p_c`, `amplitude` and, if free, `power`, by noise alone; the goodness; why errors are withheld.
 
     `error` [n] are the errors of the means that the crossings were found from; L is the smaller size of a pair.
     """
@@ -28,10 +27,9 @@ def extrapolate(
     goodness = judge(solution.problem.whitening, solution.residuals, solution.jacobian)
     flags = _flags(solution, goodness, acceptable)
     variances = _variances(crossings, power, solution) * max(1.0, goodness.ratio if goodness.dof > 0 else 1.0)
-    spread = _spread(error, crossings, power, solution) if goodness.dof > 0 else 0.0
     values = _report(crossings, power, solution.theta, solution.coefficients)
     estimates = {
-        name: Estimate(float(value), math.sqrt(variance), spread if name == "p_c" else 0.0, flags[0] if flags else "")
+        name: Estimate(float(value), math.sqrt(variance), 0.0, flags[0] if flags else "")
         for name, value, variance in zip(("p_c", "amplitude", "power"), values, variances, strict=False)
     }
     return estimates, goodness, flags
@@ -69,15 +67,6 @@ def _variances(crossings: list[Crossing], power: float | None, solution: Solutio
     if free:
         gradient[1, 0], gradient[2, 0] = solution.coefficients[1] * lift * math.log(size), 1.0
     return np.asarray(np.einsum("ij,jk,ik->i", gradient, solution.covariance, gradient))
-
-
-def _spread(error: Vector, crossings: list[Crossing], power: float | None, solution: Solution) -> float:
-    """What p_c moves by, beyond noise, without the smallest pair."""
-    free = len(solution.theta)
-    later = _solve(error, crossings[1:], power)
-    noise = abs(later.covariance[free, free] - solution.covariance[free, free])
-    moved = later.coefficients[:1] - solution.coefficients[:1]
-    return excess(moved, np.array([noise]), float(solution.covariance[free, free]))
 
 
 def _flags(solution: Solution, goodness: Goodness, acceptable: float) -> tuple[str, ...]:

@@ -13,29 +13,25 @@ def quality(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:
     All arguments [n]; about 1 for curves that fall on one, infinite where too few points overlap. The quality S of
     Phys. Rev. B 70, 014418 (2004), from memory.
     """
-    w, wx, wxx, wy, wxy = np.zeros((5, len(u)))
-    precision = error**-2
-    for size in np.unique(sizes):
-        of = np.flatnonzero(sizes == size)
-        of = of[np.argsort(u[of])]
-        above = np.searchsorted(u[of], u)
-        inside = (sizes != size) & (above > 0) & (above < len(of))
-        for shift in (0, 1):
-            neighbor = of[np.clip(above - shift, 0, len(of) - 1)]
-            weight = np.where(inside, precision[neighbor], 0.0)
-            x, value = u[neighbor] - u, y[neighbor]  # measured from the point, so the line is wanted at 0
-            w += weight
-            wx += weight * x
-            wxx += weight * x * x
-            wy += weight * value
-            wxy += weight * x * value
+    order = np.lexsort((u, sizes))  # ascending u within every size
+    u, y, error, sizes = u[order], y[order], error[order], sizes[order]
+    starts = np.flatnonzero(np.concatenate([[True], sizes[1:] != sizes[:-1]]))
+    counts = np.diff(np.append(starts, len(u)))[:, None]
+    # rows: sizes; columns: points. How many points of the size lie below, and the neighbors on both sides
+    above = np.add.reduceat(u[:, None] < u[None, :], starts, axis=0, dtype=np.intp)
+    inside = (above > 0) & (above < counts) & (sizes[starts][:, None] != sizes)
+    upper = starts[:, None] + np.minimum(above, counts - 1)
+    neighbors = np.concatenate([upper, np.maximum(upper - 1, 0)])
+    weight = np.concatenate([inside, inside]) * error[neighbors] ** -2
+    x, value = u[neighbors] - u, y[neighbors]  # measured from the point, so the line is wanted at 0
+    w, wx, wy = weight.sum(axis=0), (weight * x).sum(axis=0), (weight * value).sum(axis=0)
+    wxx, wxy = (weight * x * x).sum(axis=0), (weight * x * value).sum(axis=0)
     determinant = w * wxx - wx * wx
     used = determinant > 1e-12 * w * wxx
-    if used.mean() < _SHARED:
+    if used.sum() < _SHARED * len(u):
         return float("inf")
-    master = (wxx * wy - wx * wxy)[used] / determinant[used]
-    variance = wxx[used] / determinant[used]
-    return float(np.mean((y[used] - master) ** 2 / (error[used] ** 2 + variance)))
+    master, variance = (wxx * wy - wx * wxy)[used] / determinant[used], wxx[used] / determinant[used]
+    return float(np.sum((y[used] - master) ** 2 / (error[used] ** 2 + variance)) / used.sum())
 
 
 def residual(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:

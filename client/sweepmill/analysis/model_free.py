@@ -57,7 +57,7 @@ class ModelFree:
         data = f"Model-free collapse of L = {sizes} ({len(self.points)} points; {self.measure} {self.value:.3g})"
         if self.flags:
             return f"{data} is not to be quoted: {'; '.join(self.flags)}; the best values are {values}."
-        how = f"jackknife over {self.points.folds} folds" if self.points.folds else f"{DRAWS} synthetic data sets"
+        how = f"halves of {self.points.folds} folds" if self.points.folds else f"{DRAWS} synthetic data sets"
         return f"{data} gives {values}; errors are from {how} and include the spread between windows."
 
     def to_dict(self) -> dict[str, Any]:
@@ -81,10 +81,10 @@ class ModelFree:
 def fit_model_free(points: Points, zeta: float | None = 0.0, measure: Measure = "quality") -> ModelFree:
     """Minimize a measure of collapse over p_c, nu and, where given as None, zeta.
 
-    Errors are by jackknife over the folds, or from synthetic data around the means with a fixed seed where there are
-    none, with the spread between windows as far as noise does not explain it. A quality far above 1 is flagged and the
-    errors withheld; points must be close enough for straight lines between them. Raises ValueError for fewer than two
-    sizes, or curves that hardly overlap.
+    Errors are by jackknife over halves of the folds, or from synthetic data around the means where there are none
+    (both with a fixed seed), with the spread between windows as far as noise does not explain it. A quality far above
+    1 is flagged and the errors withheld; points must be close enough for straight lines between them. Raises
+    ValueError for fewer than two sizes, or curves that hardly overlap.
     """
     if len(points.distinct_sizes()) < 2:
         raise ValueError("finite-size scaling needs at least two sizes")
@@ -98,8 +98,8 @@ def fit_model_free(points: Points, zeta: float | None = 0.0, measure: Measure = 
         unknown = {name: Estimate(one, math.nan, 0.0, flags[0]) for name, one in values.items()}
         return ModelFree(points, measure, value, unknown, flags, ())
     data = perturbed(points)
-    found = search.again(data, theta)
-    errors, windows = error_of(points, found), tuple(_windows(points, zeta, measure, theta, data, found))
+    found = search.again(points.mean, theta, data)
+    errors, windows = error_of(found), tuple(_windows(points, zeta, measure, theta, data, found))
     estimates = {
         name: Estimate(one, float(errors[index]), _spread(windows, index, float(errors[index])), "")
         for index, (name, one) in enumerate(values.items())
@@ -124,9 +124,9 @@ def _windows(
         if len(part) < 8 or len(part.distinct_sizes()) < 2 or math.isinf(search.cost(theta, part.mean)):
             continue
         there = search.best(part.mean, theta, 0.1 * search.bounds[2])
-        again, values = search.again(data[:, keep], there), named(there)
-        moved, noise = np.array(list(values.values())) - base, error_of(points, again - found)
-        yield Window(kind, what, len(part), values, error_of(points, again), moved, noise)
+        again, values = search.again(part.mean, there, data[:, keep]), named(there)
+        moved, noise = np.array(list(values.values())) - base, error_of(again - found)
+        yield Window(kind, what, len(part), values, error_of(again), moved, noise)
 
 
 def _parts(points: Points, search: Search, theta: Vector) -> Iterator[tuple[str, str, Mask]]:

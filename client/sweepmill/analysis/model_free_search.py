@@ -9,13 +9,13 @@ import numpy as np
 from scipy.optimize import fmin
 
 from sweepmill.analysis.arrays import Matrix, Vector
-from sweepmill.analysis.jackknife import jackknife_error
 from sweepmill.analysis.measures import quality, residual
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.scaling import Frame, Scaling
 
 Measure = Literal["quality", "residual"]
-DRAWS = 64  # synthetic data sets where there are no folds: the error is then known to about 9 %
+_HALVINGS = 14
+DRAWS = 64  # repetitions from which errors are found, to about 9 %
 
 
 @dataclass(frozen=True, eq=False)
@@ -44,24 +44,36 @@ class Search:
         def cost(at: Vector) -> float:
             return self.cost(start + at * step, y)
 
-        found = fmin(cost, corners[0], xtol=3e-3, ftol=1e-3, maxfun=300, disp=False, initial_simplex=corners)
+        flat = 1e-3 * self.cost(start, y)
+        found = fmin(cost, corners[0], xtol=0.01, ftol=flat, maxfun=300, disp=False, initial_simplex=corners)
         return np.asarray(start + found * step)
 
     def from_grid(self, y: Vector) -> Vector:
         grid = sorted(self.frame.starts(), key=lambda theta: self.cost(theta, y))[:2]
         _, upper, typical = self.bounds
         rough = [self.best(y, start, np.where(start + 0.1 * typical < upper, 0.1, -0.1) * typical) for start in grid]
-        return self.best(y, min(rough, key=lambda theta: self.cost(theta, y)), 0.01 * typical)
+        theta = min(rough, key=lambda one: self.cost(one, y))
+        return self.best(y, theta, self.step(y, theta))
+
+    def step(self, y: Vector, theta: Vector) -> Vector:
+        """Steps from a minimum that double the measure: some standard errors, far enough not to stick in its jumps."""
+        steps, limit = 0.05 * self.bounds[2], 2 * self.cost(theta, y)
+        for index, direction in enumerate(np.eye(len(theta))):
+            for _ in range(_HALVINGS):
+                if self.cost(theta + steps[index] * direction, y) <= limit:
+                    break
+                steps[index] /= 2
+        return steps
 
     @classmethod
     def of(cls, points: Points, zeta: float | None, measure: Measure) -> "Search":
         """The search on some points."""
         return cls(Frame.of(Scaling(zeta=zeta), points), points.error, measure)
 
-    def again(self, data: Matrix, theta: Vector) -> Matrix:
-        """Exponents (as `named` gives them) of other data [rows, n] from a minimum found before."""
-        step = 0.01 * self.bounds[2]
-        return np.array([list(named(self.best(y, theta, step)).values()) for y in data])
+    def again(self, y: Vector, theta: Vector, data: Matrix) -> Matrix:
+        """Exponents (as `named` gives them) of other data [rows, n] from the minimum theta for y."""
+        step = self.step(y, theta)
+        return np.array([list(named(self.best(one, theta, step)).values()) for one in data])
 
 
 def named(theta: Vector) -> dict[str, float]:
@@ -71,13 +83,21 @@ def named(theta: Vector) -> dict[str, float]:
 
 
 def perturbed(points: Points) -> Matrix:
-    """The replicas of the folds, or synthetic data around the means with a fixed seed, [rows, n]."""
-    if points.replicas is not None:
-        return points.replicas
-    noise = np.random.default_rng(0).standard_normal((DRAWS, len(points)))
-    return np.asarray(points.mean + noise * points.error)
+    """Data [DRAWS, n] whose deviations from the means are as large as the errors, with a fixed seed.
+
+    Means over random halves of the folds: the measures are not smooth, so leaving out single folds would tell too
+    little, while the jackknife that leaves out many does tell (An Introduction to the Bootstrap (1993), section 11.7).
+    Without folds, Gaussian noise on the means.
+    """
+    generator = np.random.default_rng(0)
+    if points.replicas is None:
+        return np.asarray(points.mean + generator.standard_normal((DRAWS, len(points))) * points.error)
+    folds = points.folds
+    values = folds * points.mean - (folds - 1) * points.replicas  # what the folds alone gave
+    halves = np.stack([generator.permutation(folds)[: folds // 2] for _ in range(DRAWS)])
+    return np.asarray(values[halves].mean(axis=1))
 
 
-def error_of(points: Points, values: Matrix) -> Vector:
+def error_of(values: Matrix) -> Vector:
     """Standard errors of what was found on the rows of `perturbed`."""
-    return jackknife_error(values) if points.folds else np.asarray(values.std(axis=0, ddof=1))
+    return np.asarray(values.std(axis=0, ddof=1))

@@ -6,7 +6,7 @@ import pytest
 from support.rectangles import crossing_counts, crossing_probability, thresholds
 from sweepmill.analysis import Points, fit_collapse, fit_crossings, fit_model_free
 
-SIZES, RATES, SAMPLES, FOLDS = (8, 16, 32), np.linspace(0.44, 0.56, 7), 192, 32
+SIZES, RATES, SAMPLES, FOLDS = (8, 16, 32), np.linspace(0.44, 0.56, 7), 128, 32
 
 
 def test_configurations_are_counted_rightly() -> None:
