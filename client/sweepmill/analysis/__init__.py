@@ -1,5 +1,10 @@
 """From tables to physics: critical points, entanglement laws, exponents, and whether a circuit was deep enough.
 
+from sweepmill.analysis import Points, fit_collapse
+
+points = Points.from_table(table.where(name="i3"), x="measurement_rate")
+print(fit_collapse(points))
+
 Everything works on `Points`: means with errors and, where there are any, jackknife replicas over folds of
 trajectories. A fit that does not describe its data says so and withholds its error bar. Needs the extra `analysis`.
 """

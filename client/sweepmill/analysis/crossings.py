@@ -44,7 +44,8 @@ class Crossings:
         if self.flags:
             return f"{data} are not to be extrapolated: {'; '.join(self.flags)}" + (f" ({values})." if values else ".")
         power = "a free power" if self.power is None else f"L^-{self.power:g}"
-        return f"{data}, extrapolated with {power}, give {values} with {self.goodness}; errors include the spread between fits."
+        end = "errors include the spread between fits"
+        return f"{data}, extrapolated with {power}, give {values} with {self.goodness}; {end}."
 
     def text(self) -> str:
         """The table of crossings, aligned."""

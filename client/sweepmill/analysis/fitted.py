@@ -29,10 +29,12 @@ class Fitted:
     def of(cls, points: Points, form: Scaling, starts: list[Vector] | None = None) -> "Fitted":
         """The best fit, from a grid of starting points unless some are given.
 
-        Raises ValueError for fewer than two sizes or fewer points than parameters.
+        Raises ValueError for fewer than two sizes, one value of p only, or fewer points than parameters.
         """
         if len(points.distinct_sizes()) < 2:
             raise ValueError("finite-size scaling needs at least two sizes")
+        if np.ptp(points.x) == 0:
+            raise ValueError("finite-size scaling needs more than one value of p")
         if len(points) < form.parameters():
             raise ValueError(f"{form.parameters()} free parameters need as many points, got {len(points)}")
         frame, whitening = Frame.of(form, points), whiten(points)
@@ -72,7 +74,7 @@ class Fitted:
             inflation = self.solution.problem.whitening.inflation(self.frame.form.parameters())
             return np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
         gradient = self._gradient()
-        return np.asarray(np.einsum("ij,jk,ik->i", gradient, self.solution.covariance, gradient))
+        return np.maximum(np.einsum("ij,jk,ik->i", gradient, self.solution.covariance, gradient), 0.0)
 
     def _gradient(self) -> Matrix:
         theta, coefficients = self.solution.theta, self.solution.coefficients

@@ -88,6 +88,8 @@ def fit_model_free(points: Points, zeta: float | None = 0.0, measure: Measure = 
     """
     if len(points.distinct_sizes()) < 2:
         raise ValueError("finite-size scaling needs at least two sizes")
+    if np.ptp(points.x) == 0:
+        raise ValueError("finite-size scaling needs more than one value of p")
     search = Search.of(points, zeta, measure)
     theta = search.from_grid(points.mean)
     value = search.cost(theta, points.mean)

@@ -15,6 +15,7 @@ from sweepmill.analysis.scaling import Frame, Scaling
 
 Measure = Literal["quality", "residual"]
 _HALVINGS = 14
+_OUTSIDE = 1e300  # in place of infinity, whose differences are not numbers
 DRAWS = 64  # repetitions from which errors are found, to about 9 %
 
 
@@ -42,9 +43,9 @@ class Search:
         corners = np.vstack([np.zeros(len(start)), np.eye(len(start))])
 
         def cost(at: Vector) -> float:
-            return self.cost(start + at * step, y)
+            return min(self.cost(start + at * step, y), _OUTSIDE)
 
-        flat = 1e-3 * self.cost(start, y)
+        flat = 1e-3 * cost(corners[0])
         found = fmin(cost, corners[0], xtol=0.01, ftol=flat, maxfun=300, disp=False, initial_simplex=corners)
         return np.asarray(start + found * step)
 

@@ -16,6 +16,7 @@ from sweepmill.analysis.arrays import Matrix, Vector
 from sweepmill.analysis.whitening import Whitening
 
 STEP = 1e-6  # of the size of a parameter: central differences are good to about 1e-10 there
+_EXACT = 1e-9  # residuals below this share of the data are rounding
 _REFITS, _SETTLED = 20, 1e-3  # steps, and the step in units of the error at which a refit is done
 
 
@@ -66,16 +67,13 @@ class Problem:
             return np.asarray(q @ (q.T @ slopes) - slopes)
 
         inside = np.clip(start, self.lower + 1e-9 * self.typical, self.upper - 1e-9 * self.typical)
-        found = least_squares(
-            residuals,
-            inside,
-            jacobian,
-            (self.lower, self.upper),
-            x_scale=self.typical,
-            xtol=1e-11,
-            ftol=1e-11,
-            gtol=None,
-        )
+        if np.linalg.norm(residuals(inside)) <= _EXACT * np.linalg.norm(target):
+            return self._at(inside, target, True)  # as many parameters as points: nothing to search for
+        bounds = (self.lower, self.upper)
+        with np.errstate(divide="ignore", invalid="ignore"):  # in directions that the data leave quite open
+            found = least_squares(
+                residuals, inside, jacobian, bounds, x_scale=self.typical, xtol=1e-11, ftol=1e-11, gtol=None
+            )
         return self._at(np.asarray(found.x), target, bool(found.status > 0))
 
     def _at(self, theta: Vector, target: Vector, converged: bool) -> "Solution":
