@@ -19,6 +19,8 @@ from sweepmill.analysis.tell import DECISIVE, Need, what_would_tell
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
+_AS_GOOD = 2.72  # ratio of weights at a difference of 2 in AICc: no reason to prefer the heavier (common practice)
+
 
 @dataclass(frozen=True, eq=False)
 class Candidate:
@@ -81,10 +83,15 @@ class Comparison:
         """The heaviest law, whether or not it is the verdict."""
         return self.candidates[0]
 
+    @property
+    def shown(self) -> Candidate:
+        """The verdict, or the heaviest law where there is none."""
+        return self[self.verdict] if self.verdict else self.best
+
     def __str__(self) -> str:
         data = f"{len(self.points)} points, {self.points.x.min():g} <= x <= {self.points.x.max():g}"
         if self.verdict:
-            said = f"The data ({data}) follow the law {self.best}."
+            said = f"The data ({data}) follow the law {self.shown}."
         elif all(one.faults for one in self.candidates):
             said = f"None of the laws describes the data ({data}); the least bad is {self.best}."
         else:
@@ -135,8 +142,9 @@ def fit_laws(
 ) -> Comparison:
     """Compare the means, as a function of x, with several laws.
 
-    Weights are exp(-AICc/2) on whitened residuals. The verdict is the heaviest law if it describes the data
-    (p-value at least `acceptable`) and every other is lighter by a factor of 20 or contains it as a special case.
+    Weights are exp(-AICc/2) on whitened residuals. Laws count if they describe the data (p-value at least
+    `acceptable`) and are not lighter than the heaviest by a factor of 20. The verdict is the simplest of them if all
+    others contain it as a special case and it is about as heavy as the heaviest (AICc within 2); else there is none.
     `ring`: logarithms and powers take the chord length on a ring of so many sites. Raises ValueError if x is not
     positive or no law has fewer parameters than there are points.
     """
@@ -169,8 +177,10 @@ def _decide(candidates: tuple[Candidate, ...]) -> tuple[str | None, tuple[Need, 
     best = candidates[0]
     if best.faults:
         return None, ()
-    near = [one for one in candidates[1:] if not one.faults and one.weight * DECISIVE > best.weight]
-    against = [one for one in near if best.name not in one.fitted.law.contains]
-    if not against:
-        return best.name, ()
+    near = [one for one in candidates if not one.faults and one.weight * DECISIVE > best.weight]
+    for one in sorted(near, key=lambda each: each.fitted.law.parameters):
+        others = [other for other in near if other is not one]
+        if one.weight * _AS_GOOD >= best.weight and all(one.name in other.fitted.law.contains for other in others):
+            return one.name, ()
+    against = [one for one in near[1:] if best.name not in one.fitted.law.contains]
     return None, tuple(what_would_tell(best.fitted, one.fitted) for one in against)

@@ -74,7 +74,7 @@ class Fitted:
             inflation = self.solution.problem.whitening.inflation(self.frame.form.parameters())
             return np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
         gradient = self._gradient()
-        return np.maximum(np.einsum("ij,jk,ik->i", gradient, self.solution.covariance, gradient), 0.0)
+        return np.asarray(np.maximum(np.einsum("ij,jk,ik->i", gradient, self.solution.covariance, gradient), 0.0))
 
     def _gradient(self) -> Matrix:
         theta, coefficients = self.solution.theta, self.solution.coefficients

@@ -22,7 +22,8 @@ _SHOWN = 3
 def plot_laws(result: Comparison, path: str | Path | None, x_label: str, y_label: str) -> Figure:
     """Four panels; the heaviest laws are drawn, dashed where they do not describe the data."""
     with sheet(str(result)) as (figure, (plain, logarithmic, residuals, drift)):
-        points, shown = result.points, result.candidates[:_SHOWN]
+        points = result.points
+        shown = sorted(result.candidates, key=lambda one: one is not result.shown)[:_SHOWN]
         residual_panel(residuals, x_label)
         doublings(residuals)
         doublings(logarithmic)
@@ -38,7 +39,7 @@ def plot_laws(result: Comparison, path: str | Path | None, x_label: str, y_label
         plain.set(xlabel=x_label, ylabel=y_label, title="data and the heaviest laws")
         plain.legend(frameon=False)
         logarithmic.set(xlabel=x_label, ylabel=y_label, title="the same in logarithmic scale")
-        _drift(drift, result.best)
+        _drift(drift, result.shown)
     return saved(figure, path)
 
 

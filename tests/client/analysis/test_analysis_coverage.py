@@ -40,9 +40,9 @@ def within(count: int, trials: int, lowest: float, highest: float) -> bool:
 
 @pytest.fixture(scope="module")
 def results() -> list[Collapse]:
-    """Fits of 120 replicates with known errors."""
+    """Fits of 200 replicates with known errors."""
     generator = np.random.default_rng(60)
-    return [fit_collapse(plain(generator), drift=False) for _ in range(120)]
+    return [fit_collapse(plain(generator), drift=False) for _ in range(200)]
 
 
 def test_statistical_errors_cover_in_two_thirds_of_replicates(results: list[Collapse]) -> None:
