@@ -4,7 +4,8 @@ import json
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from itertools import pairwise
-from typing import Any
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -16,6 +17,9 @@ from sweepmill.analysis.goodness import ACCEPTABLE, Goodness
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.wording import listed
 from sweepmill.text import aligned
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
 
 
 @dataclass(frozen=True, eq=False)
@@ -74,6 +78,12 @@ class Crossings:
     def to_json(self) -> str:
         """`to_dict` as JSON text."""
         return json.dumps(self.to_dict(), indent=1, allow_nan=False)
+
+    def plot(self, path: str | Path | None = None, x_label: str = "p", y_label: str = "y") -> "Figure":
+        """Data and crossings with their extrapolation in one figure, written to `path` if given."""
+        from sweepmill.analysis.plot_crossings import plot_crossings
+
+        return plot_crossings(self, path, x_label, y_label)
 
 
 def fit_crossings(

@@ -21,8 +21,8 @@ MARKERS = "osD^vP"
 
 
 @contextmanager
-def sheet(title: str) -> Iterator[tuple[Figure, list[Axes]]]:
-    """A figure with four panels and a title above them."""
+def sheet(title: str, rows: int = 2) -> Iterator[tuple[Figure, list[Axes]]]:
+    """A figure with two panels in each row and a title above them."""
     with mpl.rc_context(
         {
             "font.size": 9,
@@ -32,8 +32,8 @@ def sheet(title: str) -> Iterator[tuple[Figure, list[Axes]]]:
             "axes.titlelocation": "left",
         }
     ):
-        figure = Figure(figsize=(9.0, 6.4), layout="constrained")
-        panels = [figure.add_subplot(2, 2, place) for place in (1, 2, 3, 4)]
+        figure = Figure(figsize=(9.0, 3.2 * rows), layout="constrained")
+        panels = [figure.add_subplot(rows, 2, place + 1) for place in range(2 * rows)]
         figure.suptitle(title, fontsize=9, x=0.01, ha="left", wrap=True)
         yield figure, panels
 

@@ -10,7 +10,7 @@ import pytest
 
 import sweepmill.analysis
 from support.strip import strips
-from sweepmill.analysis import Points, fit_collapse, fit_laws
+from sweepmill.analysis import Points, fit_collapse, fit_crossings, fit_laws
 
 
 def test_a_collapse_plots_data_collapse_residuals_and_drift(tmp_path: Path) -> None:
@@ -19,6 +19,12 @@ def test_a_collapse_plots_data_collapse_residuals_and_drift(tmp_path: Path) -> N
     assert titles[:3] == ["data", "collapse", "residuals"]
     assert titles[3].startswith("drift")
     assert (tmp_path / "collapse.png").stat().st_size > 10_000
+
+
+def test_crossings_plot_themselves(tmp_path: Path) -> None:
+    figure = fit_crossings(strips((16, 32, 64, 128), 0.15, 1e-4, seed=91), 4, 3.0).plot(tmp_path / "crossings.png")
+    assert len(figure.axes) == 2
+    assert (tmp_path / "crossings.png").stat().st_size > 10_000
 
 
 def test_a_comparison_of_laws_plots_itself(tmp_path: Path) -> None:
