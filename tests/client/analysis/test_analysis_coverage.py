@@ -13,7 +13,7 @@ P_C, NU, Y_STAR, NOISE = 0.16, 1.3, -0.42, 0.005
 X = P_C + U * SIZES ** (-1 / NU)
 EXACT = Y_STAR - 0.8 * U + 0.3 * U**2 + 0.1 * U**3
 TRUTH = {"p_c": P_C, "nu": NU, "y_star": Y_STAR}
-FALSE_ALARM = 1e-5  # of every binomial bound below
+FALSE_ALARM = 1e-6  # of every binomial bound below
 
 
 def plain(generator: np.random.Generator) -> Points:
@@ -73,8 +73,8 @@ def test_errors_with_the_spread_between_fits_cover_no_less_and_not_much_more() -
 
 
 def test_errors_without_a_function_are_as_large_as_the_scatter_between_replicates() -> None:
-    # 24 replicates know their scatter to 15 %, 64 halves an error to 9 %: 4 of both together
+    # 24 replicates know their scatter to 15 %, 64 halves an error to 9 %: 5 of both together
     generator = np.random.default_rng(63)
     search = Search.of(plain(generator), 0.0, "quality")
     scatter = float(np.std([search.from_grid(plain(generator).mean)[0] for _ in range(24)], ddof=1))
-    assert fit_model_free(folded(generator))["p_c"].statistical == pytest.approx(scatter, rel=0.7)
+    assert fit_model_free(folded(generator))["p_c"].statistical == pytest.approx(scatter, rel=0.87)

@@ -13,8 +13,8 @@ def test_the_mean_purity_is_that_of_the_trajectories_themselves() -> None:
     np.add.at(occurrences, (entropies, np.arange(640) % 64), 1)
     average = purity(np.arange(7), occurrences)
     assert average.estimate.value == pytest.approx((2.0**-entropies).mean(), rel=1e-12)
-    # the jackknife over 64 folds knows an error to 9 %: 4 of that
-    assert average.estimate.error == pytest.approx(stats.sem(2.0**-entropies), rel=0.36)
+    # the jackknife over 64 folds knows an error to 9 %: 5 of that
+    assert average.estimate.error == pytest.approx(stats.sem(2.0**-entropies), rel=0.45)
     assert average.from_few < 0.1
 
 

@@ -43,25 +43,24 @@ def sampled() -> Points:
 
 
 def test_a_collapse_finds_the_transition_and_its_exponent(sampled: Points) -> None:
-    # 4 standard errors: chance below 2e-4 for Gaussian errors; with 32 folds their tails are those of Student's law
-    # (chance about 1e-3 for three comparisons)
-    result = fit_collapse(sampled)
+    # 6 standard errors: with 32 folds their tails are those of Student's law, chance 1e-6 per comparison
+    result = fit_collapse(sampled, acceptable=1e-6)
     assert not result.flags
     assert "jackknife over 32 folds" in str(result)
     assert result.to_dict()["ensembles"] == sampled.ensembles
     for name, exact in (("p_c", 0.5), ("nu", 4 / 3), ("y_star", 0.5)):
-        assert abs(result[name].sigmas_from(exact)) < 4
+        assert abs(result[name].sigmas_from(exact)) < 6
 
 
 def test_jackknife_and_propagated_errors_agree(sampled: Points) -> None:
-    # the jackknife over 32 folds has a relative error of 1/sqrt(62) = 0.13; 4 of them
+    # the jackknife over 32 folds has a relative error of 1/sqrt(62) = 0.13; 5 of them
     plain = Points.of(sampled.sizes, sampled.x, sampled.mean, sampled.error)
     with_folds, without = (fit_collapse(points, drift=False) for points in (sampled, plain))
-    assert np.sqrt(with_folds.fitted.variances) == pytest.approx(np.sqrt(without.fitted.variances), rel=0.5)
+    assert np.sqrt(with_folds.fitted.variances) == pytest.approx(np.sqrt(without.fitted.variances), rel=0.65)
 
 
 def test_the_model_free_collapse_finds_it_too(sampled: Points) -> None:
-    # chance as above, two comparisons
+    # chance as above
     result = fit_model_free(sampled)
-    assert abs(result["p_c"].sigmas_from(0.5)) < 4
-    assert abs(result["nu"].sigmas_from(4 / 3)) < 4
+    assert abs(result["p_c"].sigmas_from(0.5)) < 6
+    assert abs(result["nu"].sigmas_from(4 / 3)) < 6
