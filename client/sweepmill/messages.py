@@ -112,6 +112,7 @@ class Estimate(Message):
     cores: int
     seconds: float | None = Field(None, description="Predicted duration on the current pool, if it were free")
     accumulator_bytes: int = Field(description="Size of all totals of the sweep")
+    worker_bytes: int = Field(description="Memory that a batch of the largest ensemble adds to an idle worker, at most")
 
 
 class BatchRecord(Message):

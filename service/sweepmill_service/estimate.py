@@ -7,6 +7,7 @@ from sweepmill.coordinates import accumulator_bytes
 from sweepmill.messages import Estimate
 from sweepmill.sweep import Point, Sweep
 from sweepmill_service.cost import Costs
+from sweepmill_service.memory import largest
 from sweepmill_service.store import Store
 
 
@@ -49,6 +50,7 @@ def estimate(sweep: Sweep, costs: Costs, store: Store, cores: int) -> Estimate:
         cores=cores,
         seconds=seconds / cores if cores else None,
         accumulator_bytes=sum(_sizes(sweep)),
+        worker_bytes=largest(sweep).bytes,
     )
 
 

@@ -114,6 +114,7 @@ ESTIMATE = Estimate(
     cores=8,
     seconds=8.4,
     accumulator_bytes=6720,
+    worker_bytes=48_400_000,
 ).model_dump()
 _PROGRESS = EnsembleProgress(
     ordinal=0,

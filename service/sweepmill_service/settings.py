@@ -40,6 +40,7 @@ class ServerLimits(BaseModel):
     program_values: int = Field(100_000, ge=10, description="Words and numbers of a circuit written as data")
     program_values_total: int = Field(2_000_000, ge=10, description="The same over all ensembles of one sweep")
     trajectory_seconds: float = Field(600.0, gt=0, description="Predicted seconds of one trajectory")
+    worker_bytes: int = Field(1_073_741_824, ge=2**26, description="Memory that one batch adds to an idle worker")
     recompute_seconds: float = Field(30.0, gt=0, description="The same where a request recomputes it on demand")
     circuit_operations: int = Field(200_000, ge=1, description="Operations of a circuit that is written out on demand")
     body_bytes: int = Field(4_194_304, ge=1024, description="Body of one request")
@@ -58,6 +59,10 @@ class Settings(BaseSettings):
     port: int = Field(8765, ge=0, le=65535, description="0 picks a free port")
     dispatch: bool = Field(True, description="False: answer requests only, another process dispatches")
     workers: int = Field(default_factory=lambda: cores(), ge=1, description="Local worker processes")
+    kernels: tuple[Literal["chains", "programs", "clusters"], ...] = Field(
+        ("chains", "programs", "clusters"),
+        description="Engines whose kernels are compiled before the pool is ready; others at their first batch",
+    )
     scheduler: str | None = Field(None, description="Address of an external Dask scheduler instead")
     tls_ca: Path | None = Field(None, description="Certificate authority of the external scheduler")
     tls_certificate: Path | None = None

@@ -9,6 +9,7 @@ from sweepmill.sweep import MOST_FAULTS, Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
 from sweepmill_service.magnitudes import too_large
+from sweepmill_service.memory import memory_fault
 from sweepmill_service.plan.costs import seconds_of, what_would_pass, work_of
 from sweepmill_service.programs import too_long
 from sweepmill_service.settings import ServerLimits
@@ -23,8 +24,9 @@ def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimit
     if faults := check_limits(sweep, Limits(**limits.model_dump(include=set(Limits.model_fields)))):
         raise SpecificationError(faults)
     costs = Costs.of([point.ensemble for point in sweep.points], store)
-    if fault := _slow(sweep, costs, limits.trajectory_seconds):
-        raise SpecificationError([fault])
+    found = (_slow(sweep, costs, limits.trajectory_seconds), memory_fault(sweep, limits.worker_bytes))
+    if faults := [fault for fault in found if fault is not None]:
+        raise SpecificationError(faults)
     return sweep, costs
 
 

@@ -193,3 +193,13 @@ def test_a_postgres_server_that_goes_away_is_said_so_and_found_again(postgres: P
             postgres.start()
         assert api.http.get("/v1/sweeps").status_code == 200
         assert api.http.get("/readyz").status_code == 200
+
+
+def test_a_batch_too_large_for_a_worker_is_refused(database: Path) -> None:
+    with serving(reading_only(f"sqlite:///{database}", limits={"worker_bytes": 2**26})) as api:
+        every = {"average_over": {"last": 1, "every": 2}}
+        circuit = {"circuit__sites": 512, "circuit__layers": 20_000, "circuit__measurement_rate": 0.1}
+        cuts = [{"quantity": "entropy", "region": "every-cut", "at": every}]
+        problem = problem_of(api.http.post("/v1/sweeps", json=small(**circuit, observe=cuts)), 422)
+        assert [fault["path"] for fault in problem.faults] == ["observe"]
+        assert "67108864" in problem.faults[0]["message"]

@@ -16,13 +16,12 @@ from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.revisions import FAMILY_REVISIONS, results_revision
-from sweepmill.times import Reading, readings
 from sweepmill_worker.batch import Batch
 from sweepmill_worker.engines import engine_of
-from sweepmill_worker.observables.plan import ProbePlan, plan_probes
+from sweepmill_worker.memory import block_size, plan_of, read_layers, times_of
+from sweepmill_worker.observables.plan import ProbePlan
 from sweepmill_worker.observables.values import Values, values_of
-
-BLOCK_BYTES = 16_000_000  # working memory for the readings of one block of trajectories
+from sweepmill_worker.warm import load
 
 
 def sample(ensemble: Ensemble, observations: Sequence[Any], first: int, count: int) -> Batch:
@@ -32,8 +31,7 @@ def sample(ensemble: Ensemble, observations: Sequence[Any], first: int, count: i
     observation the ensemble does not have.
     """
     _check(ensemble, observations, first, count)
-    plan = _plan(ensemble, observations)
-    block = _block_size(ensemble, observations, plan)
+    plan, block = plan_of(ensemble, observations), block_size(ensemble, observations)
     parts: list[list[Accumulator]] = [[] for _ in observations]
     for start in range(first, first + count, block):
         stop = min(start + block, first + count)
@@ -68,7 +66,7 @@ def sample_plain(
 def trajectory_values(ensemble: Ensemble, observations: Sequence[Any], k: int) -> list[dict[str, Any]]:
     """Values of one trajectory, recomputed: per observation and coordinate a value, or numerator and denominator."""
     _check(ensemble, observations, k, 1)
-    plan = _plan(ensemble, observations)
+    plan = plan_of(ensemble, observations)
     return [
         {"observation": item.normal_form(), "values": _coordinate_values(ensemble, item, values)}
         for item, values in zip(observations, _read(ensemble, observations, plan, k, 1), strict=True)
@@ -95,38 +93,17 @@ def _check(ensemble: Ensemble, observations: Sequence[Any], first: int, count: i
             raise ValueError(f"{item.quantity}.{fault[0]}: {fault[1]}")
 
 
-def _plan(ensemble: Ensemble, observations: Sequence[Any]) -> ProbePlan:
-    return plan_probes(ensemble.sites, ensemble.references, ensemble.periodic, tuple(observations))
-
-
-def _times(ensemble: Ensemble, observations: Sequence[Any]) -> list[tuple[Reading, ...]]:
-    return [readings(item.at, ensemble.layers, ensemble.cell) for item in observations]
-
-
-def _read_layers(times: Sequence[tuple[Reading, ...]], plan: ProbePlan) -> list[int]:
-    """Layers at which the state is read; outcome counts come for every layer anyway."""
-    needed = [when for when, indices in zip(times, plan.indices, strict=True) if indices is not None]
-    return sorted({n for when in needed for reading in when for n in reading.layers})
-
-
 def _read(ensemble: Ensemble, observations: Sequence[Any], plan: ProbePlan, first: int, count: int) -> list[Values]:
-    times = _times(ensemble, observations)
-    layers = _read_layers(times, plan)
-    counts = engine_of(ensemble).read(ensemble, first, count, layers, plan.probes)
+    times = times_of(ensemble, observations)
+    layers = read_layers(times, plan)
+    engine = engine_of(ensemble)
+    load(engine.kernels, ensemble.sites + ensemble.references)
+    counts = engine.read(ensemble, first, count, layers, plan.probes)
     index = {n: i for i, n in enumerate(layers)}
     return [
         values_of(item, counts, when, index, indices, signs)
         for item, when, indices, signs in zip(observations, times, plan.indices, plan.signs, strict=True)
     ]
-
-
-def _block_size(ensemble: Ensemble, observations: Sequence[Any], plan: ProbePlan) -> int:
-    """Trajectories per block: their readings, and the values made of them, fit the working memory."""
-    times = _times(ensemble, observations)
-    layers = len(_read_layers(times, plan))
-    terms = sum(i.size * len(when) for i, when in zip(plan.indices, times, strict=True) if i is not None)
-    per_trajectory = 4 * layers * plan.probes.size + 16 * terms + 16 * ensemble.layers
-    return max(1, BLOCK_BYTES // per_trajectory)
 
 
 def _coordinate_values(ensemble: Ensemble, item: Any, values: Values) -> list[dict[str, Any]]:

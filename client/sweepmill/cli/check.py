@@ -70,6 +70,7 @@ def _estimated(estimate: messages.Estimate) -> str:
             f" already, {count(estimate.sampled_ensembles)} ensembles completely",
             f"work left     {estimate.core_seconds / 3600:.3g} core-hours at most"
             f" ({estimate.core_seconds_from} costs){time}",
-            f"totals        {estimate.accumulator_bytes / 1e6:.3g} MB",
+            f"memory        {estimate.accumulator_bytes / 1e6:.3g} MB of totals, "
+            f"{estimate.worker_bytes / 1e6:.3g} MB per worker at most",
         ]
     )
