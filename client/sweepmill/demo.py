@@ -64,7 +64,10 @@ def submit(client: Client, sweep: Sweep) -> RemoteSweep:
 def service(database: str) -> Iterator[str]:
     """A service process on a free port; yields its address and ends the process."""
     command = [sys.executable, "-m", "sweepmill", "serve", "--port", "0", "--database", database]
-    limited = os.environ | {"SWEEPMILL_LIMITS__SITES": str(LARGEST)}  # fewer kernels to compile
+    limited = os.environ | {
+        "SWEEPMILL_LIMITS__SITES": str(LARGEST),
+        "SWEEPMILL_KERNELS": '["chains"]',
+    }  # few to compile
     process = subprocess.Popen(command, stdout=subprocess.PIPE, text=True, env=limited)  # noqa: S603
     try:
         yield _address(process)

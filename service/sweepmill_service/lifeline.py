@@ -7,6 +7,7 @@ that started the process, which is not the service's main thread, so the parent 
 import os
 import platform
 import threading
+from collections.abc import Sequence
 from typing import Any
 
 from distributed.diagnostics.plugin import WorkerPlugin
@@ -51,12 +52,13 @@ class KernelLoader(WorkerPlugin):  # type: ignore[misc]
 
     name = "sweepmill-kernel-loader"
 
-    def __init__(self, sites: int) -> None:
+    def __init__(self, sites: int, kernels: Sequence[str]) -> None:
         self.sites = sites
+        self.kernels = tuple(kernels)
 
     def setup(self, worker: Any) -> None:
         """Compiles only what the cache does not hold."""
-        warm(self.sites)
+        warm(self.sites, self.kernels)
 
 
 def _watch(parent: int) -> None:

@@ -3,9 +3,7 @@
 import contextlib
 import logging
 import os
-import subprocess
-import sys
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
@@ -18,6 +16,7 @@ from distributed.security import Security
 from sweepmill.revisions import results_revision
 from sweepmill_service.lifeline import STARTED_TOPIC, KernelLoader, Lifeline, StartReporter
 from sweepmill_worker.sample import sample_plain, versions
+from sweepmill_worker.warm import JOBS, compile_ahead
 
 log = logging.getLogger(__name__)
 
@@ -184,16 +183,17 @@ def difference(answer: object) -> str | None:
 class LocalPool(_DaskPool):
     """Worker processes of this machine, one thread each, that end with this process."""
 
-    def __init__(self, workers: int, sites: int = 1024) -> None:
-        """So many processes, with kernels compiled for chains of up to so many sites."""
+    def __init__(self, workers: int, sites: int = 1024, kernels: Sequence[str] = tuple(JOBS)) -> None:
+        """So many processes, with these kernels compiled for systems of up to so many sites."""
         super().__init__()
         self._number = workers
         self._sites = sites
+        self._kernels = kernels
         self._cluster: LocalCluster | None = None
 
     def open(self) -> None:
         """Compile the kernels once, then start the workers, which only load them."""
-        warm_kernels(self._sites)
+        compile_kernels(self._sites, self._kernels)
         dask.config.set(CONFIGURATION)
         quiet()
         try:
@@ -215,7 +215,7 @@ class LocalPool(_DaskPool):
         )
         self._connect(self._cluster)
         self.client.register_plugin(Lifeline(os.getpid()))
-        self.client.register_plugin(KernelLoader(self._sites))
+        self.client.register_plugin(KernelLoader(self._sites, self._kernels))
 
     def close(self) -> None:
         """End the worker processes."""
@@ -268,13 +268,12 @@ class ExternalPool(_DaskPool):
         )
 
 
-def warm_kernels(sites: int) -> None:
-    """Compile the kernels in processes of their own, under a lock: two that write one entry can break the cache."""
-    command = [sys.executable, "-m", "sweepmill_worker.warm", "--sites-up-to", str(sites)]
-    environment = os.environ | SINGLE_THREADED
-    done = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)  # noqa: S603 fixed words
-    if done.returncode:
-        raise PoolUnavailable(f"compiling the kernels failed: {done.stderr.strip().splitlines()[-1:]}")
+def compile_kernels(sites: int, kernels: Sequence[str]) -> None:
+    """Compile what the cache lacks, in processes of their own, before any worker needs it."""
+    try:
+        compile_ahead(sites, kernels)
+    except RuntimeError as error:
+        raise PoolUnavailable(str(error)) from error
 
 
 def quiet() -> None:

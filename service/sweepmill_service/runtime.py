@@ -116,7 +116,7 @@ class Runtime:
 def pool_for(settings: Settings) -> Pool:
     """Local worker processes, or the scheduler that the settings name."""
     if settings.scheduler is None:
-        return LocalPool(settings.workers, settings.limits.sites)
+        return LocalPool(settings.workers, settings.limits.sites, settings.kernels)
     ca, certificate, key = settings.tls_ca, settings.tls_certificate, settings.tls_key
     tls = None if ca is None or certificate is None or key is None else Tls(ca, certificate, key)
     return ExternalPool(settings.scheduler, tls)

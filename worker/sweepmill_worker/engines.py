@@ -20,7 +20,8 @@ Read = Callable[[Ensemble, int, int, Sequence[int], Probes], Readings]
 class Engine(NamedTuple):
     """A way to sample ensembles."""
 
-    name: str
+    kernels: str
+    """The job of `warm` that compiles what it calls."""
     read: Read
     """(ensemble, first, count, layers to read in ascending order, probes) to what was read off the trajectories."""
 
@@ -73,7 +74,7 @@ def _read_signed(ensemble: Ensemble, first: int, count: int, layers: Sequence[in
     return run_reference(program_of(ensemble), ensemble.key_words, first, count, layers, probes)
 
 
-CHAIN = Engine("chain", _read_chain)
-PROGRAM = Engine("program", _read_program)
+CHAIN = Engine("chains", _read_chain)
+PROGRAM = Engine("programs", _read_program)
 CLUSTERS = Engine("clusters", _read_clusters)
-SIGNED = Engine("signed", _read_signed)
+SIGNED = Engine("programs", _read_signed)

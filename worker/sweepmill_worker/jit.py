@@ -19,12 +19,17 @@ KERNEL_FOLDERS = ("clifford", "clusters", "program")
 """Packages whose files hold compiled code."""
 
 
+def kernel_sources() -> list[Path]:
+    """All files that compiled code is made from."""
+    package = Path(__file__).parent
+    folders = [path for name in KERNEL_FOLDERS for path in sorted((package / name).glob("*.py"))]
+    return [package / "jit.py", package / "parts.py", package / "words.py", *folders]
+
+
 def _sources_digest() -> str:
     """numba notices a change of an entry point's own file only, not of the parts it calls: hash all kernel files."""
-    package = Path(__file__).parent
     digest = hashlib.sha256()
-    folders = [path for name in KERNEL_FOLDERS for path in sorted((package / name).glob("*.py"))]
-    for path in [package / "jit.py", package / "parts.py", package / "words.py", *folders]:
+    for path in kernel_sources():
         digest.update(path.read_bytes())
     return digest.hexdigest()[:12]
 

@@ -1,18 +1,20 @@
-"""Compile all kernels once, so that other processes only load them from the cache.
+"""Compile kernels once, so that other processes only load them from the cache.
 
-A cache entry written by several processes at once can crash them, so each compiled entry point belongs to one job, a
-job runs in one process, and a file lock lets one command compile while others wait.  Jobs run side by side.
+A cache entry written by several processes at once can crash them.  So each compiled entry point belongs to one job,
+and a job's entries are compiled under a file lock.  Different jobs compile side by side.
 
     python -m sweepmill_worker.warm [--sites-up-to N]
 """
 
 import argparse
+import hashlib
 import os
 import subprocess
 import sys
 import time
-from collections.abc import Callable, Mapping
-from contextlib import nullcontext
+from collections.abc import Callable, Iterable, Mapping
+from contextlib import AbstractContextManager, nullcontext
+from functools import cache
 from pathlib import Path
 from typing import Final
 
@@ -21,7 +23,7 @@ from llvmlite.binding import get_host_cpu_name  # type: ignore[import-untyped]
 
 from sweepmill_worker.clifford.engine import MAX_SITES, HybridChain, run
 from sweepmill_worker.clusters.engine import ClusterChain, run_clusters
-from sweepmill_worker.jit import cache_directory
+from sweepmill_worker.jit import cache_directory, kernel_sources
 from sweepmill_worker.program.compile import compile_program
 from sweepmill_worker.program.listing import operations
 from sweepmill_worker.program.run import run_program
@@ -31,54 +33,77 @@ SIZES: Final = (2, 66, 130, 258)
 """One chain for each width of vectors: a kernel is compiled once for all sizes that share a width."""
 
 
-def _sizes(sites_up_to: int) -> list[int]:
-    return [sites for sites in SIZES if sites <= max(2 * sites_up_to, 2)]  # a mixed state has twice the rows
+def widths(sites_up_to: int) -> int:
+    """How many widths systems up to a size need: a mixed state has twice the rows."""
+    return sum(sites <= max(2 * sites_up_to, 2) for sites in SIZES)
 
 
-def _chains(sites_up_to: int) -> None:
-    for sites in _sizes(sites_up_to):
-        chain = HybridChain(sites, layers=1, periodic=True, mixed=False, threshold=2**31)
-        run(chain, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
+def _chain(sites: int) -> None:
+    chain = HybridChain(sites, layers=1, periodic=True, mixed=False, threshold=2**31)
+    run(chain, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
 
 
-def _programs(sites_up_to: int) -> None:
-    for sites in _sizes(sites_up_to):
-        form = {"sites": sites, "layers": 1, "repeat": [[{"measure": "Z", "on": "sites"}]]}
-        program = compile_program(form)
-        run_program(program, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
-        list(operations(program, (0, 0), 0))
+def _program(sites: int) -> None:
+    program = compile_program({"sites": sites, "layers": 1, "repeat": [[{"measure": "Z", "on": "sites"}]]})
+    run_program(program, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
+    list(operations(program, (0, 0), 0))
 
 
-def _clusters(_: int) -> None:
-    run_clusters(ClusterChain(2, 1, False, 2**31, 2**31), (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
+def _clusters(sites: int) -> None:
+    chain = ClusterChain(sites, 1, False, 2**31, 2**31)
+    run_clusters(chain, (0, 0), first=0, count=1, read_layers=[1], regions=[(0,)])
 
 
-JOBS: Final[Mapping[str, Callable[[int], None]]] = {"chains": _chains, "programs": _programs, "clusters": _clusters}
-"""What has entry points of its own; each takes the largest number of sites."""
+def _words(_: int) -> None:
+    words((0, 0), GATE, 1, 0, 1)
 
 
-def warm(sites_up_to: int = MAX_SITES) -> float:
-    """Load all kernels of systems up to a size into this process; the seconds it took.
+COMMON: Final = "words"
+"""The job whose entry points the others call: compiled before them."""
+JOBS: Final[Mapping[str, Callable[[int], None]]] = {
+    COMMON: _words,
+    "chains": _chain,
+    "programs": _program,
+    "clusters": _clusters,
+}
+"""What has entry points of its own; each runs a system of so many sites."""
 
-    Several processes load side by side if a :func:`compile_all` has ended before, else one after the other.
-    """
+
+def load(job: str, sites_up_to: int) -> None:
+    """Load the kernels of a job into this process, compiling those that are missing."""
+    _load(job, widths(sites_up_to))
+
+
+@cache
+def _load(job: str, number: int) -> None:
+    with _turn(job, number):
+        for sites in SIZES[:number]:
+            JOBS[job](sites)
+        _note(job, number)
+
+
+def warm(sites_up_to: int = MAX_SITES, jobs: Iterable[str] = JOBS) -> float:
+    """:func:`load` the kernels of these jobs and the common ones; the seconds it took."""
     begin = time.monotonic()
-    with nullcontext() if _all_compiled(sites_up_to) else _lock():
-        for job in JOBS.values():
-            job(sites_up_to)
+    for job in dict.fromkeys([COMMON, *jobs]):
+        load(job, sites_up_to)
     return time.monotonic() - begin
 
 
-def compile_all(sites_up_to: int = MAX_SITES) -> float:
+def all_compiled(sites_up_to: int = MAX_SITES, jobs: Iterable[str] = JOBS) -> bool:
+    """Whether :func:`warm` would find everything in the cache."""
+    return all(_compiled(job) >= widths(sites_up_to) for job in (COMMON, *jobs))
+
+
+def compile_ahead(sites_up_to: int = MAX_SITES, jobs: Iterable[str] = JOBS) -> float:
     """Compile what the cache lacks, each job in a process of its own; the seconds it took. Raises RuntimeError."""
     begin = time.monotonic()
-    with _lock():
-        words((0, 0), GATE, 1, 0, 1)  # common to all jobs, so it must be there before they start
-        running = [subprocess.Popen(_command(job, sites_up_to), env=os.environ) for job in JOBS]  # noqa: S603
-        codes = [process.wait() for process in running]
-        if any(codes):
-            raise RuntimeError("a kernel could not be compiled; its message stands above")
-        _note(sites_up_to)
+    load(COMMON, sites_up_to)
+    missing = [job for job in jobs if _compiled(job) < widths(sites_up_to)]
+    running = [subprocess.Popen(_command(job, sites_up_to), env=os.environ) for job in missing]  # noqa: S603
+    codes = [process.wait() for process in running]
+    if any(codes):
+        raise RuntimeError("a kernel could not be compiled; its message stands above")
     return time.monotonic() - begin
 
 
@@ -86,39 +111,46 @@ def _command(job: str, sites_up_to: int) -> list[str]:
     return [sys.executable, "-m", "sweepmill_worker.warm", "--job", job, "--sites-up-to", str(sites_up_to)]
 
 
-def _mark() -> Path:
-    """Says how many widths are compiled for this kind of processor: a shared cache serves several kinds."""
-    return cache_directory() / f"compiled-{get_host_cpu_name()}"
+def _turn(job: str, number: int) -> AbstractContextManager[object]:
+    """Nobody waits for a lock to load what is there."""
+    if _compiled(job) >= number:
+        return nullcontext()
+    cache_directory().mkdir(parents=True, exist_ok=True)
+    return FileLock(cache_directory() / f"{job}.lock")
 
 
-def _all_compiled(sites_up_to: int) -> bool:
+@cache
+def _mark(job: str) -> Path:
+    """Says how many widths are compiled, of these very files, for this kind of processor.
+
+    numba takes a cached kernel only for the path and the time of change of the file it was compiled from.
+    """
+    files = "".join(f"{path}{path.stat().st_mtime_ns}" for path in kernel_sources())
+    return cache_directory() / f"{job}-{get_host_cpu_name()}-{hashlib.sha256(files.encode()).hexdigest()[:12]}"
+
+
+def _compiled(job: str) -> int:
     try:
-        return int(_mark().read_text()) >= len(_sizes(sites_up_to))
+        return int(_mark(job).read_text())
     except (OSError, ValueError):
-        return False
+        return 0
 
 
-def _note(sites_up_to: int) -> None:
-    if not _all_compiled(sites_up_to):
-        _mark().write_text(str(len(_sizes(sites_up_to))))
-
-
-def _lock() -> FileLock:
-    directory = cache_directory()
-    directory.mkdir(parents=True, exist_ok=True)
-    return FileLock(directory / "warm.lock")
+def _note(job: str, number: int) -> None:
+    if _compiled(job) < number:
+        _mark(job).write_text(str(number))
 
 
 def main() -> None:
     """Command line."""
     parser = argparse.ArgumentParser(description="Compile the kernels into the cache.")
     parser.add_argument("--sites-up-to", type=int, default=MAX_SITES, metavar="N")
-    parser.add_argument("--job", choices=JOBS, help=argparse.SUPPRESS)
+    parser.add_argument("--job", choices=JOBS, help="the kernels of this engine only")
     given = parser.parse_args()
     if given.job:
-        JOBS[given.job](given.sites_up_to)
+        warm(given.sites_up_to, [given.job])
         return
-    print(f"kernels ready in {compile_all(given.sites_up_to):.1f} s: {cache_directory()}")
+    print(f"kernels ready in {compile_ahead(given.sites_up_to):.1f} s: {cache_directory()}")
 
 
 if __name__ == "__main__":
