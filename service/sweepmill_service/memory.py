@@ -1,8 +1,9 @@
 """What a batch of a sweep may take of a worker's memory."""
 
+import re
 from typing import NamedTuple
 
-from sweepmill.ensemble import Ensemble
+from sweepmill.ensemble import PROGRAM, Ensemble
 from sweepmill.errors import Fault
 from sweepmill.sweep import Sweep
 from sweepmill_worker.memory import peak_bytes
@@ -16,15 +17,26 @@ class Largest(NamedTuple):
 
 
 def largest(sweep: Sweep) -> Largest:
-    """Over all ensembles of a sweep; those of one shape need the same."""
+    """Over all ensembles of a sweep; those of one shape, and one circuit but for its numbers, need the same.
+
+    Raises ValueError, naming the field, for an ensemble that its engine does not take.
+    """
     observations = [item.observation for item in sweep.observations]
-    shapes = {point.ensemble.shape: point.ensemble for point in sweep.points}
+    shapes = {(point.ensemble.shape, _steps(point.ensemble)): point.ensemble for point in sweep.points}
     return max((Largest(one, peak_bytes(one, observations)) for one in shapes.values()), key=lambda item: item.bytes)
 
 
+def _steps(ensemble: Ensemble) -> str:
+    """A circuit written as data without its numbers."""
+    return re.sub(r"-?\d[\d.e-]*", "", repr([ensemble.parameters.get(part) for part in PROGRAM]))
+
+
 def memory_fault(sweep: Sweep, limit: int) -> Fault | None:
-    """The fault of a sweep whose batches do not fit into a worker."""
-    found = largest(sweep)
+    """The fault of a sweep whose batches do not fit into a worker, or that no engine takes."""
+    try:
+        found = largest(sweep)
+    except ValueError as error:  # of an engine, naming the field
+        return Fault("circuit", str(error))
     if found.bytes <= limit:
         return None
     return Fault(

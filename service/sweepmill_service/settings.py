@@ -30,9 +30,11 @@ class ServerLimits(BaseModel):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    sites: int = Field(1024, ge=2)
-    cluster_sites: int = Field(1_000_000, ge=2, description="Sites of projective-ising, which has an engine of its own")
-    reference_sites: int = Field(64, ge=2, description="Sites with engine = 'reference'")
+    sites: int = Field(1024, ge=2, le=4096, description="Sites of one ensemble; its kernel takes no more than 4096")
+    cluster_sites: int = Field(
+        1_000_000, ge=2, le=2**20, description="Sites of projective-ising, which has its own engine"
+    )
+    reference_sites: int = Field(64, ge=2, le=1024, description="Sites with engine = 'reference'")
     layers: int = Field(100_000, ge=1)
     ensembles: int = Field(20_000, ge=1, description="Ensembles of one sweep")
     trajectories: int = Field(10_000_000, ge=1, description="Trajectories of one ensemble")

@@ -203,3 +203,10 @@ def test_a_batch_too_large_for_a_worker_is_refused(database: Path) -> None:
         problem = problem_of(api.http.post("/v1/sweeps", json=small(**circuit, observe=cuts)), 422)
         assert [fault["path"] for fault in problem.faults] == ["observe"]
         assert "67108864" in problem.faults[0]["message"]
+
+
+def test_what_no_engine_takes_is_refused_with_what_would_pass(database: Path) -> None:
+    with serving(reading_only(f"sqlite:///{database}", limits={"sites": 4096})) as api:
+        crowded = {"circuit__sites": 4096, "circuit__references": 8, "circuit__layers": 2}
+        problem = problem_of(api.http.post("/v1/sweeps", json=small(**crowded, observe=[{"quantity": "entropy"}])), 422)
+        assert problem.faults == [{"path": "circuit", "message": "sites: at most 4088 beside 8 references, got 4096"}]

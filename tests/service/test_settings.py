@@ -4,7 +4,10 @@ from pathlib import Path
 
 import pytest
 
-from sweepmill_service.settings import Settings, SettingsError, load_settings, masked_url
+from sweepmill_service.settings import ServerLimits, Settings, SettingsError, load_settings, masked_url
+from sweepmill_worker.clifford.engine import MAX_SITES
+from sweepmill_worker.clusters.engine import MAX_SITES as MAX_CLUSTER_SITES
+from sweepmill_worker.reference.state import MOST_QUBITS
 
 
 @pytest.fixture(autouse=True)
@@ -104,3 +107,9 @@ def test_the_example_of_the_deploy_folder_is_valid(monkeypatch: pytest.MonkeyPat
     example = Path(__file__).parents[2] / "deploy" / "settings.example.toml"
     monkeypatch.setenv("SWEEPMILL_SETTINGS", str(example))
     assert load_settings().limits.sites == 1024
+
+
+def test_limits_of_sites_end_where_the_engines_do() -> None:
+    fields = ServerLimits.model_json_schema()["properties"]
+    most = {name: fields[name]["maximum"] for name in ("sites", "cluster_sites", "reference_sites")}
+    assert most == {"sites": MAX_SITES, "cluster_sites": MAX_CLUSTER_SITES, "reference_sites": MOST_QUBITS // 2}
