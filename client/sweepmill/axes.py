@@ -13,6 +13,7 @@ from pydantic_core import PydanticCustomError
 SIGNIFICANT_DIGITS = 12
 LONGEST_RANGE = 100_000
 LARGEST_INTEGER = 2**53  # larger ones are not exact in JSON, so they cannot be part of a key
+MOST_PER_SITE = 1_000_000  # keeps products with a size exact in decimal arithmetic
 _CONTEXT = Context(prec=SIGNIFICANT_DIGITS)
 
 
@@ -47,6 +48,13 @@ def _strict_integer(value: Any) -> Any:
     return int(value)
 
 
+def _strict_flag(value: Any) -> Any:
+    if not isinstance(value, bool):
+        raise PydanticCustomError("flag", "must be true or false, got {value}", {"value": repr(value)})
+    return value
+
+
+Flag = Annotated[bool, BeforeValidator(_strict_flag)]
 Number = Annotated[float, BeforeValidator(_strict_number)]
 Integer = Annotated[int, BeforeValidator(_strict_integer)]
 

@@ -16,6 +16,7 @@ from sweepmill.times import AT_TAGS
 # Names of union members: pydantic puts them into locations, a reader never wrote them
 _TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | LANGUAGE_TAGS | set(QUANTITIES) | set(FAMILY_PARAMETERS)
 _UNION_MARKS = ("function-", "int", "PerSite", "PerSide")
+TOO_DEEP = Fault("", "the specification is nested too deep")
 
 
 def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
@@ -23,6 +24,8 @@ def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
     single = isinstance(raw.get("circuit"), Mapping)
     found: dict[Fault, None] = {}
     for item in error.errors(include_url=False):
+        if item["type"] in ("recursion_depth_exceeded", "recursion_loop"):
+            return [TOO_DEEP]
         path = path_of(item["loc"], single)
         found[Fault(f"{path}.family" if _of_family(item) else path, _message(item))] = None
     return list(found)
@@ -60,7 +63,7 @@ def _message(item: Any) -> str:
         return _bad_tag(context, given)
     if kind == "union_tag_not_found":
         return "is missing" if _of_family(item) else f"needs a field {context['discriminator']}"
-    if kind in ("number", "integer", "layers", "duplicate", "empty", KIND):
+    if kind in ("number", "integer", "flag", "layers", "duplicate", "empty", KIND):
         return str(item["msg"])
     wanted = item["msg"]
     for theirs, ours in (("Input should", "must"), ("String should", "must"), ("a valid tuple", "a list")):

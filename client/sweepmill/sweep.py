@@ -14,7 +14,7 @@ from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.errors import Fault, SpecificationError
 from sweepmill.families import CircuitBlock
 from sweepmill.families.block import Block
-from sweepmill.faults import faults_of
+from sweepmill.faults import TOO_DEEP, faults_of
 from sweepmill.identity import canonical, key_of
 from sweepmill.observation import Observation
 from sweepmill.stop import Stop
@@ -64,11 +64,18 @@ class Sweep(BaseModel):
 
     def __init__(self, **fields: Any) -> None:
         try:
+            faults = self._take(fields)
+        except RecursionError:
+            faults = [TOO_DEEP]
+        if faults:
+            raise SpecificationError(faults)
+
+    def _take(self, fields: Mapping[str, Any]) -> list[Fault]:
+        try:
             super().__init__(**fields)
         except ValidationError as error:
-            raise SpecificationError(faults_of(error, fields)) from None
-        if faults := self._misfits(isinstance(fields["circuit"], Mapping | Block)):
-            raise SpecificationError(faults[:MOST_FAULTS])
+            return faults_of(error, fields)
+        return self._misfits(isinstance(fields["circuit"], Mapping | Block))[:MOST_FAULTS]
 
     @classmethod
     def parse(cls, specification: Mapping[str, Any]) -> "Sweep":
@@ -88,6 +95,8 @@ class Sweep(BaseModel):
             data = json.loads(text) if path.suffix == ".json" else tomllib.loads(text)
         except ValueError as error:  # of the encoding, too
             raise SpecificationError([Fault("", f"{path.name} cannot be parsed: {error}")]) from None
+        except RecursionError:
+            raise SpecificationError([TOO_DEEP]) from None
         return cls.parse(data)
 
     @property

@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
 from pydantic_core import PydanticCustomError
 
-from sweepmill.axes import LARGEST_INTEGER, Number, NumberRange, nonempty, shape_tag
+from sweepmill.axes import LARGEST_INTEGER, MOST_PER_SITE, Number, NumberRange, nonempty, shape_tag
 
 
 class PerSite(BaseModel):
@@ -14,7 +14,7 @@ class PerSite(BaseModel):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    per_site: Annotated[Number, Field(gt=0)]
+    per_site: Annotated[Number, Field(gt=0, le=MOST_PER_SITE)]
 
 
 class PerSide(BaseModel):
@@ -22,7 +22,7 @@ class PerSide(BaseModel):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    per_side: Annotated[Number, Field(gt=0)]
+    per_side: Annotated[Number, Field(gt=0, le=MOST_PER_SITE)]
 
 
 def _plain_integer(value: Any, form: str) -> int:

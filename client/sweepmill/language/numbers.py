@@ -5,7 +5,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
 
-from sweepmill.axes import Integer, Number, nonempty
+from sweepmill.axes import Flag, Integer, Number, nonempty
 from sweepmill.language.refusal import keys_of, near, refuse, shown
 from sweepmill.language.tags import DISORDERS, NUMBER, PARAMETER, PROFILES
 
@@ -20,7 +20,7 @@ class Parameter(Part):
     """The value of a named parameter, or 1 minus it."""
 
     parameter: str
-    complement: bool = False
+    complement: Flag = False
 
 
 def _value_tag(value: Any) -> str:

@@ -5,7 +5,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, BeforeValidator, Discriminator, Field, Tag
 
-from sweepmill.axes import Integer, Number
+from sweepmill.axes import MOST_PER_SITE, Integer, Number
 from sweepmill.language.numbers import Part, Value
 from sweepmill.language.refusal import keys_of, near, refuse, shown
 from sweepmill.language.tags import COUNT, PLACES, WORD
@@ -19,7 +19,7 @@ WORDS = {"sites": 1, "bonds": 2, "bonds-from-0": 2, "bonds-from-1": 2}
 class CountPerSite(Part):
     """A number of places proportional to the number of sites."""
 
-    per_site: Annotated[Number, Field(gt=0)]
+    per_site: Annotated[Number, Field(gt=0, le=MOST_PER_SITE)]
 
 
 def _count_tag(value: Any) -> str:
@@ -117,6 +117,8 @@ def _known_form(value: Any) -> Any:
         refuse(f"must say where, got {shown(value)} ({_forms()})")
     table = {str(name).replace("-", "_"): inner for name, inner in value.items()}
     if len(table.keys() & PLACES.keys()) != 1:
+        if several := [name for name in table if name in PLACES]:
+            refuse(f"exactly one form is allowed, got {' and '.join(several)}")
         missed = next((near(name, PLACES) for name in table if near(name, PLACES)), "")
         refuse(f"must have exactly one form, got {shown(value)}{missed} ({_forms()})")
     return table

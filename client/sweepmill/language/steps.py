@@ -5,7 +5,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, Discriminator, Tag
 
-from sweepmill.axes import nonempty
+from sweepmill.axes import Flag, nonempty
 from sweepmill.language.gates import canonical_gate
 from sweepmill.language.numbers import Part, Rate
 from sweepmill.language.places import WIDEST_PLACE, On
@@ -39,7 +39,7 @@ class Apply(Part):
     on: On | None = None
     rate: Rate = 1
     fixed: Literal["trajectory", "ensemble"] | None = None
-    rotated: bool = False
+    rotated: Flag = False
 
 
 class Measure(Part):
@@ -48,8 +48,8 @@ class Measure(Part):
     measure: Annotated[str, BeforeValidator(_product)]
     on: On | None = None
     rate: Rate = 1
-    recorded: bool = True
-    forced: bool = False
+    recorded: Flag = True
+    forced: Flag = False
 
 
 def _true(value: Any) -> Any:
@@ -88,7 +88,7 @@ class Branch(Part):
     """One of several exclusive alternatives at a place."""
 
     weight: Rate
-    steps: "Layer"
+    steps: "Steps"
 
 
 class Choose(Part):
@@ -134,6 +134,12 @@ Step = Annotated[
 ]
 
 
+def _layer(value: Any) -> Any:
+    if isinstance(value, Mapping | BaseModel):
+        refuse("a layer is a list of steps: write repeat = [[ … ]]")
+    return _listed(value)
+
+
 def _listed(value: Any) -> Any:
     if not isinstance(value, list | tuple):
         refuse(f"must be a list, got {shown(value)}")
@@ -141,7 +147,8 @@ def _listed(value: Any) -> Any:
 
 
 Branches = Annotated[tuple[Branch, ...], BeforeValidator(_listed)]
-Layer = Annotated[tuple[Step, ...], BeforeValidator(_listed)]
+Steps = Annotated[tuple[Step, ...], BeforeValidator(_listed)]
+Layer = Annotated[tuple[Step, ...], BeforeValidator(_layer)]
 LayerList = Annotated[tuple[Layer, ...], BeforeValidator(_listed)]
 Branch.model_rebuild()
 Choose.model_rebuild()

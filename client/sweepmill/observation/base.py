@@ -5,6 +5,7 @@ from typing import Annotated, Any, ClassVar
 
 from pydantic import Field
 
+from sweepmill.axes import Flag
 from sweepmill.ensemble import Ensemble
 from sweepmill.identity import key_of
 from sweepmill.observation.engines import engine_fault
@@ -53,8 +54,8 @@ class BaseObservation(Strict):
 class Averageable(BaseObservation):
     """A quantity of regions of a chain."""
 
-    average_translations: bool = False
-    histogram: bool = False
+    average_translations: Flag = False
+    histogram: Flag = False
 
     def _region_fault(self, ensemble: Ensemble) -> Fault | None:
         if not self.average_translations:

@@ -4,7 +4,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field
 
-from sweepmill.axes import Integer
+from sweepmill.axes import Flag, Integer
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation.base import Averageable, BaseObservation
 from sweepmill.observation.regions import (
@@ -42,14 +42,14 @@ class GlobalEntropy(BaseObservation):
     """Entropy of the whole chain in bits."""
 
     quantity: Literal["global-entropy"]
-    histogram: bool = False
+    histogram: Flag = False
 
 
 class ReferenceEntropy(BaseObservation):
     """Entropy of all reference qubits in bits: what the chain still knows of them."""
 
     quantity: Literal["reference-entropy"]
-    histogram: bool = False
+    histogram: Flag = False
 
     def region_label(self) -> str:
         return "references"

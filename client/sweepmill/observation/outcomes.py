@@ -5,7 +5,7 @@ from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import AfterValidator, BeforeValidator, Field, model_validator
 
-from sweepmill.axes import Integer, nonempty
+from sweepmill.axes import Flag, Integer, nonempty
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation.base import BaseObservation
 from sweepmill.observation.regions import Fault, outside
@@ -16,7 +16,7 @@ class RecordBits(BaseObservation):
     """Random outcomes so far: the record of a Clifford circuit has probability 2^-record-bits."""
 
     quantity: Literal["record-bits"]
-    histogram: bool = False
+    histogram: Flag = False
 
 
 class OutcomeRandomness(BaseObservation):
@@ -25,7 +25,7 @@ class OutcomeRandomness(BaseObservation):
     COMPONENTS: ClassVar[int] = 2
 
     quantity: Literal["outcome-randomness"]
-    cumulative: bool = False
+    cumulative: Flag = False
 
 
 class PauliExpectation(BaseObservation):
@@ -34,7 +34,7 @@ class PauliExpectation(BaseObservation):
     quantity: Literal["pauli-expectation"]
     pauli: Annotated[str, Field(pattern="^[XYZ]+$")]
     sites: Annotated[tuple[Annotated[Integer, Field(ge=0)], ...], BeforeValidator(as_tuple), AfterValidator(nonempty)]
-    histogram: bool = False
+    histogram: Flag = False
 
     @model_validator(mode="before")
     @classmethod

@@ -2,6 +2,7 @@
 
 from typing import Literal
 
+from sweepmill.axes import Flag
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation.base import LATTICE, BaseObservation
 from sweepmill.observation.regions import CutOrSites, Fault, HalfOrSites, region_fault, region_label
@@ -37,7 +38,7 @@ class Negativity(BaseObservation):
 
     quantity: Literal["negativity"]
     region: CutOrSites = "half"
-    histogram: bool = False
+    histogram: Flag = False
 
     def region_label(self) -> str:
         return region_label(self.region)
