@@ -41,6 +41,7 @@ class ServerLimits(BaseModel):
     accumulator_bytes: int = Field(1_048_576, ge=1024, description="Totals of one ensemble and observation")
     program_values: int = Field(100_000, ge=10, description="Words and numbers of a circuit written as data")
     program_values_total: int = Field(2_000_000, ge=10, description="The same over all ensembles of one sweep")
+    compiled_places: int = Field(2_000_000, ge=1000, description="Places of a circuit in tables, each layer once")
     trajectory_seconds: float = Field(600.0, gt=0, description="Predicted seconds of one trajectory")
     worker_bytes: int = Field(1_073_741_824, ge=2**26, description="Memory that one batch adds to an idle worker")
     recompute_seconds: float = Field(30.0, gt=0, description="The same where a request recomputes it on demand")

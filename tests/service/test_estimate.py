@@ -8,6 +8,7 @@ from hypothesis import strategies as st
 
 from support.specs import small, transition
 from sweepmill.ensemble import Ensemble
+from sweepmill.errors import SpecificationError
 from sweepmill.sweep import Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
@@ -19,6 +20,9 @@ from sweepmill_service.plan.costs import (
     seconds_of,
     what_would_pass,
 )
+from sweepmill_service.programs import too_many_places
+from sweepmill_service.settings import ServerLimits
+from sweepmill_service.specification import accepted
 from sweepmill_service.store import Store
 from sweepmill_service.stored import expand
 
@@ -126,3 +130,24 @@ def test_the_sizes_said_to_pass_do_and_the_next_ones_do_not(kind: str) -> None:
         < factor * seconds_of(Work(kind, sites + 1, 4 * sites + 4))
     )
     assert what_would_pass(work, factor, 1e-9) == (0, 0)
+
+
+def test_layers_that_prepare_the_state_cost_as_much_as_others() -> None:
+    plain = Ensemble.of("hybrid-clifford", sites=64, measurement_rate=0.1, layers=100)
+    scrambled = Ensemble.of("hybrid-clifford", sites=64, measurement_rate=0.1, layers=100, scrambling_layers=900)
+    layer = [{"apply": "uniform-clifford", "on": "bonds"}]
+    short = Ensemble.of("layered", sites=64, layers=100, repeat=[layer])
+    long = Ensemble.of("layered", sites=64, layers=100, repeat=[layer], before=[layer] * 500, after=[layer] * 400)
+    for one, other in ((plain, scrambled), (short, long)):
+        ratio = default_seconds_per_trajectory(other) / default_seconds_per_trajectory(one)
+        assert ratio == pytest.approx(10, rel=0.05)
+
+
+def test_a_circuit_too_long_to_compile_is_refused_before_it_is(store: Store) -> None:
+    long = {"circuit__scrambling_layers": 100_000, "circuit__sites": 1024}
+    with pytest.raises(SpecificationError, match="compiles circuits of at most 2000000 places") as error:
+        accepted(small(**long, observe=[{"quantity": "entropy"}]), store, ServerLimits())
+    assert [fault.path for fault in error.value.faults] == ["circuit"]
+    wave = {"profile": "quasi-periodic", "by": "layer", "mean": 0.5, "amplitude": 0.1, "wavelength": 1.618, "phase": 0}
+    slow = Ensemble.of("layered", sites=8, layers=20_000, repeat=[[{"measure": "Z", "on": "sites", "rate": wave}]])
+    assert too_many_places([slow], ServerLimits()) is not None

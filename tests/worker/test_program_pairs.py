@@ -2,6 +2,7 @@
 
 from collections import Counter
 from functools import cache
+from typing import Any
 
 import numpy as np
 import pytest
@@ -73,3 +74,17 @@ def test_matchings_have_the_probabilities_of_the_rule(boundary: str, exponent: f
     likely += [tuple(np.sum(rare, axis=0))] if sum(chance for chance, _ in rare) >= 5 else []
     statistic = sum((seen - mean) ** 2 / mean for mean, seen in likely)
     assert statistic < chi2.isf(1e-4, max(len(likely) - 1, 1))
+
+
+def test_an_exponent_beyond_decimal_arithmetic_is_refused_and_the_largest_still_pairs_everybody() -> None:
+    with pytest.raises(ValueError, match="exponents are 0 to 64"):
+        compile_program(form_of(1e7))
+    program = compile_program(form_of(64))
+    for k in range(200):
+        (layer,) = operations(program, (1, 2), k)
+        assert sorted(layer.rows[:, 2:4].ravel().tolist()) == list(range(8))
+
+
+def form_of(exponent: float) -> dict[str, Any]:
+    step = {"apply": "uniform-clifford", "on": {"random_pairs": {"exponent": exponent}}}
+    return {"sites": 8, "layers": 1, "repeat": [[step]]}

@@ -7,6 +7,8 @@ the engine's own arrays and the totals, all bounded by the limits of a server.
 from collections.abc import Sequence
 from typing import Any, Final
 
+import numpy as np
+
 from sweepmill.coordinates import accumulator_bytes
 from sweepmill.ensemble import Ensemble
 from sweepmill.times import Reading, readings
@@ -60,7 +62,8 @@ def engine_bytes(ensemble: Ensemble) -> int:
     program = program_of(ensemble)
     if engine is SIGNED:
         return 4 * (2 * program.total + SIGNED_SPARE) ** 2  # bit matrices of the tableau, its inverse and copies
-    tables = program.places.nbytes + 8 * program.words + OPERATION_BYTES * program.most_operations
+    tables = sum(table.nbytes for table in program.tables if isinstance(table, np.ndarray))
+    tables += program.places.nbytes + 8 * program.words + OPERATION_BYTES * program.most_operations
     return column_bytes(program.total + 1, program.mixed) + 2 * tables
 
 

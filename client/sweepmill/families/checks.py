@@ -4,7 +4,7 @@ from collections.abc import Callable
 from typing import Any, NamedTuple
 
 from sweepmill.families.fields import PerSide, PerSite
-from sweepmill.language.rates import SMALLEST_RATE
+from sweepmill.language.rates import SMALLEST_RATE, exponent_fault
 
 
 class Check(NamedTuple):
@@ -35,10 +35,6 @@ def _rate(value: float) -> str | None:
     return None
 
 
-def _exponent(value: float) -> str | None:
-    return f"pairs are drawn with weight r^-exponent, exponent at least 0, got {value}" if value < 0 else None
-
-
 def _layers(value: Any) -> str | None:
     return None if isinstance(value, PerSite | PerSide) else _integer(value, 1)
 
@@ -53,7 +49,7 @@ RANGES: dict[str, Callable[[Any], str | None]] = {
     "height": _side,
     "measurement_rate": _rate,
     "bond_rate": _rate,
-    "exponent": _exponent,
+    "exponent": exponent_fault,
     "references": lambda value: _integer(value, 0),
     "scrambling_layers": lambda value: _integer(value, 0),
     "layers": _layers,

@@ -12,7 +12,7 @@ from sweepmill.language.geometry import covered, on_form, place_faults, word_of
 from sweepmill.language.numbers import ListProfile
 from sweepmill.language.places import Blocks, RandomPairs, Sublattice
 from sweepmill.language.program import Program, parameters_in, visits
-from sweepmill.language.rates import rate_faults, rate_form, value_of, weight_faults
+from sweepmill.language.rates import exponent_fault, rate_faults, rate_form, value_of, weight_faults
 from sweepmill.language.steps import Apply, Branch, Choose, Measure
 
 
@@ -89,8 +89,7 @@ class Resolution:
         if not isinstance(on, RandomPairs):
             return on_form(on, self.chain.sites, self.chain.periodic)
         exponent = value_of(on.random_pairs.exponent, self.given)
-        if exponent < 0:
-            message = f"pairs are drawn with weight r^-exponent, exponent at least 0, got {exponent:g}"
+        if message := exponent_fault(exponent):
             self.faults.append(Fault(f"{path}.random_pairs.exponent", message))
         return on_form(on, self.chain.sites, self.chain.periodic, exponent)
 

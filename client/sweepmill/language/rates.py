@@ -12,8 +12,17 @@ from sweepmill.axes import normal_number
 from sweepmill.errors import Fault
 from sweepmill.language.numbers import Parameter
 
+LARGEST_EXPONENT = 64  # of weights r^-exponent: beyond, pairs are nearest neighbors for every practical purpose
+STEEPEST_DENSITY = (-0.9, 100)  # exponents of power-law disorder that are resolved to 2^-32 in reasonable time
 SMALLEST_RATE = 1e-6  # the kernel's resolution, 2.3e-10, is 2e-4 of it
 MOST_COMBINATIONS = 100_000  # of sites and layers at which weights by profile are looked at
+
+
+def exponent_fault(exponent: float) -> str | None:
+    """What is wrong with the exponent of random pairs."""
+    if 0 <= exponent <= LARGEST_EXPONENT:
+        return None
+    return f"pairs are drawn with weight r^-exponent, exponent 0 to {LARGEST_EXPONENT}, got {exponent:g}"
 
 
 def value_of(value: Any, given: Mapping[str, float]) -> float:
@@ -126,8 +135,11 @@ def _shape_faults(form: Any, path: str) -> Iterator[Fault]:
     if form.get("disorder") == "two-valued" and not 0 <= form["weight"] <= 1:
         yield Fault(f"{path}.weight", f"is a probability between 0 and 1, got {form['weight']:g}")
     if form.get("disorder") == "power-law":
-        if form["exponent"] <= -1:
-            yield Fault(f"{path}.exponent", f"a density needs an exponent above -1, got {form['exponent']:g}")
+        lowest, highest = STEEPEST_DENSITY
+        if not lowest <= form["exponent"] <= highest:
+            yield Fault(
+                f"{path}.exponent", f"exponents of a density are {lowest} to {highest}, got {form['exponent']:g}"
+            )
         if form["largest"] <= 0:
             yield Fault(f"{path}.largest", f"must be greater than 0, got {form['largest']:g}")
 

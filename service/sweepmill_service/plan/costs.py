@@ -1,7 +1,6 @@
 """Predicted cost of a trajectory before anything of its ensemble was measured."""
 
-from collections.abc import Callable, Mapping
-from math import log2
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any, Final, NamedTuple
 
 from sweepmill.ensemble import LAYERED, Ensemble
@@ -24,8 +23,8 @@ def _local(work: Work) -> float:
 
 
 def _channels(work: Work) -> float:
-    """The same with paired logical rows, twice as many."""
-    return 2.5 * _local(work)
+    """The same with paired logical rows, twice as many, most of them short."""
+    return 1.3 * _local(work)
 
 
 def _spread(work: Work) -> float:
@@ -34,12 +33,12 @@ def _spread(work: Work) -> float:
 
 
 def _clusters(work: Work) -> float:
-    return 8e-9 * work.sites * work.layers
+    return 1.2e-8 * work.sites * work.layers
 
 
 def _signed(work: Work) -> float:
-    """The signed simulation: microseconds per operation, and tableaus quadratic in the sites at every reading."""
-    return work.sites * work.layers * 2e-5 * (1 + log2(work.sites))
+    """The signed simulation: a part per layer, a part per operation."""
+    return work.layers * (5e-4 + 2e-5 * work.sites)
 
 
 # Core-seconds on one core of a server processor, within a small factor from 8 sites to 1024 and rates from 0.02 to 0.5.
@@ -64,27 +63,37 @@ BRICKWORK: Final = 1.5
 
 
 def work_of(ensemble: Ensemble) -> Work:
-    """The work of one trajectory. Reference qubits count as sites."""
-    sites = ensemble.sites + ensemble.references
-    if ensemble.parameters["engine"] == "reference":
-        return Work("signed", sites, ensemble.layers, _density(ensemble))
+    """The work of one trajectory. Reference qubits count as sites, layers that prepare the state as layers."""
+    sites, layers = ensemble.sites + ensemble.references, ensemble.layers + _prepared(ensemble)
     if ensemble.family == LAYERED:
-        return Work(_layered_kind(ensemble), sites, ensemble.layers, _density(ensemble))
+        return Work(_layered_kind(ensemble), sites, layers, _density(ensemble, layers))
     kind = FAMILY_KINDS[ensemble.family]
     if kind == "local" and ensemble.parameters["initial_state"] == "mixed":
         kind = "channels"
-    return Work(kind, sites, ensemble.layers)
+    return Work("signed" if ensemble.parameters["engine"] == "reference" else kind, sites, layers)
 
 
-def _density(ensemble: Ensemble) -> float:
-    if ensemble.family != LAYERED:
-        return 1.0
-    layers = ensemble.parameters["repeat"]
-    places = sum(number_of_places(step["on"], ensemble.sites, ensemble.periodic) for layer in layers for step in layer)
-    return places / len(layers) / ensemble.sites / BRICKWORK
+def _prepared(ensemble: Ensemble) -> int:
+    """Layers before those that are numbered."""
+    return len(ensemble.parameters.get("before", ())) + int(ensemble.parameters.get("scrambling_layers", 0))
+
+
+def _density(ensemble: Ensemble, layers: int) -> float:
+    """Of a circuit written as data: places of all its layers, over those of as many layers of brickwork."""
+    values = ensemble.parameters
+    cycles, rest = divmod(int(values["layers"]), len(values["repeat"]))
+    places = cycles * _places(ensemble, values["repeat"]) + _places(ensemble, values["repeat"][:rest])
+    places += _places(ensemble, values["before"]) + _places(ensemble, values["after"])
+    return places / layers / ensemble.sites / BRICKWORK
+
+
+def _places(ensemble: Ensemble, layers: Sequence[Any]) -> int:
+    return sum(number_of_places(step["on"], ensemble.sites, ensemble.periodic) for layer in layers for step in layer)
 
 
 def _layered_kind(ensemble: Ensemble) -> str:
+    if ensemble.parameters["engine"] == "reference":
+        return "signed"
     steps = [step for layer in ensemble.parameters["repeat"] for step in layer]
     if any(_far(step["on"], ensemble.sites) for step in steps):
         return "spread"

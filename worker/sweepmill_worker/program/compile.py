@@ -72,7 +72,7 @@ def compile_program(form: Mapping[str, Any]) -> Program:
     return _compile(json.dumps(form, sort_keys=True))
 
 
-@lru_cache(maxsize=64)
+@lru_cache(maxsize=16)
 def _compile(text: str) -> Program:
     form = json.loads(text)
     parts = [form.get("before", []), form["repeat"], form.get("after", [])]

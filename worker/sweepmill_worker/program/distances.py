@@ -6,6 +6,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
+from sweepmill.language.rates import LARGEST_EXPONENT
 from sweepmill_worker.program.exact import power
 
 CUMULATED_BITS: Final = 50
@@ -28,7 +29,12 @@ def offsets(exponent: Fraction, sites: int, periodic: bool) -> NDArray[np.uint64
 
 
 def scaled(exponent: Fraction, sites: int) -> tuple[NDArray[np.uint64], NDArray[np.int64]]:
-    """uint64[sites] mantissas of 32 bits and int64[sites] shifts: weight = mantissa / 2**shift; entry 0 is unused."""
+    """uint64[sites] mantissas of 32 bits and int64[sites] shifts: weight = mantissa / 2**shift; entry 0 is unused.
+
+    Raises ValueError for an exponent whose weights are beyond decimal arithmetic.
+    """
+    if not 0 <= exponent <= LARGEST_EXPONENT:
+        raise ValueError(f"random_pairs: exponents are 0 to {LARGEST_EXPONENT}, got {float(exponent):g}")
     mantissas, shifts = np.zeros(sites, np.uint64), np.zeros(sites, np.int64)
     for distance in range(1, sites):
         value = power(Fraction(distance), -exponent)

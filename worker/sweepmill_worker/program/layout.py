@@ -48,6 +48,8 @@ class Layout:
         self.sequence: list[list[int]] = []
         self.blocks: list[NDArray[np.uint32]] = []
         self.ahead: list[NDArray[np.uint32]] = []
+        self.done = 0
+        """Blocks so far."""
         self.largest = 0
 
     def add(self, numbers: Sequence[int], lists: Sequence[Segments], apart: bool) -> None:
@@ -62,7 +64,7 @@ class Layout:
             begin = end
 
     def _tile(self, lists: Sequence[Segments], numbers: Sequence[int]) -> None:
-        done = sum(map(len, self.blocks))
+        done = self.done
         fill_from, base = done, self.base
         total = sum(segments.size for segments in lists) // 4
         for ahead, (segments, number) in enumerate(zip(lists, numbers, strict=True)):
@@ -70,6 +72,7 @@ class Layout:
             self.blocks.append(segments.counters())
             self.ahead.append(np.full(segments.size // 4, ahead, np.uint32))
             base += segments.size
+        self.done += total
         self.largest = max(self.largest, base - self.base)
 
 

@@ -3,6 +3,7 @@
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import lru_cache
 from typing import Any
 
 from sweepmill_worker.program.exact import exact
@@ -28,6 +29,10 @@ class Where:
 
 def where(on: Any, sites: int, periodic: bool) -> Where:
     """Raises ValueError for what does not fit the chain."""
+    return _named(on, sites, periodic) if isinstance(on, str) else _where(on, sites, periodic)
+
+
+def _where(on: Any, sites: int, periodic: bool) -> Where:
     if isinstance(on, Mapping) and "random_pairs" in on:
         return _pairs(on["random_pairs"], sites)
     if isinstance(on, Mapping) and "random_sequential" in on:
@@ -37,6 +42,10 @@ def where(on: Any, sites: int, periodic: bool) -> Where:
     places = _fixed(on, sites, periodic)
     _check(places, sites)
     return Where(len(places[0]) if places else 1, len(places), fixed=places)
+
+
+_named = lru_cache(maxsize=64)(_where)
+"""Thousands of layers may act on the same bonds."""
 
 
 def _pairs(rule: Mapping[str, Any], sites: int) -> Where:
