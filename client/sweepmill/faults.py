@@ -10,12 +10,25 @@ from sweepmill.ensemble import FAMILY_PARAMETERS
 from sweepmill.errors import Fault
 from sweepmill.language.refusal import KIND, near
 from sweepmill.language.tags import LANGUAGE_TAGS
-from sweepmill.observation import QUANTITIES, REGION_TAGS
+from sweepmill.observation import NAME_PATTERN, PAULI_PATTERN, QUANTITIES, REGION_TAGS
 from sweepmill.times import AT_TAGS
 
 # Names of union members: pydantic puts them into locations, a reader never wrote them
 _TAGS = SHAPE_TAGS | AT_TAGS | REGION_TAGS | LANGUAGE_TAGS | set(QUANTITIES) | set(FAMILY_PARAMETERS)
+KEY_MARK = "[key]"  # stands behind a key of a table that is itself at fault
 _UNION_MARKS = ("function-", "int", "PerSite", "PerSide")
+_PLAIN = {
+    "model_type": "must be a table of fields",
+    "model_attributes_type": "must be a table of fields",
+    "dict_type": "must be a table of fields",
+    "string_type": "must be text",
+    "string_unicode": "must be text",
+    "invalid_key": "the name of a field must be text",
+}
+_PATTERNS = {
+    NAME_PATTERN: "must be up to 64 letters, digits and the signs _ . and -, a letter first",
+    PAULI_PATTERN: "must be a product of the letters X, Y and Z",
+}
 TOO_DEEP = Fault("", "the specification is nested too deep")
 
 
@@ -40,6 +53,8 @@ def path_of(location: tuple[int | str, ...], single_circuit: bool) -> str:
     """``("circuit", 0, "sites", "axis-list", 2)`` as ``circuit.sites[2]``."""
     path = ""
     for depth, part in enumerate(location):
+        if part == KEY_MARK:
+            continue
         if isinstance(part, int):
             path += "" if single_circuit and depth == 1 and location[0] == "circuit" else f"[{part}]"
         elif _named_by_user(location, depth) or (part not in _TAGS and not part.startswith(_UNION_MARKS)):
@@ -65,10 +80,27 @@ def _message(item: Any) -> str:
         return "is missing" if _of_family(item) else f"needs a field {context['discriminator']}"
     if kind in ("number", "integer", "flag", "layers", "duplicate", "empty", KIND):
         return str(item["msg"])
-    wanted = item["msg"]
+    return f"{_wanted(kind, item['msg'], context)}, got {_short(given)}"
+
+
+def _wanted(kind: str, message: str, context: Mapping[str, Any]) -> str:
+    """What would pass, in words of a specification rather than of the validating library."""
+    if kind in _PLAIN:
+        return _PLAIN[kind]
+    if kind == "too_short":
+        return f"needs at least {_items(context['min_length'])}"
+    if kind == "too_long":
+        return f"takes at most {_items(context['max_length'])}"
+    if kind == "string_pattern_mismatch":
+        return _PATTERNS[context["pattern"]]
+    wanted = message
     for theirs, ours in (("Input should", "must"), ("String should", "must"), ("a valid tuple", "a list")):
         wanted = wanted.replace(theirs, ours)
-    return f"{_decapitalized(wanted)}, got {_short(given)}"
+    return _decapitalized(wanted)
+
+
+def _items(number: int) -> str:
+    return f"{number} item" if number == 1 else f"{number} items"
 
 
 def _bad_tag(context: Mapping[str, Any], given: Any) -> str:

@@ -1,8 +1,10 @@
 """Bodies of the HTTP interface, shared by the service that writes them and the client that reads them."""
 
-from typing import Any, Literal
+from typing import Annotated, Any, Literal
 
-from pydantic import BaseModel, ConfigDict, Field
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field
+
+from sweepmill.language.refusal import printable
 
 SweepState = Literal["waiting", "sampling", "settled", "withdrawn", "stuck"]
 MetBy = Literal["error", "cap"]
@@ -93,7 +95,7 @@ class Amendment(Message):
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    label: str | None = Field(None, max_length=200)
+    label: Annotated[str, AfterValidator(printable)] | None = Field(None, max_length=200)
     priority: int | None = Field(None, ge=-10, le=10)
 
 

@@ -16,7 +16,9 @@ from sweepmill.families import CircuitBlock
 from sweepmill.families.block import Block
 from sweepmill.faults import TOO_DEEP, faults_of
 from sweepmill.identity import canonical, key_of
+from sweepmill.language.refusal import printable
 from sweepmill.observation import Observation
+from sweepmill.observation.blame import blamed
 from sweepmill.stop import Stop
 from sweepmill.times import as_tuple
 
@@ -59,7 +61,7 @@ class Sweep(BaseModel):
     circuit: Annotated[tuple[CircuitBlock, ...], BeforeValidator(_blocks), AfterValidator(nonempty)]
     observe: Annotated[tuple[Observation, ...], BeforeValidator(as_tuple), AfterValidator(nonempty)]
     stop: Stop
-    label: Annotated[str, Field(max_length=200)] | None = None
+    label: Annotated[str, Field(max_length=200), AfterValidator(printable)] | None = None
     priority: Annotated[Integer, Field(ge=-10, le=10)] = 0
 
     def __init__(self, **fields: Any) -> None:
@@ -184,14 +186,19 @@ class Sweep(BaseModel):
                 shape = ensemble.shape
                 if shape not in shapes:
                     shapes.add(shape)
-                    self._check_observations(ensemble, path + where, faults)
+                    self._check_observations(ensemble, path, where, faults)
                 if len(faults) > MOST_FAULTS:
                     return
 
-    def _check_observations(self, ensemble: Ensemble, where: str, faults: list[Fault]) -> None:
+    def _check_observations(self, ensemble: Ensemble, path: str, size: str, faults: list[Fault]) -> None:
+        """Faults of observations with the field of the circuit they do not fit; equal ones once."""
         for index, item in enumerate(self.observe):
-            if fault := item.fault(ensemble):
-                faults.append(Fault(f"observe[{index}].{fault[0]}", f"{fault[1]} ({where})"))
+            if misfit := item.fault(ensemble):
+                field = blamed(misfit, item.quantity, ensemble, size.removeprefix("."))
+                message = misfit[1] if field is None else f"{misfit[1]} ({path}.{field})"
+                fault = Fault(f"observe[{index}].{misfit[0]}", message)
+                if fault not in faults:
+                    faults.append(fault)
 
 
 def _expansion(block: Block) -> Expansion:

@@ -232,6 +232,9 @@ def test_a_sweep_from_submission_to_files(served: Run, tmp_path: Path) -> None:
     printed = served("table", key[:10], "--name", "entropy").out.splitlines()
     assert printed[0] == f"Table of sweep {key[:12]}: 2 rows, axes sites"
     assert len(printed) == 4
+    unnamed = served("table", key[:10], "--name", "foo")
+    assert (unnamed.code, unnamed.out) == (2, "")
+    assert "no observation 'foo': one of" in unnamed.err
 
     path = tmp_path / "table.parquet"
     assert served("table", key, "-o", path) == (0, f"{path}\n", "")

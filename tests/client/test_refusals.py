@@ -77,3 +77,93 @@ def test_two_forms_of_places_at_once_are_named() -> None:
     places = {"random_sequential": {"count": 3, "of": "sites"}, "blocks": {"width": 1}}
     found = faults(layered([{"depolarise": True, "on": places}]))
     assert found == {f"{STEP}.on": "exactly one form is allowed, got random_sequential and blocks"}
+
+
+ISING: dict[str, Any] = {"family": "projective-ising", "sites": 8, "layers": 8}
+LATTICE: dict[str, Any] = {"family": "hybrid-clifford-square", "width": 4, "height": 4, "measurement_rate": 0.1}
+
+
+@pytest.mark.parametrize("rate", [0.9999999, 1 - 1e-12, 1e-7])
+def test_a_bond_rate_and_its_complement_are_resolved_alike(rate: float) -> None:
+    assert "0 or at least 1e-06" in faults(specification(**ISING, bond_rate=rate))["circuit.bond_rate"]
+
+
+@pytest.mark.parametrize("rate", [0, 1e-6, 0.5, 0.999999, 1])
+def test_bond_rates_that_are_resolved_pass(rate: float) -> None:
+    assert faults(specification(**ISING, bond_rate=rate)) == {}
+
+
+def test_the_complement_of_a_parameter_is_resolved_no_finer() -> None:
+    rest = {"parameter": "p", "complement": True}
+    assert "0 or at least 1e-06" in faults(layered([Z | {"rate": rest}], parameters={"p": 0.9999999}))[f"{STEP}.rate"]
+
+
+@pytest.mark.parametrize(
+    ("spec", "path", "message"),
+    [
+        (layered([{"choose": [3], "on": "sites"}]), f"{STEP}.choose[0]", "must be a table of fields, got 3"),
+        (
+            layered([{"depolarise": True, "on": {"sublattice": 3}}]),
+            f"{STEP}.on.sublattice",
+            "must be a table of fields, got 3",
+        ),
+        (layered([Z], parameters=3), "circuit.parameters", "must be a table of fields, got 3"),
+        (layered([Z], parameters={5: 1}), "circuit.parameters[5]", "must be text, got 5"),
+        (layered([Z | {9: 5}]), f"{STEP}[9]", "the name of a field must be text, got 9"),  # type: ignore[list-item]
+        (layered([Z | {"rate": {"parameter": 5}}]), f"{STEP}.rate.parameter", "must be text, got 5"),
+        (
+            layered([Z | {"rate": {"disorder": "two-valued", "values": [1], "weight": 0.5}}]),
+            f"{STEP}.rate.values",
+            "needs at least 2 items, got [1]",
+        ),
+        (observed(at={"average_over": 3}), "observe[0].at.average_over", "must be a table of fields, got 3"),
+        (observed() | {"observe": [5]}, "observe[0]", "must be a table of fields, got 5"),
+        (
+            observed(name="9"),
+            "observe[0].name",
+            "must be up to 64 letters, digits and the signs _ . and -, a letter first, got '9'",
+        ),
+        (
+            observed(quantity="pauli-expectation", pauli="A", sites=[1]),
+            "observe[0].pauli",
+            "must be a product of the letters X, Y and Z, got 'A'",
+        ),
+        (
+            observed(quantity="mutual-information", regions=[[1], [2], [3]]),
+            "observe[0].regions",
+            "takes at most 2 items, got ([1], [2], [3])",
+        ),
+        (chain() | {"stop": 5}, "stop", "must be a table of fields, got 5"),
+        (chain() | {"label": 5}, "label", "must be text, got 5"),
+        (chain() | {"label": b"\xff"}, "label", "must be text, got b'\\xff'"),
+        (chain() | {"label": "a\nb"}, "label", "must be of printable characters, got 'a\\nb'"),
+        (chain() | {"label": "\x1b[2J"}, "label", "must be of printable characters, got '\\x1b[2J'"),
+    ],
+)
+def test_faults_are_in_words_of_a_specification(spec: dict[str, Any], path: str, message: str) -> None:
+    assert faults(spec) == {path: message}
+
+
+@pytest.mark.parametrize(
+    ("circuit", "observation", "place"),
+    [
+        (CHAIN | {"boundary": "open"}, {"quantity": "entropy", "average_translations": True}, "circuit.boundary"),
+        (LATTICE, {"quantity": "generator-lengths"}, "circuit.family"),
+        (LATTICE, {"quantity": "reference-entropy"}, "circuit.family"),
+        (CHAIN, {"quantity": "reference-entropy"}, "circuit.references"),
+        (CHAIN | {"engine": ["auto"]}, {"quantity": "pauli-expectation", "pauli": "Z", "sites": [0]}, "circuit.engine"),
+        (CHAIN | {"engine": ["auto", "reference"]}, {"quantity": "cluster-order"}, "circuit.family"),
+        (ISING | {"bond_rate": 0.5, "engine": "reference"}, {"quantity": "cluster-order"}, "circuit.engine"),
+        (CHAIN, {"quantity": "entropy", "at": [9]}, "circuit.layers"),
+        (CHAIN | {"sites": [16, 10]}, {"quantity": "tripartite-information"}, "circuit.sites[1]"),
+        (LATTICE, {"quantity": "entropy", "region": [16]}, "circuit.width"),
+        (CHAIN, {"quantity": "mutual-information", "regions": [[1], [1]]}, None),
+    ],
+)
+def test_a_misfit_names_the_field_of_the_circuit_once(
+    circuit: dict[str, Any], observation: dict[str, Any], place: str | None
+) -> None:
+    with pytest.raises(SpecificationError) as refused:
+        Sweep.parse(specification(**circuit) | {"observe": [observation]})
+    (fault,) = refused.value.faults
+    assert fault.message.endswith(f" ({place})") if place else "(" not in fault.message

@@ -171,7 +171,7 @@ def test_faults_between_fields_name_what_would_pass() -> None:
             "observe[1].name",
             "names another observation",
         ),
-        ({"observe": [{"quantity": "entropy", "name": "9"}]}, "observe[0].name", "pattern"),
+        ({"observe": [{"quantity": "entropy", "name": "9"}]}, "observe[0].name", "a letter first"),
         ({"stop__standard_error": [{"of": "j", "below": 0.1}]}, "stop.standard_error[0].of", "one of entropy, i3"),
         ({"stop__standard_error": [{"of": "i3", "below": 0}]}, "stop.standard_error[0].below", "greater than 0"),
         ({"stop__budget": -1}, "stop.budget", "greater than 0"),

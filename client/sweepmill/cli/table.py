@@ -49,4 +49,7 @@ def table(
             print(sweep.download(output))
             return
         whole = sweep.table()
+    known = sorted(set(whole.values("name")))
+    if known and name is not None and name not in known:
+        raise typer.BadParameter(f"no observation {name!r}: one of {', '.join(known)}")
     print((whole if name is None else whole.where(name=name)).text())

@@ -1,6 +1,7 @@
 """What values of circuit fields pass: alone, and together."""
 
 from collections.abc import Callable
+from decimal import Decimal
 from typing import Any, NamedTuple
 
 from sweepmill.families.fields import PerSide, PerSite
@@ -35,6 +36,14 @@ def _rate(value: float) -> str | None:
     return None
 
 
+def _bond_rate(value: float) -> str | None:
+    """X is measured at the complement, which is resolved no finer."""
+    rest = 1 - Decimal(repr(value))
+    if 0 < rest < Decimal(repr(SMALLEST_RATE)):
+        return f"1 - bond_rate is a rate, too: 0 or at least {SMALLEST_RATE:g} (it is resolved to 2^-32), got {rest:g}"
+    return _rate(value)
+
+
 def _layers(value: Any) -> str | None:
     return None if isinstance(value, PerSite | PerSide) else _integer(value, 1)
 
@@ -48,7 +57,7 @@ RANGES: dict[str, Callable[[Any], str | None]] = {
     "width": _side,
     "height": _side,
     "measurement_rate": _rate,
-    "bond_rate": _rate,
+    "bond_rate": _bond_rate,
     "exponent": exponent_fault,
     "references": lambda value: _integer(value, 0),
     "scrambling_layers": lambda value: _integer(value, 0),

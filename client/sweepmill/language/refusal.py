@@ -28,6 +28,13 @@ def keys_of(value: Any) -> set[str]:
     return {str(name) for name in value} if isinstance(value, Mapping) else set()
 
 
+def printable(text: str) -> str:
+    """Text that a terminal or a log shows as it is: no control characters, no line breaks."""
+    if not text.isprintable():
+        refuse(f"must be of printable characters, got {shown(text)}")
+    return text
+
+
 def shown(value: Any) -> str:
     """A value in a message, cut where it is long."""
     text = repr(value)

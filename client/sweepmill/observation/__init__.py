@@ -13,13 +13,14 @@ from sweepmill.observation.entropies import (
     ReferenceEntropy,
     TripartiteInformation,
 )
-from sweepmill.observation.outcomes import OutcomeRandomness, PauliExpectation, RecordBits
+from sweepmill.observation.outcomes import PAULI_PATTERN, OutcomeRandomness, PauliExpectation, RecordBits
 from sweepmill.observation.regions import REGION_TAGS, sites_label
 from sweepmill.observation.structure import ClusterOrder, GeneratorLengths, Negativity, SiteEnvironmentInformation
 from sweepmill.revisions import QUANTITY_REVISIONS
 
 __all__ = [
     "NAME_PATTERN",
+    "PAULI_PATTERN",
     "QUANTITIES",
     "REGION_TAGS",
     "ClusterOrder",

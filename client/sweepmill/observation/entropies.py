@@ -18,6 +18,8 @@ from sweepmill.observation.regions import (
     sites_label,
 )
 
+NOT_ANTIPODAL = "only antipodal regions have a size"
+
 
 class Entropy(Averageable):
     """Entropy S of a region in bits.
@@ -73,7 +75,7 @@ class MutualInformation(Averageable):
     def _region_fault(self, ensemble: Ensemble) -> Fault | None:
         if isinstance(self.regions, tuple):
             if self.size is not None:
-                return "size", "only antipodal regions have a size"
+                return "size", NOT_ANTIPODAL
             return regions_fault(self.regions, ensemble) or super()._region_fault(ensemble)
         return self._antipodal_fault(ensemble.sites) or super()._region_fault(ensemble)
 

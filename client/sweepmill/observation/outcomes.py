@@ -11,6 +11,9 @@ from sweepmill.observation.base import BaseObservation
 from sweepmill.observation.regions import Fault, outside
 from sweepmill.times import as_tuple
 
+PAULI_PATTERN = "^[XYZ]+$"
+TWICE = "a site stands twice in this list"
+
 
 class RecordBits(BaseObservation):
     """Random outcomes so far: the record of a Clifford circuit has probability 2^-record-bits."""
@@ -32,7 +35,7 @@ class PauliExpectation(BaseObservation):
     """Expectation of a product of Pauli matrices, letter i of ``pauli`` on ``sites[i]``: -1, 0 or 1."""
 
     quantity: Literal["pauli-expectation"]
-    pauli: Annotated[str, Field(pattern="^[XYZ]+$")]
+    pauli: Annotated[str, Field(pattern=PAULI_PATTERN)]
     sites: Annotated[tuple[Annotated[Integer, Field(ge=0)], ...], BeforeValidator(as_tuple), AfterValidator(nonempty)]
     histogram: Flag = False
 
@@ -57,6 +60,6 @@ class PauliExpectation(BaseObservation):
         if len(self.pauli) != len(self.sites):
             return "pauli", f"needs a letter for each site, got {len(self.pauli)} for {len(self.sites)} sites"
         if len(set(self.sites)) < len(self.sites):
-            return "sites", "a site stands twice in this list"
+            return "sites", TWICE
         message = outside(self.sites, ensemble.sites)
         return ("sites", message) if message else None

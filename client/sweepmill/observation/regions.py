@@ -53,6 +53,7 @@ QuartersOrThree = Annotated[
 
 Fault = tuple[str, str]
 """Field and message."""
+NOT_DISJOINT = "the regions must be disjoint"
 
 
 def region_label(region: str | tuple[int, ...]) -> str:
@@ -90,5 +91,5 @@ def regions_fault(regions: tuple[tuple[int, ...], ...], ensemble: Ensemble) -> F
         if message := outside(region, ensemble.sites):
             return f"regions[{index}]", message
     if len({site for region in regions for site in region}) < sum(map(len, regions)):
-        return "regions", "the regions must be disjoint"
+        return "regions", NOT_DISJOINT
     return None
