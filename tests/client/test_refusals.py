@@ -167,3 +167,46 @@ def test_a_misfit_names_the_field_of_the_circuit_once(
         Sweep.parse(specification(**circuit) | {"observe": [observation]})
     (fault,) = refused.value.faults
     assert fault.message.endswith(f" ({place})") if place else "(" not in fault.message
+
+
+P: dict[str, Any] = {"parameter": "p"}
+REST: dict[str, Any] = {"parameter": "p", "complement": True}
+
+
+@pytest.mark.parametrize(
+    ("step", "value", "path", "end"),
+    [
+        (Z | {"rate": P}, 1.5, f"{STEP}.rate", "between 0 and 1, got 1.5 (p = 1.5)"),
+        (Z | {"rate": REST}, 1.5, f"{STEP}.rate", "between 0 and 1, got -0.5 (1 - p, p = 1.5)"),
+        (
+            Z | {"rate": {"disorder": "uniform", "from": 0, "to": P}},
+            1.5,
+            f"{STEP}.rate.to",
+            "between 0 and 1, got 1.5 (p = 1.5)",
+        ),
+        (
+            {"choose": [{"weight": P, "steps": []}, {"weight": 1, "steps": []}], "on": "sites"},
+            -1,
+            f"{STEP}.choose[0].weight",
+            "at least 0, got -1 (p = -1)",
+        ),
+        (
+            {"apply": "uniform-clifford", "on": {"random_pairs": {"exponent": P}}},
+            -1,
+            f"{STEP}.on.random_pairs.exponent",
+            "got -1 (p = -1)",
+        ),
+    ],
+)
+def test_a_value_out_of_range_is_traced_to_its_parameter(
+    step: dict[str, Any], value: float, path: str, end: str
+) -> None:
+    found = faults(layered([step], parameters={"p": [0.5, value]}))
+    assert list(found) == [path]
+    assert found[path].endswith(end)
+
+
+@pytest.mark.parametrize("name", ["a\nb", "\x1b[2J", "\x00"])
+def test_the_name_of_a_circuit_is_printable(name: str) -> None:
+    wanted = f"must be of printable characters, got {name!r}"
+    assert faults(layered([Z], name=name)) == {"circuit.name": wanted}

@@ -7,6 +7,7 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Dis
 from pydantic_core import PydanticCustomError
 
 from sweepmill.axes import LARGEST_INTEGER, MOST_PER_SITE, Number, NumberRange, nonempty, shape_tag
+from sweepmill.language.refusal import printable
 
 
 class PerSite(BaseModel):
@@ -89,6 +90,7 @@ EngineAxis = Annotated[
     Annotated[Engine, Tag("axis-value")] | Annotated[tuple[Engine, ...], AfterValidator(nonempty), Tag("axis-list")],
     Discriminator(shape_tag),
 ]
+Title = Annotated[str, Field(min_length=1, max_length=64), AfterValidator(printable)]
 
 
 def resolved_layers(layers: Any, extent: int) -> int:

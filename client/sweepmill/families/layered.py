@@ -11,7 +11,7 @@ from sweepmill.axes import IntegerAxis, NumberAxis, located_values, nonempty
 from sweepmill.ensemble import FAMILY_PARAMETERS, Ensemble
 from sweepmill.errors import Fault
 from sweepmill.families.block import Block, Values, column
-from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite
+from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite, Title
 from sweepmill.frozen import FrozenTable, freeze
 from sweepmill.language.forms import Chain, Resolution, written_form
 from sweepmill.language.grammar import grammar_faults, literal_faults
@@ -46,7 +46,7 @@ class Layered(Block):
     repeat: Annotated[LayerList, AfterValidator(nonempty)]
     after: LayerList = ()
     parameters: dict[str, NumberAxis] = Field(default_factory=dict)
-    name: Annotated[str, Field(min_length=1, max_length=64)] | None = None
+    name: Title | None = None
 
     def ensembles(self, path: str, faults: list[Fault]) -> Iterator[tuple[str, Ensemble]]:
         """Every valid ensemble of the block with the path to blame; faults found on the way are appended."""

@@ -3,13 +3,14 @@
 Plain data with one spelling: places folded, parameters resolved to numbers, defaults left out.
 """
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from typing import Any
 
 from sweepmill.errors import Fault
 from sweepmill.language.gates import RANDOM_GATES
 from sweepmill.language.geometry import covered, on_form, place_faults, word_of
 from sweepmill.language.numbers import ListProfile
+from sweepmill.language.origin import traced
 from sweepmill.language.places import Blocks, RandomPairs, Sublattice
 from sweepmill.language.program import Program, parameters_in, visits
 from sweepmill.language.rates import exponent_fault, rate_faults, rate_form, value_of, weight_faults
@@ -90,18 +91,24 @@ class Resolution:
             return on_form(on, self.chain.sites, self.chain.periodic)
         exponent = value_of(on.random_pairs.exponent, self.given)
         if message := exponent_fault(exponent):
-            self.faults.append(Fault(f"{path}.random_pairs.exponent", message))
+            where = f"{path}.random_pairs.exponent"
+            self._note([Fault(where, message)], {where: on.random_pairs.exponent})
         return on_form(on, self.chain.sites, self.chain.periodic, exponent)
 
     def _rate(self, rate: Any, path: str) -> dict[str, Any]:
         form = rate_form(rate, self.given)
-        self.faults.extend(rate_faults(form, path))
+        self._note(rate_faults(form, path), {path: rate})
         return {} if form == 1 else {"rate": form}
+
+    def _note(self, faults: Iterable[Fault], parts: Mapping[str, Any]) -> None:
+        """Keep the faults of some parts of the circuit as written, by path."""
+        self.faults.extend(traced(faults, parts, self.given))
 
     def _branches(self, step: Choose, path: str) -> list[dict[str, Any]]:
         weights = [rate_form(branch.weight, self.given) for branch in step.choose]
         paths = [f"{path}.choose[{index}].weight" for index in range(len(weights))]
-        self.faults.extend(weight_faults(weights, paths, f"{path}.choose", self.chain.sites))
+        written = {where: branch.weight for where, branch in zip(paths, step.choose, strict=True)}
+        self._note(weight_faults(weights, paths, f"{path}.choose", self.chain.sites), written)
         return [
             {"weight": weight, "steps": self._steps(branch.steps, f"{path}.choose[{index}].steps")}
             for index, (weight, branch) in enumerate(zip(weights, step.choose, strict=True))

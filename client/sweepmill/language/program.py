@@ -62,9 +62,15 @@ def _steps(steps: tuple[Any, ...], path: str, on: Any, on_path: str, inside: boo
 
 def parameters_in(value: Any, path: str) -> Iterator[tuple[str, str]]:
     """Path and name of every parameter that a piece of the language mentions."""
+    for where, part in parameter_values(value, path):
+        yield f"{where}.parameter", part.parameter
+
+
+def parameter_values(value: Any, path: str) -> Iterator[tuple[str, Parameter]]:
+    """The same with the path of the value that is a parameter's, or 1 minus it."""
     for where, part in _parts(value, path):
         if isinstance(part, Parameter):
-            yield f"{where}.parameter", part.parameter
+            yield where, part
 
 
 def disorders_in(value: Any) -> int:
