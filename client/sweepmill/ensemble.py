@@ -126,7 +126,12 @@ class Ensemble:
     @property
     def layers(self) -> int:
         """Number of layers that can be read: all but those of ``before``."""
-        return int(self.parameters["layers"]) + len(self.parameters.get("after", ()))
+        return self.repeated + len(self.parameters.get("after", ()))
+
+    @property
+    def repeated(self) -> int:
+        """Number of layers that unit cells are made of: those of ``layers`` without those of ``after``."""
+        return int(self.parameters["layers"])
 
     @property
     def cell(self) -> int:
@@ -152,7 +157,7 @@ class Ensemble:
         return sum(number_of_places(on, self.sites, self.periodic) for on in places)
 
     @property
-    def shape(self) -> tuple[str, str, int, int, int, int, bool]:
+    def shape(self) -> tuple[str, str, int, int, int, int, int, bool]:
         """What decides which observations can be read off, and their coordinates."""
         engine = str(self.parameters.get("engine", "auto"))
-        return self.family, engine, self.sites, self.references, self.layers, self.cell, self.periodic
+        return self.family, engine, self.sites, self.references, self.layers, self.repeated, self.cell, self.periodic

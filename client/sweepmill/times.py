@@ -126,6 +126,18 @@ def readings(at: Any, layers: int, cell: int = 2) -> tuple[Reading, ...]:
     return _series(tuple(range(at.every, layers + 1, at.every)), length)
 
 
+def check_cells(at: Any, times: tuple[Reading, ...], repeated: int) -> None:
+    """Raise ValueError where a unit cell reaches beyond the ``repeated`` layers, into those of ``after``."""
+    if at == "end" or isinstance(at, tuple) or getattr(at, "single_layers", False):
+        return
+    name = "the last cell" if at == "last-cell" else "a unit cell"
+    single = "" if isinstance(at, AverageOver) or at == "last-cell" else ", or single_layers = true"
+    _need(
+        max(time.layers[-1] for time in times) <= repeated,
+        f'{name} would mix layers of `after` with the circuit: use at = "end" or a list of layers{single}',
+    )
+
+
 def _need(condition: bool, message: str) -> None:
     if not condition:
         raise ValueError(message)

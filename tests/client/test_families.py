@@ -77,14 +77,14 @@ def test_every_scalar_field_may_be_an_axis(family: str) -> None:
 
 def test_sizes_cells_boundaries_and_references() -> None:
     shapes = {family: ensembles(block(family))[0].shape[2:] for family in BLOCKS}
-    assert shapes == {  # sites, references, layers, cell, periodic
-        "hybrid-clifford": (8, 0, 32, 2, True),
-        "hybrid-clifford-square": (16, 0, 16, 4, True),
-        "hybrid-clifford-long-range": (8, 0, 32, 2, True),
-        "projective-ising": (9, 0, 36, 2, True),
-        "edge-bath": (7, 0, 28, 2, False),
-        "rotated-clifford": (8, 0, 5, 2, False),
-        "layered": (8, 0, 32, 1, True),
+    assert shapes == {  # sites, references, layers, those repeated, cell, periodic
+        "hybrid-clifford": (8, 0, 32, 32, 2, True),
+        "hybrid-clifford-square": (16, 0, 16, 16, 4, True),
+        "hybrid-clifford-long-range": (8, 0, 32, 32, 2, True),
+        "projective-ising": (9, 0, 36, 36, 2, True),
+        "edge-bath": (7, 0, 28, 28, 2, False),
+        "rotated-clifford": (8, 0, 5, 5, 2, False),
+        "layered": (8, 0, 32, 32, 1, True),
     }
     assert ensembles(block("rotated-clifford", ends="ring"))[0].periodic
     assert ensembles(block("hybrid-clifford", references=3))[0].references == 3

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from support.circuits import GATES, Z, ensembles, layered, only, specification, step
+from support.circuits import GATES, Z, ensembles, faults, layered, only, specification, step
 from sweepmill.ensemble import Ensemble
 from sweepmill.frozen import FrozenTable
 from sweepmill.identity import canonical, key_of
@@ -129,6 +129,13 @@ def test_layers_before_are_not_counted_and_layers_after_are() -> None:
     swap = {"swap_in": "reference", "on": {"sublattice": {"every": 3}}}
     (ensemble,) = ensembles(layered([GATES], [Z], before=[[swap], [GATES]], after=[[Z]], layers=6))
     assert (ensemble.layers, ensemble.cell, ensemble.references) == (7, 2, 3)
+
+
+def test_the_last_cell_is_not_read_where_layers_follow_the_circuit() -> None:
+    spec = layered([GATES, Z], after=[[Z]]) | {"observe": [{"quantity": "record-bits"}]}
+    assert 'use at = "end" or a list of layers' in faults(spec)["observe[0].at"]
+    assert faults(spec | {"observe": [{"quantity": "record-bits", "at": [4, 5]}]}) == {}
+    assert faults(layered([GATES, Z]) | {"observe": [{"quantity": "record-bits"}]}) == {}
 
 
 def test_references_of_every_swap_count() -> None:

@@ -2,7 +2,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from sweepmill.times import AverageOver, Every, LogSpaced, Reading, Window, readings
+from sweepmill.times import AverageOver, Every, LogSpaced, Reading, Window, check_cells, readings
 
 
 def test_the_last_cell_is_the_last_two_layers() -> None:
@@ -82,3 +82,33 @@ def test_log_spaced_layers_are_distinct_and_inside_the_circuit(points: int, laye
     assert ends[0] == 2
     assert ends[-1] == layers
     assert len(ends) <= points
+
+
+@pytest.mark.parametrize(
+    "at", ["end", (1, 9), Every(every=3, single_layers=True), LogSpaced(log_spaced=3, single_layers=True)]
+)
+def test_single_layers_of_after_are_read(at: object) -> None:
+    check_cells(at, readings(at, 9), repeated=8)
+
+
+@pytest.mark.parametrize(
+    ("at", "words"),
+    [
+        (
+            "last-cell",
+            'the last cell would mix layers of `after` with the circuit: use at = "end" or a list of layers$',
+        ),
+        (Every(every=3), "a unit cell would mix .* or single_layers = true$"),
+        (LogSpaced(log_spaced=3), "a unit cell would mix"),
+        (AverageOver(average_over=Window(last=0.5)), "or a list of layers$"),
+    ],
+)
+def test_a_unit_cell_does_not_reach_into_after(at: object, words: str) -> None:
+    times = readings(at, 9)
+    check_cells(at, times, repeated=9)
+    with pytest.raises(ValueError, match=words):
+        check_cells(at, times, repeated=8)
+
+
+def test_cells_before_after_are_read() -> None:
+    check_cells(Every(every=4), readings(Every(every=4), 9), repeated=8)

@@ -1,10 +1,12 @@
 """Random circuits written as data, with every kind of step, place, rate and gate that the language has."""
 
 import random
+import re
 from collections.abc import Callable
 from typing import Any
 
 from sweepmill.ensemble import Ensemble
+from sweepmill.errors import SpecificationError
 from sweepmill.language.gates import GATES, ONE_SITE, RANDOM_GATES
 from sweepmill.sweep import Sweep
 
@@ -25,8 +27,30 @@ def random_ensemble(seed: int, sites: int, layers: int) -> Ensemble:
         "repeat": [writer.framed(), *(writer.layer("repeat") for _ in range(writer.draw.randint(0, 2)))],
         "after": [writer.layer("after") for _ in range(writer.draw.randint(0, 2))],
     }
-    sweep = Sweep.parse({"circuit": circuit, "observe": [{"quantity": "global-entropy"}], "stop": {"trajectories": 1}})
-    return sweep.points[0].ensemble
+    return _parsed(circuit).points[0].ensemble
+
+
+def _parsed(circuit: dict[str, Any]) -> Sweep:
+    """Outcomes that may not be forced are left to chance."""
+    observed = [{"quantity": "global-entropy", "at": "end"}]
+    spec = {"circuit": circuit, "observe": observed, "stop": {"trajectories": 1}}
+    try:
+        return Sweep.parse(spec)
+    except SpecificationError as error:
+        refused = [path for path, _ in error.faults if path.endswith(".forced")]
+        if len(refused) < len(error.faults):
+            raise
+    for path in refused:
+        del _step_at(spec, path)["forced"]
+    return Sweep.parse(spec)
+
+
+def _step_at(spec: Any, path: str) -> Step:
+    """The step that a path such as circuit.repeat[0][1].forced leads to."""
+    for name in re.findall(r"\w+", path.removesuffix(".forced")):
+        spec = spec[int(name) if name.isdigit() else name]
+    step: Step = spec
+    return step
 
 
 class Writer:

@@ -1,7 +1,7 @@
 """Circuits written as data."""
 
 import re
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from functools import cached_property
 from typing import Annotated, Any, Literal
 
@@ -14,9 +14,10 @@ from sweepmill.families.block import Block, Values, column
 from sweepmill.families.fields import BoundaryAxis, LayeredStateAxis, LayersAxis, PerSite, Title
 from sweepmill.frozen import FrozenTable, freeze
 from sweepmill.language.forms import Chain, Resolution, written_form
+from sweepmill.language.frame import forced_faults
 from sweepmill.language.grammar import grammar_faults, literal_faults
-from sweepmill.language.program import Program
-from sweepmill.language.steps import LayerList
+from sweepmill.language.program import Program, visits
+from sweepmill.language.steps import LayerList, Measure
 
 MOST_NOTED = 200  # faults of values, more than anybody is shown
 _NAME = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,63}")
@@ -33,8 +34,13 @@ TAKEN = frozenset(
 class Layered(Block):
     """A circuit as lists of steps: ``before`` once, ``repeat`` in turn for ``layers`` layers, ``after`` once.
 
-    Rates may name ``parameters``, which may be axes. Layers of ``before`` are not counted, those of ``after`` follow
-    the others. A ``name`` tells the circuits of several blocks apart, in the column ``circuit`` of the table.
+    Rates may name ``parameters``, which may be axes. A ``name`` tells the circuits of several blocks apart, in the
+    column ``circuit`` of the table.
+
+    Layers are numbered from 1 through ``repeat`` to ``layers``, and on through ``after``: its first is layer
+    ``layers`` + 1. Layers of ``before`` cannot be read; a profile by layer counts them from 1 on their own. Where
+    ``after`` is not empty, unit cells that would reach into it are not read: ``at`` is "end", a list of layers, or a
+    series of single layers. A place takes the value that a profile by site has at its first site.
     """
 
     family: Literal["layered"]
@@ -61,11 +67,7 @@ class Layered(Block):
         """What is wrong with the circuit at every value of the parameters."""
         chains = self._chains()
         misplaced = [fault for chain in chains for fault in chain.place_faults(self.program, path)]
-        found = [*self._name_faults(path), *grammar_faults(self.program, self.parameters, path), *misplaced]
-        yield from found
-        if not found:
-            for chain in chains:
-                yield from chain.forced_faults(self.program, path)
+        yield from (*self._name_faults(path), *grammar_faults(self.program, self.parameters, path), *misplaced)
 
     @cached_property
     def program(self) -> Program:
@@ -105,7 +107,7 @@ class Layered(Block):
         if at not in self._resolved:
             self._resolved[at] = self._resolve(Chain(*at[:2]), given, path, faults)
         program = self._resolved[at]
-        if program is None:
+        if program is None or not self._possible(program, (*at, int(values["layers"])), path, faults):
             return None
         plain = Ensemble.of(self.family, **values, **program)
         named = {} if self.name is None else {"circuit": self.name}
@@ -122,9 +124,26 @@ class Layered(Block):
         program = resolution.program(self.program, path)
         if not resolution.faults:
             return freeze(program)
-        if len(faults) < MOST_NOTED:
-            faults.extend(fault for fault in dict.fromkeys(resolution.faults) if fault not in faults)
+        _note(resolution.faults, faults)
         return None
+
+    def _possible(self, program: Any, at: tuple[Any, ...], path: str, faults: list[Fault]) -> bool:
+        """Whether every outcome that the circuit forces has a chance; ``at`` is where it is resolved, layers last."""
+        if not self._forces:
+            return True
+        if at not in self._forced:
+            self._forced[at] = forced_faults(program, at[0], at[1], at[-1], path)
+        _note(self._forced[at], faults)
+        return not self._forced[at]
+
+    @cached_property
+    def _forces(self) -> bool:
+        return any(isinstance(visit.step, Measure) and visit.step.forced for visit in visits(self.program, ""))
+
+    @cached_property
+    def _forced(self) -> dict[tuple[Any, ...], tuple[Fault, ...]]:
+        """Faults of forced steps, by size, boundary, values and layers."""
+        return {}
 
     def normal_form(self, cap: int) -> dict[str, Any]:
         """The block with its circuit as written, synonyms folded, and the values of its parameters."""
@@ -133,3 +152,8 @@ class Layered(Block):
         given = {name: values[0] if len(values) == 1 else values for name, values in parameters.items()}
         called = {} if self.name is None else {"name": self.name}
         return super().normal_form(cap) | called | written | ({"parameters": given} if given else {})
+
+
+def _note(found: Sequence[Fault], faults: list[Fault]) -> None:
+    if len(faults) < MOST_NOTED:
+        faults.extend(fault for fault in dict.fromkeys(found) if fault not in faults)

@@ -7,14 +7,13 @@ from collections.abc import Iterable, Iterator, Mapping
 from typing import Any
 
 from sweepmill.errors import Fault
-from sweepmill.language.gates import RANDOM_GATES
-from sweepmill.language.geometry import covered, on_form, place_faults, word_of
+from sweepmill.language.geometry import on_form, place_faults, word_of
 from sweepmill.language.numbers import ListProfile
 from sweepmill.language.origin import traced
 from sweepmill.language.places import Blocks, RandomPairs, Sublattice
 from sweepmill.language.program import Program, parameters_in, visits
 from sweepmill.language.rates import exponent_fault, rate_faults, rate_form, value_of, weight_faults
-from sweepmill.language.steps import Apply, Branch, Choose, Measure
+from sweepmill.language.steps import Branch, Choose
 
 
 class Chain:
@@ -29,29 +28,6 @@ class Chain:
         for visit in visits(program, path):
             if not visit.inside:
                 yield from place_faults(visit.on, visit.on_path, self.sites, self.periodic)
-
-    def forced_faults(self, program: Program, path: str) -> Iterator[Fault]:
-        """Outcomes may be forced only where random gates make both outcomes of every sign pattern equally likely.
-
-        The places must be without faults.
-        """
-        forced = [v for v in visits(program, path) if isinstance(v.step, Measure) and v.step.forced]
-        if not forced:
-            return
-        framed = frozenset[int]().union(
-            *(covered(v.on, self.sites, self.periodic) for v in visits(program, path) if _gives_frame(v.step))
-        )
-        for visit in forced:
-            if bare := covered(visit.on, self.sites, self.periodic) - framed:
-                yield Fault(
-                    f"{visit.path}.forced",
-                    f"no random gate acts on site {min(bare)}, so nothing makes its signs random and the forced "
-                    "outcome may be impossible",
-                )
-
-
-def _gives_frame(step: Any) -> bool:
-    return isinstance(step, Apply) and step.apply in RANDOM_GATES and step.fixed != "ensemble" and step.rate != 0
 
 
 class Resolution:

@@ -154,11 +154,6 @@ def _pairs_form(on: RandomPairs, sites: int, exponent: float) -> dict[str, Any]:
     return form | ({"exponent": exponent} if exponent else {})
 
 
-def covered(on: Any, sites: int, periodic: bool) -> frozenset[int]:
-    """Sites that places without faults touch, or may touch."""
-    return frozenset(site for place in listed(on_form(on, sites, periodic), sites, periodic) for site in place)
-
-
 def number_of_places(form: Any, sites: int, periodic: bool) -> int:
     """How many places a layer handles."""
     if isinstance(form, Mapping) and "random_sequential" in form:

@@ -43,7 +43,10 @@ class Apply(Part):
 
 
 class Measure(Part):
-    """A Pauli product; ``recorded = false`` is dephasing, ``forced = true`` conditions on a possible outcome."""
+    """A Pauli product; ``recorded = false`` is dephasing, ``forced = true`` conditions on a possible outcome.
+
+    Later outcomes, and the probability of the record, are conditional on the forced ones, which are not counted.
+    """
 
     measure: Annotated[str, BeforeValidator(_product)]
     on: On | None = None

@@ -11,7 +11,7 @@ from sweepmill.identity import key_of
 from sweepmill.observation.engines import engine_fault
 from sweepmill.observation.regions import Fault
 from sweepmill.revisions import QUANTITY_REVISIONS
-from sweepmill.times import At, Strict, readings
+from sweepmill.times import At, Strict, check_cells, readings
 
 NAME_PATTERN = r"^[A-Za-z][A-Za-z0-9_.-]{0,63}$"
 
@@ -42,7 +42,7 @@ class BaseObservation(Strict):
     def fault(self, ensemble: Ensemble) -> Fault | None:
         """Field and message if this observation cannot be read off that ensemble."""
         try:
-            readings(self.at, ensemble.layers, ensemble.cell)
+            check_cells(self.at, readings(self.at, ensemble.layers, ensemble.cell), ensemble.repeated)
         except ValueError as error:
             return "at", str(error)
         return engine_fault(self.quantity, ensemble) or self._region_fault(ensemble)

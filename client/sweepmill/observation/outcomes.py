@@ -16,7 +16,11 @@ TWICE = "a site stands twice in this list"
 
 
 class RecordBits(BaseObservation):
-    """Random outcomes so far: the record of a Clifford circuit has probability 2^-record-bits."""
+    """Random outcomes so far: the record of a Clifford circuit has probability 2^-record-bits.
+
+    Every recorded outcome counts given the earlier ones, forced ones included, which do not count themselves: where
+    outcomes are forced, the probability of the record is conditional on them.
+    """
 
     quantity: Literal["record-bits"]
     histogram: Flag = False
