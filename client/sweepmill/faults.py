@@ -40,7 +40,7 @@ def faults_of(error: ValidationError, raw: Mapping[str, Any]) -> list[Fault]:
         if item["type"] in ("recursion_depth_exceeded", "recursion_loop"):
             return [TOO_DEEP]
         path = path_of(item["loc"], single)
-        found[Fault(f"{path}.family" if _of_family(item) else path, _message(item))] = None
+        found[Fault(f"{path}.family" if _of_family(item) else path, message_of(item))] = None
     return list(found)
 
 
@@ -66,7 +66,8 @@ def _named_by_user(location: tuple[int | str, ...], depth: int) -> bool:
     return depth > 1 and location[depth - 1] == "parameters"
 
 
-def _message(item: Any) -> str:
+def message_of(item: Any) -> str:
+    """One of pydantic's errors in words of a specification."""
     kind, given, context = item["type"], item.get("input"), item.get("ctx", {})
     if kind == "missing":
         return "is missing"

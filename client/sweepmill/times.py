@@ -10,7 +10,7 @@ from typing import Annotated, Any, Literal, NamedTuple
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag
 from pydantic_core import PydanticCustomError
 
-from sweepmill.axes import Integer, Number, nonempty
+from sweepmill.axes import Flag, Integer, Number, nonempty
 
 MOST_READINGS = 100_000
 ADJACENT = 2  # default of a window's `every`: omitted from keys, so it stays what it was before there were longer cells
@@ -26,14 +26,14 @@ class Every(Strict):
     """A series of unit-cell means (or single layers) at n, 2n, 3n, …"""
 
     every: Annotated[Integer, Field(ge=1)]
-    single_layers: bool = False
+    single_layers: Flag = False
 
 
 class LogSpaced(Strict):
     """A series of at most n unit cells (or single layers), evenly spaced in the logarithm of the layer."""
 
     log_spaced: Annotated[Integer, Field(ge=2, le=1000)]
-    single_layers: bool = False
+    single_layers: Flag = False
 
 
 class Window(Strict):

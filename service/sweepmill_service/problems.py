@@ -13,6 +13,7 @@ from starlette.exceptions import HTTPException
 from starlette.responses import JSONResponse, Response
 
 from sweepmill.errors import Fault, SpecificationError
+from sweepmill.faults import message_of
 from sweepmill.messages import Problem
 from sweepmill_service.store.errors import AmbiguousKey, ShortKey, UnknownKey
 
@@ -80,9 +81,10 @@ def _from_http(error: HTTPException) -> Refusal:
 
 def _from_validation(error: RequestValidationError) -> Refusal:
     """Parameters or a body that do not fit the interface."""
-    faults = [Fault(_path(fault["loc"]), fault["msg"]) for fault in error.errors()]
     if any(fault["type"] == "json_invalid" for fault in error.errors()):
-        return Refusal(HTTPStatus.BAD_REQUEST, "the body is not JSON", faults)
+        unread = [Fault(_path(fault["loc"]), fault["msg"]) for fault in error.errors()]
+        return Refusal(HTTPStatus.BAD_REQUEST, "the body is not JSON", unread)
+    faults = [Fault(_path(fault["loc"]), message_of(fault)) for fault in error.errors()]
     return Refusal(HTTPStatus.UNPROCESSABLE_ENTITY, "the request does not fit the interface", faults)
 
 

@@ -61,6 +61,8 @@ def test_what_is_true_or_false_is_not_spelled_otherwise(value: Any) -> None:
     assert faults(layered([GATES | {"rotated": value}])) == {f"{STEP}.rotated": message}
     complement = {"parameter": "p", "complement": value}
     assert faults(layered([Z | {"rate": complement}], parameters={"p": 0.1})) == {f"{STEP}.rate.complement": message}
+    every = {"every": 2, "single_layers": value}
+    assert faults(observed(at=every)) == {"observe[0].at.single_layers": message}
     assert faults(observed(histogram=value)) == {"observe[0].histogram": message}
     assert faults(observed(average_translations=value)) == {"observe[0].average_translations": message}
     assert faults(observed(quantity="outcome-randomness", cumulative=value)) == {"observe[0].cumulative": message}
