@@ -93,7 +93,7 @@ def _wanted(kind: str, message: str, context: Mapping[str, Any]) -> str:
     if kind == "too_long":
         return f"takes at most {_items(context['max_length'])}"
     if kind == "string_pattern_mismatch":
-        return _PATTERNS[context["pattern"]]
+        return _PATTERNS.get(context["pattern"], f"must be text of the form {context['pattern']}")
     wanted = message
     for theirs, ours in (("Input should", "must"), ("String should", "must"), ("a valid tuple", "a list")):
         wanted = wanted.replace(theirs, ours)
