@@ -1,0 +1,60 @@
+"""Which points a critical point is fitted to: a fixed order of choices, the first that describes its points is taken.
+
+All sizes first; then without the smallest, and so on down to two. For every choice of sizes the widest window in the
+scaling variable first, then narrower ones around the place just fitted. The polynomial is cubic as long as enough
+points are left, so neither window nor degree is picked for the value or the error it gives.
+"""
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from sweepmill.analysis.arrays import Mask
+from sweepmill.analysis.fitted import Fitted
+from sweepmill.analysis.points import Points
+from sweepmill.analysis.scaling import Scaling
+from sweepmill.analysis.shapes import Polynomial
+
+DESCRIBES = 0.05  # least p-value: a right fit goes on to a narrower window in one case of twenty
+_NARROWER = 0.75
+_SPARE = 2  # degrees of freedom at least
+_PLACES = 3  # per size at least
+
+
+@dataclass(frozen=True, eq=False)
+class Choice:
+    """The points that were chosen, `keep` [n] of all, with their fit; `reach` is the largest |u| among them."""
+
+    keep: Mask
+    fitted: Fitted
+    reach: float
+
+
+def choose(points: Points, acceptable: float = DESCRIBES) -> Choice | None:
+    """The first choice whose fit describes its points; None if there is none."""
+    sizes = points.distinct_sizes()
+    for smallest in sizes[: len(sizes) - 1]:
+        for choice in _windows(points, points.sizes >= smallest):
+            if not choice.fitted.faults(acceptable):
+                return choice
+    return None
+
+
+def _windows(points: Points, keep: Mask) -> Iterator[Choice]:
+    while (form := _form(points.taken(keep))) is not None:
+        fitted = Fitted.of(points.taken(keep), form)
+        u = np.abs(fitted.frame.scaled(fitted.solution.theta, points.x, points.sizes))
+        reach = float(u[keep].max())
+        yield Choice(keep, fitted, reach)
+        narrower = keep & (u <= _NARROWER * reach)
+        keep = narrower
+
+
+def _form(points: Points) -> Scaling | None:
+    """The form these points can test: degree 3, or 2 where they are few; None where they are too few for that."""
+    if len(points) == 0 or len(points.distinct_sizes()) < 2:
+        return None
+    counts = [len(np.unique(points.x[points.sizes == size])) for size in points.distinct_sizes()]
+    forms = (Scaling(Polynomial(degree)) for degree in (3, 2))
+    return next((one for one in forms if len(points) >= one.parameters() + _SPARE and min(counts) >= _PLACES), None)
