@@ -33,6 +33,7 @@ from sweepmill.errors import (
     Unreachable,
     WaitTimeout,
 )
+from sweepmill.folds import Folds
 from sweepmill.presets import layered_form
 from sweepmill.remote import RemoteSweep
 from sweepmill.retry import Retry
@@ -47,6 +48,7 @@ __all__ = [
     "Client",
     "Ensemble",
     "Fault",
+    "Folds",
     "KeyMismatch",
     "MissingExtra",
     "NotAKey",

@@ -5,12 +5,15 @@ import sys
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
+from urllib.parse import quote
 
 from sweepmill import messages
 from sweepmill.errors import UnknownKey
+from sweepmill.folds import FORMATS, Folds
 from sweepmill.follow import follow
 from sweepmill.messages import EnsembleProgress, ProgressPage, Submitted, SweepStatus
 from sweepmill.progress import Show, shown
+from sweepmill.sweep import Sweep
 from sweepmill.table import Table
 from sweepmill.table_files import MEDIA_TYPES, media_type
 from sweepmill.text import short
@@ -71,28 +74,56 @@ class RemoteSweep:
         """Exact histograms of the observations that keep one: a row for each value that occurred."""
         return self._fetched("histograms")
 
+    def folds(self, name: str | None = None) -> Folds:
+        """Sums over folds of trajectories, of all observations or one: what fits with jackknife errors start from.
+
+        Raises ServiceError for a name that the sweep does not have.
+        """
+        body = self._body("folds", {} if name is None else {"name": name})
+        return Folds(body.columns, body.metadata)
+
+    def specification(self) -> Sweep:
+        """What was submitted, in its normal form: without label and priority, which belong to requests."""
+        return Sweep.parse(self._transport.call("GET", f"{self._path}/specification").json())
+
     def _fetched(self, what: str) -> Table:
-        headers = {"Accept": MEDIA_TYPES[".json"]}
-        body = self._transport.fetch(messages.Table, "GET", f"{self._path}/{what}", headers=headers)
+        body = self._body(what, {})
         return Table(body.columns, body.metadata)
+
+    def _body(self, what: str, query: dict[str, str]) -> messages.Table:
+        headers = {"Accept": MEDIA_TYPES[".json"]}
+        return self._transport.fetch(messages.Table, "GET", f"{self._path}/{what}", headers=headers, params=query)
 
     def download(self, path: str | Path) -> Path:
         """Write the table to a file whose suffix gives the format: .csv, .json, .parquet or .arrow.
 
         The file appears complete or not at all. Raises ValueError for another suffix, and NotADirectoryError.
         """
+        return self._downloaded(Path(path), f"{self._path}/table")
+
+    def download_folds(self, path: str | Path, name: str | None = None) -> Path:
+        """Write the sums over folds to a file, as `download` does: .json, .parquet or .arrow.
+
+        Raises ValueError for another suffix, and ServiceError for a name that the sweep does not have.
+        """
         path = Path(path)
+        if path.suffix not in FORMATS:
+            raise ValueError(f"{path.name}: the suffix gives the format, one of {', '.join(FORMATS)}")
+        query = "" if name is None else f"?name={quote(name, safe='')}"
+        return self._downloaded(path, f"{self._path}/folds{query}")
+
+    def _downloaded(self, path: Path, source: str) -> Path:
         if not path.parent.is_dir():
             raise NotADirectoryError(f"{path.parent} is not a directory")
         accept = {"Accept": media_type(path)}
-        self._transport.retry.run(lambda: self._write(path, accept))
+        self._transport.retry.run(lambda: self._write(source, path, accept))
         return path
 
-    def _write(self, path: Path, headers: dict[str, str]) -> None:
+    def _write(self, source: str, path: Path, headers: dict[str, str]) -> None:
         partial = path.with_name(f".{path.name}.{os.getpid()}.part")
         try:
             with (
-                self._transport.stream(f"{self._path}/table", headers) as response,
+                self._transport.stream(source, headers) as response,
                 partial.open("wb") as file,
             ):
                 for chunk in response.iter_bytes():

@@ -24,6 +24,7 @@ RESULTS = ("trajectories", "mean", "standard_error", "variance", "minimum", "max
 INTEGERS = ("layer", "position", "trajectories")
 REALS = ("mean", "standard_error", "variance", "minimum", "maximum")
 COUNTS = ("value", "occurrences")  # in place of the results, in a table of histograms
+FOLDS = ("numerators", "denominators")  # lists, in a table of folds
 _SHOWN = ("name", "layer", "position", *COUNTS, "trajectories", "mean", "standard_error", "met_by")
 _HEAD = 10
 
@@ -57,7 +58,12 @@ class Table:
     @property
     def axes(self) -> tuple[str, ...]:
         """Names of the columns that are axes of the sweep."""
-        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS, *COUNTS))
+        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS, *COUNTS, *FOLDS))
+
+    @property
+    def constants(self) -> dict[str, Any]:
+        """What all ensembles of the sweep have in common, the family included; empty where the file does not say."""
+        return dict(self.metadata.get("constants", {}))
 
     @property
     def ensembles(self) -> list[dict[str, Any]]:

@@ -70,6 +70,7 @@ AMENDMENTS: Any = {
 _SWEEP = Sweep.parse(SPECIFICATION)
 _POINT = _SWEEP.points[0]
 _PARAMETERS = dict(_POINT.ensemble.parameters)
+NORMAL_FORM = _SWEEP.normalized()
 _ENTROPY, _I3 = (item.observation for item in _SWEEP.observations)
 _VERSIONS = {"python": "3.12.4", "sweepmill": "0.1.0", "numpy": "2.3.1", "numba": "0.61.2"}
 _DIGEST = "7d0c" * 16
@@ -148,6 +149,11 @@ TABLE: dict[str, Any] = {
     "metadata": {
         "sweep": _SWEEP.key,
         "axes": ["sites", "measurement_rate", "layers"],
+        "constants": {"family": "hybrid-clifford"}
+        | {
+            name: _PARAMETERS[name]
+            for name in ("boundary", "initial_state", "references", "scrambling_layers", "replicate", "engine")
+        },
         "observations": {"i3": _I3.key},
         "folds": {"i3": [64]},
         "version": "0.1.0",
@@ -174,6 +180,15 @@ HISTOGRAMS: dict[str, Any] = {
         "position": [None, None],
         "value": [1, 2],
         "occurrences": [811, 534],
+    },
+    "metadata": TABLE["metadata"],
+}
+_PLACE = ("sites", "measurement_rate", "layers", "name", "quantity", "region", "layer", "position", "trajectories")
+FOLDS: dict[str, Any] = {
+    "columns": {
+        **{name: TABLE["columns"][name] for name in (*_PLACE, "mean", "standard_error")},
+        "numerators": [[-12.5, -13.25, -14.0, -12.75]],
+        "denominators": [[21.0, 21.0, 21.0, 20.0]],
     },
     "metadata": TABLE["metadata"],
 }

@@ -13,6 +13,9 @@ MEDIA_TYPES: Mapping[str, str] = {
     "parquet": "application/vnd.apache.parquet",
 }
 
+# Lists have no place in CSV
+NESTED: Mapping[str, str] = {name: media for name, media in MEDIA_TYPES.items() if name != "csv"}
+
 
 class Range(NamedTuple):
     """One media range of an Accept header."""

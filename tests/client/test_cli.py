@@ -29,7 +29,7 @@ from sweepmill.cli import main
 main()
 """
 COMMANDS = [
-    *("check", "submit", "list", "watch", "table", "withdraw"),
+    *("check", "submit", "list", "watch", "table", "folds", "withdraw"),
     *("replay", "pool", "demo", "serve", "dispatch"),
 ]
 NOWHERE = "http://127.0.0.1:9"  # the discard port: nothing listens there
@@ -133,6 +133,8 @@ def test_the_module_runs_like_the_command() -> None:
         ("submit", __file__, "--priority", "11"),
         ("table", "5a0c77d2", "-o", "table.xlsx"),
         ("table", "5a0c77d2", "-o", "table.csv", "--name", "i3"),
+        ("folds", "5a0c77d2"),
+        ("folds", "5a0c77d2", "-o", "folds.csv"),
         ("replay", "5a0c77d2", "-1"),
         ("replay", "5a0c77d2", "1", "-o", "circuit.stim"),
         ("replay", "5a0c77d2", "1", "--circuit", "quil"),

@@ -8,14 +8,16 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from sweepmill.analysis.arrays import Mask, Matrix, Vector
-from sweepmill.analysis.jackknife import jackknife_covariance
+from sweepmill.analysis.jackknife import jackknife_covariance, replicas_from_folds
+from sweepmill.analysis.selecting import keys_of, numbers, require_curves, require_finite
 from sweepmill.errors import SharedTrajectories
+from sweepmill.folds import Folds
 from sweepmill.table import Table
 
 
 @dataclass(frozen=True, eq=False)
 class Points:
-    """n measured means; build it with `Points.of` or `Points.from_table`.
+    """n measured means; build it with `Points.from_folds`, `Points.from_table` or `Points.of`.
 
     `sizes`, `x`, `mean`, `error` have shape [n]: system size, abscissa (a rate, a length, a time), mean and its
     standard error. `replicas` [F, n] are the means without fold r, in the same units. `keys` name the ensemble of
@@ -57,12 +59,22 @@ class Points:
 
         Raises KeyError for a column that is not there, ValueError as `of` does.
         """
-        keys = [""] * len(table)
-        for ensemble in table.ensembles:
-            began, ended = ensemble["rows"]
-            keys[began:ended] = [str(ensemble["key"])] * (ended - began)
-        known = keys if all(keys) else ()
-        return cls.of(table[sizes], table[x], table["mean"], table["standard_error"], None, known)
+        places = numbers(table, sizes), numbers(table, x)
+        return cls.of(*places, table["mean"], table["standard_error"], None, keys_of(table))
+
+    @classmethod
+    def from_folds(cls, folds: Folds, x: str, sizes: str = "sites") -> Self:
+        """The rows of one observation with jackknife replicas; x is any axis, `layer` or `position`.
+
+        Means and standard errors are those of the table, from all trajectories. Raises ValueError where the rows are
+        not one curve over x for each size (several layers or positions per ensemble where x is something else, or
+        another axis that varies), saying what to choose; KeyError for a column that is not there.
+        """
+        places = numbers(folds, sizes), numbers(folds, x)
+        require_curves(folds, x, sizes)
+        require_finite(folds)
+        replicas = replicas_from_folds(*folds.sums())
+        return cls.of(*places, folds["mean"], folds["standard_error"], replicas, keys_of(folds))
 
     def _check(self) -> None:
         count = len(self.mean)

@@ -8,6 +8,7 @@ import typer
 from sweepmill.cli.check import check
 from sweepmill.cli.demo import demo
 from sweepmill.cli.dispatch import dispatch
+from sweepmill.cli.folds import folds
 from sweepmill.cli.listing import list_sweeps
 from sweepmill.cli.pool import pool
 from sweepmill.cli.replay import replay
@@ -44,6 +45,7 @@ app.command()(submit)
 app.command("list")(list_sweeps)
 app.command()(watch)
 app.command()(table)
+app.command()(folds)
 app.command()(withdraw)
 app.command()(replay)
 app.command()(pool)

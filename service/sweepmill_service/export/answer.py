@@ -2,7 +2,7 @@
 
 import gc
 import hashlib
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from http import HTTPStatus
 from importlib.metadata import version
@@ -18,9 +18,17 @@ from sweepmill_service.store import Store
 Build = Callable[[Store, str], Content]
 
 
-def table_answer(store: Store, key: str, kind: str, build: Build, accept: str | None, held: str | None) -> Response:
-    """Raises Refusal (406) where no format is acceptable."""
-    form = choose_format(accept)
+def table_answer(
+    store: Store,
+    key: str,
+    kind: str,
+    build: Build,
+    accept: str | None,
+    held: str | None,
+    offered: Mapping[str, str] = MEDIA_TYPES,
+) -> Response:
+    """Raises Refusal (406) where none of the formats `offered` is acceptable."""
+    form = choose_format(accept, offered)
     if held is not None:
         etag = entity_tag(kind, key, store.table_version(key), form)
         if matches(held, etag):

@@ -51,10 +51,12 @@ class Pieces:
 def write_json(content: Content) -> Iterator[bytes]:
     """`{"columns": {name: values}, "metadata": {...}}`, undefined numbers as null."""
     yield b'{"columns":{'
-    table = pa.Table.from_batches(content.batches, content.schema)
     for index, name in enumerate(content.schema.names):
-        values = json.dumps(table.column(name).to_pylist(), allow_nan=False, separators=(",", ":"))
-        yield f"{',' if index else ''}{json.dumps(name)}:{values}".encode()
+        yield f"{',' if index else ''}{json.dumps(name)}:[".encode()
+        for place, batch in enumerate(content.batches):  # never a whole column as Python numbers
+            values = json.dumps(batch.column(name).to_pylist(), allow_nan=False, separators=(",", ":"))
+            yield f"{',' if place else ''}{values[1:-1]}".encode()
+        yield b"]"
     yield f'}},"metadata":{json.dumps(content.metadata, separators=(",", ":"))}}}'.encode()
 
 

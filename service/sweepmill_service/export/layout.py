@@ -26,6 +26,7 @@ class Layout:
         self.sweep = sweep
         self.axes = axes
         self.fields = [pa.field(axis, _type([self._value(e, axis) for e in sweep.ensembles])) for axis in axes]
+        self.constants = _constants(sweep.ensembles)
         self.observation_keys = [(item, item.observation.key) for item in sweep.observations]
         self.labels = {item.name: _labels(item) for item in sweep.observations}
         self._coordinates: dict[tuple[Any, ...], tuple[Coordinate, ...]] = {}
@@ -57,6 +58,12 @@ def _labels(item: NamedObservation) -> tuple[str, str, str]:
 def layout_of(specification: str, axes: tuple[str, ...]) -> Layout:
     """Layout for a sweep's canonical JSON."""
     return Layout(expand(specification), axes)
+
+
+def _constants(ensembles: tuple[Ensemble, ...]) -> dict[str, Any]:
+    """What all ensembles have in common, the family included: the columns that no axis can show."""
+    columns = [{"family": ensemble.family, **ensemble.columns} for ensemble in ensembles]
+    return {name: value for name, value in columns[0].items() if all(name in c and c[name] == value for c in columns)}
 
 
 def _type(values: list[Any]) -> pa.DataType:

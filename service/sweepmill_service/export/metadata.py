@@ -44,6 +44,7 @@ class Provenance:
         return {
             "sweep": self.sweep,
             "axes": list(self.layout.axes),
+            "constants": self.layout.constants,
             "observations": {item.name: key for item, key in self.layout.observation_keys},
             "folds": self._folds(),
             "version": version("sweepmill"),

@@ -93,6 +93,16 @@ def read_sweep(key: KeyPrefix, runtime: RuntimeOf, store: StoreOf) -> SweepStatu
 
 
 @router.get(
+    "/sweeps/{key}/specification",
+    response_class=Response,
+    responses={200: described("The normal form", examples.NORMAL_FORM), **problems(404, 409, 422, 503)},
+)
+def read_specification(key: KeyPrefix, store: StoreOf) -> Response:
+    """What was submitted, in the normal form whose hash the key is; it can be changed and submitted again."""
+    return Response(store.specification(store.find_sweep(key)), media_type="application/json")
+
+
+@router.get(
     "/sweeps/{key}/ensembles",
     responses={
         200: described("One page, in the order of the table", examples.PROGRESS),
