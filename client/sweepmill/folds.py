@@ -65,4 +65,4 @@ class Folds(Table):
 def _put_together(values: Sequence[float], folds: int) -> NDArray[np.float64]:
     if len(values) % folds:
         raise ValueError(f"{len(values)} folds cannot be put together to {folds}")
-    return np.asarray(values, dtype=np.float64).reshape(-1, folds).sum(axis=0)
+    return np.asarray(np.reshape(np.asarray(values, dtype=np.float64), (-1, folds)).sum(axis=0))

@@ -15,8 +15,9 @@ WAIT = 120.0
 @pytest.fixture(scope="module")
 def settled(service_url: str) -> Any:
     """A sweep that has settled."""
+    circuit = {"family": "hybrid-clifford", "sites": [4, 8], "measurement_rate": 0.1, "layers": 8, "replicate": 4711}
     body = {
-        "circuit": {"family": "hybrid-clifford", "sites": [4, 8], "measurement_rate": 0.1, "layers": 8},
+        "circuit": circuit,
         "observe": [
             {"quantity": "entropy", "name": "series", "at": [2, 4, 8]},
             {"quantity": "outcome-randomness"},
@@ -24,7 +25,6 @@ def settled(service_url: str) -> Any:
         "stop": {"trajectories": 70},
         "label": "kept by the request",
     }
-    body["circuit"]["replicate"] = 4711
     with Client(service_url, owner="mara") as client:
         sweep = client.submit(Sweep.parse(body))
         sweep.wait(progress=False, timeout=WAIT)
