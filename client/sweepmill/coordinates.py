@@ -10,6 +10,7 @@ from sweepmill.counts import VARIED_FROM
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import (
     ClusterOrder,
+    CrossEntropy,
     Entropy,
     GeneratorLengths,
     Negativity,
@@ -19,6 +20,7 @@ from sweepmill.observation import (
     SiteEnvironmentInformation,
     wants_histogram,
 )
+from sweepmill.observation.crossed import CHI_UNIT
 from sweepmill.observation.distances import distances
 from sweepmill.times import readings
 
@@ -52,6 +54,8 @@ def places(ensemble: Ensemble, observation: Any) -> tuple[Place, ...]:
             return tuple(Place(length, 1) for length in range(1, sites + 1))
         case ClusterOrder():
             return (Place(None, sites * sites),)
+        case CrossEntropy():
+            return (Place(None, 1 if ensemble.signed else CHI_UNIT),)
     return (Place(None, averaged),)
 
 

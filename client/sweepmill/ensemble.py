@@ -1,6 +1,6 @@
 """An ensemble: all trajectories of one circuit family with every parameter fixed."""
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
@@ -157,7 +157,41 @@ class Ensemble:
         return sum(number_of_places(on, self.sites, self.periodic) for on in places)
 
     @property
-    def shape(self) -> tuple[str, str, int, int, int, int, int, bool]:
+    def signed(self) -> bool:
+        """Whether the signed simulation samples it."""
+        return bool(self.parameters.get("engine", "auto") == "reference")
+
+    @property
+    def initial_state(self) -> str:
+        """Of every site of the chain: zeros, plus or mixed."""
+        begins = "plus" if self.family == "projective-ising" else "zeros"
+        return str(self.parameters.get("initial_state", begins))
+
+    @cached_property
+    def forcing(self) -> str | None:
+        """The field of the circuit by which outcomes are forced, be it by gates turned sideways."""
+        if self.family == "rotated-clifford":
+            return "family"
+        steps = ((name, step) for name in PROGRAM for step in _steps(self.parameters.get(name, ())))
+        return next((name for name, step in steps if step.get("forced") or step.get("rotated")), None)
+
+    @cached_property
+    def measures_before(self) -> bool:
+        """Whether a layer of ``before`` records an outcome."""
+        steps = _steps(self.parameters.get("before", ()))
+        return any("measure" in step and step.get("recorded", True) for step in steps)
+
+    @property
+    def shape(self) -> tuple[str | int | None, ...]:
         """What decides which observations can be read off, and their coordinates."""
-        engine = str(self.parameters.get("engine", "auto"))
-        return self.family, engine, self.sites, self.references, self.layers, self.repeated, self.cell, self.periodic
+        sizes = (self.sites, self.references, self.layers, self.repeated, self.cell, self.periodic)
+        records = (self.initial_state, self.forcing, self.measures_before)
+        return self.family, str(self.parameters.get("engine", "auto")), *sizes, *records
+
+
+def _steps(layers: Iterable[Any]) -> Iterator[Mapping[str, Any]]:
+    """All steps of some layers, those in branches of choices included."""
+    for layer in layers:
+        for step in layer:
+            yield step
+            yield from _steps(branch["steps"] for branch in step.get("choose", ()))

@@ -15,6 +15,7 @@ FAMILY_REVISIONS: dict[str, int] = {
 
 QUANTITY_REVISIONS: dict[str, int] = {
     "cluster-order": 1,
+    "cross-entropy": 1,
     "entropy": 1,
     "generator-lengths": 1,
     "global-entropy": 1,

@@ -36,6 +36,7 @@ def scales(ensemble: Ensemble, **fields: Any) -> list[int]:
         ({"quantity": "site-environment-information", "region": [0, 1, 2, 5]}, "0-2,5"),
         ({"quantity": "negativity"}, "half"),
         ({"quantity": "generator-lengths"}, "all"),
+        ({"quantity": "cross-entropy", "against": "plus"}, "against plus"),
     ],
 )
 def test_an_observation_survives_its_normal_form(fields: dict[str, Any], label: str) -> None:
@@ -88,6 +89,7 @@ def test_distances_are_those_of_the_nearest_site_outside(periodic: bool, sites: 
         ({"quantity": "reference-entropy"}, "quantity", "no reference qubits"),
         ({"quantity": "cluster-order"}, "quantity", "belongs to projective-ising"),
         ({"quantity": "pauli-expectation", "pauli": "Z", "sites": [0]}, "quantity", 'engine = "reference"'),
+        ({"quantity": "cross-entropy", "against": "zeros"}, "against", "two different initial states are compared"),
         ({"quantity": "negativity", "region": [3, 12]}, "region", "site 12 is outside"),
         ({"quantity": "site-environment-information", "region": list(range(8))}, "region", "leave a site outside"),
     ],
@@ -157,3 +159,21 @@ def test_reference_entropy_needs_reference_qubits_and_has_as_many_values_as_they
     assert item.fault(RING) == ("quantity", "the ensemble has no reference qubits")
     assert item.region_label() == "references"
     assert accumulator_bytes(few, item) < accumulator_bytes(many, item)
+
+
+def test_records_are_compared_where_signs_or_random_outcomes_tell_them_apart() -> None:
+    item = observation_from_normal_form({"quantity": "cross-entropy", "revision": 1, "against": "plus", "at": "end"})
+    mixed = Ensemble.of("hybrid-clifford", sites=8, measurement_rate=0.1, layers=6, initial_state="mixed")
+    signed = Ensemble.of("hybrid-clifford", sites=8, measurement_rate=0.1, layers=6, engine="reference")
+    gates = [{"apply": "uniform-clifford", "on": "bonds"}]
+    measured = [[{"choose": [{"weight": 1, "steps": [{"measure": "Z"}]}], "on": "sites"}]]
+    dephased = [[{"measure": "Z", "on": "sites", "recorded": False}]]
+    begun = {"sites": 8, "layers": 6, "repeat": [gates]}
+    for ensemble in (RING, mixed, signed, Ensemble.of("layered", **begun, before=dephased)):
+        assert item.fault(ensemble) is None
+    assert item.fault(Ensemble.of("layered", **begun, before=measured, engine="reference")) is None
+    fault = item.fault(Ensemble.of("layered", **begun, before=measured))
+    assert fault is not None
+    assert "the record begins in `before`" in fault[1]
+    assert [place.scale for place in coordinates(signed, item)] == [1]
+    assert [place.scale for place in coordinates(RING, item)] == [2**30]

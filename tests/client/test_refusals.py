@@ -82,7 +82,17 @@ def test_two_forms_of_places_at_once_are_named() -> None:
 
 
 ISING: dict[str, Any] = {"family": "projective-ising", "sites": 8, "layers": 8}
+SIDEWAYS: dict[str, Any] = {"family": "rotated-clifford", "sites": 8, "layers": 8}
+RANDOM: dict[str, Any] = {"apply": "uniform-clifford", "on": "sites"}
+FORCED: dict[str, Any] = Z | {"forced": True}
+BEGINNING, AFTER = "circuit.initial_state", "circuit.after"
 LATTICE: dict[str, Any] = {"family": "hybrid-clifford-square", "width": 4, "height": 4, "measurement_rate": 0.1}
+
+
+def written(**fields: Any) -> dict[str, Any]:
+    """A circuit block written as data whose last layer can be read."""
+    block: dict[str, Any] = layered([GATES, Z], [GATES, Z], **fields)["circuit"]
+    return block
 
 
 @pytest.mark.parametrize("rate", [0.9999999, 1 - 1e-12, 1e-7])
@@ -131,6 +141,12 @@ def test_the_complement_of_a_parameter_is_resolved_no_finer() -> None:
             "must be a product of the letters X, Y and Z, got 'A'",
         ),
         (
+            observed(quantity="cross-entropy", against="mixed"),
+            "observe[0].against",
+            "must be 'zeros' or 'plus', got 'mixed'",
+        ),
+        (observed(quantity="cross-entropy"), "observe[0].against", "is missing"),
+        (
             observed(quantity="mutual-information", regions=[[1], [2], [3]]),
             "observe[0].regions",
             "takes at most 2 items, got ([1], [2], [3])",
@@ -156,6 +172,13 @@ def test_faults_are_in_words_of_a_specification(spec: dict[str, Any], path: str,
         (CHAIN | {"engine": ["auto"]}, {"quantity": "pauli-expectation", "pauli": "Z", "sites": [0]}, "circuit.engine"),
         (CHAIN | {"engine": ["auto", "reference"]}, {"quantity": "cluster-order"}, "circuit.family"),
         (ISING | {"bond_rate": 0.5, "engine": "reference"}, {"quantity": "cluster-order"}, "circuit.engine"),
+        (CHAIN, {"quantity": "cross-entropy", "against": "zeros"}, "circuit.initial_state"),
+        (ISING | {"bond_rate": 0.5}, {"quantity": "cross-entropy", "against": "plus"}, "circuit.family"),
+        (ISING | {"bond_rate": 0.5}, {"quantity": "cross-entropy", "against": "zeros"}, "circuit.engine"),
+        (SIDEWAYS, {"quantity": "cross-entropy", "against": "plus"}, "circuit.family"),
+        (written(after=[[RANDOM, FORCED]]), {"quantity": "cross-entropy", "against": "plus", "at": "end"}, AFTER),
+        (written(before=[[Z]]), {"quantity": "cross-entropy", "against": "plus"}, "circuit.engine"),
+        (written(initial_state=["zeros", "plus"]), {"quantity": "cross-entropy", "against": "plus"}, BEGINNING),
         (CHAIN, {"quantity": "entropy", "at": [9]}, "circuit.layers"),
         (CHAIN | {"sites": [16, 10]}, {"quantity": "tripartite-information"}, "circuit.sites[1]"),
         (LATTICE, {"quantity": "entropy", "region": [16]}, "circuit.width"),

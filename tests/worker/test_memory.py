@@ -6,12 +6,13 @@ from typing import Any
 import pytest
 
 from sweepmill.ensemble import Ensemble
-from sweepmill.observation import Entropy, GeneratorLengths, TripartiteInformation
+from sweepmill.observation import CrossEntropy, Entropy, GeneratorLengths, TripartiteInformation
 from sweepmill_worker.memory import BLOCK_BYTES, block_size, engine_bytes, peak_bytes, trajectory_bytes
 from sweepmill_worker.sample import sample
 
 CUTS = Entropy(quantity="entropy", region="every-cut", average_translations=True, at={"every": 2})
 HALF = Entropy(quantity="entropy", at={"every": 1, "single_layers": True})
+CHI = CrossEntropy(quantity="cross-entropy", against="plus", at={"every": 2})
 TRIPARTITE = TripartiteInformation(quantity="tripartite-information", average_translations=True)
 CASES: list[tuple[Ensemble, list[Any], int]] = [
     (Ensemble.of("hybrid-clifford", sites=32, measurement_rate=0.2, layers=64), [CUTS, TRIPARTITE], 2000),
@@ -19,6 +20,8 @@ CASES: list[tuple[Ensemble, list[Any], int]] = [
     (Ensemble.of("edge-bath", sites=30, layers=100), [HALF, GeneratorLengths(quantity="generator-lengths")], 2000),
     (Ensemble.of("projective-ising", sites=20_000, bond_rate=0.5, layers=4), [HALF], 10),
     (Ensemble.of("hybrid-clifford", sites=6, measurement_rate=0.2, layers=6, engine="reference"), [HALF], 10),
+    (Ensemble.of("hybrid-clifford", sites=6, measurement_rate=0.2, layers=6, engine="reference"), [CHI], 10),
+    (Ensemble.of("hybrid-clifford", sites=30, measurement_rate=0.2, layers=600), [CHI], 500),
 ]
 
 

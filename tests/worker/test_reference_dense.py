@@ -1,14 +1,13 @@
 """The signed simulation against density matrices: states, signs and probabilities of every record of small circuits."""
 
 import random
-from collections.abc import Iterator
 from itertools import product
 
 import numpy as np
 import pytest
-from numpy.typing import NDArray
 
 from support import dense
+from support.records import branches, dense_branch, outcomes_of
 from support.rows import random_layer
 from sweepmill_worker.program import operations as op
 from sweepmill_worker.reference.trajectory import SignedTrajectory
@@ -18,43 +17,14 @@ CLOSE = 1e-6  # gates come in single precision
 CASES = [(seed, state) for seed in range(12) for state in ("zeros", "plus", "mixed")]
 
 
-def branches(rows: NDArray[np.int32], initial_state: str) -> Iterator[SignedTrajectory]:
-    """Every trajectory of one circuit: random outcomes by all sequences of bits, as far as they are asked for."""
-    pending: list[tuple[int, ...]] = [()]
-    while pending:
-        decided = pending.pop()
-        asked = 0
-
-        def bit(kind: int, place: int, decided: tuple[int, ...] = decided) -> int:
-            nonlocal asked
-            asked += 1
-            if asked > len(decided):
-                pending.append((*decided, *(0 for _ in range(asked - 1 - len(decided))), 1))
-            return decided[asked - 1] if asked <= len(decided) else 0
-
-        trajectory = SignedTrajectory(QUBITS, 0, initial_state)
-        trajectory.play(rows, 1, bit)
-        yield trajectory
-
-
-def dense_branch(rows: NDArray[np.int32], initial_state: str, outcomes: list[int]) -> dense.Matrix:
-    """The state after these outcomes, its trace their probability; forced outcomes are +1."""
-    state = dense.start(initial_state, QUBITS)
-    left = iter(outcomes)
-    for row in rows.tolist():
-        recorded = row[op.CODE] == op.MEASURE and row[op.FLAGS] == op.RECORDED
-        state = dense.apply(state, row, QUBITS, next(left) if recorded else 0)
-    return state
-
-
 @pytest.mark.parametrize(("seed", "initial_state"), CASES)
 def test_every_record_has_its_state_and_its_probability(seed: int, initial_state: str) -> None:
     rows = random_layer(random.Random(seed), QUBITS, 14, forced=False)
-    found = list(branches(rows, initial_state))
-    records = [tuple(one.outcome for one in trajectory.record.measurements) for trajectory in found]
+    found = [trajectory for trajectory, _ in branches([rows], QUBITS, initial_state)]
+    records = list(map(outcomes_of, found))
     assert len(set(records)) == len(records)
     for trajectory, outcomes in zip(found, records, strict=True):
-        exact = dense_branch(rows, initial_state, list(outcomes))
+        exact = dense_branch([rows], QUBITS, initial_state, outcomes)
         probability = 2.0**trajectory.record.log2_probability
         np.testing.assert_allclose(np.trace(exact), probability, atol=CLOSE)
         state = dense.of_stabilizers(trajectory.state.stabilizers(), QUBITS)
@@ -71,7 +41,7 @@ def test_the_average_over_records_is_the_circuit_with_its_outcomes_lost(seed: in
     lost[:, op.FLAGS] = 0
     unread = SignedTrajectory(QUBITS, 0, "zeros")
     unread.play(lost, 1, lambda kind, place: pytest.fail("nothing is measured"))
-    found = list(branches(rows, "zeros"))
+    found = [trajectory for trajectory, _ in branches([rows], QUBITS, "zeros")]
     for letters in product("_XYZ", repeat=QUBITS):
         sites = [site for site, letter in enumerate(letters) if letter != "_"]
         pauli = ("".join(letters).replace("_", ""), tuple(sites))
@@ -86,7 +56,7 @@ def test_forced_outcomes_have_their_states_and_probabilities(seed: int) -> None:
     rows[:, op.FLAGS] = np.where(rows[:, op.FLAGS] == op.RECORDED, op.RECORDED | op.FORCED, rows[:, op.FLAGS])
     trajectory = SignedTrajectory(QUBITS, 0, "zeros")
     trajectory.play(rows, 1, lambda kind, place: pytest.fail("every outcome is forced"))
-    exact = dense_branch(rows, "zeros", [])
+    exact = dense_branch([rows], QUBITS, "zeros", [])
     assert trajectory.record.measurements == []
     if trajectory.record.impossible:
         np.testing.assert_allclose(exact, 0, atol=CLOSE)

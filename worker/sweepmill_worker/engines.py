@@ -9,6 +9,7 @@ from sweepmill.presets import layered_form
 from sweepmill_worker.clifford.engine import HybridChain, Readings, run_probes
 from sweepmill_worker.clusters.engine import run_cluster_probes
 from sweepmill_worker.clusters.ensembles import cluster_chain
+from sweepmill_worker.crossed import fill_chi
 from sweepmill_worker.observables.probes import Probes
 from sweepmill_worker.program.compile import Program, compile_program
 from sweepmill_worker.program.run import run_probes as run_program_probes
@@ -59,11 +60,15 @@ def hybrid_chain(ensemble: Ensemble) -> HybridChain:
 
 
 def _read_chain(ensemble: Ensemble, first: int, count: int, layers: Sequence[int], probes: Probes) -> Readings:
-    return run_probes(hybrid_chain(ensemble), ensemble.key_words, first, count, layers, probes)
+    found = run_probes(hybrid_chain(ensemble), ensemble.key_words, first, count, layers, probes)
+    fill_chi(found, ensemble, first, layers, probes)
+    return found
 
 
 def _read_program(ensemble: Ensemble, first: int, count: int, layers: Sequence[int], probes: Probes) -> Readings:
-    return run_program_probes(program_of(ensemble), ensemble.key_words, first, count, layers, probes)
+    found = run_program_probes(program_of(ensemble), ensemble.key_words, first, count, layers, probes)
+    fill_chi(found, ensemble, first, layers, probes)
+    return found
 
 
 def _read_clusters(ensemble: Ensemble, first: int, count: int, layers: Sequence[int], probes: Probes) -> Readings:

@@ -14,8 +14,10 @@ from sweepmill.ensemble import Ensemble
 from sweepmill.times import Reading, readings
 from sweepmill_worker.clifford.engine import working_bytes as column_bytes
 from sweepmill_worker.clusters.engine import working_bytes as cluster_bytes
+from sweepmill_worker.crossed import program_from
 from sweepmill_worker.engines import CHAIN, CLUSTERS, SIGNED, engine_of, program_of
 from sweepmill_worker.observables.plan import ProbePlan, plan_probes
+from sweepmill_worker.program.compile import Program
 
 BLOCK_BYTES: Final = 16_000_000
 """Room for the readings of one block of trajectories, and for the values made of them."""
@@ -44,7 +46,8 @@ def trajectory_bytes(ensemble: Ensemble, observations: Sequence[Any]) -> int:
     """Readings of one trajectory, and the values made of them."""
     times, plan = times_of(ensemble, observations), plan_of(ensemble, observations)
     terms = sum(i.size * len(when) for i, when in zip(plan.indices, times, strict=True) if i is not None)
-    return 8 * len(read_layers(times, plan)) * plan.probes.size + 16 * terms + 16 * ensemble.layers
+    counts = 16 + 32 * bool(plan.probes.against)  # per layer; those of other initial states come besides
+    return 8 * len(read_layers(times, plan)) * plan.probes.size + 16 * terms + counts * ensemble.layers
 
 
 def block_size(ensemble: Ensemble, observations: Sequence[Any]) -> int:
@@ -59,16 +62,30 @@ def engine_bytes(ensemble: Ensemble) -> int:
         return cluster_bytes(ensemble.sites)
     if engine is CHAIN:
         return column_bytes(ensemble.sites, ensemble.parameters["initial_state"] == "mixed")
-    program = program_of(ensemble)
-    if engine is SIGNED:
-        return 4 * (2 * program.total + SIGNED_SPARE) ** 2  # bit matrices of the tableau, its inverse and copies
+    return _signed_bytes(ensemble) if engine is SIGNED else _program_bytes(program_of(ensemble))
+
+
+def _signed_bytes(ensemble: Ensemble) -> int:
+    """Bit matrices of the tableau, its inverse and copies."""
+    return 4 * (2 * (ensemble.sites + ensemble.references) + SIGNED_SPARE) ** 2
+
+
+def _program_bytes(program: Program) -> int:
     tables = sum(table.nbytes for table in program.tables if isinstance(table, np.ndarray))
     tables += program.places.nbytes + 8 * program.words + OPERATION_BYTES * program.most_operations
     return column_bytes(program.total + 1, program.mixed) + 2 * tables
+
+
+def _other_states_bytes(ensemble: Ensemble, states: Sequence[str]) -> int:
+    """The circuit from other initial states, to compare records: beside it with signs, one after another without."""
+    if not states or ensemble.signed:
+        return len(states) * _signed_bytes(ensemble)
+    return _program_bytes(program_from(ensemble, "mixed"))
 
 
 def peak_bytes(ensemble: Ensemble, observations: Sequence[Any]) -> int:
     """Upper estimate of what one batch adds to an idle worker, in bytes."""
     block = max(BLOCK_BYTES, trajectory_bytes(ensemble, observations))
     totals = sum(accumulator_bytes(ensemble, item) for item in observations)
-    return engine_bytes(ensemble) + 3 * block + 3 * totals
+    engines = engine_bytes(ensemble) + _other_states_bytes(ensemble, plan_of(ensemble, observations).probes.against)
+    return engines + 3 * block + 3 * totals

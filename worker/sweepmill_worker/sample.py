@@ -17,7 +17,7 @@ from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.revisions import FAMILY_REVISIONS, results_revision
 from sweepmill_worker.batch import Batch
-from sweepmill_worker.engines import engine_of
+from sweepmill_worker.engines import PROGRAM, engine_of
 from sweepmill_worker.memory import block_size, plan_of, read_layers, times_of
 from sweepmill_worker.observables.plan import ProbePlan
 from sweepmill_worker.observables.values import Values, values_of
@@ -97,7 +97,8 @@ def _read(ensemble: Ensemble, observations: Sequence[Any], plan: ProbePlan, firs
     times = times_of(ensemble, observations)
     layers = read_layers(times, plan)
     engine = engine_of(ensemble)
-    load(engine.kernels, ensemble.sites + ensemble.references)
+    for job in {engine.kernels, PROGRAM.kernels} if plan.probes.against else {engine.kernels}:
+        load(job, ensemble.sites + ensemble.references)
     counts = engine.read(ensemble, first, count, layers, plan.probes)
     index = {n: i for i, n in enumerate(layers)}
     return [

@@ -6,6 +6,7 @@ from typing import Annotated, Any
 from pydantic import Field, TypeAdapter
 
 from sweepmill.observation.base import NAME_PATTERN
+from sweepmill.observation.crossed import CrossEntropy
 from sweepmill.observation.entropies import (
     Entropy,
     GlobalEntropy,
@@ -24,6 +25,7 @@ __all__ = [
     "QUANTITIES",
     "REGION_TAGS",
     "ClusterOrder",
+    "CrossEntropy",
     "Entropy",
     "GeneratorLengths",
     "GlobalEntropy",
@@ -53,7 +55,8 @@ Observation = Annotated[
     | ClusterOrder
     | RecordBits
     | OutcomeRandomness
-    | PauliExpectation,
+    | PauliExpectation
+    | CrossEntropy,
     Field(discriminator="quantity"),
 ]
 QUANTITIES: tuple[str, ...] = tuple(QUANTITY_REVISIONS)

@@ -22,6 +22,8 @@ def blamed(fault: Fault, quantity: str, ensemble: Ensemble, size: str) -> str | 
             return "layers"
         case "average_translations":
             return _ends(ensemble)
+        case "against":
+            return _own("initial_state", ensemble)
         case "quantity":
             return _of_quantity(quantity, ensemble)
     return size
@@ -34,6 +36,8 @@ def _ends(ensemble: Ensemble) -> str:
 
 
 def _of_quantity(quantity: str, ensemble: Ensemble) -> str:
+    if quantity == "cross-entropy":
+        return ensemble.forcing or "engine"
     if quantity == "pauli-expectation" or (quantity == "cluster-order" and ensemble.family == CLUSTERS):
         return "engine"
     if quantity == "reference-entropy":

@@ -10,7 +10,7 @@ CLUSTERS: Final = "projective-ising"
 
 def engine_fault(quantity: str, ensemble: Ensemble) -> tuple[str, str] | None:
     """Field and message if the ensemble's engine does not give the quantity."""
-    signed = ensemble.parameters.get("engine", "auto") == "reference"
+    signed = ensemble.signed
     clusters = ensemble.family == CLUSTERS and not signed
     if quantity == "pauli-expectation" and not signed:
         return "quantity", 'pauli-expectation depends on signs: it needs engine = "reference"'

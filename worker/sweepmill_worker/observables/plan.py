@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from sweepmill.coordinates import translations
 from sweepmill.observation import (
     ClusterOrder,
+    CrossEntropy,
     Entropy,
     GeneratorLengths,
     Negativity,
@@ -64,6 +65,7 @@ def plan_probes(sites: int, references: int, periodic: bool, observations: tuple
         lengths=any(isinstance(item, GeneratorLengths) for item in others),
         cluster_order=any(isinstance(item, ClusterOrder) for item in others),
         paulis=once(Pauli(item.pauli, item.sites) for item in others if isinstance(item, PauliExpectation)),
+        against=once(item.against for item in others if isinstance(item, CrossEntropy)),
     )
     indices = (
         regions.indices(codes[item]) if item in codes else place(item, probes, periodic) for item in observations
@@ -124,6 +126,8 @@ def _numbers(observation: Observation, probes: Probes, periodic: bool) -> range 
             return span(layout.cluster_order)
         case PauliExpectation():
             return [layout.paulis.start + probes.paulis.index(Pauli(observation.pauli, observation.sites))]
+        case CrossEntropy():
+            return [layout.against.start + probes.against.index(observation.against)]
     return None
 
 

@@ -39,6 +39,7 @@ class Layout(NamedTuple):
     lengths: slice
     cluster_order: slice
     paulis: slice
+    against: slice
 
 
 def no_arcs() -> NDArray[np.int64]:
@@ -69,6 +70,8 @@ class Probes:
     """Sum of the squared cluster sizes (engine of clusters only)."""
     paulis: tuple[Pauli, ...] = ()
     """Expectations (engine with signs only)."""
+    against: tuple[str, ...] = ()
+    """Initial states: chi of the record so far, or of the circuit so far in units of `CHI_UNIT` without signs."""
 
     @cached_property
     def layout(self) -> Layout:
@@ -88,12 +91,13 @@ class Probes:
             lengths=next_slice(self.sites * self.lengths),
             cluster_order=next_slice(int(self.cluster_order)),
             paulis=next_slice(len(self.paulis)),
+            against=next_slice(len(self.against)),
         )
 
     @property
     def size(self) -> int:
         """Number of integers of a reading."""
-        return int(self.layout.paulis.stop)
+        return int(self.layout.against.stop)
 
     @property
     def total(self) -> int:

@@ -14,12 +14,15 @@ from sweepmill_worker.observables.probes import Information, Probes, Region
 Bits = NDArray[np.uint8]
 
 
-def read_rows(x: Bits, z: Bits, probes: Probes, expectations: Sequence[int] = ()) -> NDArray[np.int32]:
+def read_rows(
+    x: Bits, z: Bits, probes: Probes, expectations: Sequence[int] = (), agreements: Sequence[int] = ()
+) -> NDArray[np.int32]:
     """The integers of `probes.layout`.
 
     x, z: [rows, total sites], the X and Z parts of generators, independent or not, of the stabilizer group of a pure
-    or mixed state.  `expectations`: what signs say of `probes.paulis`, in order.  Raises ValueError for clusters,
-    which a stabilizer group does not have.
+    or mixed state.  `expectations`: what signs say of `probes.paulis`, in order;
+    `agreements`: what the record says of `probes.against`.  Raises ValueError for clusters, which a stabilizer group
+    does not have.
     """
     if probes.cluster_order:
         raise ValueError("cluster_order: clusters are not read off a stabilizer group")
@@ -39,6 +42,7 @@ def read_rows(x: Bits, z: Bits, probes: Probes, expectations: Sequence[int] = ()
         if probes.lengths:
             out[layout.lengths] = generator_lengths(chain, probes.sites)
     out[layout.paulis] = expectations
+    out[layout.against] = agreements
     return out
 
 
