@@ -14,6 +14,7 @@ from sweepmill.observation import (
     Entropy,
     GeneratorLengths,
     Negativity,
+    OutcomeRandomness,
     PauliExpectation,
     RecordBits,
     ReferenceEntropy,
@@ -85,12 +86,39 @@ def accumulator_bytes(ensemble: Ensemble, observation: Any) -> int:
     return 8 * (count * (sums + tally) + histogram + folds) + count + 64
 
 
+def kept_bytes(ensemble: Ensemble, observation: Any) -> int:
+    """Bytes that the values of one trajectory take before they are compressed; 0 where they are not kept."""
+    if not observation.keep_values:
+        return 0
+    at_one_time = places(ensemble, observation)
+    times = readings(observation.at, ensemble.layers, ensemble.cell)
+    most = max(place.readings for place in at_one_time) * max(len(time.layers) for time in times)
+    span = _largest(ensemble, observation) * most
+    width = next((size for size in (1, 2, 4) if span < 256**size), 8)
+    components: int = observation.COMPONENTS
+    return len(times) * len(at_one_time) * components * width
+
+
 @lru_cache(maxsize=256)
 def _depths(region: str | tuple[int, ...], sites: int, periodic: bool) -> tuple[Place, ...]:
     """Distances from the boundary of a region, each with its number of sites."""
     listed = tuple(range(sites // 2)) if isinstance(region, str) else region
     counts = Counter(distances(listed, sites, periodic).tolist())
     return tuple(Place(depth, counts[depth]) for depth in sorted(counts))
+
+
+def _largest(ensemble: Ensemble, observation: Any) -> int:
+    """By how much the readings of a coordinate differ at most, in units of its scale."""
+    match observation:
+        case RecordBits() | OutcomeRandomness():
+            return ensemble.sites * ensemble.layers
+        case ReferenceEntropy():
+            return ensemble.references
+        case PauliExpectation():
+            return 2
+        case ClusterOrder():
+            return 1
+    return ensemble.sites
 
 
 def _values(ensemble: Ensemble, observation: Any, position: int | None) -> int:

@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 from pydantic import BaseModel, ConfigDict, Field
 
-from sweepmill.coordinates import accumulator_bytes
+from sweepmill.coordinates import accumulator_bytes, kept_bytes
 from sweepmill.ensemble import Ensemble
 from sweepmill.errors import Fault
 from sweepmill.sweep import Point, Sweep
@@ -24,6 +24,7 @@ class Limits(BaseModel):
     ensembles: int = Field(20_000, ge=1, description="Ensembles of one sweep")
     trajectories: int = Field(10_000_000, ge=1, description="Cap of one ensemble")
     accumulator_bytes: int = Field(1_048_576, ge=1024, description="Size of one total")
+    kept_values: int = Field(1_073_741_824, ge=0, description="Kept values of one sweep, in bytes before compression")
 
     def sites_of(self, ensemble: Ensemble) -> tuple[int, str]:
         """How many sites an ensemble may have, and of what this is the limit."""
@@ -45,6 +46,7 @@ def check_limits(sweep: Sweep, limits: Limits) -> list[Fault]:
         _beyond("circuit", len(points), limits.ensembles, "ensembles per sweep"),
         _beyond("stop.trajectories", max(p.cap for p in points), limits.trajectories, "trajectories per ensemble"),
         *(_size_fault(sweep, index, fitting, limits) for index in range(len(sweep.observe)) if fitting),
+        _kept_fault(sweep, fitting, limits.kept_values),
     ]
     return [fault for fault in faults if fault is not None]
 
@@ -72,4 +74,35 @@ def _size_fault(sweep: Sweep, index: int, points: tuple[Point, ...], limits: Lim
         f"observe[{index}]",
         f"its total takes {size} bytes at {largest} sites, this server keeps at most {limits.accumulator_bytes}: "
         "read fewer layers or cuts",
+    )
+
+
+def kept_values_bytes(sweep: Sweep) -> int:
+    """Size of all values a sweep keeps if every ensemble runs to its cap, before they are compressed."""
+    return sum(point.cap * size for point, size in _kept_by_point(sweep, sweep.points))
+
+
+def _kept_by_point(sweep: Sweep, points: tuple[Point, ...]) -> Iterator[tuple[Point, int]]:
+    """Every point with the bytes its values take for each trajectory."""
+    known: dict[tuple[object, ...], int] = {}
+    kept = {item.observation.key: item.observation for item in sweep.observations if item.observation.keep_values}
+    for point in points if kept else ():
+        shape = point.ensemble.shape
+        if shape not in known:
+            known[shape] = sum(kept_bytes(point.ensemble, item) for item in kept.values())
+        yield point, known[shape]
+
+
+def _kept_fault(sweep: Sweep, points: tuple[Point, ...], limit: int) -> Fault | None:
+    sizes = list(_kept_by_point(sweep, points))
+    total = sum(point.cap * size for point, size in sizes)
+    if total <= limit:
+        return None
+    index = next(i for i, item in enumerate(sweep.observe) if item.keep_values)
+    passing = limit // sum(size for _, size in sizes)
+    fewer = f"up to {passing} trajectories per ensemble would pass, or fewer" if passing else "read fewer"
+    return Fault(
+        f"observe[{index}].keep_values",
+        f"the values of all trajectories up to the caps take {total} bytes, this server keeps at most {limit} of a "
+        f"sweep (limits.kept_values): {fewer} ensembles, layers or cuts",
     )

@@ -13,7 +13,7 @@ from distributed.scheduler import NoValidWorkerError, NoWorkerError
 
 from sweepmill_service.plan.task import Task
 from sweepmill_service.pool import Pool, difference
-from sweepmill_service.store.results import BatchFault, BatchResult
+from sweepmill_service.store.results import BatchFault, BatchResult, Kept
 
 SPARED = 3  # losses of a worker that a task not seen to begin is not blamed for
 TRACEBACK_LINES = 40
@@ -149,6 +149,7 @@ def _judge_result(task: Task, result: dict[str, Any], worker: str) -> Landed | F
         versions=result["versions"],
         sweep=task.sweep,
         owner=task.owner,
+        values={key: Kept(*chunk) for key, chunk in result.get("values", {}).items()},
     )
     return Landed(task, stored)
 

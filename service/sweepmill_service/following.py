@@ -1,8 +1,11 @@
 """Keeping the plan in step with the store."""
 
+from collections.abc import Mapping
 from typing import Any
 
+from sweepmill.coordinates import kept_bytes
 from sweepmill.ensemble import Ensemble
+from sweepmill.observation import observation_from_normal_form
 from sweepmill_service.plan.costs import seconds_of, work_of
 from sweepmill_service.plan.plan import EnsembleInfo, Plan
 from sweepmill_service.plan.sweeps import Request, SweepInfo
@@ -89,7 +92,9 @@ class Follower:
             return
         self._observations.update(self._store.observation_forms(sweep.observations))
         self._ensembles.update((one.key, one.normal_form) for one in members)
-        self._plan.add_sweep(_info(sweep), [_ensemble_info(one) for one in members])
+        forms = {key: self._observations[key] for key in sweep.observations}
+        kept = {key: observation_from_normal_form(form) for key, form in forms.items() if form.get("keep_values")}
+        self._plan.add_sweep(_info(sweep), [_ensemble_info(one, kept) for one in members])
 
 
 def _requests(sweep: LiveSweep) -> tuple[Request, ...]:
@@ -108,8 +113,9 @@ def _info(sweep: LiveSweep) -> SweepInfo:
     )
 
 
-def _ensemble_info(one: OpenEnsemble) -> EnsembleInfo:
-    work = work_of(Ensemble.from_normal_form(one.normal_form))
+def _ensemble_info(one: OpenEnsemble, kept: Mapping[str, Any]) -> EnsembleInfo:
+    ensemble = Ensemble.from_normal_form(one.normal_form)
+    work = work_of(ensemble)
     return EnsembleInfo(
         key=one.key,
         cap=one.cap,
@@ -121,4 +127,5 @@ def _ensemble_info(one: OpenEnsemble) -> EnsembleInfo:
         reaches=one.reaches,
         islands=one.islands,
         faults=one.faults,
+        kept_bytes={key: kept_bytes(ensemble, item) for key, item in kept.items()},
     )

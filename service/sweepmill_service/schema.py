@@ -161,6 +161,18 @@ Index(
     sqlite_where=batch.c.accumulator.is_not(None),
 )
 
+# Values of every trajectory of a batch, of observations that keep them: written with the batch, never changed.
+kept = Table(
+    "kept",
+    metadata,
+    Column("ensemble", Key, primary_key=True),
+    Column("observation", Key, primary_key=True),
+    Column("first", BigInteger, primary_key=True, autoincrement=False),
+    Column("digest", String(64), nullable=False),  # of the integers
+    Column("data", LargeBinary, nullable=False),
+    ForeignKeyConstraint(["ensemble", "observation", "first"], ["batch.ensemble", "batch.observation", "batch.first"]),
+)
+
 # Every task handed to the pool, written before it is handed over.
 start = Table(
     "start",

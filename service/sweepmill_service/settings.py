@@ -39,6 +39,7 @@ class ServerLimits(BaseModel):
     ensembles: int = Field(20_000, ge=1, description="Ensembles of one sweep")
     trajectories: int = Field(10_000_000, ge=1, description="Trajectories of one ensemble")
     accumulator_bytes: int = Field(1_048_576, ge=1024, description="Totals of one ensemble and observation")
+    kept_values: int = Field(1_073_741_824, ge=0, description="Kept values of one sweep, in bytes before compression")
     program_values: int = Field(100_000, ge=10, description="Words and numbers of a circuit written as data")
     program_values_total: int = Field(2_000_000, ge=10, description="The same over all ensembles of one sweep")
     compiled_places: int = Field(2_000_000, ge=1000, description="Places of a circuit in tables, each layer once")

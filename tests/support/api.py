@@ -17,7 +17,7 @@ from sweepmill_service.runtime import Runtime
 from sweepmill_service.serve import server_configuration
 from sweepmill_service.settings import Settings
 from sweepmill_service.store import Store
-from sweepmill_service.store.results import BatchResult
+from sweepmill_service.store.results import BatchResult, Kept
 from sweepmill_worker.sample import sample_plain
 
 PATIENCE = 60.0
@@ -98,4 +98,5 @@ def _result(ensemble: str, plain: dict[str, Any], sweep: str, owner: str) -> Bat
         versions=plain["versions"],
         sweep=sweep,
         owner=owner,
+        values={key: Kept(*chunk) for key, chunk in plain["values"].items()},
     )

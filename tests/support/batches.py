@@ -7,7 +7,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sweepmill.accumulate import Accumulator
-from sweepmill_service.store.results import BatchResult
+from sweepmill_service.store.results import BatchResult, Kept
+from sweepmill_worker.kept import pack
 
 
 def values(ensemble: str, observation: str, first: int, count: int, coordinates: int = 1) -> NDArray[np.int64]:
@@ -32,8 +33,9 @@ def result(
     sweep: str,
     owner: str = "ada",
     seconds: float = 1.0,
+    kept: bool = False,
 ) -> BatchResult:
-    """The result of one task."""
+    """The result of one task, with its values if they are kept."""
     made = {key: accumulator(ensemble, key, first, count) for key in observations}
     return BatchResult(
         ensemble=ensemble,
@@ -46,4 +48,5 @@ def result(
         versions={"sweepmill": "0"},
         sweep=sweep,
         owner=owner,
+        values={key: Kept(*pack(values(ensemble, key, first, count))) for key in observations if kept},
     )

@@ -9,19 +9,22 @@ from typing import Any, Final
 
 import numpy as np
 
-from sweepmill.coordinates import accumulator_bytes
+from sweepmill.coordinates import accumulator_bytes, kept_bytes
 from sweepmill.ensemble import Ensemble
 from sweepmill.times import Reading, readings
 from sweepmill_worker.clifford.engine import working_bytes as column_bytes
 from sweepmill_worker.clusters.engine import working_bytes as cluster_bytes
 from sweepmill_worker.crossed import program_from
 from sweepmill_worker.engines import CHAIN, CLUSTERS, SIGNED, engine_of, program_of
+from sweepmill_worker.kept import BATCH_BYTES
 from sweepmill_worker.observables.plan import ProbePlan, plan_probes
 from sweepmill_worker.program.compile import Program
 
 BLOCK_BYTES: Final = 16_000_000
 """Room for the readings of one block of trajectories, and for the values made of them."""
 OPERATION_BYTES: Final = 48
+KEPT_COPIES: Final = 12
+"""Kept values of one batch are held narrow and, while they are packed, as wide integers."""
 SIGNED_SPARE: Final = 64
 """Qubits of the signed simulation besides the system and as many of its environment."""
 
@@ -88,4 +91,10 @@ def peak_bytes(ensemble: Ensemble, observations: Sequence[Any]) -> int:
     block = max(BLOCK_BYTES, trajectory_bytes(ensemble, observations))
     totals = sum(accumulator_bytes(ensemble, item) for item in observations)
     engines = engine_bytes(ensemble) + _other_states_bytes(ensemble, plan_of(ensemble, observations).probes.against)
-    return engines + 3 * block + 3 * totals
+    return engines + 3 * block + 3 * totals + KEPT_COPIES * _kept(ensemble, observations)
+
+
+def _kept(ensemble: Ensemble, observations: Sequence[Any]) -> int:
+    """Values that a batch carries, whose size the plan bounds."""
+    each = sum(kept_bytes(ensemble, item) for item in observations)
+    return max(BATCH_BYTES, each) if each else 0

@@ -11,6 +11,9 @@ from functools import cache
 from importlib.metadata import version
 from typing import Any
 
+import numpy as np
+from numpy.typing import NDArray
+
 from sweepmill.accumulate import Accumulator, merged
 from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
@@ -18,6 +21,7 @@ from sweepmill.observation import observation_from_normal_form
 from sweepmill.revisions import FAMILY_REVISIONS, results_revision
 from sweepmill_worker.batch import Batch
 from sweepmill_worker.engines import PROGRAM, engine_of
+from sweepmill_worker.kept import narrowed, pack
 from sweepmill_worker.memory import block_size, plan_of, read_layers, times_of
 from sweepmill_worker.observables.plan import ProbePlan
 from sweepmill_worker.observables.values import Values, values_of
@@ -25,7 +29,7 @@ from sweepmill_worker.warm import load
 
 
 def sample(ensemble: Ensemble, observations: Sequence[Any], first: int, count: int) -> Batch:
-    """Sample trajectories [first, first + count) and accumulate every observation exactly.
+    """Sample trajectories [first, first + count) and accumulate every observation exactly, keeping values where asked.
 
     Raises ValueError for a range that is empty or negative, for an ensemble of another family revision and for an
     observation the ensemble does not have.
@@ -33,12 +37,16 @@ def sample(ensemble: Ensemble, observations: Sequence[Any], first: int, count: i
     _check(ensemble, observations, first, count)
     plan, block = plan_of(ensemble, observations), block_size(ensemble, observations)
     parts: list[list[Accumulator]] = [[] for _ in observations]
+    kept: list[list[NDArray[np.signedinteger]]] = [[] for _ in observations]
     for start in range(first, first + count, block):
-        stop = min(start + block, first + count)
-        for part, values in zip(parts, _read(ensemble, observations, plan, start, stop - start), strict=True):
+        read = _read(ensemble, observations, plan, start, min(start + block, first + count) - start)
+        for item, part, values, held in zip(observations, parts, read, kept, strict=True):
             part.append(Accumulator.from_values(values.raw, start, values.single))
+            if item.keep_values:
+                held.append(narrowed(values.raw))
     accumulators = {item.key: merged(part) for item, part in zip(observations, parts, strict=True)}
-    return Batch(ensemble.key, first, count, accumulators)
+    chunks = {item.key: pack(np.concatenate(held)) for item, held in zip(observations, kept, strict=True) if held}
+    return Batch(ensemble.key, first, count, accumulators, chunks)
 
 
 def sample_plain(
@@ -57,6 +65,7 @@ def sample_plain(
         "count": count,
         "accumulators": {key: item.to_bytes() for key, item in batch.accumulators.items()},
         "digests": {key: item.digest for key, item in batch.accumulators.items()},
+        "values": {key: tuple(chunk) for key, chunk in batch.values.items()},
         "seconds": time.process_time() - started,
         "versions": versions(),
         "results_revision": results_revision(),

@@ -22,6 +22,7 @@ class BaseObservation(Strict):
     quantity: str
     name: Annotated[str, Field(pattern=NAME_PATTERN)] | None = Field(None, exclude=True)
     at: At = "last-cell"
+    keep_values: Flag = False  # of every trajectory, besides their sums
 
     COMPONENTS: ClassVar[int] = 1
 

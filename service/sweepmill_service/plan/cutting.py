@@ -4,13 +4,14 @@ import math
 
 from sweepmill_service.plan.entries import Entry, PlanMember
 from sweepmill_service.plan.task import SizeRules, Task
+from sweepmill_worker.kept import BATCH_BYTES
 
 
 def next_task(entry: Entry, member: PlanMember, owner: str, seconds: float, speculative: bool = False) -> Task | None:
     """The next task of an ensemble for a sweep, about ``seconds`` long; None if nothing is left to hand out.
 
     It carries every observation, of any live sweep, whose next trajectory is the same, and ends where a total must
-    be kept, where another batch begins, or where another observation joins.
+    be kept, where another batch begins, where another observation joins, or before its values are too many.
     """
     target = entry.speculative_target(member) if speculative else entry.likely_target(member)
     first = entry.first_needed(member)
@@ -19,6 +20,8 @@ def next_task(entry: Entry, member: PlanMember, owner: str, seconds: float, spec
     chosen, ends = _companions(entry, first, speculative)
     ends += [end for key in chosen if (end := entry.track(key).room(first)) is not None]
     ends += [target, *([] if (mark := entry.cut(first)) is None else [mark])]
+    if kept := sum(entry.kept_bytes.get(key, 0) for key in chosen):
+        ends.append(first + max(1, BATCH_BYTES // kept))
     count = min(max(1, int(seconds / entry.seconds_per_trajectory)), min(ends) - first)
     attempt = entry.faults.get(first, 0) + 1
     predicted = count * entry.seconds_per_trajectory

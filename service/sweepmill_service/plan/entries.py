@@ -70,6 +70,7 @@ class Entry:
     tracks: dict[str, Track] = field(default_factory=dict)
     members: dict[str, PlanMember] = field(default_factory=dict)
     faults: dict[int, int] = field(default_factory=dict)  # first -> failed attempts
+    kept_bytes: dict[str, int] = field(default_factory=dict)  # by observation, of one trajectory
     version: int = 0
 
     @property

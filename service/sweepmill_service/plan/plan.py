@@ -32,6 +32,7 @@ class EnsembleInfo:
     reaches: dict[str, Reach] = field(default_factory=dict)
     islands: dict[str, dict[int, int]] = field(default_factory=dict)
     faults: dict[int, int] = field(default_factory=dict)
+    kept_bytes: dict[str, int] = field(default_factory=dict)  # of one trajectory, where values are kept
 
 
 class Plan:
@@ -206,6 +207,7 @@ class Plan:
         entry.stuck = one.stuck
         (self.stuck.add if one.stuck else self.stuck.discard)(one.key)
         entry.faults = dict(one.faults)
+        entry.kept_bytes.update(one.kept_bytes)
         for observation, reach in one.reaches.items():
             entry.track(observation).set_reach(reach)
         self._cover(entry, one.islands)

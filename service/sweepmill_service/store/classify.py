@@ -3,16 +3,17 @@
 from collections import defaultdict
 from collections.abc import Collection, Sequence
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, TypeAlias
 
-from sqlalchemy import Connection, select, tuple_
+from sqlalchemy import Connection, and_, select, tuple_
 
-from sweepmill_service.schema import batch
+from sweepmill_service.schema import batch, kept
 from sweepmill_service.store.common import chunks
 from sweepmill_service.store.members import NOTHING, Reaches
 from sweepmill_service.store.results import BatchResult, Outcome, Refused
 
 Pair = tuple[str, str]
+Identity: TypeAlias = tuple[str, str | None]  # digests of the total and of kept values
 
 
 @dataclass
@@ -20,17 +21,17 @@ class Ranges:
     """What is stored of one (ensemble, observation) near the results at hand."""
 
     prefix: int
-    rows: dict[int, tuple[int, str]] = field(default_factory=dict)  # first -> (count, digest)
+    rows: dict[int, tuple[int, Identity]] = field(default_factory=dict)  # first -> (count, digests)
     islands: dict[int, int] = field(default_factory=dict)  # first -> count, not folded yet
     fresh: dict[int, BatchResult] = field(default_factory=dict)  # accepted now
 
-    def verdict(self, result: BatchResult, digest: str) -> str | None:
+    def verdict(self, result: BatchResult, identity: Identity) -> str | None:
         """Why a result is refused, None if it is new."""
         if result.first in self.rows:
             count, known = self.rows[result.first]
             if count != result.count:
                 return "overlap"
-            return "duplicate" if known == digest else "determinism"
+            return "duplicate" if known == identity else "determinism"
         if result.first < self.prefix or any(
             first < result.first + result.count and result.first < first + count
             for first, count in self.islands.items()
@@ -38,9 +39,9 @@ class Ranges:
             return "overlap"
         return None
 
-    def accept(self, result: BatchResult, digest: str) -> None:
+    def accept(self, result: BatchResult, identity: Identity) -> None:
         """Count a result as stored."""
-        self.rows[result.first] = (result.count, digest)
+        self.rows[result.first] = (result.count, identity)
         self.islands[result.first] = result.count
         self.fresh[result.first] = result
 
@@ -66,10 +67,10 @@ def classify(
 
 
 def _place(result: BatchResult, observation: str, ranges: Ranges, outcome: Outcome) -> None:
-    digest = result.digests[observation]
-    why = ranges.verdict(result, digest)
+    identity = result.identity(observation)
+    why = ranges.verdict(result, identity)
     if why is None:
-        ranges.accept(result, digest)
+        ranges.accept(result, identity)
         return
     refused: Any = (result.ensemble, observation, result.first, result.count, why)
     outcome.refused.append(Refused(*refused))
@@ -85,7 +86,7 @@ def _stored(connection: Connection, results: Sequence[BatchResult], known: Reach
     ranges = {pair: Ranges(known.get(pair, NOTHING).prefix) for pair in pairs}
     for row in _rows(connection, results):
         if (pair := (row.ensemble, row.observation)) in ranges:
-            ranges[pair].rows[row.first] = (row.count, row.digest)
+            ranges[pair].rows[row.first] = (row.count, (row.digest, row.values))
     for pair, islands in unfolded(connection, {result.ensemble for result in results}).items():
         if pair in ranges:
             ranges[pair].islands.update(islands)
@@ -93,12 +94,15 @@ def _stored(connection: Connection, results: Sequence[BatchResult], known: Reach
 
 
 def _rows(connection: Connection, results: Sequence[BatchResult]) -> list[Any]:
-    columns = (batch.c.ensemble, batch.c.observation, batch.c.first, batch.c.count, batch.c.digest)
+    keys = ("ensemble", "observation", "first")
+    same = and_(*(kept.c[name] == batch.c[name] for name in keys))
+    columns = (*(batch.c[name] for name in keys), batch.c.count, batch.c.digest, kept.c.digest.label("values"))
+    both = select(*columns).select_from(batch.outerjoin(kept, same))
     places = {(result.ensemble, result.first) for result in results}
     rows: list[Any] = []
     for piece in chunks(sorted(places), 200):
         where = tuple_(batch.c.ensemble, batch.c.first).in_(piece)
-        rows.extend(connection.execute(select(*columns).where(where)))
+        rows.extend(connection.execute(both.where(where)))
     return rows
 
 

@@ -6,7 +6,7 @@ from typing import Any
 
 from sqlalchemy import Connection, bindparam, insert, update
 
-from sweepmill_service.schema import batch, ensemble, request
+from sweepmill_service.schema import batch, ensemble, kept, request
 from sweepmill_service.store.classify import Pair, Ranges, classify
 from sweepmill_service.store.common import now, to_json
 from sweepmill_service.store.folding import fold
@@ -55,6 +55,14 @@ def _insert_batches(connection: Connection, ranges: dict[Pair, Ranges], chains: 
     ]
     if rows:
         connection.execute(insert(batch), rows)
+    values = [
+        {"ensemble": result.ensemble, "observation": pair[1], "first": first} | result.values[pair[1]]._asdict()
+        for pair, one in ranges.items()
+        for first, result in one.fresh.items()
+        if pair[1] in result.values
+    ]
+    if values:
+        connection.execute(insert(kept), values)
 
 
 def _batch_row(result: BatchResult, observation: str, folded: bool, at: float) -> dict[str, Any]:

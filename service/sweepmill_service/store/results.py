@@ -7,11 +7,19 @@ from typing import Literal, NamedTuple
 from sweepmill_service.plan.marks import Reach
 
 
+class Kept(NamedTuple):
+    """Values of one observation on all trajectories of a batch, packed; the digest is that of the integers."""
+
+    data: bytes
+    digest: str
+
+
 @dataclass(frozen=True)
 class BatchResult:
     """Trajectories [first, first + count) of an ensemble as a worker returned them.
 
-    ``accumulators`` and ``digests`` by observation key; ``seconds`` are CPU seconds, charged to (sweep, owner).
+    ``accumulators``, ``digests`` and, where they are kept, ``values`` by observation key; ``seconds`` are CPU seconds,
+    charged to (sweep, owner).
     """
 
     ensemble: str
@@ -24,6 +32,12 @@ class BatchResult:
     versions: Mapping[str, str]
     sweep: str
     owner: str
+    values: Mapping[str, Kept] = field(default_factory=dict)
+
+    def identity(self, observation: str) -> tuple[str, str | None]:
+        """Digests of what there is of an observation: its total, and its values if they are kept."""
+        values = self.values.get(observation)
+        return self.digests[observation], None if values is None else values.digest
 
 
 @dataclass(frozen=True)

@@ -22,11 +22,13 @@ from sweepmill_service.store import (
     sampled,
     status,
     tables,
+    values,
 )
 from sweepmill_service.store.loading import LiveSweep, OpenEnsemble
 from sweepmill_service.store.requests import UNSET, Submission, Unset
 from sweepmill_service.store.results import BatchFault, BatchResult, Outcome, Start
 from sweepmill_service.store.tables import TableEntry
+from sweepmill_service.store.values import KeptChunk, KeptEntry
 
 
 class Store:
@@ -121,6 +123,15 @@ class Store:
         """Digest of every settled ensemble of a sweep."""
         with self.engine.connect() as connection:
             return tables.frozen_digests(connection, key)
+
+    def kept_entries(self, key: str, observation: str) -> list[KeptEntry]:
+        """The N of every ensemble of a sweep whose values of an observation are served."""
+        with self.engine.connect() as connection:
+            return values.kept_entries(connection, key, observation)
+
+    def kept_chunks(self, ensemble: str, observation: str, number: int) -> Iterator[KeptChunk]:
+        """Packed values of the first trajectories of an ensemble, paged in short transactions."""
+        return values.kept_chunks(self.engine, ensemble, observation, number)
 
     def ensemble_record(self, key: str) -> EnsembleRecord:
         """Parameters, counts and provenance of an ensemble."""
