@@ -11,7 +11,7 @@ from sweepmill_service import events, problems
 from sweepmill_service.guard import Guard
 from sweepmill_service.metrics import Instrument, Metrics
 from sweepmill_service.openapi import document
-from sweepmill_service.routes import ensembles, service, sweeps, tables
+from sweepmill_service.routes import ensembles, service, sweeps, tables, values
 from sweepmill_service.routes import events as event_routes
 from sweepmill_service.runtime import Runtime
 from sweepmill_service.settings import Settings
@@ -42,7 +42,7 @@ def create_app(settings: Settings) -> FastAPI:
     )
     app.state.runtime = runtime
     app.state.metrics = metrics
-    for module in (sweeps, event_routes, tables, ensembles, service):
+    for module in (sweeps, event_routes, tables, values, ensembles, service):
         app.include_router(module.router)
     app.add_middleware(Guard, limits=settings.limits)
     app.add_middleware(Instrument, metrics=metrics)

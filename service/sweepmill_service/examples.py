@@ -192,6 +192,11 @@ FOLDS: dict[str, Any] = {
     },
     "metadata": TABLE["metadata"],
 }
+VALUES = """\
+sites,layer,position,trajectory,value
+16,,,0,2
+16,,,1,1.5
+"""
 ENSEMBLE = EnsembleRecord.model_validate(
     {
         "key": _POINT.ensemble.key,

@@ -29,8 +29,9 @@ def keeping(cap: int = 400) -> Sweep:
 
 
 def stored(store: Store, ensemble: str, observation: str, number: int) -> list[list[int]]:
+    """Values [trajectories, coordinates] as they are served."""
     chunks = store.kept_chunks(ensemble, observation, number)
-    return [unpack(chunk.data)[:, :, 0].tolist() for chunk in chunks]
+    return [row for chunk in chunks for row in unpack(chunk.data)[:, :, 0].tolist()]
 
 
 def test_values_come_back_in_order_however_their_batches_arrived(store: Store) -> None:
@@ -43,7 +44,7 @@ def test_values_come_back_in_order_however_their_batches_arrived(store: Store) -
         (entry, *others) = store.kept_entries(sweep.key, key)
         assert (entry.ensemble_key, entry.trajectories, entry.met_by) == (one, 30, None)
         assert [other.trajectories for other in others] == [0, 0]
-        assert sum(stored(store, one, key, 30), []) == values(one, key, 0, 30).tolist()
+        assert stored(store, one, key, 30) == values(one, key, 0, 30).tolist()
 
 
 def test_values_beyond_a_gap_wait_until_it_closes(store: Store) -> None:
@@ -71,7 +72,7 @@ def test_storing_values_twice_changes_nothing_and_other_values_are_a_determinism
         (observations[1], "duplicate"),
     }
     assert set(outcome.stuck) == {one}
-    assert stored(store, one, observations[0], 10) == [values(one, observations[0], 0, 10).tolist()]
+    assert stored(store, one, observations[0], 10) == values(one, observations[0], 0, 10).tolist()
 
 
 def test_a_settled_sweep_is_served_the_trajectories_it_settled_with(store: Store) -> None:
@@ -87,7 +88,7 @@ def test_a_settled_sweep_is_served_the_trajectories_it_settled_with(store: Store
     assert (after.trajectories, after.met_by) == (20, "cap")
     assert after.digest is not None
     assert store.kept_entries(longer.key, observations[0])[0].trajectories == 50
-    assert sum(stored(store, one, observations[0], 20), []) == values(one, observations[0], 0, 20).tolist()
+    assert stored(store, one, observations[0], 20) == values(one, observations[0], 0, 20).tolist()
 
 
 def test_many_chunks_are_read_in_pages(store: Store) -> None:
@@ -95,7 +96,7 @@ def test_many_chunks_are_read_in_pages(store: Store) -> None:
     store.submit(sweep, "ada")
     (one, *_), observations = keys_of(sweep)
     store.commit([result(one, observations, first, 3, sweep.key, kept=True) for first in range(0, 90, 3)])
-    assert sum(stored(store, one, observations[0], 90), []) == values(one, observations[0], 0, 90).tolist()
+    assert stored(store, one, observations[0], 90) == values(one, observations[0], 0, 90).tolist()
 
 
 def test_a_batch_and_its_values_are_stored_together_or_not_at_all(store: Store) -> None:
@@ -145,5 +146,5 @@ def test_a_database_of_the_revision_before_keeps_what_was_sampled_and_takes_valu
         assert [entry.digest for entry in store.table_entries(plain.key)] == before
         store.submit(sweep, "ada")
         store.commit([result(one, keys_of(sweep)[1], 0, 10, sweep.key, kept=True)])
-        assert np.array(stored(store, one, keys_of(sweep)[1][0], 10)).shape == (1, 10, 1)
+        assert np.array(stored(store, one, keys_of(sweep)[1][0], 10)).shape == (10, 1)
         engine.dispose()

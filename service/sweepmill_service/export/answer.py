@@ -32,11 +32,11 @@ def table_answer(
     if held is not None:
         etag = entity_tag(kind, key, store.table_version(key), form)
         if matches(held, etag):
-            return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=_headers(etag))
+            return Response(status_code=HTTPStatus.NOT_MODIFIED, headers=answer_headers(etag))
     with _no_collections():
         content = build(store, key)
     etag = entity_tag(kind, key, content.version, form)
-    return StreamingResponse(WRITERS[form](content), headers=_headers(etag), media_type=MEDIA_TYPES[form])
+    return StreamingResponse(WRITERS[form](content), headers=answer_headers(etag), media_type=MEDIA_TYPES[form])
 
 
 @contextmanager
@@ -49,7 +49,8 @@ def _no_collections() -> Iterator[None]:
         gc.enable()
 
 
-def _headers(etag: str) -> dict[str, str]:
+def answer_headers(etag: str) -> dict[str, str]:
+    """Headers of an answer that a client may keep and ask about again."""
     return {"ETag": etag, "Vary": "Accept", "Cache-Control": "private, no-cache"}
 
 

@@ -1,5 +1,6 @@
 """A table in memory: Arrow record batches, a fraction of the size of the totals they come from."""
 
+from collections.abc import Iterable
 from typing import Any, NamedTuple
 
 import pyarrow as pa
@@ -11,7 +12,7 @@ class Content(NamedTuple):
     """Record batches of one schema, the metadata of the table, and a digest of the N it rests on."""
 
     schema: pa.Schema
-    batches: list[pa.RecordBatch]
+    batches: Iterable[pa.RecordBatch]
     metadata: dict[str, Any]
     version: str
 

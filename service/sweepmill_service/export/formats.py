@@ -63,24 +63,26 @@ def write_json(content: Content) -> Iterator[bytes]:
 def write_csv(content: Content) -> Iterator[bytes]:
     """Plain CSV (RFC 4180) with a header line; empty where a value is undefined. The metadata is not in it."""
     options = pyarrow.csv.WriteOptions(quoting_style="needed")
-    return _streamed(content, content.schema, partial(pyarrow.csv.CSVWriter, write_options=options))
+    return streamed(content, content.schema, partial(pyarrow.csv.CSVWriter, write_options=options))
 
 
 def write_arrow(content: Content) -> Iterator[bytes]:
     """Arrow's streaming format with the metadata in the schema."""
-    return _streamed(content, _with_metadata(content), pyarrow.ipc.new_stream)
+    return streamed(content, with_metadata(content), pyarrow.ipc.new_stream)
 
 
 def write_parquet(content: Content) -> Iterator[bytes]:
     """Parquet with the metadata in the schema."""
-    return _streamed(content, _with_metadata(content), pyarrow.parquet.ParquetWriter)
+    return streamed(content, with_metadata(content), pyarrow.parquet.ParquetWriter)
 
 
-def _with_metadata(content: Content) -> pa.Schema:
+def with_metadata(content: Content) -> pa.Schema:
+    """The schema with the metadata in it."""
     return content.schema.with_metadata({ARROW_METADATA: json.dumps(content.metadata)})
 
 
-def _streamed(content: Content, schema: pa.Schema, open_writer: Callable[[Any, pa.Schema], Any]) -> Iterator[bytes]:
+def streamed(content: Content, schema: pa.Schema, open_writer: Callable[[Any, pa.Schema], Any]) -> Iterator[bytes]:
+    """What a writer makes of the record batches, piece by piece."""
     pieces = Pieces()
     with pa.PythonFile(pieces, mode="w") as sink, open_writer(sink, schema) as writer:
         for batch in content.batches:

@@ -22,10 +22,10 @@ class KeptEntry(NamedTuple):
 
 
 class KeptChunk(NamedTuple):
-    """Packed values of trajectories [first, first + count)."""
+    """Packed values of so many trajectories from ``first`` on."""
 
     first: int
-    count: int
+    trajectories: int
     data: bytes
 
 
@@ -70,8 +70,8 @@ def kept_chunks(engine: Engine, ensemble: str, observation: str, number: int) ->
             if row.first != reached:
                 break
             yield row
-            reached += row.count
-        if not rows or rows[-1].first + rows[-1].count != reached:
+            reached += row.trajectories
+        if not rows or rows[-1].first + rows[-1].trajectories != reached:
             raise MissingValues(f"values of ensemble {ensemble} are missing from trajectory {reached} on")
         page = max(1, min(PAGE_BYTES // max(len(row.data) for row in rows), LARGEST_PAGE))
 
