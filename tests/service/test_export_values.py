@@ -159,7 +159,7 @@ def test_a_current_copy_is_confirmed_and_an_old_one_replaced(api: Api) -> None:
     api.submit(sweep)
     sampled_by_hand(api.store, sweep, 10)
     path, tag = f"/v1/sweeps/{sweep.key}/values", values_of(api, sweep, "half").headers["etag"]
-    ask = {"params": {"name": "half"}, "headers": {"If-None-Match": tag}}
+    ask: dict[str, Any] = {"params": {"name": "half"}, "headers": {"If-None-Match": tag}}
     assert api.http.get(path, **ask).status_code == 304
     sampled_by_hand(api.store, sweep, 12, first=10)
     assert api.http.get(path, **ask).headers["etag"] != tag
