@@ -116,7 +116,7 @@ def _largest(ensemble: Ensemble, observation: Any) -> int:
             return ensemble.references
         case PauliExpectation():
             return 2
-        case ClusterOrder():
+        case ClusterOrder() | CrossEntropy():
             return 1
     return ensemble.sites
 

@@ -12,7 +12,10 @@ from sweepmill.limits import Limits, check_limits, kept_values_bytes
 from sweepmill.observation import QUANTITIES, observation_from_normal_form
 from sweepmill.sweep import Sweep
 
-OWN: dict[str, dict[str, Any]] = {"pauli-expectation": {"pauli": "ZZ", "sites": [0, 1]}}
+OWN: dict[str, dict[str, Any]] = {
+    "pauli-expectation": {"pauli": "ZZ", "sites": [0, 1]},
+    "cross-entropy": {"against": "plus"},
+}
 RING = Ensemble.of("hybrid-clifford", sites=16, measurement_rate=0.1, layers=64)
 
 
