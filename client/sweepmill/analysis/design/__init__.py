@@ -4,6 +4,7 @@ Pure functions: from what was measured at all candidates to a verdict and to the
 """
 
 from sweepmill.analysis.design.critical_point import advise_critical_point
+from sweepmill.analysis.design.law import advise_law
 from sweepmill.analysis.design.place import Advice, Place
 
-__all__ = ["Advice", "Place", "advise_critical_point"]
+__all__ = ["Advice", "Place", "advise_critical_point", "advise_law"]

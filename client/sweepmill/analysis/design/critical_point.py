@@ -6,14 +6,15 @@ from collections.abc import Sequence
 import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
-from sweepmill.analysis.collapse import Collapse, fit_collapse
+from sweepmill.analysis.collapse import fit_collapse
 from sweepmill.analysis.design.form_test import form_places
 from sweepmill.analysis.design.linear import gradients
 from sweepmill.analysis.design.noise import smooth_variance
 from sweepmill.analysis.design.ordering import Bracket, bracket
 from sweepmill.analysis.design.place import Advice, Candidates, Place
-from sweepmill.analysis.design.rounds import AIM, Plan
+from sweepmill.analysis.design.rounds import Plan
 from sweepmill.analysis.design.spread import spread_out
+from sweepmill.analysis.design.verdict import improved, met, told
 from sweepmill.analysis.design.window import Choice, choose
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.points import Points
@@ -35,9 +36,8 @@ def advise_critical_point(points: Points, places: Sequence[Place], below: float)
         return _without_fit(candidates, points, order, choice, trouble)
     collapse = fit_collapse(choice.fitted.points, choice.fitted.frame.form)
     estimate = collapse["p_c"]
-    if estimate.error is not None and estimate.error <= below:
-        return _advice(estimate, True, candidates.have, estimate.error, f"p_c = {estimate} is as precise as asked")
-    return _improved(candidates, points, choice, collapse, below)
+    done = met(estimate, "p_c", candidates, below)
+    return done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
 
 
 def _checked(points: Points, places: Sequence[Place]) -> Candidates:
@@ -68,20 +68,9 @@ def _without_fit(
 ) -> Advice:
     value = math.nan if choice is None else float(choice.fitted.values[0])
     estimate = Estimate(value, math.nan, 0.0, trouble)
-    targets = spread_out(candidates, points, order)
     where = f"between {order.low:g} and {order.high:g}" if order else "over the whole range"
-    return _advice(estimate, False, targets, math.nan, f"{trouble}: values are spread {where}", candidates)
-
-
-def _improved(candidates: Candidates, points: Points, choice: Choice, collapse: Collapse, below: float) -> Advice:
-    estimate = collapse["p_c"]
-    plan = _plan(candidates, points, choice)
-    error = math.hypot(estimate.statistical, estimate.spread)
-    targets = _whole(plan.round((AIM * below / error) ** 2), candidates)
-    shrink = plan.variance(targets) / plan.variance(candidates.have)
-    predicted = error * math.sqrt(shrink)
-    why = f"p_c = {estimate}, {below:g} is asked"
-    return _advice(estimate, False, targets, predicted, why, candidates)
+    targets = spread_out(candidates, points, order)
+    return told(estimate, targets, math.nan, f"{trouble}: values are spread {where}", candidates)
 
 
 def _plan(candidates: Candidates, points: Points, choice: Choice) -> Plan:
@@ -112,17 +101,3 @@ def _noise(candidates: Candidates, points: Points) -> Vector:
     placed = candidates.have > 0
     measured = candidates.have[placed] * points.error**2
     return smooth_variance(points.sizes, points.x, measured, candidates.size, candidates.x)
-
-
-def _whole(targets: Vector, candidates: Candidates) -> Vector:
-    return np.minimum(np.maximum(np.ceil(targets - 1e-6), candidates.have), candidates.most)
-
-
-def _advice(
-    estimate: Estimate, met: bool, targets: Vector, predicted: float, reason: str, candidates: Candidates | None = None
-) -> Advice:
-    if candidates is not None:
-        targets = _whole(targets, candidates)
-        if (targets <= candidates.have).all():
-            reason += "; every ensemble that could help has all the trajectories it may have"
-    return Advice(estimate, met, tuple(int(one) for one in targets), predicted, reason)
