@@ -39,6 +39,7 @@ from sweepmill.remote import RemoteSweep
 from sweepmill.retry import Retry
 from sweepmill.sweep import Sweep
 from sweepmill.table import Table, require_independent
+from sweepmill.values import Values
 
 __all__ = [
     "AccumulatorMismatch",
@@ -68,6 +69,7 @@ __all__ = [
     "UnexpectedAnswer",
     "UnknownKey",
     "Unreachable",
+    "Values",
     "WaitTimeout",
     "layered_form",
     "require_independent",

@@ -9,6 +9,7 @@ from urllib.parse import quote
 
 from sweepmill import messages
 from sweepmill.errors import UnknownKey
+from sweepmill.extras import needing
 from sweepmill.folds import FORMATS, Folds
 from sweepmill.follow import follow
 from sweepmill.messages import EnsembleProgress, ProgressPage, Submitted, SweepStatus
@@ -18,6 +19,8 @@ from sweepmill.table import Table
 from sweepmill.table_files import MEDIA_TYPES, media_type
 from sweepmill.text import short
 from sweepmill.transport import Transport
+from sweepmill.values import FORMATS as VALUE_FORMATS
+from sweepmill.values import Values
 
 
 class RemoteSweep:
@@ -70,9 +73,13 @@ class RemoteSweep:
         """The table as it is now; once settled, the same for ever."""
         return self._fetched("table")
 
-    def histograms(self) -> Table:
-        """Exact histograms of the observations that keep one: a row for each value that occurred."""
-        return self._fetched("histograms")
+    def histograms(self, folds: bool = False) -> Table:
+        """Exact histograms of the observations that keep one: a row for each value that occurred.
+
+        With `folds` also a column `by_fold`: a list of the occurrences in every fold of trajectories.
+        """
+        body = self._body("histograms", {"folds": "true"} if folds else {})
+        return Table(body.columns, body.metadata)
 
     def folds(self, name: str | None = None) -> Folds:
         """Sums over folds of trajectories, of all observations or one: what fits with jackknife errors start from.
@@ -81,6 +88,31 @@ class RemoteSweep:
         """
         body = self._body("folds", {} if name is None else {"name": name})
         return Folds(body.columns, body.metadata)
+
+    def values(self, name: str | None = None) -> Values:
+        """Values of every trajectory of an observation that keeps them; needs the extra `analysis`.
+
+        `name` may be left out where only one does. Raises ServiceError for another observation.
+        """
+        with needing("values()", "analysis"):
+            import pyarrow as pa
+        accept = {"Accept": MEDIA_TYPES[".arrow"]}
+        body = self._transport.retry.run(lambda: self._streamed(f"{self._path}/values{_named(name)}", accept))
+        return Values(pa.ipc.open_stream(body).read_all())
+
+    def download_values(self, path: str | Path, name: str | None = None) -> Path:
+        """Write the values of every trajectory to a file, as `download` does: .parquet, .arrow or .csv.
+
+        Raises ValueError for another suffix, and ServiceError for an observation that does not keep its values.
+        """
+        path = Path(path)
+        if path.suffix not in VALUE_FORMATS:
+            raise ValueError(f"{path.name}: the suffix gives the format, one of {', '.join(VALUE_FORMATS)}")
+        return self._downloaded(path, f"{self._path}/values{_named(name)}")
+
+    def _streamed(self, source: str, headers: dict[str, str]) -> bytes:
+        with self._transport.stream(source, headers) as response:
+            return b"".join(response.iter_bytes())
 
     def specification(self) -> Sweep:
         """What was submitted, in its normal form: without label and priority, which belong to requests."""
@@ -109,8 +141,7 @@ class RemoteSweep:
         path = Path(path)
         if path.suffix not in FORMATS:
             raise ValueError(f"{path.name}: the suffix gives the format, one of {', '.join(FORMATS)}")
-        query = "" if name is None else f"?name={quote(name, safe='')}"
-        return self._downloaded(path, f"{self._path}/folds{query}")
+        return self._downloaded(path, f"{self._path}/folds{_named(name)}")
 
     def _downloaded(self, path: Path, source: str) -> Path:
         if not path.parent.is_dir():
@@ -151,3 +182,7 @@ class RemoteSweep:
         if priority is not None:
             changes["priority"] = priority
         return self._transport.fetch(SweepStatus, "PATCH", self._path, json=changes)
+
+
+def _named(name: str | None) -> str:
+    return "" if name is None else f"?name={quote(name, safe='')}"

@@ -25,6 +25,7 @@ INTEGERS = ("layer", "position", "trajectories")
 REALS = ("mean", "standard_error", "variance", "minimum", "maximum")
 COUNTS = ("value", "occurrences")  # in place of the results, in a table of histograms
 FOLDS = ("numerators", "denominators")  # lists, in a table of folds
+BY_FOLD = "by_fold"  # occurrences in every fold, in a table of histograms
 _SHOWN = ("name", "layer", "position", *COUNTS, "trajectories", "mean", "standard_error", "met_by")
 _HEAD = 10
 
@@ -58,7 +59,7 @@ class Table:
     @property
     def axes(self) -> tuple[str, ...]:
         """Names of the columns that are axes of the sweep."""
-        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS, *COUNTS, *FOLDS))
+        return tuple(name for name in self._columns if name not in (*PLACE, *RESULTS, *COUNTS, *FOLDS, BY_FOLD))
 
     @property
     def constants(self) -> dict[str, Any]:

@@ -38,23 +38,24 @@ def read_columns(path: Path) -> Columns:
 
 
 def _read_arrow(path: Path) -> Columns:
+    table = arrow_table(path)
+    stored = (table.schema.metadata or {}).get(ARROW_METADATA, b"{}")
+    return table.to_pydict(), json.loads(stored)
+
+
+def arrow_table(path: Path) -> Any:
+    """The `pyarrow.Table` in a file. Raises OSError, SweepmillError, MissingExtra."""
     with needing(f"reading {path.suffix} files", "analysis"):
         import pyarrow as pa
         import pyarrow.csv
         import pyarrow.ipc
         import pyarrow.parquet
     try:
-        table = _arrow_table(path, pa)
+        if path.suffix == ".parquet":
+            return pa.parquet.read_table(path)
+        if path.suffix == ".csv":
+            return pa.csv.read_csv(path)
+        with pa.ipc.open_stream(path.read_bytes()) as stream:
+            return stream.read_all()
     except pa.ArrowInvalid as error:
         raise SweepmillError(f"{path} is not the table of a sweep: {error}") from error
-    stored = (table.schema.metadata or {}).get(ARROW_METADATA, b"{}")
-    return table.to_pydict(), json.loads(stored)
-
-
-def _arrow_table(path: Path, pa: Any) -> Any:
-    if path.suffix == ".parquet":
-        return pa.parquet.read_table(path)
-    if path.suffix == ".csv":
-        return pa.csv.read_csv(path)
-    with pa.ipc.open_stream(path.read_bytes()) as stream:
-        return stream.read_all()

@@ -15,6 +15,7 @@ from sweepmill.cli.replay import replay
 from sweepmill.cli.serve import serve
 from sweepmill.cli.submit import submit
 from sweepmill.cli.table import table
+from sweepmill.cli.values import values
 from sweepmill.cli.watch import watch
 from sweepmill.cli.withdraw import withdraw
 
@@ -45,6 +46,7 @@ app.command()(submit)
 app.command("list")(list_sweeps)
 app.command()(watch)
 app.command()(table)
+app.command()(values)
 app.command()(folds)
 app.command()(withdraw)
 app.command()(replay)

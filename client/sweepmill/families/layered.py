@@ -25,6 +25,7 @@ TAKEN = frozenset(
     {
         *("family", "circuit", "trajectories", "parameters", "name", "quantity", "region", "layer", "position"),
         *("mean", "standard_error", "variance", "minimum", "maximum", "met_by", "value", "occurrences"),
+        *("trajectory", "numerator", "denominator", "by_fold"),
         *FAMILY_PARAMETERS["layered"],
     }
 )

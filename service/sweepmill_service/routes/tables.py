@@ -1,6 +1,7 @@
 """Results: the aggregated table and the histograms of a sweep."""
 
 from collections.abc import Mapping
+from functools import partial
 from typing import Annotated, Any
 
 from fastapi import APIRouter, Header, Query
@@ -50,9 +51,20 @@ def read_table(key: KeyPrefix, store: StoreOf, accept: Accept = None, held: IfNo
     response_class=Response,
     responses=_responses("One row per ensemble, observation, coordinate and value that occurred", examples.HISTOGRAMS),
 )
-def read_histograms(key: KeyPrefix, store: StoreOf, accept: Accept = None, held: IfNoneMatch = None) -> Response:
-    """Exact histograms of the observations that ask for one."""
-    return table_answer(store, store.find_sweep(key), "histograms", histogram_content, accept, held)
+def read_histograms(
+    key: KeyPrefix,
+    store: StoreOf,
+    folds: Annotated[
+        bool,
+        Query(description="Also a list `by_fold`: occurrences in trajectories k of every fold, k modulo its length"),
+    ] = False,
+    accept: Accept = None,
+    held: IfNoneMatch = None,
+) -> Response:
+    """Exact histograms of the observations that ask for one; with `folds`, what their statistical errors rest on."""
+    kind, offered = ("histograms by fold", NESTED) if folds else ("histograms", MEDIA_TYPES)
+    content = partial(histogram_content, by_fold=folds)
+    return table_answer(store, store.find_sweep(key), kind, content, accept, held, offered)
 
 
 @router.get(
