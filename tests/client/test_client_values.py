@@ -95,7 +95,7 @@ def test_files_hold_the_values(settled: RemoteSweep, tmp_path: Path) -> None:
     assert len(file.read_text().splitlines()) == 601
     with pytest.raises(SweepmillError, match="metadata"):
         Values.read(file)
-    with pytest.raises(ValueError, match="one of .parquet, .arrow, .csv"):
+    with pytest.raises(ValueError, match=r"one of \.parquet, \.arrow, \.csv"):
         settled.download_values(tmp_path / "values.json", "entropy")
     with pytest.raises(ServiceError, match="bits does not keep its values"):
         settled.values("bits")
