@@ -34,10 +34,10 @@ def values(
     ] = None,
     url: Url = None,
 ) -> None:
-    """Write what an observation with keep_values = true read off every trajectory.
+    """Write the values of every trajectory to a file.
 
-    One row per ensemble, trajectory and coordinate: the trajectories that the table rests on, in their order. The
-    file appears complete or not at all.
+    Of an observation with keep_values = true, one row per ensemble, trajectory and coordinate: the trajectories that
+    the table rests on, in their order. The file appears complete or not at all.
 
     Example: sweepmill values 3b9f6c1e --of i3 -o i3.parquet
     """
