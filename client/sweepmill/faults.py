@@ -79,7 +79,7 @@ def message_of(item: Any) -> str:
         return _bad_tag(context, given)
     if kind == "union_tag_not_found":
         return "is missing" if _of_family(item) else f"needs a field {context['discriminator']}"
-    if kind in ("number", "integer", "flag", "layers", "duplicate", "empty", KIND):
+    if kind in ("number", "integer", "flag", "layers", "duplicate", "empty", "bounds", KIND):
         return str(item["msg"])
     return f"{_wanted(kind, item['msg'], context)}, got {_short(given)}"
 

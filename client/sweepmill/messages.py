@@ -29,6 +29,24 @@ class Request(Message):
     core_seconds: float = Field(0.0, description="Core-seconds charged to this request")
 
 
+class Answer(Message):
+    """What the last round found of the quantity a sweep is sampled for."""
+
+    quantity: str = Field(description="p_c, or the coefficient of a law")
+    of: str = Field(description="Name of the observation it is derived from")
+    where: dict[str, Scalar] = Field(default_factory=dict, description="What tells these ensembles from others")
+    round: int
+    value: float | None = None
+    error: float | None = Field(None, description="One standard error; absent where none may be quoted")
+    statistical: float | None = Field(None, description="Part of the error from the noise of the data")
+    spread: float | None = Field(None, description="Part of the error from what different fits disagree by")
+    withheld: str | None = Field(None, description="Why no error is quoted")
+    below: float = Field(description="The error asked for")
+    met: bool
+    reason: str | None = Field(None, description="What was decided, in words")
+    predicted_error: float | None = Field(None, description="Error expected after the next round")
+
+
 class SweepStatus(Message):
     """A sweep with its progress."""
 
@@ -48,6 +66,8 @@ class SweepStatus(Message):
     created_at: float
     commit: int = Field(description="Commit counter: grows with every change of progress")
     seconds_left: float | None = Field(None, description="Predicted time to settle on the current pool")
+    goal: dict[str, Any] | None = Field(None, description="The derived quantity that decides when it is enough")
+    answers: list[Answer] = Field(default_factory=list, description="What the last round found of it")
 
 
 class SweepList(Message):
@@ -55,6 +75,34 @@ class SweepList(Message):
 
     sweeps: list[SweepStatus]
     next: str | None = Field(None, description="Value of `after` for the next page")
+
+
+class RoundPlace(Message):
+    """One ensemble in a round."""
+
+    ordinal: int
+    judged: int = Field(description="Its trajectories in this round, 0 where it is placed by this round")
+    cost: float | None = Field(None, description="Core-seconds per trajectory as weighed, a power of two")
+    target: int = Field(description="Its trajectories in the next round")
+
+
+class Round(Message):
+    """One judgement of a goal, with what followed from it."""
+
+    number: int
+    trajectories: int
+    core_seconds: float = Field(description="Charged to the sweep when the round was judged")
+    answers: list[Answer]
+    places: list[RoundPlace]
+    settled: bool
+    at: float
+
+
+class RoundList(Message):
+    """All rounds of a sweep, oldest first."""
+
+    sweep: str
+    rounds: list[Round]
 
 
 class EnsembleProgress(Message):

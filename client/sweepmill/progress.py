@@ -10,12 +10,13 @@ from contextlib import contextmanager
 from html import escape
 from typing import Any, TextIO
 
-from sweepmill.messages import SweepStatus
-from sweepmill.text import count, duration, short
+from sweepmill.messages import Answer, SweepStatus
+from sweepmill.text import count, duration, short, with_error
 
 Show = Callable[[SweepStatus], None]
 SETTLED, SAMPLED, OPEN = "#3d6fb6", "#9db4d4", "#8a8a8a"
 WIDTH = 32  # bricks
+ANSWERS = 3  # shown at most in one line
 INTERVAL = 30.0  # seconds between plain lines, unless the state changes
 
 
@@ -36,7 +37,18 @@ def sentence(status: SweepStatus) -> str:
     if status.state in ("waiting", "sampling") and status.seconds_left is not None:
         left = duration(status.seconds_left)
         parts.append(f"{left} left" if left.startswith("under") else f"about {left} left")
+    parts += [answer_text(answer) for answer in status.answers[:ANSWERS]]
     return ", ".join(parts) + (f" ({status.reason})" if status.reason else "")
+
+
+def answer_text(answer: Answer, with_round: bool = True) -> str:
+    """What a round found, as in `p_c = 0.1597(6), 0.0005 asked (round 4)`."""
+    where = "".join(f"{name} = {value}: " for name, value in answer.where.items())
+    found = "not known yet"
+    if answer.value is not None:
+        found = f"{answer.value:.5g} (no error bar)" if answer.error is None else with_error(answer.value, answer.error)
+    said = f"{where}{answer.quantity} = {found}, {answer.below:g} asked"
+    return f"{said} (round {answer.round})" if with_round else said
 
 
 @contextmanager

@@ -12,7 +12,7 @@ from sweepmill.errors import UnknownKey
 from sweepmill.extras import needing
 from sweepmill.folds import FORMATS, Folds
 from sweepmill.follow import follow
-from sweepmill.messages import EnsembleProgress, ProgressPage, Submitted, SweepStatus
+from sweepmill.messages import EnsembleProgress, ProgressPage, Round, RoundList, Submitted, SweepStatus
 from sweepmill.progress import Show, shown
 from sweepmill.sweep import Sweep
 from sweepmill.table import Table
@@ -68,6 +68,10 @@ class RemoteSweep:
             if page.next is None:
                 return
             query["after"] = page.next
+
+    def rounds(self) -> list[Round]:
+        """The rounds in which the goal of the sweep was judged, oldest first; none where it has no goal."""
+        return self._transport.fetch(RoundList, "GET", f"{self._path}/rounds").rounds
 
     def table(self) -> Table:
         """The table as it is now; once settled, the same for ever."""

@@ -15,6 +15,7 @@ from sweepmill.errors import Fault, SpecificationError
 from sweepmill.families import CircuitBlock
 from sweepmill.families.block import Block
 from sweepmill.faults import TOO_DEEP, faults_of
+from sweepmill.goals import Goal, goal_faults, placed, resolved
 from sweepmill.identity import canonical, key_of
 from sweepmill.language.refusal import printable
 from sweepmill.observation import Observation
@@ -119,8 +120,25 @@ class Sweep(BaseModel):
         return {
             "circuit": [block.normal_form(self.stop.trajectories) for block in self.circuit],
             "observe": [_normal_observation(item) for item in self.observations],
-            "stop": self.stop.normal_form(),
+            "stop": self._resolved_stop.normal_form(),
         }
+
+    @cached_property
+    def goal(self) -> Goal | None:
+        """The derived quantity that decides when it is enough, with the name of its axis; None without one."""
+        return resolved(self.stop.goal, self.circuit)
+
+    @cached_property
+    def _resolved_stop(self) -> Stop:
+        point = self.goal if self.stop.critical_point is not None else None
+        return self.stop if point is None else self.stop.model_copy(update={"critical_point": point})
+
+    @cached_property
+    def starting(self) -> frozenset[str]:
+        """Keys of the ensembles sampled from the start; a search for a critical point places others later."""
+        blocks = self.circuit if self.goal else ()
+        written = {one.key for block in blocks for _, one in _expansion(block).ensembles}
+        return frozenset(written or (point.ensemble.key for point in self.points))
 
     @cached_property
     def observations(self) -> tuple[NamedObservation, ...]:
@@ -130,7 +148,10 @@ class Sweep(BaseModel):
 
     @cached_property
     def points(self) -> tuple[Point, ...]:
-        """Every ensemble once, in table order: blocks as written, fields in the family's order, values as written."""
+        """Every ensemble once, in table order: blocks as written, fields in the family's order, values as written.
+
+        A search for a critical point lists every ensemble it may place, the values of its axis in ascending order.
+        """
         points: dict[str, Point] = {}
         for block, expansion in zip(self.circuit, self._expansions, strict=True):
             for _, ensemble in expansion.ensembles:
@@ -139,7 +160,7 @@ class Sweep(BaseModel):
 
     @cached_property
     def _expansions(self) -> tuple[Expansion, ...]:
-        return tuple(_expansion(block) for block in self.circuit)
+        return tuple(_expansion(block) for block in placed(self.circuit, self.goal))
 
     @cached_property
     def axes(self) -> tuple[str, ...]:
@@ -167,7 +188,12 @@ class Sweep(BaseModel):
             if _name(item) in names:
                 faults.append(Fault(f"observe[{index}].name", f"{_name(item)!r} names another observation already"))
             names.add(_name(item))
-        return faults + self.stop.faults(names)
+        faults += self.stop.faults(names)
+        return faults if faults or self.goal is None else self._goal_faults(self.goal)
+
+    def _goal_faults(self, goal: Goal) -> list[Fault]:
+        observed = next(item.observation for item in self.observations if item.name == goal.of)
+        return goal_faults(goal, self.circuit, [point.ensemble for point in self.points], observed)
 
     def _check_circuits(self, single: bool, faults: list[Fault]) -> None:
         caps: dict[str, int] = {}

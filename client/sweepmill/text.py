@@ -1,5 +1,6 @@
 """Numbers, times and aligned columns as text, the same in the terminal, in `repr` and in a notebook."""
 
+import math
 from collections.abc import Sequence
 from html import escape
 from typing import Any
@@ -26,6 +27,19 @@ def duration(seconds: float | None) -> str:
             rest = int(seconds % size) // part_size
             return f"{int(seconds // size)} {unit}" + (f" {rest} {part}" if rest else "")
     return f"{seconds:.0f} s" if seconds >= 1 else "under 1 s"
+
+
+def with_error(value: float, error: float) -> str:
+    """The value with its error in units of its last digits, as in 0.1598(2); two digits of an error below 20."""
+    if not (math.isfinite(value) and math.isfinite(error) and error > 0):
+        return f"{value:.5g}"
+    places = 1 - math.floor(math.log10(error))
+    digits = round(error * 10.0**places)
+    if digits >= 20:  # 10 to 19 keep both digits, 20 to 100 the first
+        places, digits = places - 1, round(error * 10.0 ** (places - 1))
+    if places > 0:
+        return f"{value:.{places}f}({digits})"
+    return f"{round(value * 10.0**places) * 10**-places}({digits * 10**-places})"
 
 
 def cell(value: Any) -> str:

@@ -22,6 +22,7 @@ from sweepmill_service.meter import Meter
 from sweepmill_service.plan.plan import Plan
 from sweepmill_service.plan.task import SizeRules, Task
 from sweepmill_service.pool import Pool, PoolUnavailable, WorkerInfo
+from sweepmill_service.rounds.thread import Rounds
 from sweepmill_service.store import Store
 from sweepmill_service.store.leadership import AlreadyServed, leadership
 from sweepmill_service.store.results import Start
@@ -141,6 +142,7 @@ class Dispatcher:
         self._plan = Plan(sizes)
         self._follower = Follower(self._store, self._plan)
         self._flights = Flights(self._pool, self._run_name[:8])
+        self._rounds = Rounds(self._store, self._flights.wake)
         self._landed: list[Landed] = []
         self._failed: list[Failed] = []
 
@@ -150,6 +152,7 @@ class Dispatcher:
                 self._guarded_cycle()
             self._finish()
         finally:
+            self._rounds.close()
             self._pool.close()
             self._leadership.release()
 
@@ -188,6 +191,7 @@ class Dispatcher:
             self._stopping.wait(DRAIN_SECONDS)
         self._collect(DRAIN_SECONDS if self._open else 0.0)
         self._follower.look()
+        self._judge_rounds()
         self._follower.stop_stuck()
         self._store_retry.worked()
         self._works("store")
@@ -257,6 +261,18 @@ class Dispatcher:
                 if failures >= self._settings.attempts:
                     self._plan.stick(one.task.ensemble)
             self._failed.pop(0)
+
+    # --- goals
+
+    def _judge_rounds(self) -> None:
+        """Have rounds judged whose places are all sampled, and go on as decided."""
+        self._rounds.begin(self._plan.ripe())
+        for known, decision in self._rounds.ended():
+            if isinstance(decision, str):
+                self._store.stick_sweep(known.sweep, decision)
+            elif outcome := self._store.close_round(known, decision):
+                self._follower.apply(outcome)
+            self._follower.renew(known.sweep)
 
     # --- the window
 

@@ -3,11 +3,15 @@
 from typing import Any
 
 from sweepmill.messages import (
+    Answer,
     EnsembleProgress,
     EnsembleRecord,
     Estimate,
     PoolStatus,
     ProgressPage,
+    Round,
+    RoundList,
+    RoundPlace,
     Submitted,
     SweepList,
     SweepStatus,
@@ -127,6 +131,33 @@ _PROGRESS = EnsembleProgress(
     changed=31,
 )
 PROGRESS = ProgressPage(sweep=_SWEEP.key, commit=57, ensembles=[_PROGRESS]).model_dump()
+ROUNDS = RoundList(
+    sweep=_SWEEP.key,
+    rounds=[
+        Round(
+            number=1,
+            trajectories=1200,
+            core_seconds=3.1,
+            answers=[
+                Answer(
+                    quantity="p_c",
+                    of="i3",
+                    round=1,
+                    value=0.1587,
+                    error=0.0031,
+                    statistical=0.0029,
+                    spread=0.0011,
+                    below=0.001,
+                    met=False,
+                    predicted_error=0.0022,
+                )
+            ],
+            places=[RoundPlace(ordinal=0, judged=200, cost=0.00048828125, target=400)],
+            settled=False,
+            at=1.79e9,
+        )
+    ],
+).model_dump()
 EVENT = f'id: 57\nevent: progress\ndata: {{"status":{{"key":"{_SWEEP.key}","state":"sampling"}},"ensembles":[]}}\n\n'
 TABLE: dict[str, Any] = {
     "columns": {

@@ -74,6 +74,13 @@ class Follower:
             for key in self._store.stick_sweeps(self._plan.with_stuck()):
                 self.drop(key)
 
+    def renew(self, key: str) -> None:
+        """Take a sweep up anew whose places have changed."""
+        self.drop(key)
+        for sweep in self._store.live_sweeps():
+            if sweep.key == key:
+                self._take_up(sweep)
+
     def drop(self, key: str) -> None:
         """Take a sweep out of the plan."""
         self._plan.remove_sweep(key)
@@ -108,6 +115,7 @@ def _info(sweep: LiveSweep) -> SweepInfo:
         observations=sweep.observations,
         at_least=sweep.at_least,
         has_rules=sweep.has_rules,
+        has_goal=sweep.has_goal,
         budget=sweep.budget,
         core_seconds=sweep.core_seconds,
     )

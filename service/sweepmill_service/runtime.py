@@ -82,7 +82,7 @@ class Runtime:
 
     def forecast(self, status: SweepStatus) -> SweepStatus:
         """The status with the time the sweep would still take if the pool were its own."""
-        if self._dispatcher is None:
+        if self._dispatcher is None or status.goal is not None:  # rounds to come are not known yet
             return status
         try:
             seconds = self._dispatcher.seconds_left(status.key)

@@ -41,7 +41,9 @@ sweep = Table(
     Column("rules", Text, nullable=False),  # JSON list of {observation, below}
     Column("at_least", BigInteger, nullable=False),
     Column("budget", Double),  # core-seconds
-    Column("ensembles", Integer, nullable=False),
+    Column("goal", Text),  # JSON of the derived quantity that decides, null without one
+    Column("answers", Text),  # JSON list: what the last round found, one for each group of ensembles
+    Column("ensembles", Integer, nullable=False),  # those that are sampled: all, or those placed so far
     Column("settled", Integer, nullable=False),
     Column("trajectories_sampled", BigInteger, nullable=False),
     Column("trajectories_cap", BigInteger, nullable=False),
@@ -97,7 +99,8 @@ sweep_ensemble = Table(
     Column("sweep", Key, ForeignKey("sweep.key"), primary_key=True),
     Column("ensemble", Key, ForeignKey("ensemble.key"), primary_key=True),
     Column("ordinal", Integer, nullable=False),
-    Column("cap", BigInteger, nullable=False),
+    Column("cap", BigInteger, nullable=False),  # with a goal the N of the current round, 0 while not placed
+    Column("most", BigInteger),  # with a goal the cap of the specification
     Column("judged", BigInteger, nullable=False),  # the last rung judged and not met
     Column("sampled", BigInteger, nullable=False),  # prefix over all observations, at most the cap
     Column("met_by", String(8)),
@@ -115,6 +118,20 @@ sweep_observation = Table(
     Column("name", String(200), primary_key=True),
     Column("ordinal", Integer, nullable=False),
     Column("observation", Key, ForeignKey("observation.key"), nullable=False),
+)
+
+# One row for each time the goal of a sweep was judged: what was known, what was found, what was decided.
+round_ = Table(
+    "round",
+    metadata,
+    Column("sweep", Key, ForeignKey("sweep.key"), primary_key=True),
+    Column("number", Integer, primary_key=True, autoincrement=False),  # from 1
+    Column("trajectories", BigInteger, nullable=False),
+    Column("core_seconds", Double, nullable=False),  # charged to the sweep so far
+    Column("answers", Text, nullable=False),  # JSON list
+    Column("places", Text, nullable=False),  # JSON list of [ordinal, N judged, cost, N of the next round]
+    Column("settled", Integer, nullable=False),  # 1 where the sweep settled with this round
+    Column("at", Double, nullable=False),
 )
 
 total = Table(

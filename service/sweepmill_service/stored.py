@@ -1,7 +1,6 @@
 """A stored specification, expanded without checking it again: it was checked when it was submitted."""
 
 import json
-from collections.abc import Iterator
 from functools import lru_cache
 from typing import Any, NamedTuple
 
@@ -9,6 +8,7 @@ from pydantic import TypeAdapter
 
 from sweepmill.ensemble import Ensemble
 from sweepmill.families import CircuitBlock
+from sweepmill.goals import CriticalPointGoal, Goal, LawGoal, placed
 from sweepmill.observation import Observation
 from sweepmill.sweep import NamedObservation
 
@@ -27,14 +27,23 @@ class StoredSweep(NamedTuple):
 def expand(specification: str) -> StoredSweep:
     """Expand a sweep's canonical JSON. Ensembles are told apart by parameters, which is what their keys hash."""
     form = json.loads(specification)
-    distinct = {(e.family, *e.parameters.items()): e for e in _ensembles(form["circuit"])}
+    blocks = placed([_BLOCK.validate_python(block) for block in form["circuit"]], _goal(form["stop"]))
+    distinct = {(e.family, *e.parameters.items()): e for block in blocks for _, e in block.ensembles("", [])}
     return StoredSweep(tuple(distinct.values()), tuple(_named(item) for item in form["observe"]))
 
 
-def _ensembles(blocks: list[dict[str, Any]]) -> Iterator[Ensemble]:
-    for block in blocks:
-        for _, ensemble in _BLOCK.validate_python(block).ensembles("", []):
-            yield ensemble
+def stored_goal(specification: str) -> Goal:
+    """The goal of a sweep's canonical JSON. Raises ValueError where it has none."""
+    goal = _goal(json.loads(specification)["stop"])
+    if goal is None:
+        raise ValueError("this sweep has no goal")
+    return goal
+
+
+def _goal(stop: dict[str, Any]) -> Goal | None:
+    if "critical_point" in stop:
+        return CriticalPointGoal.model_validate(stop["critical_point"])
+    return LawGoal.model_validate(stop["law"]) if "law" in stop else None
 
 
 def _named(form: dict[str, Any]) -> NamedObservation:

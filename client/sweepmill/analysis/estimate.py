@@ -4,6 +4,8 @@ import math
 from dataclasses import dataclass
 from typing import Any
 
+from sweepmill.text import with_error as with_error
+
 
 @dataclass(frozen=True)
 class Estimate:
@@ -47,16 +49,3 @@ class Estimate:
 def finite(value: float) -> float | None:
     """The value, or None where JSON has no number for it."""
     return float(value) if math.isfinite(value) else None
-
-
-def with_error(value: float, error: float) -> str:
-    """The value with its error in units of its last digits, as in 0.1598(2); two digits of an error below 20."""
-    if not (math.isfinite(value) and math.isfinite(error) and error > 0):
-        return f"{value:.5g}"
-    places = 1 - math.floor(math.log10(error))
-    digits = round(error * 10.0**places)
-    if digits >= 20:  # 10 to 19 keep both digits, 20 to 100 the first
-        places, digits = places - 1, round(error * 10.0 ** (places - 1))
-    if places > 0:
-        return f"{value:.{places}f}({digits})"
-    return f"{round(value * 10.0**places) * 10**-places}({digits * 10**-places})"

@@ -12,6 +12,7 @@ from sweepmill.cli.folds import folds
 from sweepmill.cli.listing import list_sweeps
 from sweepmill.cli.pool import pool
 from sweepmill.cli.replay import replay
+from sweepmill.cli.rounds import rounds
 from sweepmill.cli.serve import serve
 from sweepmill.cli.submit import submit
 from sweepmill.cli.table import table
@@ -45,6 +46,7 @@ app.command()(check)
 app.command()(submit)
 app.command("list")(list_sweeps)
 app.command()(watch)
+app.command()(rounds)
 app.command()(table)
 app.command()(folds)
 app.command()(values)

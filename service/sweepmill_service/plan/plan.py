@@ -182,6 +182,15 @@ class Plan:
             self.stuck.add(ensemble)
             self._refresh(entry)
 
+    def ripe(self) -> list[str]:
+        """Sweeps with a goal whose places all have what the round asks for, or cannot proceed."""
+        return [key for key, sweep in self.sweeps.items() if sweep.info.has_goal and self._is_ripe(sweep)]
+
+    def _is_ripe(self, sweep: PlanSweep) -> bool:
+        entries = [self.entries[key] for key in sweep.open]
+        waiting = [one.members[sweep.info.key] for one in entries if not one.stuck]
+        return bool(waiting) and all(member.judged >= member.cap for member in waiting)
+
     def over_budget(self) -> list[str]:
         """Sweeps that have spent their budget."""
         return [key for key, sweep in self.sweeps.items() if sweep.spent()]

@@ -24,6 +24,7 @@ class SweepInfo:
     observations: tuple[str, ...]
     at_least: int
     has_rules: bool
+    has_goal: bool
     budget: float | None
     core_seconds: float  # charged so far
 

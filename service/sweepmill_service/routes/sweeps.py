@@ -10,6 +10,7 @@ from sweepmill.messages import (
     Amendment,
     Estimate,
     ProgressPage,
+    RoundList,
     Submitted,
     SweepList,
     SweepState,
@@ -118,6 +119,16 @@ def read_progress(
 ) -> ProgressPage:
     """Progress of every ensemble of a sweep."""
     return store.progress(store.find_sweep(key), since, limit, after)
+
+
+@router.get(
+    "/sweeps/{key}/rounds",
+    responses={200: described("All rounds, oldest first", examples.ROUNDS), **problems(404, 409, 422, 503)},
+)
+def read_rounds(key: KeyPrefix, store: StoreOf) -> RoundList:
+    """The rounds in which the goal of a sweep was judged; none where it has no goal."""
+    full = store.find_sweep(key)
+    return RoundList(sweep=full, rounds=store.rounds(full))
 
 
 @router.patch(

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from itertools import islice
 from typing import Any, Literal, TypeVar
 
-from sqlalchemy import Connection, Insert, Table, update
+from sqlalchemy import ColumnElement, Connection, Insert, Table, update
 from sqlalchemy.dialects import postgresql, sqlite
 
 from sweepmill_service import schema
@@ -57,6 +57,11 @@ def replace_all(connection: Connection, table: Table, rows: Sequence[dict[str, A
 
 def _dialect_insert(connection: Connection, table: Table) -> Any:
     return postgresql.insert(table) if connection.dialect.name == "postgresql" else sqlite.insert(table)
+
+
+def is_placed() -> ColumnElement[bool]:
+    """Members that are sampled: a goal leaves most of the places it might use empty."""
+    return schema.sweep_ensemble.c.cap > 0
 
 
 def note_change(connection: Connection) -> None:

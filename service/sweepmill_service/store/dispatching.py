@@ -6,7 +6,7 @@ from dataclasses import asdict
 from sqlalchemy import Connection, and_, case, func, insert, select, update
 
 from sweepmill_service.schema import ensemble, fault, start, sweep, sweep_ensemble
-from sweepmill_service.store.common import SAMPLING, STUCK, WAITING, chunks, now, to_json
+from sweepmill_service.store.common import SAMPLING, STUCK, WAITING, chunks, is_placed, now, to_json
 from sweepmill_service.store.members import lock_ensembles
 from sweepmill_service.store.results import BatchFault, Start
 
@@ -56,7 +56,7 @@ def stick_sweeps(connection: Connection, keys: Collection[str]) -> list[str]:
     statement = (
         select(members.sweep, func.count(case((left, 1))), func.count(ensemble.c.stuck), func.min(ensemble.c.stuck))
         .join(ensemble, ensemble.c.key == members.ensemble)
-        .where(members.met_by.is_(None))
+        .where(members.met_by.is_(None), is_placed())
         .group_by(members.sweep)
     )
     stuck: list[str] = []

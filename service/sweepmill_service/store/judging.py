@@ -2,7 +2,7 @@
 
 import hashlib
 import json
-from collections.abc import Collection, Iterator, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from typing import Any, Literal, NamedTuple
 
 from sqlalchemy import Connection, bindparam, delete, exists, func, select, tuple_
@@ -71,7 +71,22 @@ def judge_locked(connection: Connection, members: Sequence[Member], known: Reach
         _drop_marks(connection, piece)
 
 
+def freeze(connection: Connection, members: Mapping[Member, Literal["error", "cap"]], outcome: Outcome) -> None:
+    """Settle members at the N they were last judged at, under locks already taken; verdicts go to the outcome."""
+    due = [_Due(member, member.judged) for member in members]
+    kept = _kept_totals(connection, due, outcome.reaches)
+    verdicts = [Verdict(member.sweep.key, member.ensemble, member.judged, by, None) for member, by in members.items()]
+    _keep_totals(connection, due, outcome.reaches)
+    if due:
+        _save(connection, due, verdicts, kept)
+    outcome.verdicts.extend(verdicts)
+    sweeps = {member.sweep.key: member.sweep for member in members}
+    outcome.settled_sweeps.update(key for key, row in sweeps.items() if row.settled == row.ensembles)
+
+
 def _number_due(member: Member, known: Reaches) -> int | None:
+    if member.waits:
+        return None
     number = member.next_mark(known)
     return number if all(reach.has(number) for reach in member.reaches(known)) else None
 
@@ -81,8 +96,9 @@ def _judge_round(connection: Connection, due: Sequence[_Due], known: Reaches, ou
     forms = _normal_forms(connection, due)
     verdicts = [_verdict(one, kept, forms) for one in due]
     settled = [one for one, verdict in zip(due, verdicts, strict=True) if verdict.met_by]
-    _keep_totals(connection, settled, known)
-    _keep_totals(connection, [one for one in due if one not in settled], known, KEPT_BYTES)
+    needed = [one for one in due if one in settled or one.member.sweep.has_goal]
+    _keep_totals(connection, needed, known)
+    _keep_totals(connection, [one for one in due if one not in needed], known, KEPT_BYTES)
     _save(connection, due, verdicts, kept)
     outcome.verdicts.extend(verdicts)
     outcome.settled_sweeps.update(
@@ -91,6 +107,8 @@ def _judge_round(connection: Connection, due: Sequence[_Due], known: Reaches, ou
 
 
 def _verdict(one: _Due, kept: dict[Place, Kept], forms: dict[str, Any]) -> Verdict:
+    if one.member.sweep.has_goal:
+        return Verdict(one.member.sweep.key, one.member.ensemble, one.number, None, None)
     met, needed = _rules(one, kept, forms)
     by: Literal["error", "cap"] | None = "error" if met else "cap" if one.number >= one.member.cap else None
     return Verdict(one.member.sweep.key, one.member.ensemble, one.number, by, needed)
@@ -207,5 +225,12 @@ def _drop_marks(connection: Connection, ensembles: Sequence[str]) -> None:
         sweep.c.key == sweep_ensemble.c.sweep,
         sweep.c.state != WITHDRAWN,
     )
+    held = exists().where(
+        mine,
+        sweep_ensemble.c.met_by.is_(None),
+        sweep_ensemble.c.judged == mark.c.trajectories,
+        sweep.c.key == sweep_ensemble.c.sweep,
+        sweep.c.goal.is_not(None),
+    )
     large = (func.length(mark.c.accumulator) > KEPT_BYTES, mark.c.trajectories.not_in(COMMON_MARKS))
-    connection.execute(delete(mark).where(mark.c.ensemble.in_(ensembles), ~frozen, ~awaited, *large))
+    connection.execute(delete(mark).where(mark.c.ensemble.in_(ensembles), ~frozen, ~awaited, ~held, *large))

@@ -24,7 +24,7 @@ from sweepmill_service.schema import (
     total,
 )
 from sweepmill_service.store.classify import unfolded
-from sweepmill_service.store.common import SAMPLING, WAITING
+from sweepmill_service.store.common import SAMPLING, WAITING, is_placed
 from sweepmill_service.store.members import reaches
 
 
@@ -45,6 +45,7 @@ class LiveSweep:
     observations: tuple[str, ...]
     at_least: int
     has_rules: bool
+    has_goal: bool
     budget: float | None
     core_seconds: float
 
@@ -88,6 +89,7 @@ def live_sweeps(connection: Connection) -> list[LiveSweep]:
             observations=tuple(dict.fromkeys(observed[row.key])),
             at_least=row.at_least,
             has_rules=row.rules != "[]",
+            has_goal=row.goal is not None,
             budget=row.budget,
             core_seconds=row.core_seconds,
         )
@@ -141,8 +143,8 @@ def ranges(connection: Connection, key: str) -> tuple[dict[str, Reach], dict[str
     return {pair[1]: one for pair, one in reached.items()}, {pair[1]: one for pair, one in islands.items()}
 
 
-def _open(key: str) -> tuple[Any, Any]:
-    return sweep_ensemble.c.sweep == key, sweep_ensemble.c.met_by.is_(None)
+def _open(key: str) -> tuple[Any, Any, Any]:
+    return sweep_ensemble.c.sweep == key, sweep_ensemble.c.met_by.is_(None), is_placed()
 
 
 def _of_open(columns: Iterable[Any], table: Any, key: str) -> Select[Any]:

@@ -10,7 +10,7 @@ from sqlalchemy import Connection, select
 
 from sweepmill_service.plan.marks import Reach, ladder, next_mark, next_rung
 from sweepmill_service.schema import ensemble, mark, sweep, sweep_ensemble, sweep_observation, total
-from sweepmill_service.store.common import SAMPLING, SETTLED, WAITING, WITHDRAWN, chunks
+from sweepmill_service.store.common import SAMPLING, SETTLED, WAITING, WITHDRAWN, chunks, is_placed
 
 NOTHING = Reach(0, frozenset())
 Reaches = dict[tuple[str, str], Reach]
@@ -31,6 +31,7 @@ class SweepRow:
     state: str
     rules: tuple[Rule, ...]
     at_least: int
+    has_goal: bool
     observations: tuple[str, ...]
     commit: int
     ensembles: int
@@ -59,7 +60,7 @@ class SweepRow:
             self.state = SETTLED
 
 
-@dataclass
+@dataclass(eq=False)
 class Member:
     """An ensemble within a sweep, not settled."""
 
@@ -68,6 +69,11 @@ class Member:
     cap: int
     judged: int
     sampled: int
+
+    @property
+    def waits(self) -> bool:
+        """Whether it has what the current round asks for: the goal is judged once all have."""
+        return self.sweep.has_goal and self.judged >= self.cap
 
     @property
     def ladder(self) -> tuple[int, ...]:
@@ -107,7 +113,7 @@ def _member_rows(connection: Connection, keys: Collection[str]) -> list[Any]:
     statement = (
         select(columns.sweep, columns.ensemble, columns.cap, columns.judged, columns.sampled)
         .join(sweep, sweep.c.key == columns.sweep)
-        .where(columns.met_by.is_(None), sweep.c.state != WITHDRAWN)
+        .where(columns.met_by.is_(None), is_placed(), sweep.c.state != WITHDRAWN)
     )
     return [row for piece in chunks(keys) for row in connection.execute(statement.where(columns.ensemble.in_(piece)))]
 
@@ -132,6 +138,7 @@ def _sweep_row(row: Any, observations: list[str]) -> SweepRow:
         state=row.state,
         rules=tuple(Rule(rule["observation"], rule["below"]) for rule in json.loads(row.rules)),
         at_least=row.at_least,
+        has_goal=row.goal is not None,
         observations=tuple(dict.fromkeys(observations)),
         commit=row.commit_counter,
         ensembles=row.ensembles,
@@ -158,6 +165,8 @@ def wanted_marks(members: Iterable[Member], known: Reaches) -> dict[str, set[int
     """By ensemble, the N whose totals must be kept because a rule is still to be judged there."""
     wanted: dict[str, set[int]] = defaultdict(set)
     for member in members:
+        if member.waits:
+            continue
         wanted[member.ensemble].add(member.next_mark(known))
         wanted[member.ensemble].update(step for step in member.ladder if step > member.judged)
     return wanted

@@ -9,7 +9,7 @@ from sqlalchemy import Connection, Row, select
 from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.messages import EnsembleProgress, ProgressPage
 from sweepmill_service.schema import ensemble, sweep, sweep_ensemble, total
-from sweepmill_service.store.common import chunks
+from sweepmill_service.store.common import chunks, is_placed
 from sweepmill_service.store.status import commit_counter
 from sweepmill_service.stored import expand
 
@@ -17,7 +17,7 @@ from sweepmill_service.stored import expand
 def progress(connection: Connection, key: str, since: int | None, limit: int, after: int | None) -> ProgressPage:
     """A page of ensembles in table order: those changed after commit ``since``, beyond ordinal ``after``."""
     counter = commit_counter(connection, key)
-    conditions = [sweep_ensemble.c.sweep == key]
+    conditions = [sweep_ensemble.c.sweep == key, is_placed()]
     if since is not None:
         conditions.append(sweep_ensemble.c.changed > since)
     if after is not None:

@@ -6,7 +6,8 @@ from typing import Any, Final, Literal, NamedTuple
 
 from sqlalchemy import Connection, delete, func, insert, select, update
 
-from sweepmill.sweep import Sweep
+from sweepmill.goals import kind_of
+from sweepmill.sweep import Point, Sweep
 from sweepmill_service.schema import ensemble, observation, request, sweep, sweep_ensemble, sweep_observation
 from sweepmill_service.store.common import (
     SAMPLING,
@@ -91,7 +92,7 @@ def _insert_sweep(connection: Connection, wanted: Sweep, at: float) -> bool:
 
 
 def _sweep_row(wanted: Sweep, at: float) -> dict[str, Any]:
-    points = wanted.points
+    points, targets = wanted.points, list(_targets(wanted))
     return {
         "key": wanted.key,
         "specification": wanted.canonical(),
@@ -103,10 +104,11 @@ def _sweep_row(wanted: Sweep, at: float) -> dict[str, Any]:
         "rules": to_json(_rules(wanted)),
         "at_least": wanted.stop.first_rung,
         "budget": wanted.stop.budget,
-        "ensembles": len(points),
+        "goal": _goal(wanted),
+        "ensembles": sum(first > 0 for _, first in targets),
         "settled": 0,
         "trajectories_sampled": 0,
-        "trajectories_cap": sum(point.cap for point in points),
+        "trajectories_cap": sum(first for _, first in targets),
         "core_seconds": 0.0,
         "created_at": at,
     }
@@ -115,6 +117,19 @@ def _sweep_row(wanted: Sweep, at: float) -> dict[str, Any]:
 def _rules(wanted: Sweep) -> list[dict[str, Any]]:
     keys = {named.name: named.observation.key for named in wanted.observations}
     return [{"observation": keys[rule.of], "below": rule.below} for rule in wanted.stop.standard_error]
+
+
+def _goal(wanted: Sweep) -> str | None:
+    return None if wanted.goal is None else to_json({"kind": kind_of(wanted.goal), **wanted.goal.normal_form()})
+
+
+def _targets(wanted: Sweep) -> Iterator[tuple[Point, int]]:
+    """Every point with the N it is sampled to first: its cap, or the first rung where rounds decide what follows."""
+    for point in wanted.points:
+        if wanted.goal is None:
+            yield point, point.cap
+        else:
+            yield point, min(wanted.stop.first_rung, point.cap) if point.ensemble.key in wanted.starting else 0
 
 
 def _insert_parts(connection: Connection, wanted: Sweep) -> None:
@@ -144,8 +159,9 @@ def _observation_rows(wanted: Sweep) -> list[dict[str, str]]:
 
 def _sweep_ensemble_rows(wanted: Sweep) -> Iterator[dict[str, Any]]:
     fresh = {"sweep": wanted.key, "judged": 0, "sampled": 0, "changed": 0}
-    for ordinal, point in enumerate(wanted.points):
-        yield fresh | {"ensemble": point.ensemble.key, "ordinal": ordinal, "cap": point.cap}
+    for ordinal, (point, target) in enumerate(_targets(wanted)):
+        most = None if wanted.goal is None else point.cap
+        yield fresh | {"ensemble": point.ensemble.key, "ordinal": ordinal, "cap": target, "most": most}
 
 
 def _sweep_observation_rows(wanted: Sweep) -> Iterator[dict[str, Any]]:

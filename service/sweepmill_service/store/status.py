@@ -106,4 +106,6 @@ def _status(row: Row[Any], names: list[str], requests: list[Request]) -> SweepSt
         created_at=row.created_at,
         commit=row.commit_counter,
         seconds_left=None,
+        goal=None if row.goal is None else json.loads(row.goal),
+        answers=json.loads(row.answers or "[]"),
     )

@@ -5,7 +5,7 @@ from typing import Any
 
 from sqlalchemy import Engine, select
 
-from sweepmill.messages import EnsembleRecord, ProgressPage, SweepList, SweepStatus
+from sweepmill.messages import EnsembleRecord, ProgressPage, Round, SweepList, SweepStatus
 from sweepmill.sweep import Sweep
 from sweepmill_service import schema
 from sweepmill_service.database import writing
@@ -19,6 +19,7 @@ from sweepmill_service.store import (
     progress,
     records,
     requests,
+    rounds,
     sampled,
     status,
     tables,
@@ -27,6 +28,7 @@ from sweepmill_service.store import (
 from sweepmill_service.store.loading import LiveSweep, OpenEnsemble
 from sweepmill_service.store.requests import UNSET, Submission, Unset
 from sweepmill_service.store.results import BatchFault, BatchResult, Outcome, Start
+from sweepmill_service.store.rounds import Decision, Evidence
 from sweepmill_service.store.tables import TableEntry
 from sweepmill_service.store.values import KeptChunk, KeptEntry
 
@@ -188,6 +190,21 @@ class Store:
         """Store results, fold, judge and charge, all in one transaction; twice the same changes nothing."""
         with self._writer.begin() as connection:
             return commits.commit(connection, results)
+
+    def evidence(self, key: str) -> Evidence:
+        """What the next round of a sweep with a goal is judged on."""
+        with self.engine.connect() as connection:
+            return rounds.evidence(connection, key)
+
+    def close_round(self, known: Evidence, decision: Decision) -> Outcome | None:
+        """Note a round and what follows; None where the sweep has moved on since the evidence was read."""
+        with self._writer.begin() as connection:
+            return rounds.close_round(connection, known, decision)
+
+    def rounds(self, key: str) -> list[Round]:
+        """The rounds in which the goal of a sweep was judged."""
+        with self.engine.connect() as connection:
+            return rounds.rounds(connection, key)
 
     def log_starts(self, starts: Sequence[Start], run: str) -> None:
         """Note tasks before they are handed to the pool."""

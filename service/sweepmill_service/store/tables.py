@@ -7,6 +7,7 @@ from typing import Any, NamedTuple
 from sqlalchemy import Column, Connection, Engine, Table, case, func, select
 
 from sweepmill_service.schema import mark, sweep, sweep_ensemble, sweep_observation, total
+from sweepmill_service.store.common import is_placed
 from sweepmill_service.store.errors import UnknownKey
 
 FIRST_PAGE, LARGEST_PAGE = 100, 4000  # totals
@@ -72,7 +73,7 @@ def _pages(engine: Engine, key: str, observations: list[str]) -> Iterator[TableE
 def _members(connection: Connection, key: str, last: int, size: int) -> list[_Member]:
     columns = sweep_ensemble.c
     statement = select(columns.ordinal, columns.ensemble, columns.trajectories, columns.met_by)
-    where = (columns.sweep == key, columns.ordinal > last)
+    where = (columns.sweep == key, columns.ordinal > last, is_placed())
     rows = connection.execute(statement.where(*where).order_by(columns.ordinal).limit(size))
     return [_Member(*row) for row in rows]
 
@@ -120,7 +121,7 @@ def table_version(connection: Connection, key: str) -> str:
             total,
             (total.c.ensemble == members.ensemble) & (total.c.observation == sweep_observation.c.observation),
         )
-        .where(members.sweep == key)
+        .where(members.sweep == key, is_placed())
         .order_by(members.ordinal, sweep_observation.c.ordinal)
     )
     return version_of(key, (Number(*row) for row in connection.execute(statement)))

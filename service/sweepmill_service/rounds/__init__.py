@@ -1,0 +1,1 @@
+"""Rounds of sampling for a goal: judged by pure functions, away from the dispatcher's thread."""
