@@ -21,6 +21,7 @@ def sweep_info(key: str = "s", *owners: str, **changes: object) -> SweepInfo:
         "observations": ("a", "b"),
         "at_least": 100,
         "has_rules": False,
+        "has_goal": False,
         "budget": None,
         "core_seconds": 0.0,
     }
@@ -329,3 +330,19 @@ def test_the_next_mark_is_the_smallest_that_every_observation_can_reach(
     reaches = [Reach(prefix, frozenset(n for n in marks if n < prefix)) for prefix, marks in states]
     possible = [n for n in range(rung, 120) if all(reach.prefix <= n or n in reach.marks for reach in reaches)]
     assert next_mark(rung, reaches) == min(possible)
+
+
+def test_a_sweep_with_a_goal_is_ripe_once_all_its_places_were_judged_in_the_round() -> None:
+    members = [ensemble("e", 300), ensemble("f", 200), ensemble("g", 200, stuck=True)]
+    plan = plan_of((sweep_info(has_goal=True), members))
+    assert len(choose_all(plan)) > 0
+    assert plan.ripe() == []
+    plan.judged("s", "e", 300, None)
+    assert plan.ripe() == []
+    plan.judged("s", "f", 224, None)  # further than asked, for somebody else
+    assert plan.ripe() == ["s"]
+
+
+def test_a_sweep_without_a_goal_is_never_ripe() -> None:
+    plan = plan_of((sweep_info(), [ensemble("e", 300, judged=300)]))
+    assert plan.ripe() == []

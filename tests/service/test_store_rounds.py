@@ -146,7 +146,7 @@ def test_what_is_stuck_does_not_settle_and_the_rest_does(store: Store, first_rou
     with store.engine.connect() as connection:
         members = schema.sweep_ensemble.c
         rows = connection.execute(select(members.ordinal, members.met_by).where(members.cap > 0))
-        assert dict(rows.tuples().all()) == {1: "error", 3: None, 6: "error", 8: "error"}
+        assert {row.ordinal: row.met_by for row in rows} == {1: "error", 3: None, 6: "error", 8: "error"}
     assert store.stick_sweeps([first_round.key]) == [first_round.key]
 
 

@@ -4,12 +4,13 @@ import math
 from collections.abc import Sequence
 from typing import Any, Literal, NamedTuple
 
-from sweepmill.analysis.design import Advice, Place, advise_critical_point, advise_law
+from sweepmill.analysis.design import Advice, Place, advise_critical_point
 from sweepmill.analysis.estimate import Estimate, finite
 from sweepmill.ensemble import Ensemble
 from sweepmill.goals import CriticalPointGoal, Goal, Group, LawGoal, groups
 from sweepmill.ladder import rungs
 from sweepmill_service.rounds.costs import weighed_costs
+from sweepmill_service.rounds.law import advise_law
 from sweepmill_service.rounds.material import curve_of, points_of
 from sweepmill_service.store.rounds import Decision, Evidence, StoredPlace
 from sweepmill_service.stored import StoredSweep, expand, stored_goal
@@ -40,7 +41,7 @@ def _judge(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs:
     stored = [known.places[ordinal] for ordinal in group.ordinals]
     sampled = [index for index, place in enumerate(stored) if place.accumulator is not None]
     places = [
-        Place(size, x, costs[place.ordinal], place.judged, place.judged if place.stuck else place.most)
+        Place(size, x, costs[place.ordinal], place.judged, _at_most(place))
         for place, size, x in zip(stored, group.sizes, group.x, strict=True)
     ]
     if isinstance(goal, LawGoal) and goal.over == "position":
@@ -56,6 +57,10 @@ def _judge(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs:
     if isinstance(goal, CriticalPointGoal):
         return _Judged(group, advise_critical_point(points, places, goal.below))
     return _Judged(group, advise_law(points, places, goal.law, goal.coefficient, goal.below))
+
+
+def _at_most(place: StoredPlace) -> int:
+    return place.judged if place.stuck else max(place.most, place.judged)
 
 
 def _nothing(stored: Sequence[StoredPlace]) -> Advice:
