@@ -67,7 +67,7 @@ def test_a_search_may_place_the_grid_and_starts_with_the_values_that_are_written
 def test_bounds_step_and_rule_are_part_of_the_key_and_the_name_of_the_axis_may_be_left_out() -> None:
     key = Sweep.parse(POINT).key
     assert Sweep.parse(changed(POINT, stop__critical_point__axis="measurement_rate")).key == key
-    others = [{"within": [0.13, 0.2]}, {"step": 0.005}, {"below": 0.001}]
+    others: list[dict[str, Any]] = [{"within": [0.13, 0.2]}, {"step": 0.005}, {"below": 0.001}]
     keys = {
         Sweep.parse(changed(POINT, **{f"stop__critical_point__{name}": value for name, value in one.items()})).key
         for one in others
@@ -89,7 +89,7 @@ def test_a_stored_specification_expands_to_the_same_ensembles_in_the_same_order(
 def test_a_parameter_of_a_circuit_written_as_data_can_be_the_axis() -> None:
     layer = [{"measure": "Z", "on": "sites", "rate": {"parameter": "p"}}]
     gates = [{"apply": "uniform-clifford", "on": on} for on in ("bonds-from-0", "bonds-from-1")]
-    circuit = {
+    circuit: dict[str, Any] = {
         "family": "layered",
         "sites": [8, 16],
         "repeat": [[gate, *layer] for gate in gates],

@@ -137,6 +137,76 @@ def test_a_sweep_whose_budget_is_spent_is_stuck_with_a_reason(store: Store, loca
     assert 0 < status.trajectories < status.trajectories_cap
 
 
+def searching(below: float = 0.03) -> Sweep:
+    """A search for the crossing of two small sizes, with room for more values."""
+    goal = {"of": "i3", "below": below, "within": [0.06, 0.3], "step": 0.02}
+    return Sweep.parse(
+        {
+            "circuit": {
+                "family": "hybrid-clifford",
+                "sites": [8, 16],
+                "layers": 16,
+                "measurement_rate": [0.08, 0.14, 0.2, 0.26],
+            },
+            "observe": [{"name": "i3", "quantity": "tripartite-information"}],
+            "stop": {"trajectories": 20_000, "critical_point": goal},
+        }
+    )
+
+
+def test_a_goal_is_reached_in_rounds_and_its_table_is_exact(store: Store, local_pool: LocalPool) -> None:
+    sweep = searching()
+    with dispatching(store, local_pool):
+        store.submit(sweep, "ada")
+        settle(store, sweep)
+    status, rounds = store.sweep_status(sweep.key), store.rounds(sweep.key)
+    (answer,) = status.answers
+    assert [one.number for one in rounds] == list(range(1, len(rounds) + 1))
+    assert [one.settled for one in rounds] == [False] * (len(rounds) - 1) + [True]
+    assert answer.met
+    assert answer.error is not None
+    assert answer.error <= 0.03
+    ladder = sweep.stop.ladder(20_000)
+    placed = store.progress(sweep.key).ensembles
+    assert {one.trajectories for one in placed} <= set(ladder)
+    assert {one.ordinal for one in placed} == {entry.ordinal for entry in store.table_entries(sweep.key)}
+    assert len(placed) == status.ensembles == status.settled
+    check_exact(store, sweep)
+
+
+def test_a_dispatcher_that_starts_anew_goes_on_from_the_last_round(store: Store, local_pool: LocalPool) -> None:
+    sweep = searching(below=0.02)
+    with dispatching(store, local_pool):
+        store.submit(sweep, "ada")
+        until(lambda: len(store.rounds(sweep.key)) > 0, "a round is judged")
+    before = store.rounds(sweep.key)
+    with dispatching(store, local_pool):
+        settle(store, sweep)
+    assert store.rounds(sweep.key)[: len(before)] == before
+    check_exact(store, sweep)
+
+
+def test_a_law_is_judged_for_every_group_of_sizes(store: Store, local_pool: LocalPool) -> None:
+    law = {"of": "half", "law": "logarithm", "coefficient": "a", "below": 0.15}
+    circuit = {"family": "hybrid-clifford", "sites": [8, 12, 16, 24], "layers": 16, "measurement_rate": [0.16, 0.3]}
+    sweep = Sweep.parse(
+        {
+            "circuit": circuit,
+            "observe": [{"name": "half", "quantity": "entropy"}],
+            "stop": {"trajectories": 2000, "law": law},
+        }
+    )
+    with dispatching(store, local_pool):
+        store.submit(sweep, "ada")
+        settle(store, sweep)
+    answers = store.sweep_status(sweep.key).answers
+    assert [answer.where for answer in answers] == [{"measurement_rate": 0.16}, {"measurement_rate": 0.3}]
+    for one in store.progress(sweep.key).ensembles:
+        met = answers[0 if one.parameters["measurement_rate"] == 0.16 else 1].met
+        assert one.met_by == ("error" if met else "cap")
+    check_exact(store, sweep)
+
+
 def test_withdrawing_stops_feeding_and_keeps_what_was_sampled(store: Store, local_pool: LocalPool) -> None:
     sweep = small_sweep(rates=1, cap=10_000_000)
     with dispatching(store, local_pool) as dispatcher:
