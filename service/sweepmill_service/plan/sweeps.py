@@ -24,9 +24,9 @@ class SweepInfo:
     observations: tuple[str, ...]
     at_least: int
     has_rules: bool
-    has_goal: bool
     budget: float | None
     core_seconds: float  # charged so far
+    has_goal: bool = False  # judged in rounds
 
 
 @dataclass
