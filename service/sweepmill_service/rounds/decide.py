@@ -4,13 +4,12 @@ import math
 from collections.abc import Sequence
 from typing import Any, Literal, NamedTuple
 
-from sweepmill.analysis.design import Advice, Place, advise_critical_point
+from sweepmill.analysis.design import Advice, Place, advise_critical_point, advise_law
 from sweepmill.analysis.estimate import Estimate, finite
 from sweepmill.ensemble import Ensemble
 from sweepmill.goals import CriticalPointGoal, Goal, Group, LawGoal, groups
 from sweepmill.ladder import rungs
 from sweepmill_service.rounds.costs import weighed_costs
-from sweepmill_service.rounds.law import advise_law
 from sweepmill_service.rounds.material import curve_of, points_of
 from sweepmill_service.store.rounds import Decision, Evidence, StoredPlace
 from sweepmill_service.stored import StoredSweep, expand, stored_goal
