@@ -1,12 +1,11 @@
 """Advice on a critical point, on synthetic data of a known transition."""
 
 import numpy as np
-import pytest
 
 from sweepmill.analysis import Points
 from sweepmill.analysis.design import Advice, Place, advise_critical_point
 
-P_C, FOLDS = 0.1611, 32
+P_C, FOLDS = 0.1611, 8
 SIZES = (16.0, 32.0, 64.0)
 GRID = np.round(0.13 + 0.0025 * np.arange(25), 6)
 COSTS = {16.0: 2.0**-13, 32.0: 2.0**-10, 64.0: 2.0**-8}
@@ -52,9 +51,8 @@ class Synthetic:
         raise AssertionError(advice.reason)
 
 
-@pytest.mark.parametrize("seed", [1, 2])
-def test_rounds_reach_the_error_asked_for_and_the_transition(seed: int) -> None:
-    advice = Synthetic(seed, GRID[::4]).until_met(0.001)
+def test_rounds_reach_the_error_asked_for_and_the_transition() -> None:
+    advice = Synthetic(1, GRID[::4]).until_met(0.001)
     assert advice.estimate.error is not None
     assert advice.estimate.error <= 0.001
     assert abs(advice.estimate.sigmas_from(P_C)) < 5  # chance of failure 6e-7

@@ -13,7 +13,7 @@ from sweepmill.analysis.arrays import Matrix, Vector
 
 Informations = NDArray[np.float64]  # [places, parameters, parameters], of one trajectory each
 
-_STEPS = 200
+_STEPS = 120
 _NOTHING = 1e-12  # of the largest share
 
 
@@ -53,12 +53,24 @@ def allocated(
     The variance is the least of sum_i |w_i|^2/T_i over the weights w of linear estimators, convex in w and T together;
     minimizing over one and the other in turn goes down to the minimum.
     """
-    room = most > have
-    if budget <= 0 or not room.any():
+    room = np.flatnonzero(most > have)
+    if budget <= 0 or len(room) == 0:
         return have
-    trajectories = np.minimum(have + np.where(room, budget / room.sum() / cost, 0.0), most)
+    fixed = _total(have, information) - _total(have[room], information[room])
+    grown = _grown(information[room], fixed, direction, (cost[room], have[room], most[room]), budget)
+    trajectories = have.copy()
+    trajectories[room] = grown
+    return trajectories
+
+
+def _grown(
+    information: Informations, fixed: Matrix, direction: Vector, columns: tuple[Vector, Vector, Vector], budget: float
+) -> Vector:
+    """As `allocated` where all places have room; `fixed` [m, m] is the information of the others."""
+    cost, have, most = columns
+    trajectories = np.minimum(have + budget / len(have) / cost, most)
     for _ in range(_STEPS):
-        solved = _solved(_total(trajectories, information), direction)
+        solved = _solved(fixed + _total(trajectories, information), direction)
         worth = np.maximum(information @ solved @ solved, 0.0)
         trajectories = filled(trajectories * np.sqrt(worth / cost), cost, have, most, budget)
     return trajectories

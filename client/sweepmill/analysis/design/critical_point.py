@@ -2,11 +2,12 @@
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
-from sweepmill.analysis.collapse import fit_collapse
+from sweepmill.analysis.collapse import Collapse, fit_collapse
 from sweepmill.analysis.design.form_test import form_places
 from sweepmill.analysis.design.linear import gradients
 from sweepmill.analysis.design.noise import smooth_variance
@@ -35,9 +36,19 @@ def advise_critical_point(points: Points, places: Sequence[Place], below: float)
     if choice is None or trouble:
         return _without_fit(candidates, points, order, choice, trouble)
     collapse = fit_collapse(choice.fitted.points, choice.fitted.frame.form)
-    estimate = collapse["p_c"]
+    estimate = _judged(collapse)
     done = met(estimate, "p_c", candidates, below)
     return done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
+
+
+def _judged(collapse: Collapse) -> Estimate:
+    """p_c with the larger of two errors by noise: that of the folds, and that by linear propagation.
+
+    The first fluctuates by a tenth from round to round, and rounds end when it is small; the second does not.
+    """
+    estimate, goodness = collapse["p_c"], collapse.goodness
+    linear = math.sqrt(collapse.fitted.solution.covariance[0, 0] * max(1.0, goodness.ratio))
+    return replace(estimate, statistical=max(estimate.statistical, linear))
 
 
 def _checked(points: Points, places: Sequence[Place]) -> Candidates:

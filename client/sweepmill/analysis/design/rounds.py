@@ -8,11 +8,11 @@ from sweepmill.analysis.arrays import Mask, Vector
 from sweepmill.analysis.design.allocation import Informations, allocated, filled, variance
 from sweepmill.analysis.design.place import Candidates
 
-_FORM_SHARE = 0.15  # of a round tests the form
+_FORM_SHARE = 0.1  # of a round tests the form
 AIM = 0.95  # of the error asked for: the error found in the next round fluctuates
 _GROWTH = 1.0  # core-seconds of a round per core-second spent so far
 _NEW = 2  # new places per size and round at most
-_WORTH = 0.95  # new places must shrink the variance by this factor
+_WORTH = 0.98  # new places must shrink the variance by this factor
 _STEPS = 12
 
 

@@ -1,8 +1,9 @@
 """Which points a critical point is fitted to: a fixed order of choices, the first that describes its points is taken.
 
-All sizes first; then without the smallest, and so on down to two. For every choice of sizes the widest window in the
-scaling variable first, then narrower ones around the place just fitted. The polynomial is cubic as long as enough
-points are left, so neither window nor degree is picked for the value or the error it gives.
+All sizes first; then without the smallest, and so on down to two. For every choice of sizes the plain form, then, with
+four sizes or more, the form with a correction L^-1; for either the widest window in the scaling variable first, then
+narrower ones around the place just fitted. The polynomial is cubic as long as enough points are left, so neither
+window nor degree is picked for the value or the error it gives.
 """
 
 from collections.abc import Iterator
@@ -20,6 +21,7 @@ DESCRIBES = 0.05  # least p-value: a right fit goes on to a narrower window in o
 _NARROWER = 0.75
 _SPARE = 2  # degrees of freedom at least
 _PLACES = 3  # per size at least
+_CORRECTED = 4  # sizes at least for a correction to scaling
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,27 +36,27 @@ class Choice:
 def choose(points: Points, acceptable: float = DESCRIBES) -> Choice | None:
     """The first choice whose fit describes its points; None if there is none."""
     sizes = points.distinct_sizes()
-    for smallest in sizes[: len(sizes) - 1]:
-        for choice in _windows(points, points.sizes >= smallest):
-            if not choice.fitted.faults(acceptable):
-                return choice
+    for index, smallest in enumerate(sizes[:-1]):
+        for corrected in (False, True)[: 1 + (len(sizes) - index >= _CORRECTED)]:
+            for choice in _windows(points, points.sizes >= smallest, corrected):
+                if not choice.fitted.faults(acceptable):
+                    return choice
     return None
 
 
-def _windows(points: Points, keep: Mask) -> Iterator[Choice]:
-    while (form := _form(points.taken(keep))) is not None:
+def _windows(points: Points, keep: Mask, corrected: bool) -> Iterator[Choice]:
+    while (form := _form(points.taken(keep), corrected)) is not None:
         fitted = Fitted.of(points.taken(keep), form)
         u = np.abs(fitted.frame.scaled(fitted.solution.theta, points.x, points.sizes))
         reach = float(u[keep].max())
         yield Choice(keep, fitted, reach)
-        narrower = keep & (u <= _NARROWER * reach)
-        keep = narrower
+        keep = keep & (u <= _NARROWER * reach)
 
 
-def _form(points: Points) -> Scaling | None:
+def _form(points: Points, corrected: bool) -> Scaling | None:
     """The form these points can test: degree 3, or 2 where they are few; None where they are too few for that."""
-    if len(points) == 0 or len(points.distinct_sizes()) < 2:
+    if len(points) == 0 or len(points.distinct_sizes()) < (_CORRECTED if corrected else 2):
         return None
     counts = [len(np.unique(points.x[points.sizes == size])) for size in points.distinct_sizes()]
-    forms = (Scaling(Polynomial(degree)) for degree in (3, 2))
+    forms = (Scaling(Polynomial(degree), corrected=corrected) for degree in (3, 2))
     return next((one for one in forms if len(points) >= one.parameters() + _SPARE and min(counts) >= _PLACES), None)
