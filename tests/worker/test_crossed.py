@@ -181,6 +181,24 @@ def test_signs_and_their_absence_have_the_same_mean_in_a_preset_and_its_layered_
     assert all(row[1].mean < 0.95 for row in rows)
 
 
+def test_larger_rings_hide_their_beginning_below_the_transition_and_tell_it_above() -> None:
+    """The transition is at a rate of 0.16: Critical properties of the measurement-induced transition in random quantum
+    circuits, Physical Review B 101, 060301 (2020). The differences are 8 standard errors or more.
+    """
+    item = crossed()
+    for rate, sign in ((0.08, 1), (0.22, -1)):
+        means, errors = [], []
+        for sites in (8, 24):
+            settings = {"sites": sites, "measurement_rate": rate, "layers": 2 * sites, "scrambling_layers": 48}
+            ensemble = Ensemble.of("hybrid-clifford", **settings)
+            total = sample(ensemble, [item], 0, 2500).accumulators[item.key]
+            (one,) = summarize(total, coordinates(ensemble, item))
+            means.append(one.mean)
+            errors.append(one.standard_error)
+        assert sign * (means[1] - means[0]) > 3 * np.hypot(*errors)
+        assert means[1] > 0.97 if sign > 0 else 2 / 3 < means[1] < 0.75
+
+
 @pytest.mark.parametrize("engine", ["auto", "reference"])
 def test_without_measurements_all_initial_states_are_alike(engine: str) -> None:
     ensemble = Ensemble.of("hybrid-clifford", sites=6, measurement_rate=0, layers=4, engine=engine)
