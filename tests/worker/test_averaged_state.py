@@ -30,12 +30,16 @@ def test_a_random_frame_of_all_sites_leaves_the_maximally_mixed_state_and_nothin
     draw = random.Random(seed)
     state = reduce(lambda held, one: dense.apply(held, one, 2, 0), _gates(draw), dense.start("zeros", 2))
     gate = draw.randrange(720)
-    framed = sum(dense.apply(state, row(op.GATE, [0, 1], gate, frame), 2, 0) for frame in range(16)) / 16
+    framed = _sum([dense.apply(state, row(op.GATE, [0, 1], gate, frame), 2, 0) for frame in range(16)]) / 16
     np.testing.assert_allclose(framed, np.eye(4) / 4, atol=1e-6)
     for one in random_layer(draw, 2, 12, forced=False, mixing=False).tolist():
-        recorded = one[op.CODE] == op.MEASURE
-        framed = sum(dense.apply(framed, one, 2, outcome) for outcome in ((0, 1) if recorded else (0,)))
+        outcomes = (0, 1) if one[op.CODE] == op.MEASURE else (0,)
+        framed = _sum([dense.apply(framed, one, 2, outcome) for outcome in outcomes])
     np.testing.assert_allclose(framed, np.eye(4) / 4, atol=1e-5)
+
+
+def _sum(states: list[dense.Matrix]) -> dense.Matrix:
+    return np.asarray(np.sum(states, axis=0), dtype=np.complex128)
 
 
 def _gates(draw: random.Random) -> list[list[int]]:

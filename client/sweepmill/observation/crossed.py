@@ -16,7 +16,7 @@ NO_RECORDS = "outcomes are forced, so that the record has no probability in whic
 class CrossEntropy(BaseObservation):
     """chi = sum_m p(m) q(m) / sum_m q(m)^2 over records m: p from the circuit's initial state, q from ``against``.
 
-    Source: Cross entropy benchmark of measurement-induced phase transitions, Physical Review Letters 130, 220404
+    Source: Cross entropy benchmark for measurement-induced phase transitions, Physical Review Letters 130, 220404
     (2023). The record is that of all measurements up to the layer that is read. Gates and measured places are given:
     every circuit has its chi, and the mean over trajectories averages it over circuits.
 
