@@ -109,9 +109,10 @@ class Table:
         for name, wanted in conditions.items():
             column = self.values(name)
             keep = [i for i in keep if _matches(column[i], wanted)]
-        return self._taken(keep)
+        return self.taken(keep)
 
-    def _taken(self, rows: Sequence[int]) -> Self:
+    def taken(self, rows: Sequence[int]) -> Self:
+        """The rows of these numbers, which ascend, with the ensembles they rest on."""
         columns = {name: [values[i] for i in rows] for name, values in self._columns.items()}
         return type(self)(columns, {**self.metadata, "ensembles": _still_used(self.ensembles, rows)})
 

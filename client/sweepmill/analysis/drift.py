@@ -114,7 +114,7 @@ def drift_text(first: Row, rows: tuple[Row, ...]) -> str:
     """A table for reading, the fit itself first."""
     names = list(first.values)
     lines = [
-        [row.what, row.points, *_cells(row, names), _ratio(row.goodness), row.goodness.p_value]
+        [row.what, row.points, *_cells(row, names), _ratio(row.goodness), f"{row.goodness.p_value:.2g}"]
         for row in (first, *rows)
     ]
     return aligned(["fit", "points", *names, "chi2/dof", "p"], lines)

@@ -108,6 +108,12 @@ class Fitted:
         """The fitted y at other places."""
         return np.asarray(self.frame.design_at(self.solution.theta, x, sizes) @ self.solution.coefficients)
 
+    def correction(self, x: Vector, sizes: Vector) -> Vector:
+        """The part L^(-zeta/nu - omega) g(u) of the fitted y; zero where the form has none."""
+        leading = self.frame.form.shape.coefficients
+        design = self.frame.design_at(self.solution.theta, x, sizes)
+        return np.asarray(design[:, leading:] @ self.solution.coefficients[leading:])
+
     def standardized(self) -> Vector:
         """(data - fit) / error of every point [n], not whitened."""
         fit = self.predicted(self.points.x, self.points.sizes)

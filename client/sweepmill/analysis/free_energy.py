@@ -3,7 +3,8 @@
 import json
 import math
 from dataclasses import dataclass
-from typing import Any
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -15,6 +16,9 @@ from sweepmill.analysis.law_fit import FittedLaw
 from sweepmill.analysis.laws import Law
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.wording import listed
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
 
 CASIMIR = Law("1/L^2", "f + B L^-2", ("f", "B"), lambda x, r, g: [np.ones_like(x), x**-2.0])
 HIGHER = Law("1/L^4", "f + B L^-2 + D L^-4", ("f", "B", "D"), lambda x, r, g: [np.ones_like(x), x**-2.0, x**-4.0])
@@ -53,6 +57,14 @@ class CentralCharge:
     def drift_text(self) -> str:
         """The window scan as aligned text."""
         return drift_text(first_row(self.fitted, ACCEPTABLE), self.drift)
+
+    def plot(
+        self, path: str | Path | None = None, x_label: str = "L", y_label: str = "share of random outcomes"
+    ) -> "Figure":
+        """Data, the line in 1/L^2, residuals and drift in one figure, written to `path` if given."""
+        from sweepmill.analysis.plot_central_charge import plot_central_charge
+
+        return plot_central_charge(self, path, x_label, y_label)
 
     def to_dict(self) -> dict[str, Any]:
         """Everything as plain values, with the keys of the ensembles it rests on."""

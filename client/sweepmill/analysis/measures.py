@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from sweepmill.analysis.arrays import Vector
+from sweepmill.analysis.arrays import Mask, Vector
 
 _SHARED = 0.5  # of the points must lie on another curve, or the curves do not overlap enough to be compared
 
@@ -14,7 +14,29 @@ def quality(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:
     Phys. Rev. B 70, 014418 (2004), from memory.
     """
     order = np.lexsort((u, sizes))  # ascending u within every size
-    u, y, error, sizes = u[order], y[order], error[order], sizes[order]
+    away = _distances(u[order], y[order], error[order], sizes[order])
+    if len(away) < _SHARED * len(u):
+        return float("inf")
+    return float(np.sum(away**2) / len(away))
+
+
+def deviations(u: Vector, y: Vector, error: Vector, sizes: Vector) -> Vector:
+    """The distances [n] whose squares `quality` averages, in the order of the points; nan outside the other sizes."""
+    order = np.lexsort((u, sizes))
+    inside = np.flatnonzero(_others(u[order], y[order], error[order], sizes[order])[0])
+    away: Vector = np.full(len(u), np.nan)
+    away[order[inside]] = _distances(u[order], y[order], error[order], sizes[order])
+    return away
+
+
+def _distances(u: Vector, y: Vector, error: Vector, sizes: Vector) -> Vector:
+    """Of the points that lie among other sizes, in errors; u ascends within every size."""
+    used, master, variance = _others(u, y, error, sizes)
+    return np.asarray((y[used] - master) / np.sqrt(error[used] ** 2 + variance))
+
+
+def _others(u: Vector, y: Vector, error: Vector, sizes: Vector) -> tuple[Mask, Vector, Vector]:
+    """Which points lie among other sizes, and of those the value of the line through these and its variance."""
     starts = np.flatnonzero(np.concatenate([[True], sizes[1:] != sizes[:-1]]))
     counts = np.diff(np.append(starts, len(u)))[:, None]
     # rows: sizes; columns: points. How many points of the size lie below, and the neighbors on both sides
@@ -28,10 +50,7 @@ def quality(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:
     wxx, wxy = (weight * x * x).sum(axis=0), (weight * x * value).sum(axis=0)
     determinant = w * wxx - wx * wx
     used = determinant > 1e-12 * w * wxx
-    if used.sum() < _SHARED * len(u):
-        return float("inf")
-    master, variance = (wxx * wy - wx * wxy)[used] / determinant[used], wxx[used] / determinant[used]
-    return float(np.sum((y[used] - master) ** 2 / (error[used] ** 2 + variance)) / used.sum())
+    return used, (wxx * wy - wx * wxy)[used] / determinant[used], wxx[used] / determinant[used]
 
 
 def residual(u: Vector, y: Vector, error: Vector, sizes: Vector) -> float:

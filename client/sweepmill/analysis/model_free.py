@@ -4,17 +4,22 @@ import json
 import math
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import Any
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from sweepmill.analysis.arrays import Mask, Matrix, Vector
 from sweepmill.analysis.collapse_drift import NEAR
 from sweepmill.analysis.drift import excess
-from sweepmill.analysis.estimate import Estimate, finite
+from sweepmill.analysis.estimate import Estimate, finite, with_error
 from sweepmill.analysis.model_free_search import DRAWS, Measure, Search, error_of, named, perturbed
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.wording import listed
+from sweepmill.text import aligned
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
 
 _TOO_LARGE = 5.0  # standard deviations of the quality above 1, by the law of chi^2 per point
 
@@ -59,6 +64,26 @@ class ModelFree:
             return f"{data} is not to be quoted: {'; '.join(self.flags)}; the best values are {values}."
         how = f"halves of {self.points.folds} folds" if self.points.folds else f"{DRAWS} synthetic data sets"
         return f"{data} gives {values}; errors are from {how} and include the spread between windows."
+
+    def scaled(self) -> tuple[Vector, Vector]:
+        """The scaling variable u and the factor L^(zeta/nu) of y, both [n], at the best values."""
+        values = [self[name].value if name in self.estimates else 0.0 for name in ("p_c", "nu", "zeta")]
+        p_c, nu, zeta = values
+        return (self.points.x - p_c) * self.points.sizes ** (1 / nu), self.points.sizes ** (zeta / nu)
+
+    def plot(self, path: str | Path | None = None, x_label: str = "p", y_label: str = "y") -> "Figure":
+        """Data, collapse, distances and windows in one figure, written to `path` if given."""
+        from sweepmill.analysis.plot_model_free import plot_model_free
+
+        return plot_model_free(self, path, x_label, y_label)
+
+    def text(self) -> str:
+        """The windows as aligned text, the search on all points first."""
+        rows = [["all", len(self.points), *(str(one) for one in self.estimates.values())]]
+        for one in self.windows:
+            values = (with_error(v, float(e)) for v, e in zip(one.values.values(), one.errors, strict=True))
+            rows.append([one.what, one.points, *values])
+        return aligned(["points of", "number", *self.estimates], rows)
 
     def to_dict(self) -> dict[str, Any]:
         """Everything as plain values, with the keys of the ensembles it rests on."""

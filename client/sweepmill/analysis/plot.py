@@ -4,6 +4,8 @@ from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from pathlib import Path
 
+import numpy as np
+
 from sweepmill.analysis.arrays import Vector
 from sweepmill.analysis.drift import Row
 from sweepmill.extras import needing
@@ -34,7 +36,7 @@ def sheet(title: str, rows: int = 2) -> Iterator[tuple[Figure, list[Axes]]]:
     ):
         figure = Figure(figsize=(9.0, 3.2 * rows), layout="constrained")
         panels = [figure.add_subplot(rows, 2, place + 1) for place in range(2 * rows)]
-        figure.suptitle(title, fontsize=9, x=0.01, ha="left", wrap=True)
+        figure.suptitle(title.replace(" = ", "\u00a0=\u00a0"), fontsize=9, x=0.01, ha="left", wrap=True)
         yield figure, panels
 
 
@@ -73,15 +75,46 @@ def drift_panel(axes: Axes, rows: Sequence[Row], name: str, quoted: tuple[float,
     axes.axvline(value, color=GRAY, lw=0.8)
     if error is not None:
         axes.axvspan(value - error, value + error, color=GRAY, alpha=0.2, lw=0)
+    low, high = _drift_range(rows, name, quoted)
     for place, row in enumerate(rows):
-        color = _INKS[2] if row.accepted else GRAY
-        width = row.errors[name] if row.accepted else 0.0
-        axes.errorbar([row.values[name]], [place], xerr=[width], marker="o" if row.accepted else "x", ms=4, color=color)
+        at = float(np.clip(row.values[name], low, high))
+        if row.accepted:
+            axes.errorbar([at], [place], xerr=[row.errors[name]], marker="o", ms=4, color=_INKS[2])
+        else:  # an arrowhead at the edge stands for what lies beyond it
+            shape = "x" if at == row.values[name] else "<" if at == low else ">"
+            axes.plot([at], [place], marker=shape, ms=4, color=GRAY, clip_on=False)
+    axes.set_xlim(low, high)
     axes.set_yticks(range(len(rows)), [row.what for row in rows])
     axes.invert_yaxis()
     axes.ticklabel_format(axis="x", useOffset=False)
     axes.locator_params(axis="x", nbins=4)
     axes.set(xlabel=name, title="drift (crosses: fits that do not describe their data)")
+
+
+def estimates_panel(axes: Axes, rows: Sequence[tuple[str, float, float | None]], name: str) -> None:
+    """One quantity of several fits, each a name, a value and an error; the first is what is quoted."""
+    _, value, error = rows[0]
+    axes.axvline(value, color=GRAY, lw=0.8)
+    if error is not None:
+        axes.axvspan(value - error, value + error, color=GRAY, alpha=0.2, lw=0)
+    for place, (_, at, width) in enumerate(rows):
+        axes.errorbar([at], [place], xerr=[width or 0.0], marker="o", ms=4, color=_INKS[2])
+    axes.set_yticks(range(len(rows)), [what for what, _, _ in rows])
+    axes.invert_yaxis()
+    axes.ticklabel_format(axis="x", useOffset=False)
+    axes.locator_params(axis="x", nbins=4)
+    axes.set(xlabel=name, title="drift with the points taken")
+
+
+def _drift_range(rows: Sequence[Row], name: str, quoted: tuple[float, float | None]) -> tuple[float, float]:
+    """The range of accepted fits and of the quoted value, with a margin; of all fits where none is accepted."""
+    shown = [row for row in rows if row.accepted] or rows
+    widths = [row.errors[name] if row.accepted else 0.0 for row in shown]
+    ends = [row.values[name] + side * width for row, width in zip(shown, widths, strict=True) for side in (-1, 1)]
+    value, error = quoted
+    ends += [value - 1.5 * (error or 0.0), value + 1.5 * (error or 0.0)]
+    margin = 0.08 * (max(ends) - min(ends)) or abs(value) * 0.01 or 1.0
+    return min(ends) - margin, max(ends) + margin
 
 
 def saved(figure: Figure, path: str | Path | None) -> Figure:

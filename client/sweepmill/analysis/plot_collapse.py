@@ -27,14 +27,18 @@ def plot_collapse(result: Collapse, path: str | Path | None, x_label: str, y_lab
             dots(data, points.x[of], points.mean[of], points.error[of], color, index, f"L = {size:g}")
             _curve(data, result, size, color)
             u, lift = _scaled(result, size)
-            dots(scaled, u, points.mean[of] * lift, points.error[of] * lift, color, index, f"L = {size:g}")
+            taken_off = points.mean[of] - result.fitted.correction(points.x[of], points.sizes[of])
+            dots(scaled, u, taken_off * lift, points.error[of] * lift, color, index, f"L = {size:g}")
             residuals.scatter(u, standardized[of], s=12, color=color)
-        if not result.fitted.frame.form.corrected:
-            _master(scaled, result)
+        _master(scaled, result)
         data.axvline(result["p_c"].value, color=GRAY, lw=0.8)
         data.set(xlabel=x_label, ylabel=y_label, title="data")
         data.legend(frameon=False)
-        scaled.set(xlabel="scaling variable u", ylabel=f"{y_label} L^(zeta/nu)", title="collapse")
+        data.locator_params(axis="x", nbins=6)
+        form = result.fitted.frame.form
+        lifted = y_label if form.zeta == 0 else f"{y_label} L^(zeta/nu)"
+        title = "collapse, corrections taken off" if form.corrected else "collapse"
+        scaled.set(xlabel="scaling variable u", ylabel=lifted, title=title)
         rows = (first_row(result.fitted, result.acceptable), *result.drift)
         drift_panel(drift, rows, "p_c", (result["p_c"].value, result["p_c"].error))
     return saved(figure, path)
@@ -54,7 +58,8 @@ def _master(axes: Axes, result: Collapse) -> None:
     fine, (_, lift) = np.linspace(x.min(), x.max(), 120), _scaled(result, furthest)
     sizes = np.full_like(fine, furthest)
     u = result.fitted.frame.scaled(result.fitted.solution.theta, fine, sizes)
-    axes.plot(u, result.fitted.predicted(fine, sizes) * lift, color=GRAY, lw=0.9, zorder=0)
+    leading = result.fitted.predicted(fine, sizes) - result.fitted.correction(fine, sizes)
+    axes.plot(u, leading * lift, color=GRAY, lw=0.9, zorder=0)
 
 
 def _scaled(result: Collapse, size: float) -> tuple[np.ndarray, float]:

@@ -28,6 +28,7 @@ def plot_crossings(result: Crossings, path: str | Path | None, x_label: str, y_l
             data.axvline(one.place, color=GRAY, lw=0.5)
         data.set(xlabel=x_label, ylabel=y_label, title="data, and where neighboring sizes cross")
         data.legend(frameon=False)
+        data.locator_params(axis="x", nbins=6)
         _places(places, result)
         places.ticklabel_format(axis="y", useOffset=False)
         places.set(ylabel=f"crossing in {x_label}", title="crossings against the smaller size")

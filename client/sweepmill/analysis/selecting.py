@@ -13,6 +13,10 @@ from sweepmill.table import Table
 COPIES = "replicate"  # an axis whose values are independent copies of one ensemble
 
 
+class NotOneCurve(ValueError):
+    """Rows that are several curves where one is wanted; the message says what to choose."""
+
+
 def numbers(table: Table, name: str) -> Vector:
     """A column [rows], or what all ensembles have in common under its name, as floats.
 
@@ -37,15 +41,15 @@ def keys_of(table: Table) -> tuple[str, ...]:
 
 
 def require_curves(table: Table, x: str, sizes: str) -> None:
-    """Raise ValueError unless the rows are curves of one observation over x, one for each size.
+    """Raise NotOneCurve unless the rows are curves of one observation over x, one for each size.
 
-    The message names the column, its values and what would pass.
+    The message names the column, its values and what would pass. Raises ValueError where there are no rows.
     """
     if not len(table):
         raise ValueError("there are no rows: nothing is sampled yet, or the conditions leave nothing")
     names = list(dict.fromkeys(table.values("name")))
     if len(names) > 1:
-        raise ValueError(f"the rows are of the observations {listed(names)}: choose one, as name = {names[0]}")
+        raise NotOneCurve(f"the rows are of the observations {listed(names)}: choose one, as name = {names[0]}")
     for column, plural in (("layer", "layers"), ("position", "positions")):
         _require_one(table, column, plural, x, sizes)
     _require_same(table, x, sizes)
@@ -61,7 +65,7 @@ def _require_one(table: Table, column: str, plural: str, x: str, sizes: str) -> 
     if len(most) > 1:
         name, some = table.values("name")[0], listed(sorted(most, key=_order))
         choice = sorted(most, key=_order)[-1]
-        raise ValueError(
+        raise NotOneCurve(
             f"{name} has {len(most)} {plural} per ensemble ({some}): take {column} as x, or choose one, "
             f"as {column} = {choice}"
         )
@@ -76,7 +80,7 @@ def _require_same(table: Table, x: str, sizes: str) -> None:
         first = seen.setdefault(place, row)
         for axis in others:
             if row[axis] != first[axis]:
-                raise ValueError(
+                raise NotOneCurve(
                     f"rows of one place ({x} = {row.get(x)}) differ in {axis}: {first[axis]} and {row[axis]}; "
                     f"choose one, as {axis} = {first[axis]}"
                 )

@@ -4,7 +4,8 @@ import json
 import math
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import Any, Literal
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from scipy import stats
@@ -15,7 +16,11 @@ from sweepmill.analysis.jackknife import jackknife_error
 from sweepmill.analysis.points import Points
 from sweepmill.text import aligned, short
 
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
 Verdict = Literal["steady", "still changing", "too noisy to tell"]
+VERDICTS: tuple[Verdict, ...] = ("still changing", "too noisy to tell", "steady")  # the worst first
 FALSE_ALARM = 0.01  # probability that any of the ensembles is called changing when none is
 TOLERANCE = 0.02  # a change by this share of the mean would matter
 
@@ -24,7 +29,8 @@ TOLERANCE = 0.02  # a change by this share of the mean would matter
 class Quarter:
     """One ensemble: mean of the third and of the fourth quarter, their difference, its error and the verdict.
 
-    `bound` tells that the error is a bound: without folds, the correlation of layers is unknown.
+    `bound` tells that the error is a bound: without folds, the correlation of layers is unknown. `label` is what the
+    ensemble is called by.
     """
 
     key: str
@@ -36,26 +42,33 @@ class Quarter:
     error: float
     bound: bool
     verdict: Verdict
+    label: str = ""
+
+    @property
+    def scale(self) -> float:
+        """What changes are measured by: the larger of the two means."""
+        return max(abs(self.third), abs(self.fourth)) or 1.0
 
     def __str__(self) -> str:
         return (
-            f"L = {self.size:g}, {self.layers:g} layers: {self.verdict} (from the third to the fourth quarter the mean "
-            f"changed by {with_error(self.change, self.error)}, {100 * self.change / abs(self.third or 1.0):+.2g} %)"
+            f"{self.label or f'L = {self.size:g}'}, {self.layers:g} layers: {self.verdict} (from the third to the "
+            f"fourth quarter the mean changed by {with_error(self.change, self.error)}, "
+            f"{100 * self.change / self.scale:+.2g} %)"
         )
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Steadiness:
-    """Result of `steady_yet`: one row per ensemble, and one verdict on all."""
+    """Result of `steady_yet`: one row per ensemble with its `series`, and one verdict on all."""
 
     rows: tuple[Quarter, ...]
+    series: tuple[Points, ...]
+    tolerance: float
 
     @property
     def verdict(self) -> Verdict:
         """The worst of the rows: still changing before too noisy before steady."""
-        found = {row.verdict for row in self.rows}
-        ranks: tuple[Verdict, ...] = ("still changing", "too noisy to tell", "steady")
-        return next(one for one in ranks if one in found)
+        return next(one for one in VERDICTS if any(row.verdict == one for row in self.rows))
 
     def __str__(self) -> str:
         bad = [row for row in self.rows if row.verdict != "steady"]
@@ -63,19 +76,34 @@ class Steadiness:
             return f"Steady: none of {len(self.rows)} ensembles changed from the third to the fourth quarter of layers."
         return f"Not shown to be steady, {len(bad)} of {len(self.rows)} ensembles: " + "; ".join(map(str, bad)) + "."
 
+    def summary(self) -> str:
+        """How many ensembles have which verdict, in one sentence."""
+        if self.verdict == "steady":
+            return str(self)
+        counts = [(sum(row.verdict == one for row in self.rows), one) for one in VERDICTS]
+        said = ", ".join(f"{number} {one}" for number, one in counts if number)
+        noun = "ensemble" if len(self.rows) == 1 else "ensembles"
+        return f"Not shown to be steady: of {len(self.rows)} {noun}, {said}."
+
     def text(self) -> str:
         """All rows, aligned."""
         head = ["ensemble", "L", "layers", "third", "fourth", "change", "verdict"]
         rows = [
-            [short(r.key), r.size, r.layers, r.third, r.fourth, with_error(r.change, r.error), r.verdict]
+            [r.label or short(r.key), r.size, r.layers, r.third, r.fourth, with_error(r.change, r.error), r.verdict]
             for r in self.rows
         ]
         return aligned(head, rows)
 
+    def plot(self, path: str | Path | None = None, x_label: str = "layer", y_label: str = "y") -> "Figure":
+        """The series and the changes between their last quarters in one figure, written to `path` if given."""
+        from sweepmill.analysis.plot_steady import plot_steady
+
+        return plot_steady(self, path, x_label, y_label)
+
     def to_dict(self) -> dict[str, Any]:
         """Everything as plain values, with the keys of the ensembles."""
         rows = [{name: finite(v) if isinstance(v, float) else v for name, v in vars(row).items()} for row in self.rows]
-        return {"analysis": "steady yet", "verdict": self.verdict, "ensembles": rows}
+        return {"analysis": "steady yet", "verdict": self.verdict, "tolerance": self.tolerance, "ensembles": rows}
 
     def to_json(self) -> str:
         """`to_dict` as JSON text."""
@@ -90,9 +118,17 @@ def steady_yet(points: Points, tolerance: float = TOLERANCE) -> Steadiness:
     excluded at two standard errors. Errors by jackknife over the folds, for layers of one trajectory are correlated;
     without folds a bound is used. Raises ValueError for a series without layers in both quarters.
     """
-    series = list(_series(points))
+    return steady_series(tuple(_series(points)), tolerance)
+
+
+def steady_series(series: tuple[Points, ...], tolerance: float = TOLERANCE, labels: tuple[str, ...] = ()) -> Steadiness:
+    """`steady_yet` for series that are given one by one, perhaps with what to call them."""
+    if not series:
+        raise ValueError("no series of layers: there is nothing to judge")
     limit = float(stats.norm.isf(FALSE_ALARM / len(series) / 2))
-    return Steadiness(tuple(_judge(one, limit, tolerance) for one in series))
+    names = labels or ("",) * len(series)
+    rows = (_judge(one, limit, tolerance, name) for one, name in zip(series, names, strict=True))
+    return Steadiness(tuple(rows), series, tolerance)
 
 
 def _series(points: Points) -> Iterator[Points]:
@@ -101,12 +137,13 @@ def _series(points: Points) -> Iterator[Points]:
         yield points.taken(np.asarray(blocks == block))
 
 
-def _judge(series: Points, limit: float, tolerance: float) -> Quarter:
+def _judge(series: Points, limit: float, tolerance: float, label: str) -> Quarter:
     last = float(series.x.max())
     third: Mask = (series.x > 0.5 * last) & (series.x <= 0.75 * last)
     fourth: Mask = series.x > 0.75 * last
     if not third.any() or not fourth.any():
-        raise ValueError(f"size {series.sizes[0]:g} has no layers in its third or fourth quarter: read more of them")
+        what = label or f"size {series.sizes[0]:g}"
+        raise ValueError(f"{what} has no layers in its third or fourth quarter: read more of them")
     before, after = float(series.mean[third].mean()), float(series.mean[fourth].mean())
     error, change = _error(series, third, fourth), after - before
     verdict: Verdict = "steady"
@@ -115,7 +152,7 @@ def _judge(series: Points, limit: float, tolerance: float) -> Quarter:
     elif abs(change) + 2 * error > tolerance * max(abs(before), abs(after)):
         verdict = "too noisy to tell"
     key, bound = series.keys[0] if series.keys else "", series.replicas is None
-    return Quarter(key, float(series.sizes[0]), last, before, after, change, error, bound, verdict)
+    return Quarter(key, float(series.sizes[0]), last, before, after, change, error, bound, verdict, label)
 
 
 def _error(series: Points, third: Mask, fourth: Mask) -> float:

@@ -8,6 +8,7 @@ import typer
 from sweepmill.cli.check import check
 from sweepmill.cli.demo import demo
 from sweepmill.cli.dispatch import dispatch
+from sweepmill.cli.fit import fit
 from sweepmill.cli.folds import folds
 from sweepmill.cli.listing import list_sweeps
 from sweepmill.cli.pool import pool
@@ -50,6 +51,7 @@ app.command()(rounds)
 app.command()(table)
 app.command()(folds)
 app.command()(values)
+app.command()(fit)
 app.command()(withdraw)
 app.command()(replay)
 app.command()(pool)

@@ -1,0 +1,188 @@
+"""The fits that `sweepmill fit` knows by name: what each takes for its abscissa, and what it has to say."""
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Protocol
+
+import numpy as np
+
+from sweepmill.analysis.alternatives import alternatives
+from sweepmill.analysis.choosing import Chosen
+from sweepmill.analysis.collapse import fit_collapse
+from sweepmill.analysis.compare import Candidate, Comparison, fit_growth, fit_laws
+from sweepmill.analysis.crossings import fit_crossings
+from sweepmill.analysis.drift import drift_text, first_row
+from sweepmill.analysis.estimate import with_error
+from sweepmill.analysis.free_energy import fit_central_charge
+from sweepmill.analysis.goodness import ACCEPTABLE
+from sweepmill.analysis.model_free import fit_model_free
+from sweepmill.analysis.points import Points
+from sweepmill.analysis.scaling import Scaling
+from sweepmill.analysis.selecting import NotOneCurve
+from sweepmill.analysis.shapes import Polynomial
+from sweepmill.analysis.times import fit_decay, fit_times, purification_times
+from sweepmill.text import aligned
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+_FEWEST = 8  # points a curve is thinned to at least
+
+
+class Result(Protocol):
+    """What every fit gives: it prints as a sentence, serializes, and plots itself."""
+
+    def to_json(self) -> str: ...
+    def plot(self, path: str | Path | None = None, x_label: str = ..., y_label: str = ...) -> "Figure": ...
+
+
+@dataclass(frozen=True)
+class Options:
+    """Settings of the fits; each kind takes those that mean something to it."""
+
+    zeta: float | None = 0.0
+    degree: int = 3
+    corrections: bool = False
+    ring: float | None = None
+    threshold: float = 1.0
+    rate: float | None = None
+    anisotropy: float = 1.0
+
+    def form(self) -> Scaling:
+        """The scaling form of a collapse."""
+        omega = None if self.corrections else 1.0
+        return Scaling(Polynomial(self.degree), self.zeta, corrected=self.corrections, omega=omega)
+
+
+@dataclass(frozen=True, eq=False)
+class Report:
+    """A result with the tables and notes that belong under its sentence."""
+
+    result: Result
+    tables: tuple[str, ...] = ()
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True)
+class Kind:
+    """A fit: `abscissae` are the columns it takes for x by default, before the only axis there is."""
+
+    what: str
+    run: Callable[[Chosen, Options], Report]
+    abscissae: tuple[str, ...] = ()
+
+
+def _collapse(data: Chosen, options: Options) -> Report:
+    result = fit_collapse(data.points, options.form())
+    others = alternatives(data.points, options.form()) if result.flags else ()
+    more = (f"These choices do describe the data:\n{aligned(*others)}",) if others else ()
+    advice = ("Choose by what is known of the data, not by the answer, and quote the spread.",) if others else ()
+    return Report(result, (result.drift_text(), *more), (*result.notes, *advice))
+
+
+def _crossings(data: Chosen, options: Options) -> Report:
+    result = fit_crossings(data.points, options.degree, None if options.corrections else 1.0)
+    rows = [[what, str(p_c)] for what, p_c in result.drift]
+    drift = (aligned(["fit", "p_c"], rows),) if rows else ()
+    hint = "a window about the crossing helps where a local polynomial does not describe its points"
+    return Report(result, (result.text(), *drift), (hint,) if any(one.fault for one in result.table) else ())
+
+
+def _model_free(data: Chosen, options: Options) -> Report:
+    result = fit_model_free(data.points, options.zeta)
+    return Report(result, (result.text(),) if result.windows else ())
+
+
+def _law(data: Chosen, options: Options) -> Report:
+    points, notes = _few(_one_curve(data, "position"), data.x)
+    if options.ring is not None:
+        points = points.taken(points.x <= options.ring / 2)  # beyond, the same intervals come again
+    return _compared(fit_laws(points, ring=options.ring), notes)
+
+
+def _growth(data: Chosen, _: Options) -> Report:
+    points, notes = _few(_one_curve(data, "layer"), data.x)
+    return _compared(fit_growth(points), notes)
+
+
+def _decay(data: Chosen, options: Options) -> Report:
+    points, notes = _few(_one_curve(data, "position"), data.x)
+    return _compared(fit_decay(points, options.ring), notes)
+
+
+def _times(data: Chosen, options: Options) -> Report:
+    times = purification_times(data.points, options.threshold)
+    rows = [[f"{size:g}", with_error(*one)] for size, *one in zip(times.sizes, times.mean, times.error, strict=True)]
+    left = sorted(set(data.points.distinct_sizes()) - set(times.distinct_sizes()))
+    notes = tuple(f"L = {size:g} gives no time: its curve does not cross the threshold" for size in left)
+    report = _compared(fit_times(times), notes)
+    head = ["L", f"layers until {options.threshold:g} bits are left"]
+    return Report(report.result, (aligned(head, rows), *report.tables), report.notes)
+
+
+def _central_charge(data: Chosen, options: Options) -> Report:
+    rate = options.rate if options.rate is not None else _measured(data)
+    result = fit_central_charge(data.points, rate, options.anisotropy)
+    return Report(result, (result.drift_text(),))
+
+
+KINDS: Mapping[str, Kind] = {
+    one.what: one
+    for one in (
+        Kind("collapse", _collapse),
+        Kind("crossings", _crossings),
+        Kind("model-free", _model_free),
+        Kind("law", _law, ("position", "sites")),
+        Kind("growth", _growth, ("layer",)),
+        Kind("times", _times, ("layer",)),
+        Kind("decay", _decay, ("position",)),
+        Kind("central-charge", _central_charge, ("sites",)),
+    )
+}
+
+
+def _compared(result: Comparison, notes: tuple[str, ...]) -> Report:
+    best = result.shown
+    rows = [[one.name, one.fitted.law.formula, _parameters(one), *_fit(one)] for one in result.candidates]
+    laws = aligned(["law", "formula", "parameters", "chi2/dof", "p", "weight"], rows)
+    scan = f"{best.name} in windows:\n{drift_text(first_row(best.fitted, ACCEPTABLE), best.drift)}"
+    return Report(result, (laws, scan), (*result.notes, *notes))
+
+
+def _parameters(candidate: Candidate) -> str:
+    """Without errors where they are withheld; the coefficient of log2 is left to the sentence."""
+    found = ((n, v) for n, v in candidate.estimates.items() if not n.endswith("_log2"))
+    return ", ".join(f"{name} = {f'{one.value:.4g}' if one.withheld else one}" for name, one in found)
+
+
+def _fit(candidate: Candidate) -> list[Any]:
+    goodness = candidate.fitted.goodness
+    return [f"{goodness.chi2:.1f}/{goodness.dof:.4g}", f"{goodness.p_value:.2g}", f"{candidate.weight:.2g}"]
+
+
+def _one_curve(data: Chosen, within: str) -> Points:
+    """The points, if they are one curve: along `within` an ensemble, several sizes are several curves."""
+    sizes = data.points.distinct_sizes()
+    if data.x == within and len(sizes) > 1:
+        shown = ", ".join(f"{size:g}" for size in sizes)
+        raise NotOneCurve(f"there is one curve for each size: choose one of {shown} with --sizes")
+    return data.points
+
+
+def _few(points: Points, x: str) -> tuple[Points, tuple[str, ...]]:
+    """So few points of an ensemble that its folds can whiten them, and a note where some were left out."""
+    largest, most = int(np.bincount(points.blocks()).max()), points.folds // 4
+    if largest <= points.folds // 2 or most < _FEWEST or (points.x <= 0).any():
+        return points, ()
+    few = points.thinned(most)
+    return few, (f"{len(few)} of {len(points)} values of {x} are fitted: {points.folds} folds whiten no more",)
+
+
+def _measured(data: Chosen) -> float:
+    table = data.table
+    values = set(table.values("measurement_rate")) if "measurement_rate" in table else set()
+    values |= {table.constants["measurement_rate"]} if "measurement_rate" in table.constants else set()
+    if len(values) != 1:
+        raise NotOneCurve("the number of measurements per site and layer is not known: give it with --rate")
+    return float(values.pop())
