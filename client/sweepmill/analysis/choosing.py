@@ -2,7 +2,7 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -28,6 +28,14 @@ class Choice:
     sizes: tuple[float, ...] = ()
 
 
+class Rows(NamedTuple):
+    """Rows that are curves over x, one for each size, with the names of the columns."""
+
+    table: Table
+    sizes: str
+    x: str
+
+
 @dataclass(frozen=True, eq=False)
 class Chosen:
     """The rows chosen, the points made of them, and what they show against what."""
@@ -44,6 +52,14 @@ def chosen(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -> Cho
     Raises NotOneCurve where an option is missing or names what is not there, saying what would pass; ValueError for
     rows without numbers.
     """
+    rows, sizes, x = chosen_rows(table, choice, abscissae)
+    require_finite(rows)
+    points = Points.from_folds(rows, x, sizes) if isinstance(rows, Folds) else Points.from_table(rows, x, sizes)
+    return Chosen(rows, points, str(rows.values("name")[0]), x)
+
+
+def chosen_rows(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -> Rows:
+    """The rows that `chosen` makes points of. Raises as that does."""
     rows = _with_values(_of(table, choice.of), choice.where)
     sizes = next((name for name in _SIZES if name in rows or name in rows.constants), _SIZES[0])
     rows = _with_sizes(rows, sizes, choice.sizes)
@@ -52,9 +68,7 @@ def chosen(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -> Cho
         raise NotOneCurve(f"x = {x!r} is no column: one of {', '.join((*rows.axes, 'layer', 'position'))}")
     rows = _within(rows, x, choice.window)
     require_curves(rows, x, sizes)
-    require_finite(rows)
-    points = Points.from_folds(rows, x, sizes) if isinstance(rows, Folds) else Points.from_table(rows, x, sizes)
-    return Chosen(rows, points, str(rows.values("name")[0]), x)
+    return Rows(rows, sizes, x)
 
 
 def _of(table: Table, of: str | None) -> Table:

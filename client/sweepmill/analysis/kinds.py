@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any, Protocol
 import numpy as np
 
 from sweepmill.analysis.alternatives import alternatives
-from sweepmill.analysis.choosing import Chosen
+from sweepmill.analysis.choosing import Choice, Chosen, chosen
 from sweepmill.analysis.collapse import fit_collapse
 from sweepmill.analysis.compare import Candidate, Comparison, fit_growth, fit_laws
 from sweepmill.analysis.crossings import fit_crossings
@@ -18,10 +18,12 @@ from sweepmill.analysis.free_energy import fit_central_charge
 from sweepmill.analysis.goodness import ACCEPTABLE
 from sweepmill.analysis.model_free import fit_model_free
 from sweepmill.analysis.points import Points
+from sweepmill.analysis.purities import Purities, chosen_purities
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.selecting import NotOneCurve
 from sweepmill.analysis.shapes import Polynomial
 from sweepmill.analysis.times import fit_decay, fit_times, purification_times
+from sweepmill.table import Table
 from sweepmill.text import aligned
 
 if TYPE_CHECKING:
@@ -71,6 +73,7 @@ class Kind:
     what: str
     run: Callable[[Chosen, Options], Report]
     abscissae: tuple[str, ...] = ()
+    choose: Callable[[Table, Choice, tuple[str, ...]], Chosen] = chosen
 
 
 def _collapse(data: Chosen, options: Options) -> Report:
@@ -127,6 +130,11 @@ def _central_charge(data: Chosen, options: Options) -> Report:
     return Report(result, (result.drift_text(),))
 
 
+def _purity(data: Chosen, _: Options) -> Report:
+    result = Purities.of(data)
+    return Report(result, (result.text(),))
+
+
 KINDS: Mapping[str, Kind] = {
     one.what: one
     for one in (
@@ -138,6 +146,7 @@ KINDS: Mapping[str, Kind] = {
         Kind("times", _times, ("layer",)),
         Kind("decay", _decay, ("position",)),
         Kind("central-charge", _central_charge, ("sites",)),
+        Kind("purity", _purity, ("position",), chosen_purities),
     )
 }
 

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from sweepmill.cli.options import Url
-from sweepmill.cli.source import FIGURES, Source, figure_path, headline, read_source
+from sweepmill.cli.source import FIGURES, Source, figure_path, headline, read_histograms, read_source
 from sweepmill.errors import SweepmillError
 from sweepmill.table import Table
 
@@ -111,21 +111,19 @@ def fit(
 
     choice = Choice(of, x, _values(where or []), window, tuple(float(one) for one in (sizes or "").split(",") if one))
     options = Options(_number(zeta), degree, corrections, ring, threshold, rate, anisotropy)
-    table = read_source(source, of, url)
+    table = read_histograms(source, url) if what is What.PURITY else read_source(source, of, url)
     try:
         data, report = _fitted(table, choice, KINDS[what], options)
     except NotOneCurve as error:
         raise typer.BadParameter(str(error)) from error
     except ValueError as error:
-        raise SweepmillError(f"{what} of {of or source} cannot be fitted: {error}") from error
+        raise SweepmillError(f"{what}{f' of {of}' if of else ''} cannot be fitted: {error}") from error
     _print(headline(source, data.table), data, report)
     _write(data, report, json, figure)
 
 
 def _fitted(table: Table, choice: "Choice", kind: "Kind", options: "Options") -> "tuple[Chosen, Report]":
-    from sweepmill.analysis.choosing import chosen
-
-    data = chosen(table, choice, kind.abscissae)
+    data = kind.choose(table, choice, kind.abscissae)
     return data, kind.run(data, options)
 
 

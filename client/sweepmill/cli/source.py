@@ -12,7 +12,7 @@ from sweepmill.client import Client
 from sweepmill.errors import SweepmillError
 from sweepmill.folds import Folds
 from sweepmill.remote import RemoteSweep
-from sweepmill.table import FOLDS, Table
+from sweepmill.table import BY_FOLD, FOLDS, Table
 from sweepmill.table_files import MEDIA_TYPES, read_columns
 from sweepmill.text import short
 
@@ -53,6 +53,17 @@ def read_source(source: str, name: str | None, url: str | None) -> Table:
         return sweep.folds(_checked(sweep, name))
 
 
+def read_histograms(source: str, url: str | None) -> Table:
+    """Exact histograms by fold, which the service has. Raises SweepmillError for a file without them."""
+    if not is_file(source):
+        with remote(source, url) as sweep:
+            return sweep.histograms(folds=True)
+    columns, metadata = read_columns(Path(source))
+    if BY_FOLD not in columns:
+        raise SweepmillError(f"{source} has no histograms by fold: give the key of the sweep, whose service has them")
+    return Table(columns, metadata)
+
+
 @contextmanager
 def remote(source: str, url: str | None) -> Iterator[RemoteSweep]:
     """The sweep of a key at the service."""
@@ -73,9 +84,11 @@ def headline(source: str, table: Table) -> str:
     parts = [f"sweep {short(str(sweep))}" if sweep else source]
     if table.ensembles:
         parts.append(_counted(len(table.ensembles), "ensemble"))
+    if table.ensembles and "trajectories" in table:
         per_ensemble = [table.values("trajectories")[one["rows"][0]] for one in table.ensembles]
         parts.append(_counted(sum(per_ensemble), "trajectory", "trajectories"))
-    least = min((len(one) for one in table.values(FOLDS[0])), default=0) if FOLDS[0] in table else 0
+    by_fold = next((table.values(name) for name in (FOLDS[0], BY_FOLD) if name in table), [])
+    least = min(map(len, by_fold), default=0)
     parts.append(f"{least} folds" if least else "no folds, so errors are propagated from the table")
     return ", ".join(parts)
 
