@@ -94,7 +94,7 @@ def fit(
     ] = None,
     url: Url = None,
 ) -> None:
-    """Fit the data of a sweep, from the service or a file, and say the result in a sentence.
+    """Fit the data of a sweep, and say the result in a sentence.
 
     collapse, crossings, model-free: critical point and exponents of finite-size scaling.
     law: how entropies grow with a length or with size. growth: how they grow in time.

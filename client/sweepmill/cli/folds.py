@@ -32,9 +32,10 @@ def folds(
     name: Annotated[str | None, typer.Option(help="Only the observation of this name.")] = None,
     url: Url = None,
 ) -> None:
-    """Write the table of a sweep with its sums over folds of trajectories to a file.
+    """Write sums over folds of trajectories to a file.
 
-    That is what fits start from: `sweepmill fit` reads the file without a service, and errors are by jackknife.
+    The rows are those of the table. That is what fits start from: `sweepmill fit` reads the file without a service,
+    and errors are by jackknife.
     Trajectory k belongs to fold k modulo the length of the lists `numerators` and `denominators` of a row.
 
     Example: sweepmill folds 3b9f6c1e -o transition.arrow
