@@ -6,6 +6,7 @@ from typing import Annotated
 import typer
 
 from sweepmill.cli.check import check
+from sweepmill.cli.cost import cost
 from sweepmill.cli.demo import demo
 from sweepmill.cli.dispatch import dispatch
 from sweepmill.cli.fit import fit
@@ -52,6 +53,7 @@ app.command()(table)
 app.command()(folds)
 app.command()(values)
 app.command()(fit)
+app.command()(cost)
 app.command()(withdraw)
 app.command()(replay)
 app.command()(pool)

@@ -1,0 +1,94 @@
+"""sweepmill cost"""
+
+import sys
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from sweepmill.cli.options import Url
+from sweepmill.client import Client
+
+FORMATS = (".html", ".md")
+ADVICE = "This sweep over the same circuits observes it; --companion FILE writes it:"
+
+
+def _known_format(path: Path | None) -> Path | None:
+    if path is not None and path.suffix not in FORMATS:
+        raise typer.BadParameter(f"{path.name}: the suffix gives the format, one of {', '.join(FORMATS)}")
+    return path
+
+
+def cost(
+    source: Annotated[
+        list[str],
+        typer.Argument(
+            metavar="SOURCE...",
+            help="A key, a specification, or files: the table or the histograms of a sweep, its specification beside.",
+        ),
+    ],
+    output: Annotated[
+        Path | None,
+        typer.Option(
+            "-o",
+            "--output",
+            metavar="FILE",
+            callback=_known_format,
+            dir_okay=False,
+            help="Write the report; the suffix gives the format: .html .md. Without it, Markdown is printed.",
+        ),
+    ] = None,
+    of: Annotated[
+        str | None, typer.Option(metavar="NAME", help="Observation of record-bits to use; by default all of them.")
+    ] = None,
+    shot_time: Annotated[float, typer.Option(metavar="SECONDS", help="Assumed duration of one repetition.")] = 1e-4,
+    select: Annotated[
+        int | None,
+        typer.Option(metavar="K", min=1, help="Post-select on the first K outcomes; default: 10, 20 and 40."),
+    ] = None,
+    precision: Annotated[
+        float, typer.Option(metavar="ERROR", help="Wanted error of an observable with values between -1 and 1.")
+    ] = 0.1,
+    write_companion: Annotated[
+        Path | None,
+        typer.Option(
+            "--companion",
+            metavar="FILE",
+            dir_okay=False,
+            help="Write the specification of a sweep over the same circuits that observes what this needs, and stop.",
+        ),
+    ] = None,
+    url: Url = None,
+) -> None:
+    """Report what an experiment would pay to see the same circuits: repetitions, qubits, layers, measurements.
+
+    The sweep needs an observation of record-bits, best a series of depths with histogram = true. Where it has none,
+    the specification of a companion sweep that does is printed on standard error, and the exit code is 1.
+
+    Example: sweepmill cost 3b9f6c1e -o report.html
+    """
+    from sweepmill import experiment
+    from sweepmill.experiment.companion import as_toml, companion
+
+    try:
+        options = experiment.Options(of, shot_time, select, precision)
+    except ValueError as error:
+        raise typer.BadParameter(str(error)) from error
+    with Client(url) as client:
+        found = experiment.read_source(source, client)
+    if write_companion is not None:
+        write_companion.write_text(as_toml(companion(found.ensembles.values())), encoding="utf-8")
+        print(write_companion)
+        return
+    try:
+        report = experiment.cost_of(found, options)
+    except experiment.NoRecordBits as error:
+        print(f"sweepmill: {error}", file=sys.stderr)
+        if found.ensembles:
+            print(f"{ADVICE}\n\n{as_toml(companion(found.ensembles.values()))}", file=sys.stderr)
+        raise typer.Exit(1) from None
+    if output is None:
+        print(experiment.markdown(report), end="")
+        return
+    output.write_text(experiment.page(report) if output.suffix == ".html" else experiment.markdown(report), "utf-8")
+    print(output)

@@ -1,0 +1,114 @@
+"""A monitored circuit and a unitary one read sideways, side by side: the same region, about the same entanglement."""
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from sweepmill.analysis.estimate import Estimate
+from sweepmill.ensemble import Ensemble
+from sweepmill.experiment.counted import gates_until
+from sweepmill.experiment.record import Record
+from sweepmill.experiment.sideways import Sideways, sideways_circuit
+from sweepmill.experiment.source import Source
+
+ROTATED = "rotated-clifford"
+
+
+@dataclass(frozen=True)
+class Monitored:
+    """A monitored circuit at its last depth: its record, its two-qubit gates, and the entropy of half of it."""
+
+    ensemble: Ensemble
+    record: Record
+    gates: float | None
+    entropy: Estimate | None
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain values."""
+        return {
+            "ensemble": self.record.key,
+            **self.record.labels,
+            "region": self.ensemble.sites // 2,
+            "entropy": None if self.entropy is None else self.entropy.to_dict(),
+            "qubits": self.ensemble.sites,
+            "layers": self.record.layer,
+            "two_qubit_gates": self.gates,
+            "mid_circuit_measurements": self.record.measurements,
+            "post_selected_bits": self.record.again.value,
+        }
+
+
+@dataclass(frozen=True)
+class Beside:
+    """Both circuits; `entropy` is that of the sideways region where it was sampled. Either one may be missing."""
+
+    monitored: Monitored | None
+    sideways: Sideways
+    entropy: Estimate | None
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain values."""
+        return {
+            "monitored": None if self.monitored is None else self.monitored.to_dict(),
+            "sideways": self.sideways.to_dict() | {"entropy": None if self.entropy is None else self.entropy.to_dict()},
+        }
+
+
+def beside(source: Source, records: Sequence[Record]) -> Beside | None:
+    """The largest rotated circuit of the sweep, or the smallest patch for half of its largest monitored chain.
+
+    Of the monitored circuits of that size the one whose half is entangled most alike is taken. None where the source
+    tells of no circuit.
+    """
+    entropies = half_entropies(source)
+    rotated = max(_of(source.ensembles.values(), ROTATED), key=lambda one: one.sites, default=None)
+    measured = [one for one in records if one.measurements and source.ensembles[one.key].family != ROTATED]
+    if rotated is not None:
+        circuit = Sideways(rotated.layers, rotated.sites - 1, 0, rotated.sites // 2)
+        entropy = entropies.get(rotated.key)
+    elif measured:
+        circuit, entropy = sideways_circuit(max(source.ensembles[one.key].sites for one in measured) // 2), None
+    else:
+        return None
+    return Beside(_alike(source, measured, circuit, entropy, entropies), circuit, entropy)
+
+
+def half_entropies(source: Source) -> dict[str, Estimate]:
+    """Entropy of half the system at the last depth, by ensemble key."""
+    found: dict[str, Estimate] = {}
+    if source.table is None:
+        return found
+    for one in source.table.ensembles:
+        began, ended = one["rows"]
+        rows = [{name: source.table.values(name)[i] for name in source.table.columns} for i in range(began, ended)]
+        halves = [row for row in rows if row["quantity"] == "entropy" and row["region"] == "half"]
+        if halves:
+            last = max(halves, key=lambda row: (row["layer"] is None, row["layer"] or 0))
+            found[str(one["key"])] = Estimate(last["mean"], last["standard_error"] or 0.0)
+    return found
+
+
+def _of(ensembles: Iterable[Ensemble], family: str) -> list[Ensemble]:
+    return [one for one in ensembles if one.family == family]
+
+
+def _alike(
+    source: Source,
+    measured: Sequence[Record],
+    circuit: Sideways,
+    entropy: Estimate | None,
+    entropies: Mapping[str, Estimate],
+) -> Monitored | None:
+    """The monitored circuit next in size of its half, and then in entropy."""
+    if not measured:
+        return None
+    bits = entropy.value if entropy is not None else -(circuit.log2_purity or 0.0)
+
+    def distance(one: Record) -> tuple[float, float]:
+        size = abs(source.ensembles[one.key].sites / 2 - circuit.window)
+        return size, abs(entropies[one.key].value - bits) if one.key in entropies else float("inf")
+
+    nearest = min(measured, key=distance)
+    ensemble = source.ensembles[nearest.key]
+    gates = gates_until(ensemble, nearest.layer or ensemble.layers)
+    return Monitored(ensemble, nearest, gates, entropies.get(nearest.key))

@@ -1,0 +1,99 @@
+"""The rows of the side-by-side comparison."""
+
+from typing import NamedTuple
+
+from sweepmill.experiment.amounts import repetitions
+from sweepmill.experiment.beside import Beside, Monitored
+from sweepmill.experiment.sideways import Sideways
+from sweepmill.experiment.wording import axes_text, number, runs_and_time
+
+
+class Road(NamedTuple):
+    """One line of the comparison: what, and its value on either road."""
+
+    what: str
+    monitored: str
+    sideways: str
+
+
+def roads(both: Beside, shot_time: float) -> list[Road]:
+    """Every count on either road."""
+    left = _monitored(both.monitored, shot_time)
+    right = _sideways(both, shot_time)
+    return [Road(what, left[what], right[what]) for what in right]
+
+
+def caption(both: Beside) -> str:
+    """Which circuits stand side by side."""
+    chosen = "" if both.monitored is None else f" Monitored: {axes_text(both.monitored.record.labels)}."
+    circuit = both.sideways
+    return (
+        f"Sideways: {circuit.held.start} to {circuit.held.stop - 1} are the held time slices of the edge of "
+        f"{circuit.chain} qubits, uniform two-qubit Clifford gates.{chosen}"
+    )
+
+
+def _monitored(one: Monitored | None, shot_time: float) -> dict[str, str]:
+    if one is None:
+        return dict.fromkeys(_NAMES, "—")
+    record = one.record
+    runs, time = runs_and_time(record.again.value, shot_time)
+    pairs, pairs_time = runs_and_time(record.any_twice.value, shot_time)
+    entropy = "not observed" if one.entropy is None else f"{number(one.entropy)} bits"
+    measured = 0.0 if record.measurements is None else record.measurements
+    gates = "—" if one.gates is None else f"{one.gates:,.0f}"
+    values = [
+        f"{one.ensemble.sites // 2} sites",
+        entropy,
+        f"{one.ensemble.sites}",
+        f"{record.layer}",
+        gates,
+        f"{measured:,.0f}",
+        "0",
+        f"{number(record.again)}",
+        f"{runs} ({time})",
+        f"{pairs} ({pairs_time})",
+    ]
+    return dict(zip(_NAMES, values, strict=True))
+
+
+def _sideways(both: Beside, shot_time: float) -> dict[str, str]:
+    circuit = both.sideways
+    values = [
+        f"{circuit.window} slices",
+        _entropy(both),
+        f"{circuit.chain} + {circuit.window} held",
+        f"{circuit.layers}",
+        f"{circuit.gates:,} + {circuit.taken_out} swaps, {circuit.bell_pairs} pairs",
+        "0",
+        _projected(circuit),
+        f"0 (at most {circuit.final_legs} if projected)",
+        f"1 ({repetitions(circuit.final_legs)} at most if projected)",
+        "2",
+    ]
+    return dict(zip(_NAMES, values, strict=True))
+
+
+_NAMES = (
+    "region",
+    "entropy of the region",
+    "qubits",
+    "layers",
+    "two-qubit gates",
+    "measurements in mid-circuit",
+    "measurements at the end",
+    "post-selected bits",
+    "runs for one state again",
+    "runs for two equal states",
+)
+
+
+def _projected(circuit: Sideways) -> str:
+    return f"none if the chain is traced, {circuit.final_legs} if projected"
+
+
+def _entropy(both: Beside) -> str:
+    if both.entropy is not None:
+        return f"{number(both.entropy)} bits"
+    purity = both.sideways.log2_purity
+    return "not known" if purity is None else f"at least {-purity:.3f} bits (exact mean purity)"
