@@ -81,7 +81,8 @@ def record_of(spot: Spot) -> Record:
 def _band(spot: Spot) -> Band:
     """From the histogram; without one, from the variance, as if the number were normal."""
     if spot.law is not None:
-        return Band(*(spot.law.quantile(share) for share in (LOW, 0.5, HIGH)), exact=True)
+        low, median, high = (float(spot.law.quantile(share)) for share in (LOW, 0.5, HIGH))
+        return Band(low, median, high, exact=True)
     middle, half = spot.bits.value, _NORMAL * spot.deviation
     return Band(max(0.0, middle - half), middle, middle + half, exact=False)
 
