@@ -60,9 +60,10 @@ def cost(
     ] = None,
     url: Url = None,
 ) -> None:
-    """Report what an experiment would pay to see the same circuits: repetitions, qubits, layers, measurements.
+    """Report what an experiment would pay for the circuits of a sweep.
 
-    The sweep needs an observation of record-bits, best a series of depths with histogram = true. Where it has none,
+    Repetitions until a record is met again, post-selection, qubits, layers, measurements, on one page. The sweep
+    needs an observation of record-bits, best a series of depths with histogram = true. Where it has none,
     the specification of a companion sweep that does is printed on standard error, and the exit code is 1.
 
     Example: sweepmill cost 3b9f6c1e -o report.html
