@@ -147,22 +147,61 @@ class Amendment(Message):
     priority: int | None = Field(None, ge=-10, le=10)
 
 
+class Range(Message):
+    """Where a number is expected to lie two times out of three."""
+
+    low: float
+    high: float
+
+
+class ExpectedError(Message):
+    """Standard errors of one observation once the sweep has settled, over its ensembles and their coordinates."""
+
+    name: str = Field(description="Name of the observation")
+    largest: float | None = Field(None, description="Of the noisiest coordinate of the noisiest ensemble")
+    largest_range: Range | None = None
+    median: float | None = Field(None, description="Median over ensembles, of the noisiest coordinate of each")
+    below: float | None = Field(None, description="The bound of a stopping rule for this observation")
+    met: int | None = Field(None, description="Ensembles that are expected to meet the rule before their caps")
+    source: Literal["sampled", "learned", "default", "mixed", "unknown"] = Field(
+        description="Whether this rests on what is sampled of these ensembles, on others sampled with the same "
+        "observation, on rough defaults, or nothing tells"
+    )
+
+
 class Estimate(Message):
-    """What a sweep would cost; nothing is stored."""
+    """What a sweep would cost, take and tell; nothing is stored. Ranges hold two times out of three."""
 
     key: str
     ensembles: int
     trajectories_cap: int
+    trajectories_expected: int | None = Field(
+        None, description="Trajectories after which the rules are expected to hold"
+    )
     sampled_ensembles: int
     sampled_trajectories: int
     core_seconds: float = Field(description="Predicted core-seconds still to spend if every ensemble runs to its cap")
-    core_seconds_from: Literal["measured", "default", "mixed"] = Field(
-        description="Whether the prediction rests on measured batches of these ensembles or on default costs"
+    core_seconds_range: Range | None = None
+    core_seconds_expected: float | None = Field(
+        None, description="Predicted core-seconds still to spend until the rules hold; the same without rules"
     )
-    cores: int
-    seconds: float | None = Field(None, description="Predicted duration on the current pool, if it were free")
-    accumulator_bytes: int = Field(description="Size of all totals of the sweep")
+    core_seconds_expected_range: Range | None = None
+    core_seconds_from: Literal["measured", "learned", "default", "mixed"] = Field(
+        description="Whether the prediction rests on measured batches of these ensembles, on those of others with "
+        "the same kind of work, or on default costs"
+    )
+    cores: int = Field(description="Cores of the pool")
+    seconds: float | None = Field(
+        None, description="Predicted time until the sweep settles on the pool as it is now, with the work queued there"
+    )
+    seconds_range: Range | None = None
+    seconds_unknown: str | None = Field(None, description="Why no time is given, if so")
+    queued_core_seconds: float = Field(
+        0.0, description="Predicted core-seconds queued for other sweeps; owners share the pool evenly"
+    )
+    accumulator_bytes: int = Field(description="Size of all totals of the sweep, at most")
     worker_bytes: int = Field(description="Memory that a batch of the largest ensemble adds to an idle worker, at most")
+    standard_errors: list[ExpectedError] = Field(default_factory=list, description="One for each observation")
 
 
 class BatchRecord(Message):

@@ -1,60 +1,70 @@
-"""Core-seconds of one trajectory: measured where there are batches, scaled from the nearest, else a guess."""
+"""Core-seconds of trajectories of some ensembles: the default, corrected by what batches of like ones took."""
 
-import math
-from bisect import bisect_left
-from collections.abc import Iterable, Mapping
-from typing import NamedTuple
+from collections.abc import Iterable, Mapping, Sequence
+from typing import Any, Literal, NamedTuple
+
+import numpy as np
 
 from sweepmill.ensemble import Ensemble
-from sweepmill_service.plan.costs import default_seconds_per_trajectory
+from sweepmill_service.learning.costs import CostModel, Load, learned, load_of
 from sweepmill_service.store import Store
+from sweepmill_service.store.evidence import Timed
+
+OWN_BATCHES = 200  # ensembles whose own batches are looked at: of more, some spread over all
+
+Origin = Literal["measured", "learned", "default"]
 
 
 class Cost(NamedTuple):
-    """Core-seconds of one trajectory, and whether batches, of this ensemble or another of its family, said so."""
+    """Core-seconds of one trajectory, the standard deviation of their logarithm, and what they rest on.
+
+    "measured": batches of this ensemble; "learned": batches of ensembles with the same kind of work.
+    """
 
     seconds: float
-    measured: bool
+    deviation: float
+    origin: Origin
 
 
 class Costs:
-    """Costs of some ensembles, by key."""
+    """Costs of some ensembles, by key, all with the same observations."""
 
-    def __init__(self, ensembles: Iterable[Ensemble], measured: Mapping[str, float]) -> None:
+    def __init__(
+        self,
+        ensembles: Iterable[Ensemble],
+        observations: Sequence[Any],
+        batches: Iterable[Timed] = (),
+        measured: Iterable[str] = (),
+    ) -> None:
         by_key = {ensemble.key: ensemble for ensemble in ensembles}
-        nearest = Nearest([(by_key[key], seconds) for key, seconds in measured.items()])
+        self._loads = {key: load_of(ensemble, observations) for key, ensemble in by_key.items()}
+        loads, own = list(self._loads.values()), frozenset(measured)
+        self._model = learned(batches, loads)
+        seconds, deviations = self._model.predict(loads)
         self._costs = {
-            key: Cost(measured[key], True) if key in measured else nearest.cost(ensemble)
-            for key, ensemble in by_key.items()
+            key: Cost(float(seconds[i]), float(deviations[i]), _origin(self._model, self._loads[key], key in own))
+            for i, key in enumerate(by_key)
         }
 
     @classmethod
-    def of(cls, ensembles: Iterable[Ensemble], store: Store) -> "Costs":
-        """Costs from what the store has measured of these ensembles."""
+    def of(cls, ensembles: Iterable[Ensemble], observations: Sequence[Any], store: Store) -> "Costs":
+        """Costs from what the store has measured. Raises ValueError for an ensemble that no engine takes."""
         some = list(ensembles)
-        return cls(some, store.seconds_per_trajectory([ensemble.key for ensemble in some]))
+        measured = list(store.seconds_per_trajectory([ensemble.key for ensemble in some]))
+        step = max(1, len(measured) // OWN_BATCHES)
+        batches = [*store.batches_of(measured[::step]), *store.recent_batches()]
+        return cls(some, observations, batches, measured)
 
     def __getitem__(self, key: str) -> Cost:
         return self._costs[key]
 
+    def deviation_of_sum(self, seconds: Mapping[str, float]) -> float:
+        """Standard deviation of the logarithm of a sum of core-seconds, given by key."""
+        loads = [self._loads[key] for key in seconds]
+        return self._model.deviation_of_sum(loads, np.array(list(seconds.values()), dtype=float))
 
-class Nearest:
-    """Costs scaled by the guess from the ensemble of the same family that is nearest in the guess."""
 
-    def __init__(self, measured: Iterable[tuple[Ensemble, float]]) -> None:
-        self._families: dict[str, list[tuple[float, float]]] = {}
-        for ensemble, seconds in measured:
-            guess = math.log(default_seconds_per_trajectory(ensemble))
-            self._families.setdefault(ensemble.family, []).append((guess, math.log(max(seconds, 1e-9)) - guess))
-        for known in self._families.values():
-            known.sort()
-
-    def cost(self, ensemble: Ensemble) -> Cost:
-        """The guess times what the nearest one took over its guess."""
-        guess = math.log(default_seconds_per_trajectory(ensemble))
-        known = self._families.get(ensemble.family)
-        if not known:
-            return Cost(math.exp(guess), False)
-        at = bisect_left(known, (guess, 0.0))
-        _, excess = min(known[max(at - 1, 0) : at + 1], key=lambda item: abs(item[0] - guess))
-        return Cost(math.exp(guess + excess), True)
+def _origin(model: CostModel, load: Load, own: bool) -> Origin:
+    if own:
+        return "measured"
+    return "learned" if load.names[1] in model.kinds else "default"

@@ -20,6 +20,7 @@ from sweepmill_service.flights import Failed, Flights, Landed, unstorable
 from sweepmill_service.following import Follower
 from sweepmill_service.meter import Meter
 from sweepmill_service.plan.plan import Plan
+from sweepmill_service.plan.sweeps import Waiting
 from sweepmill_service.plan.task import SizeRules, Task
 from sweepmill_service.pool import Pool, PoolUnavailable, WorkerInfo
 from sweepmill_service.rounds.thread import Rounds
@@ -132,6 +133,10 @@ class Dispatcher:
     def seconds_left(self, sweep: str) -> float | None:
         """Predicted seconds until a sweep settles if the pool were its own."""
         return self._plan.seconds_left(sweep, self._threads())
+
+    def waiting(self) -> list[Waiting]:
+        """Core-seconds that every request still has to be given."""
+        return self._plan.waiting()
 
     # --- the thread
 

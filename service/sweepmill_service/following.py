@@ -1,15 +1,16 @@
 """Keeping the plan in step with the store."""
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from typing import Any
 
 from sweepmill.coordinates import kept_bytes
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
-from sweepmill_service.plan.costs import seconds_of, work_of
+from sweepmill_service.cost import Costs
 from sweepmill_service.plan.plan import EnsembleInfo, Plan
 from sweepmill_service.plan.sweeps import Request, SweepInfo
 from sweepmill_service.plan.task import Task
+from sweepmill_service.plan.work import work_of
 from sweepmill_service.store import Store
 from sweepmill_service.store.common import chunks
 from sweepmill_service.store.loading import LiveSweep, OpenEnsemble
@@ -97,11 +98,10 @@ class Follower:
         members = self._store.open_ensembles(sweep.key)
         if not members:
             return
-        self._observations.update(self._store.observation_forms(sweep.observations))
+        read = self._store.observation_forms(sweep.observations)
+        self._observations.update(read)
         self._ensembles.update((one.key, one.normal_form) for one in members)
-        forms = {key: self._observations[key] for key in sweep.observations}
-        kept = {key: observation_from_normal_form(form) for key, form in forms.items() if form.get("keep_values")}
-        self._plan.add_sweep(_info(sweep), [_ensemble_info(one, kept) for one in members])
+        self._plan.add_sweep(_info(sweep), _ensemble_infos(members, read.values(), self._store))
 
 
 def _requests(sweep: LiveSweep) -> tuple[Request, ...]:
@@ -121,19 +121,26 @@ def _info(sweep: LiveSweep) -> SweepInfo:
     )
 
 
-def _ensemble_info(one: OpenEnsemble, kept: Mapping[str, Any]) -> EnsembleInfo:
-    ensemble = Ensemble.from_normal_form(one.normal_form)
-    work = work_of(ensemble)
-    return EnsembleInfo(
-        key=one.key,
-        cap=one.cap,
-        judged=one.judged,
-        default_seconds=seconds_of(work),
-        measured_seconds=one.seconds_per_trajectory,
-        kind=work.kind,
-        stuck=one.stuck,
-        reaches=one.reaches,
-        islands=one.islands,
-        faults=one.faults,
-        kept_bytes={key: kept_bytes(ensemble, item) for key, item in kept.items()},
-    )
+def _ensemble_infos(
+    members: Sequence[OpenEnsemble], observations: Iterable[Mapping[str, Any]], store: Store
+) -> Iterator[EnsembleInfo]:
+    """With costs learned from all that is stored, so that a dispatcher that starts anew knows what the last one did."""
+    ensembles = {one.key: Ensemble.from_normal_form(one.normal_form) for one in members}
+    read = [observation_from_normal_form(form) for form in observations]
+    kept = {item.key: item for item in read if getattr(item, "keep_values", False)}
+    costs = Costs.of(ensembles.values(), read, store)
+    for one in members:
+        cost = costs[one.key]
+        yield EnsembleInfo(
+            key=one.key,
+            cap=one.cap,
+            judged=one.judged,
+            default_seconds=cost.seconds,
+            measured_seconds=None if one.seconds_per_trajectory is None else cost.seconds,
+            kind=work_of(ensembles[one.key]).kind,
+            stuck=one.stuck,
+            reaches=one.reaches,
+            islands=one.islands,
+            faults=one.faults,
+            kept_bytes={key: kept_bytes(ensembles[one.key], item) for key, item in kept.items()},
+        )

@@ -11,6 +11,7 @@ from sweepmill.messages import PoolStatus, SweepStatus
 from sweepmill_service.database import DatabaseUnusable, open_database
 from sweepmill_service.dispatcher import STANDBY, AlreadyServed, Dispatcher, first_line
 from sweepmill_service.migrations import migrate
+from sweepmill_service.plan.sweeps import Waiting
 from sweepmill_service.pool import ExternalPool, LocalPool, Pool, Tls
 from sweepmill_service.problems import Unavailable
 from sweepmill_service.settings import Settings, masked_url
@@ -70,9 +71,9 @@ class Runtime:
         """Whether sweeps are taken and sampled."""
         return not self.unready()
 
-    def cores(self) -> int:
-        """Cores that sample: those of the pool, or those it is set to have."""
-        return self.pool_status().cores or self.settings.workers
+    def waiting(self) -> list[Waiting]:
+        """Core-seconds that every request still has to be given by the pool of this process."""
+        return [] if self._dispatcher is None else self._dispatcher.waiting()
 
     def pool_status(self) -> PoolStatus:
         """The pool as the dispatcher of this process sees it."""

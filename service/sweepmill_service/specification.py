@@ -10,7 +10,8 @@ from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
 from sweepmill_service.magnitudes import too_large
 from sweepmill_service.memory import memory_fault
-from sweepmill_service.plan.costs import seconds_of, what_would_pass, work_of
+from sweepmill_service.plan.costs import seconds_of, what_would_pass
+from sweepmill_service.plan.work import work_of
 from sweepmill_service.programs import too_long, too_many_places
 from sweepmill_service.settings import ServerLimits
 from sweepmill_service.store import Store
@@ -25,10 +26,13 @@ def accepted(specification: Mapping[str, Any], store: Store, limits: ServerLimit
         raise SpecificationError(faults)
     if fault := too_many_places((point.ensemble for point in sweep.points), limits):
         raise SpecificationError([fault])
-    costs = Costs.of([point.ensemble for point in sweep.points], store)
-    found = (_slow(sweep, costs, limits.trajectory_seconds), memory_fault(sweep, limits.worker_bytes))
-    if faults := [fault for fault in found if fault is not None]:
-        raise SpecificationError(faults)
+    if fault := memory_fault(sweep, limits.worker_bytes):
+        raise SpecificationError([fault])
+    costs = Costs.of(
+        [point.ensemble for point in sweep.points], [item.observation for item in sweep.observations], store
+    )
+    if fault := _slow(sweep, costs, limits.trajectory_seconds):
+        raise SpecificationError([fault])
     return sweep, costs
 
 

@@ -1,14 +1,16 @@
 """One trajectory recomputed on demand, within limits: it runs in a thread of the service, not in the pool."""
 
 import threading
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass
 from http import HTTPStatus
+from typing import Any
 
 from sweepmill.ensemble import Ensemble
 from sweepmill.messages import CircuitFormat, CircuitText, Trajectory, TrajectoryValue
-from sweepmill.observation import observation_from_normal_form
+from sweepmill.observation import Observation, observation_from_normal_form
+from sweepmill.revisions import QUANTITY_REVISIONS
 from sweepmill_service.cost import Costs
 from sweepmill_service.problems import Refusal, Unavailable
 from sweepmill_service.settings import ServerLimits
@@ -36,7 +38,7 @@ class Recomputable:
         ensemble = Ensemble.from_normal_form(ensemble_form)
         if not forms:
             raise _refused(f"nothing is sampled of ensemble {key} yet, so there is no observation to recompute")
-        seconds = Costs.of([ensemble], store)[key].seconds
+        seconds = Costs.of([ensemble], _current(forms.values()), store)[key].seconds
         if seconds > limits.recompute_seconds:
             raise _refused(
                 f"this trajectory is predicted to take {seconds:.0f} s, the service recomputes up to "
@@ -83,6 +85,12 @@ class Recomputable:
                 f"{error} (limits.circuit_operations): use `sweepmill replay {self.ensemble.key[:16]} {self.k} "
                 f"--circuit {language}` instead"
             ) from error
+
+
+def _current(forms: Iterable[Mapping[str, Any]]) -> list[Observation]:
+    """Observations of revisions that this code samples: the others are refused later, by their revision."""
+    known = (form for form in forms if QUANTITY_REVISIONS.get(form["quantity"]) == form["revision"])
+    return [observation_from_normal_form(form) for form in known]
 
 
 @contextmanager

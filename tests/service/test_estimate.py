@@ -15,15 +15,17 @@ from sweepmill_service.counting import too_many
 from sweepmill_service.estimate import Sampled, sampled
 from sweepmill_service.plan.costs import (
     KINDS,
-    Work,
     default_seconds_per_trajectory,
     seconds_of,
     what_would_pass,
 )
+from sweepmill_service.plan.work import Work
 from sweepmill_service.programs import too_many_places
 from sweepmill_service.settings import ServerLimits
 from sweepmill_service.specification import accepted
 from sweepmill_service.store import Store
+from sweepmill_service.store.common import to_json
+from sweepmill_service.store.evidence import Timed
 from sweepmill_service.stored import expand
 
 
@@ -31,21 +33,28 @@ def chain(sites: int, rate: float = 0.1) -> Ensemble:
     return Ensemble.of("hybrid-clifford", sites=sites, measurement_rate=rate, layers=4 * sites)
 
 
-def test_a_measured_cost_is_taken_as_it_is_and_scales_the_others() -> None:
+def timed(one: Ensemble, factor: float) -> Timed:
+    """A batch of an ensemble that took so many times the default."""
+    return Timed(to_json(one.normal_form()), (), 1000, 1000 * factor * default_seconds_per_trajectory(one))
+
+
+def test_a_measured_ensemble_costs_what_it_took_and_tells_of_its_neighbors() -> None:
     ensembles = [chain(64), chain(128), chain(512)]
     small_one, middle, large = ensembles
-    costs = Costs(ensembles, {small_one.key: 1.0, large.key: 700.0})
-    assert costs[small_one.key] == (1.0, True)
-    ratio = default_seconds_per_trajectory(middle) / default_seconds_per_trajectory(small_one)
-    assert costs[middle.key].seconds == pytest.approx(ratio)  # 128 is nearer to 64 than to 512
-    assert costs[middle.key].measured
+    costs = Costs(ensembles, [], [timed(small_one, 2.0), timed(large, 0.7)], [small_one.key, large.key])
+    ratios = [costs[one.key].seconds / default_seconds_per_trajectory(one) for one in ensembles]
+    assert ratios[0] == pytest.approx(2.0, rel=0.2)
+    assert ratios[2] == pytest.approx(0.7, rel=0.2)
+    assert ratios[2] < ratios[1] < ratios[0]
+    assert [costs[one.key].origin for one in ensembles] == ["measured", "learned", "measured"]
+    assert costs[small_one.key].deviation < costs[middle.key].deviation
 
 
-def test_without_measurements_the_default_is_taken() -> None:
+def test_without_measurements_the_default_is_taken_with_a_wide_range() -> None:
     one = chain(64)
-    cost = Costs([one], {})[one.key]
+    cost = Costs([one], [])[one.key]
     assert cost.seconds == pytest.approx(default_seconds_per_trajectory(one))
-    assert not cost.measured
+    assert (cost.origin, cost.deviation > 0.3) == ("default", True)
 
 
 def test_what_is_sampled_counts_with_every_observation(store: Store) -> None:

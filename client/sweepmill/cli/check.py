@@ -4,7 +4,7 @@ from typing import Annotated
 
 import typer
 
-from sweepmill import messages
+from sweepmill.cli.estimate_text import estimate_text
 from sweepmill.cli.options import Specification, Url
 from sweepmill.client import Client
 from sweepmill.errors import Unreachable
@@ -12,7 +12,7 @@ from sweepmill.language.written import circuit_toml
 from sweepmill.presets import layered_form
 from sweepmill.retry import Retry
 from sweepmill.sweep import Sweep
-from sweepmill.text import count, duration
+from sweepmill.text import count
 
 
 def check(
@@ -42,7 +42,7 @@ def check(
             print(f"{point.ensemble.key}  {parameters}")
     with Client(url, retry=Retry(attempts=1)) as client:
         try:
-            print(_estimated(client.estimate(sweep)))
+            print(estimate_text(client.estimate(sweep)))
         except Unreachable as error:
             print(f"checked locally only, without an estimate: no service answers at {error.url}")
 
@@ -57,20 +57,5 @@ def _expanded(sweep: Sweep) -> str:
             f"ensembles     {count(len(sweep.points))}",
             f"observations  {', '.join(names)}",
             f"trajectories  {count(cap)} at most",
-        ]
-    )
-
-
-def _estimated(estimate: messages.Estimate) -> str:
-    cores = f"{estimate.cores} core{'s' if estimate.cores != 1 else ''}"
-    time = f", {duration(estimate.seconds)} on {cores}" if estimate.seconds is not None else ""
-    return "\n".join(
-        [
-            f"sampled       {count(estimate.sampled_trajectories)} of {count(estimate.trajectories_cap)} trajectories"
-            f" already, {count(estimate.sampled_ensembles)} ensembles completely",
-            f"work left     {estimate.core_seconds / 3600:.3g} core-hours at most"
-            f" ({estimate.core_seconds_from} costs){time}",
-            f"memory        {estimate.accumulator_bytes / 1e6:.3g} MB of totals, "
-            f"{estimate.worker_bytes / 1e6:.3g} MB per worker at most",
         ]
     )

@@ -1,126 +1,45 @@
 """Predicted cost of a trajectory before anything of its ensemble was measured."""
 
-from collections.abc import Callable, Mapping, Sequence
-from typing import Any, Final, NamedTuple
+from collections.abc import Callable
+from typing import Final
 
-from sweepmill.ensemble import LAYERED, Ensemble
-from sweepmill.language.geometry import number_of_places
+from sweepmill.ensemble import Ensemble
+from sweepmill_service.plan.tables import TABLES
+from sweepmill_service.plan.work import BRICKWORK, Work, work_of
 
-
-class Work(NamedTuple):
-    """What the cost of one trajectory depends on, all else being a small factor."""
-
-    kind: str
-    sites: int
-    layers: int
-    density: float = 1.0
-    """Places of a layer per site, in units of brickwork with one round of measurements."""
-
-
-def _local(work: Work) -> float:
-    """Columns of bits: per place a constant and a part that grows with the length of the columns."""
-    return work.sites * work.layers * (2.5e-8 + 1.5e-11 * work.sites)
-
-
-def _channels(work: Work) -> float:
-    """The same with paired logical rows, twice as many, most of them short."""
-    return 1.3 * _local(work)
-
-
-def _spread(work: Work) -> float:
-    """Gates between distant sites: rows have no short windows, and a measurement visits every column."""
-    return work.sites * work.layers * (6e-8 + 4e-10 * work.sites + 6e-13 * work.sites**2)
-
-
-def _clusters(work: Work) -> float:
-    return 1.2e-8 * work.sites * work.layers
-
-
-def _signed(work: Work) -> float:
-    """The signed simulation: a part per layer, a part per operation."""
-    return work.layers * (5e-4 + 2e-5 * work.sites)
-
-
-# Core-seconds on one core of a server processor, within a small factor from 8 sites to 1024 and rates from 0.02 to 0.5.
-PER_TRAJECTORY: Final = 5e-6
-KINDS: Final[Mapping[str, Callable[[Work], float]]] = {
-    "local": _local,
-    "channels": _channels,
-    "spread": _spread,
-    "clusters": _clusters,
-    "signed": _signed,
-}
-FAMILY_KINDS: Final[Mapping[str, str]] = {
-    "hybrid-clifford": "local",
-    "hybrid-clifford-square": "spread",
-    "hybrid-clifford-long-range": "spread",
-    "projective-ising": "clusters",
-    "edge-bath": "channels",
-    "rotated-clifford": "channels",
-}
-BRICKWORK: Final = 1.5
-"""Places per site of brickwork with one round of measurements."""
-
-
-def work_of(ensemble: Ensemble) -> Work:
-    """The work of one trajectory. Reference qubits count as sites, layers that prepare the state as layers."""
-    sites, layers = ensemble.sites + ensemble.references, ensemble.layers + _prepared(ensemble)
-    if ensemble.family == LAYERED:
-        return Work(_layered_kind(ensemble), sites, layers, _density(ensemble, layers))
-    kind = FAMILY_KINDS[ensemble.family]
-    if kind == "local" and ensemble.parameters["initial_state"] == "mixed":
-        kind = "channels"
-    return Work("signed" if ensemble.parameters["engine"] == "reference" else kind, sites, layers)
-
-
-def _prepared(ensemble: Ensemble) -> int:
-    """Layers before those that are numbered."""
-    return len(ensemble.parameters.get("before", ())) + int(ensemble.parameters.get("scrambling_layers", 0))
-
-
-def _density(ensemble: Ensemble, layers: int) -> float:
-    """Of a circuit written as data: places of all its layers, over those of as many layers of brickwork."""
-    values = ensemble.parameters
-    cycles, rest = divmod(int(values["layers"]), len(values["repeat"]))
-    places = cycles * _places(ensemble, values["repeat"]) + _places(ensemble, values["repeat"][:rest])
-    places += _places(ensemble, values["before"]) + _places(ensemble, values["after"])
-    return places / layers / ensemble.sites / BRICKWORK
-
-
-def _places(ensemble: Ensemble, layers: Sequence[Any]) -> int:
-    return sum(number_of_places(step["on"], ensemble.sites, ensemble.periodic) for layer in layers for step in layer)
-
-
-def _layered_kind(ensemble: Ensemble) -> str:
-    if ensemble.parameters["engine"] == "reference":
-        return "signed"
-    steps = [step for layer in ensemble.parameters["repeat"] for step in layer]
-    if any(_far(step["on"], ensemble.sites) for step in steps):
-        return "spread"
-    return "channels" if any(map(_loses, steps)) or ensemble.parameters["initial_state"] == "mixed" else "local"
-
-
-def _far(on: Any, sites: int) -> bool:
-    """Does it couple sites that are not neighbors?"""
-    if isinstance(on, str) or "places" not in on:
-        return not isinstance(on, str) and "random_pairs" in on
-    return any(max(place) - min(place) not in (len(place) - 1, sites - 1) for place in on["places"])
-
-
-def _loses(step: Any) -> bool:
-    """Does it turn pure states into mixed ones?"""
-    if "choose" in step:
-        return any(_loses(inner) for branch in step["choose"] for inner in branch["steps"])
-    return "depolarise" in step or "reset" in step or step.get("recorded", True) is False
+PER_TRAJECTORY: Final = 1.5e-6
+DRAW: Final = 5e-8
+"""Seconds to draw one place."""
+OUTCOME: Final = 1.1e-7
+"""Seconds of a measurement with nothing but measurements between: each outcome is random."""
+SIGNED_LAYER, SIGNED_GATE, SIGNED_OUTCOME = 3.2e-4, 1.2e-5, 3.5e-5
+KINDS: Final = (*TABLES, "signed")
 
 
 def seconds_of(work: Work) -> float:
-    """Core-seconds of one trajectory, to within a small factor."""
-    return PER_TRAJECTORY + work.density * KINDS[work.kind](work)
+    """Core-seconds of the evolution of one trajectory, to within a small factor."""
+    if work.kind == "signed":
+        return work.layers * (SIGNED_LAYER + work.sites * (SIGNED_GATE * work.gates + SIGNED_OUTCOME * work.rate))
+    return PER_TRAJECTORY + work.sites * work.layers * (_per_site(work) + DRAW * work.drawn)
+
+
+def _per_site(work: Work) -> float:
+    """Seconds per site and layer: of the gates, and of measurements among so many gates."""
+    table = TABLES[work.kind]
+    if work.kind == "clusters":
+        return 1e-9 * table.nanoseconds(work.sites, work.rate)
+    idle, top = 1e-9 * table.nanoseconds(work.sites, 0.0), table.rates[-1]
+    measured = 1e-9 * table.nanoseconds(work.sites, min(work.rate, top)) - idle
+    share = min(work.gates / BRICKWORK, 1.0)
+    return (
+        idle * max(work.gates / BRICKWORK, 1.0)
+        + measured * max(work.rate / top, 1.0) * share
+        + OUTCOME * work.rate * (1 - share)
+    )
 
 
 def default_seconds_per_trajectory(ensemble: Ensemble) -> float:
-    """Core-seconds of one trajectory of an ensemble, to within a small factor."""
+    """Core-seconds of the evolution of one trajectory of an ensemble, to within a small factor."""
     return seconds_of(work_of(ensemble))
 
 

@@ -14,7 +14,7 @@ from sweepmill_service.plan.entries import Entry, PlanMember, Track
 from sweepmill_service.plan.fair import FairShare
 from sweepmill_service.plan.marks import Reach
 from sweepmill_service.plan.queue import Item
-from sweepmill_service.plan.sweeps import PlanSweep, Request, SweepInfo
+from sweepmill_service.plan.sweeps import PlanSweep, Request, SweepInfo, Waiting
 from sweepmill_service.plan.task import SizeRules, Task
 
 
@@ -27,7 +27,7 @@ class EnsembleInfo:
     judged: int
     default_seconds: float
     measured_seconds: float | None
-    kind: str = ""  # of work: ensembles of one kind learn from each other
+    kind: str = ""  # of work: ensembles of one kind in one sweep, whose defaults rest on the same, learn together
     stuck: bool = False
     reaches: dict[str, Reach] = field(default_factory=dict)
     islands: dict[str, dict[int, int]] = field(default_factory=dict)
@@ -45,7 +45,7 @@ class Plan:
         self.under_way: dict[str, Task] = {}
         self.stuck: set[str] = set()
         self.share = FairShare()
-        self.calibrations: defaultdict[str, Calibration] = defaultdict(Calibration)
+        self.calibrations: defaultdict[tuple[str, str], Calibration] = defaultdict(Calibration)
         self._numbers = count(1)  # of versions of entries and of tasks: none ever returns
 
     # --- sweeps come, change and go
@@ -55,7 +55,7 @@ class Plan:
         sweep = PlanSweep(info, self._is_current)
         self.sweeps[info.key] = sweep
         for ordinal, one in enumerate(ensembles):
-            entry = self._entry(one)
+            entry = self._entry(info.key, one)
             entry.members[info.key] = PlanMember(
                 info.key, ordinal, one.cap, one.judged, info.at_least, info.has_rules, info.observations
             )
@@ -72,6 +72,8 @@ class Plan:
         sweep = self.sweeps.pop(key, None)
         for one in () if sweep is None else tuple(sweep.open):
             self._leave(key, one)
+        for of in [of for of in self.calibrations if of[0] == key]:
+            del self.calibrations[of]
 
     # --- the choice
 
@@ -206,12 +208,16 @@ class Plan:
             return None
         return max(0.0, known.remaining + known.under_way) / threads
 
+    def waiting(self) -> list[Waiting]:
+        """What every request still has to be given; other threads ask, too."""
+        return [part for sweep in tuple(self.sweeps.values()) for part in sweep.waiting()]
+
     # --- upkeep
 
-    def _entry(self, one: EnsembleInfo) -> Entry:
+    def _entry(self, sweep: str, one: EnsembleInfo) -> Entry:
         entry = self.entries.get(one.key)
         if entry is None:
-            calibration = self.calibrations[one.kind]
+            calibration = self.calibrations[sweep, one.kind]
             entry = self.entries[one.key] = Entry(one.key, one.default_seconds, one.measured_seconds, calibration)
         entry.stuck = one.stuck
         (self.stuck.add if one.stuck else self.stuck.discard)(one.key)

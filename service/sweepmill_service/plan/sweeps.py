@@ -2,6 +2,7 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 from sweepmill_service.plan.queue import Item, LazyQueue
 
@@ -13,6 +14,21 @@ class Request:
     owner: str
     priority: int
     at: float
+
+
+class Waiting(NamedTuple):
+    """What an owner's request for a sweep still has to be given: core-seconds, under way or waiting."""
+
+    owner: str
+    sweep: str
+    priority: int
+    at: float
+    core_seconds: float
+
+    @property
+    def rank(self) -> tuple[int, float]:
+        """Smaller comes first among the owner's sweeps."""
+        return -self.priority, self.at
 
 
 @dataclass
@@ -42,6 +58,12 @@ class PlanSweep:
     def __post_init__(self) -> None:
         self.likely = LazyQueue(self.is_current)
         self.speculative = LazyQueue(self.is_current)
+
+    def waiting(self) -> list[Waiting]:
+        """One part for each owner, who share the work."""
+        left = max(0.0, min(self.remaining + self.under_way, self.budget_left() + self.under_way))
+        requests = self.info.requests
+        return [Waiting(one.owner, self.info.key, one.priority, one.at, left / len(requests)) for one in requests]
 
     def queue(self, speculative: bool) -> LazyQueue:
         """Work that is surely or probably needed, or work for while a judgement is under way."""

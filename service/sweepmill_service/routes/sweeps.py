@@ -19,6 +19,7 @@ from sweepmill.messages import (
 from sweepmill.revisions import all_revisions
 from sweepmill_service import examples
 from sweepmill_service.estimate import estimate, sampled
+from sweepmill_service.finish import share_of
 from sweepmill_service.openapi import described, problems
 from sweepmill_service.problems import Refusal
 from sweepmill_service.routes.dependencies import OWNER_PATTERN, KeyPrefix, Owner, RuntimeOf, StoreOf
@@ -60,10 +61,14 @@ def submit_sweep(
     "/estimate",
     responses={200: described("What the sweep would cost", examples.ESTIMATE), **problems(400, 413, 415, 422, 503)},
 )
-def estimate_sweep(specification: Specification, runtime: RuntimeOf, store: StoreOf) -> Estimate:
-    """What a sweep would cost; nothing is stored."""
+def estimate_sweep(
+    specification: Specification, runtime: RuntimeOf, store: StoreOf, owner: Owner = "local"
+) -> Estimate:
+    """What a sweep would cost, when the pool would have it done, and how small its errors; nothing is stored."""
     sweep, costs = accepted(specification, store, runtime.settings.limits)
-    return estimate(sweep, costs, store, runtime.cores())
+    pool = runtime.pool_status()
+    share = share_of(runtime.waiting(), sweep.key, owner, sweep.priority, pool.cores)
+    return estimate(sweep, costs, store, share, None if pool.cores else pool.reason or "the pool has no workers")
 
 
 @router.get(

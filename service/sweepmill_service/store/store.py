@@ -13,6 +13,7 @@ from sweepmill_service.plan.marks import Reach
 from sweepmill_service.store import (
     commits,
     dispatching,
+    evidence,
     judging,
     keys,
     loading,
@@ -111,6 +112,26 @@ class Store:
         """Measured core-seconds per trajectory of ensembles sampled before."""
         with self.engine.connect() as connection:
             return progress.seconds_per_trajectory(connection, ensembles)
+
+    def recent_batches(self) -> list[evidence.Timed]:
+        """The last batches of a few ensembles of the latest sweeps."""
+        with self.engine.connect() as connection:
+            return evidence.recent_batches(connection)
+
+    def batches_of(self, ensembles: Sequence[str]) -> list[evidence.Timed]:
+        """The last batches of these ensembles."""
+        with self.engine.connect() as connection:
+            return evidence.batches_of(connection, ensembles)
+
+    def recent_totals(self, families: Sequence[str], observations: Sequence[str]) -> list[evidence.Scattered]:
+        """Totals of these observations on a few ensembles of the latest sweeps with these families."""
+        with self.engine.connect() as connection:
+            return evidence.recent_totals(connection, families, observations)
+
+    def totals_of(self, ensembles: Sequence[str], observations: Sequence[str]) -> list[evidence.Scattered]:
+        """Totals of these observations on these ensembles."""
+        with self.engine.connect() as connection:
+            return evidence.totals_of(connection, ensembles, observations)
 
     def table_entries(self, key: str) -> Iterator[TableEntry]:
         """Totals of a sweep in table order, paged in short transactions."""
