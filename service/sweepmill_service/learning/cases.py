@@ -13,6 +13,8 @@ OCTAVES: Final = 1.5
 """Length of memory in sites, in powers of two; half as short as that in layers per site."""
 STEEPEST: Final = 6.0
 """Exponents beyond are nearest neighbors in effect."""
+DIMENSIONS: Final = 4
+"""Coordinates of a place."""
 _NUMBER = re.compile(r"-?\d[\d.e-]*")
 
 

@@ -9,14 +9,14 @@ import numpy as np
 
 from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.observation import observation_from_normal_form
-from sweepmill_service.learning.cases import place, variant
+from sweepmill_service.learning.cases import DIMENSIONS, place, variant
 from sweepmill_service.learning.neighbors import Cases, Floats, Law, Neighbors
 from sweepmill_service.learning.readings import reading_seconds, signature
 from sweepmill_service.plan.costs import seconds_of
 from sweepmill_service.plan.work import work_of
 from sweepmill_service.store.evidence import Timed
 
-LAW: Final = Law(shared=(0.35, 0.15, 0.2, 0.5), local=0.15, together=1)
+LAW: Final = Law(shared=(0.35, 0.15, 0.2, 0.5), local=0.25, together=1)
 """In logarithms of seconds: the machine, the kind of work, the law of the circuit, what is read (by its share)."""
 DRIFT: Final = 0.1
 """By how much one machine's pace differs from hour to hour: processors heat up, and neighbors share caches."""
@@ -56,7 +56,7 @@ def cases_of(loads: Sequence[Load]) -> Cases:
     return Cases(
         [load.names for load in loads],
         np.array([load.shares for load in loads], dtype=float).reshape(len(loads), len(LAW.shared)),
-        np.array([load.place for load in loads], dtype=float).reshape(len(loads), 5),
+        np.array([load.place for load in loads], dtype=float).reshape(len(loads), DIMENSIONS + 1),
     )
 
 

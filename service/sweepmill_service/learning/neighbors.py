@@ -18,6 +18,8 @@ Floats = NDArray[np.float64]
 FREEDOM: Final = 4.0
 """Degrees of freedom of the distribution that outliers are weighed by."""
 ROUNDS: Final = 3
+MOST_DOUBT: Final = 4.0
+"""By how much the variance of an outlier is enlarged, at most: what is measured is hardly ever wrong."""
 TRUST: Final = 10.0
 """How many known cases it takes until their own scatter outweighs the prior's."""
 FARTHEST: Final = 9.0
@@ -85,7 +87,7 @@ class Neighbors:
         self._solve(prior, residuals, noise)
         for _ in range(ROUNDS):
             missed = self._missed(noise)
-            self._solve(prior, residuals, noise * (FREEDOM + missed) / (FREEDOM + 1))
+            self._solve(prior, residuals, noise * np.clip((FREEDOM + missed) / (FREEDOM + 1), None, MOST_DOUBT))
         alone = np.minimum(self._missed(noise), FARTHEST)
         self.scale = float(np.clip(np.sqrt((TRUST + alone.sum()) / (TRUST + len(alone))), *SCALES))
 

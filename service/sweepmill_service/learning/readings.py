@@ -42,12 +42,18 @@ REGION: Final = Road(3.5e-7, 1.4, -1.3)
 """The commutators of the next region that is no interval."""
 INFORMATION: Final = Road(6e-6, 1.4, -0.7)
 """Every site of a region against everything outside."""
+FIRST_REGION: Final = Road(3e-6, 1.0, 0.0)
+"""Of the first such region, site by site."""
 MIXED: Final = 2.0
 """Rows of a mixed state over those of a pure one."""
-CLUSTER_SITE: Final = 1e-8
-"""Seconds per site and probe that looks at every site of a partition."""
+CLUSTER_SITE: Final = 5e-9
+"""Seconds per site to look at every site of a partition, or move an end of an interval past it."""
+CLUSTER_REGION: Final = 1e-9
+"""The same for the next region that is no interval."""
 SIGNED: Final = Road(1e-3, 1.0, 0.0)
-SIGNED_REGION: Final = Road(1e-3, 1.5, 0.0)
+SIGNED_REGION: Final = Road(1.5e-4, 0.6, 0.0)
+SIGNED_WINDOWS, SIGNED_LENGTHS = 3, 20
+"""How many regions per site the means over all intervals cost, and the clipped gauge."""
 
 
 def signature(observations: Sequence[Any]) -> str:
@@ -99,14 +105,21 @@ def _amount(shape: _Shape, observations: tuple[Any, ...]) -> _Amount:
 
 def _state_seconds(work: Work, probes: Probes) -> float:
     """Seconds to answer all probes once."""
-    regions = len(probes.sets)
     clipped = probes.line or probes.ring or probes.lengths or bool((probes.arcs[:, 0] > 0).any())
-    arcs = len(probes.arcs) > 0
     if work.kind == "clusters":
-        return CLUSTER_SITE * work.sites * (2 + arcs + clipped + regions + len(probes.informations))
+        looks = 2 + (len(probes.arcs) > 0) + clipped + len(probes.informations)
+        return work.sites * (CLUSTER_SITE * looks + CLUSTER_REGION * len(probes.sets))
     if work.kind == "signed":
-        return SIGNED.at(work) + SIGNED_REGION.at(work) * (len(probes.arcs) + regions + len(probes.informations))
-    basis = CLIPPED.at(work) if clipped else PREFIXES.at(work) if arcs or probes.negativities else 0.0
-    others = regions + (len(probes.negativities) if work.kind == "channels" else 0)
-    seconds = basis + REGION.at(work) * others + INFORMATION.at(work) * len(probes.informations)
-    return seconds * (MIXED if work.kind == "channels" else 1.0)
+        return SIGNED.at(work) + SIGNED_REGION.at(work) * _signed_regions(work, probes)
+    basis = CLIPPED.at(work) if clipped else PREFIXES.at(work) if len(probes.arcs) or probes.negativities else 0.0
+    regions = len(probes.sets) + (len(probes.negativities) if work.kind == "channels" else 0)
+    others = FIRST_REGION.at(work) * (regions > 0) + REGION.at(work) * regions
+    factor = MIXED if work.kind == "channels" else 1.0
+    return factor * (basis + others) + INFORMATION.at(work) * len(probes.informations)
+
+
+def _signed_regions(work: Work, probes: Probes) -> int:
+    windows = SIGNED_WINDOWS * (probes.line + probes.ring) + SIGNED_LENGTHS * probes.lengths
+    return (
+        len(probes.arcs) + len(probes.sets) + len(probes.informations) + len(probes.negativities) + work.sites * windows
+    )

@@ -16,7 +16,7 @@ from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.observation import observation_from_normal_form
 from sweepmill.statistics import summarize
-from sweepmill_service.learning.cases import place, variant
+from sweepmill_service.learning.cases import DIMENSIONS, place, variant
 from sweepmill_service.learning.neighbors import Cases, Floats, Law, Neighbors
 from sweepmill_service.learning.usual import USUAL, usual_scatter
 from sweepmill_service.plan.work import work_of
@@ -109,4 +109,6 @@ class ScatterModel:
         places = [place(ensemble, work_of(ensemble)) for ensemble in ensembles]
         names = [(item.quantity, item.key, variant(ensemble)) for ensemble in ensembles]
         number = len(ensembles)
-        return Cases(names, np.ones((number, len(LAW.shared))), np.array(places, dtype=float).reshape(number, -1))
+        return Cases(
+            names, np.ones((number, len(LAW.shared))), np.array(places, dtype=float).reshape(number, DIMENSIONS)
+        )

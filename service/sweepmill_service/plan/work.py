@@ -129,9 +129,9 @@ def _draws(on: Any) -> float:
 def _single(on: Any) -> bool:
     """Whether places are single sites."""
     if not isinstance(on, Mapping):
-        return on == "sites"
+        return bool(on == "sites")
     places: Sequence[Any] = on.get("places", ((0, 1),))
-    return "sublattice" in on or len(places[0]) == 1
+    return bool("sublattice" in on) or len(places[0]) == 1
 
 
 def _layered_kind(ensemble: Ensemble) -> str:
