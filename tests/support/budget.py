@@ -28,8 +28,9 @@ SHARES: Final[dict[str, float]] = {
     "square-and-long-range": 5e-5,
     "references": 5e-5,
     "cross-entropy": 1e-6,
-    "averaged-state": 1e-6,
     "paid": 2e-6,
+    "averaged-state": 5e-7,
+    "crossed-percolation": 5e-7,
     "analysis": 6e-5,  # spent by the thresholds stated in tests/client/analysis
     "published": 2e-6,  # spent by the thresholds stated in tests/client/analysis/test_published_*.py
 }

@@ -34,6 +34,9 @@ class CrossEntropy(BaseObservation):
       n = (random outcomes from the maximally mixed state) - (random outcomes from plus).
       The same n, in bits, is what the record tells about which of the 2^L product states of the basis of ``against``
       the circuit began with. From a maximally mixed initial state chi is the same.
+
+    Whatever ``before`` resets is alike in both: with all sites reset but one, the two states are those of one encoded
+    qubit, and chi is 1 or 1/2.
     """
 
     quantity: Literal["cross-entropy"]
