@@ -231,3 +231,26 @@ def test_a_missing_extra_is_named(run: Run, tmp_path: Path, monkeypatch: pytest.
     done = run("fit", "collapse", written(made(scaling), tmp_path / "f.json"))
     assert done.code == 1
     assert 'pip install "sweepmill[analysis]"' in done.err
+
+
+def test_a_series_is_judged_and_a_sweep_without_one_gets_a_companion(
+    run: Run, key: str, service_url: str, tmp_path: Path
+) -> None:
+    judged = run("steady", key, "--url", service_url, "--json", tmp_path / "s.json", "--figure", tmp_path / "s.svg")
+    assert (judged.code, judged.err) == (0, "")
+    assert judged.out.splitlines()[0].startswith(f"sweep {key[:12]}, 18 ensembles")
+    assert "series: " in judged.out
+    assert len(json.loads((tmp_path / "s.json").read_text())["ensembles"]) == 18
+    assert (tmp_path / "s.svg").exists()
+
+    printed = run("steady", key, "--of", "half", "--url", service_url)
+    assert printed.code == 1
+    assert "no observation was read along the layers" in printed.err
+    path = tmp_path / "companion.json"
+    kept = run("steady", key, "--of", "half", "--companion", path, "--url", service_url)
+    assert kept.code == 0
+    assert f"sweepmill submit {path} --watch" in kept.out
+    assert Sweep.read(path) == Sweep.parse(json.loads(printed.out))
+
+    once = written(made(scaling), tmp_path / "f.json")
+    assert "give the key of the sweep" in run("steady", once).err

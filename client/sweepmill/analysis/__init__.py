@@ -28,6 +28,7 @@ from sweepmill.analysis.points import Points
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.shapes import NaturalSpline, Polynomial
 from sweepmill.analysis.steady import Steadiness, steady_yet
+from sweepmill.analysis.steady_sweep import SweepSteadiness, steady_sweep
 from sweepmill.analysis.tell import Need
 from sweepmill.analysis.times import fit_decay, fit_times, purification_times, settling_depths, times_by_size
 
@@ -52,6 +53,7 @@ __all__ = [
     "Polynomial",
     "Scaling",
     "Steadiness",
+    "SweepSteadiness",
     "average_of",
     "chord_length",
     "fit_central_charge",
@@ -68,6 +70,7 @@ __all__ = [
     "purity",
     "replicas_from_folds",
     "settling_depths",
+    "steady_sweep",
     "steady_yet",
     "times_by_size",
 ]

@@ -60,8 +60,8 @@ def chosen(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -> Cho
 
 def chosen_rows(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -> Rows:
     """The rows that `chosen` makes points of. Raises as that does."""
-    rows = _with_values(_of(table, choice.of), choice.where)
-    sizes = next((name for name in _SIZES if name in rows or name in rows.constants), _SIZES[0])
+    rows = _with_values(observed(table, choice.of), choice.where)
+    sizes = size_column(rows)
     rows = _with_sizes(rows, sizes, choice.sizes)
     x = choice.x or _abscissa(rows, abscissae)
     if x not in rows and x not in rows.constants:
@@ -71,7 +71,13 @@ def chosen_rows(table: Table, choice: Choice, abscissae: tuple[str, ...] = ()) -
     return Rows(rows, sizes, x)
 
 
-def _of(table: Table, of: str | None) -> Table:
+def size_column(table: Table) -> str:
+    """The column that sizes are in: sites, or the width of a lattice."""
+    return next((name for name in _SIZES if name in table or name in table.constants), _SIZES[0])
+
+
+def observed(table: Table, of: str | None) -> Table:
+    """The rows of one observation, by default the only one. Raises NotOneCurve, or ValueError without rows."""
     names = sorted(set(map(str, table.values("name"))))
     if not names:
         raise ValueError("the table has no rows: nothing is sampled yet")

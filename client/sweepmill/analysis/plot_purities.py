@@ -28,7 +28,7 @@ def plot_purities(result: Purities, path: str | Path | None, x_label: str, y_lab
                 axes.plot(*np.stack([points.x, y])[:, of], color=color, lw=0.6)
         for axes, y in ((purities, values), (entropies, points.mean)):
             axes.plot(points.x[open_ones], y[open_ones], "x", color=GRAY, ms=4)
-        purities.set(xlabel=x_label, ylabel=f"mean of 2^-{y_label}", title="mean purity", yscale="log")
+        purities.set(xlabel=x_label, ylabel=f"mean of 2^-S, S = {y_label}", title="mean purity", yscale="log")
         entropies.set(xlabel=x_label, ylabel="bits", title="-log2 of the mean purity")
         entropies.legend(frameon=False)
     return saved(figure, path)

@@ -31,7 +31,7 @@ def plot_steady(result: Steadiness, path: str | Path | None, x_label: str, y_lab
         series.axvspan(0.5, 0.75, color=GRAY, alpha=0.10, lw=0)
         series.axvspan(0.75, 1.0, color=GRAY, alpha=0.22, lw=0)
         series.set(xlabel=f"share of the {x_label}s", ylabel=y_label, title="series, third and fourth quarter shaded")
-        series.legend(frameon=False)
+        series.legend(framealpha=0.85, edgecolor="none")
         for place, row in enumerate(result.rows):
             bar = [2 * row.error / row.scale]
             at = [row.change / row.scale]
@@ -41,6 +41,7 @@ def plot_steady(result: Steadiness, path: str | Path | None, x_label: str, y_lab
         if len(result.rows) <= _MOST_NAMED:
             changes.set_yticks(range(len(result.rows)), [row.label or f"L = {row.size:g}" for row in result.rows])
         changes.invert_yaxis()
-        title = "change from third to fourth quarter, two errors; shaded: does not matter"
+        changes.locator_params(axis="x", nbins=5)
+        title = "change from third to fourth quarter\n(bars: two errors; shaded: would not matter)"
         changes.set(xlabel="change / mean", title=title)
     return saved(figure, path)

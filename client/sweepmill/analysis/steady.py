@@ -85,6 +85,12 @@ class Steadiness:
         noun = "ensemble" if len(self.rows) == 1 else "ensembles"
         return f"Not shown to be steady: of {len(self.rows)} {noun}, {said}."
 
+    def more_needed(self) -> float:
+        """By what factor more trajectories would let every noisy series tell; 1 where none is too noisy."""
+        noisy = [row for row in self.rows if row.verdict == "too noisy to tell"]
+        room = [max(self.tolerance * row.scale - abs(row.change), self.tolerance * row.scale / 2) for row in noisy]
+        return max([1.0, *((2 * row.error / left) ** 2 for row, left in zip(noisy, room, strict=True))])
+
     def text(self) -> str:
         """All rows, aligned."""
         head = ["ensemble", "L", "layers", "third", "fourth", "change", "verdict"]

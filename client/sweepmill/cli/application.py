@@ -16,6 +16,7 @@ from sweepmill.cli.pool import pool
 from sweepmill.cli.replay import replay
 from sweepmill.cli.rounds import rounds
 from sweepmill.cli.serve import serve
+from sweepmill.cli.steady import steady
 from sweepmill.cli.submit import submit
 from sweepmill.cli.table import table
 from sweepmill.cli.values import values
@@ -53,6 +54,7 @@ app.command()(table)
 app.command()(folds)
 app.command()(values)
 app.command()(fit)
+app.command()(steady)
 app.command()(cost)
 app.command()(withdraw)
 app.command()(replay)
