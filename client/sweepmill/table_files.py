@@ -59,3 +59,24 @@ def arrow_table(path: Path) -> Any:
             return stream.read_all()
     except pa.ArrowInvalid as error:
         raise SweepmillError(f"{path} is not the table of a sweep: {error}") from error
+
+
+def write_columns(path: Path, columns: Mapping[str, Sequence[Any]], metadata: Mapping[str, Any]) -> None:
+    """Write columns and metadata; the suffix gives the format. Raises ValueError, OSError, MissingExtra."""
+    media_type(path)
+    if path.suffix == ".json":
+        path.write_text(json.dumps({"columns": columns, "metadata": metadata}), encoding="utf-8")
+        return
+    with needing(f"writing {path.suffix} files", "analysis"):
+        import pyarrow as pa
+        import pyarrow.csv
+        import pyarrow.ipc
+        import pyarrow.parquet
+    table = pa.table(dict(columns)).replace_schema_metadata({ARROW_METADATA: json.dumps(metadata)})
+    if path.suffix == ".parquet":
+        pa.parquet.write_table(table, path)
+    elif path.suffix == ".csv":
+        pa.csv.write_csv(table, path, pa.csv.WriteOptions(quoting_style="needed"))
+    else:
+        with pa.ipc.new_stream(str(path), table.schema) as stream:
+            stream.write_table(table)

@@ -29,7 +29,8 @@ from sweepmill.cli import main
 main()
 """
 COMMANDS = [
-    *("check", "submit", "list", "watch", "rounds", "table", "folds", "values", "fit", "steady", "cost", "withdraw"),
+    *("check", "submit", "list", "watch", "rounds", "table", "folds", "values", "histogram"),
+    *("fit", "steady", "cost", "withdraw"),
     *("replay", "pool", "demo", "serve", "dispatch"),
 ]
 NOWHERE = "http://127.0.0.1:9"  # the discard port: nothing listens there

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from sweepmill import Client, RemoteSweep, ServiceError, Sweep, SweepmillError, Values
+from sweepmill import Client, RemoteSweep, ServiceError, Sweep, SweepmillError, Table, Values
 from sweepmill.cli import main
 from sweepmill.coordinates import coordinates
 from sweepmill.statistics import summarize
@@ -122,6 +122,53 @@ def test_the_command_writes_values(
     assert run("values", settled.key[:12], "-o", file) == 1
     assert "name one of the observations that keep their values: entropy, i3" in capsys.readouterr().err
     assert run("values", settled.key[:12], "--of", "i3", "-o", tmp_path / "i3.json") == 2
+
+
+def test_the_command_shows_writes_draws_and_compares_distributions(
+    settled: RemoteSweep, service_url: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: Any
+) -> None:
+    run = command(monkeypatch, service_url)
+    file, figure = tmp_path / "entropy.json", tmp_path / "entropy.png"
+    options = ("--of", "entropy", "--where", "sites=8", "--law", "stabilizer")
+    assert run("histogram", settled.key[:12], *options, "-o", file, "--figure", figure) == 0
+    out = capsys.readouterr().out
+    assert "entropy (half) of sweep" in out
+    assert "300 trajectories" in out
+    assert "sites = 8 against random stabilizer states, 4 of 8 qubits: chi2 = " in out
+    written = Table.read(file)
+    assert written.columns == ("sites", "value", "occurrences", "share", "error", "law")
+    assert sum(written.values("occurrences")) == 300
+    assert figure.stat().st_size > 10_000
+    assert run("histogram", settled.key[:12], "--of", "i3", "-o", tmp_path / "i3.csv") == 0
+    assert "difference of sites = 4 and sites = 8: " in capsys.readouterr().out
+    assert len((tmp_path / "i3.csv").read_text().splitlines()) > 4
+
+
+@pytest.mark.parametrize(
+    ("options", "code", "said"),
+    [
+        ((), 2, "name one observation with --of: entropy, i3, outcome-randomness"),
+        (("--of", "bits"), 2, "'bits' has no distribution; those that have one: entropy, i3"),
+        (("--of", "entropy", "--where", "rate=1"), 2, "'rate' tells no ensembles apart: one of sites does"),
+        (("--of", "entropy", "--where", "rate"), 2, "say which, as in measurement_rate=0.16"),
+        (("--of", "entropy", "--where", "sites=5"), 1, "nothing is sampled of entropy there"),
+        (("--of", "i3", "--law", "stabilizer"), 1, "tripartite-information has no such law"),
+        (("--of", "outcome-randomness"), 1, "is a ratio"),
+        (("--of", "i3", "--figure", "a.txt"), 2, "one of .png, .pdf, .svg"),
+    ],
+)
+def test_the_command_refuses_in_plain_words(
+    settled: RemoteSweep,
+    service_url: str,
+    monkeypatch: pytest.MonkeyPatch,
+    capsys: Any,
+    options: tuple[str, ...],
+    code: int,
+    said: str,
+) -> None:
+    monkeypatch.setenv("COLUMNS", "200")
+    assert command(monkeypatch, service_url)("histogram", settled.key[:12], *options) == code
+    assert said in " ".join(capsys.readouterr().err.replace("│", " ").split())
 
 
 def command(monkeypatch: pytest.MonkeyPatch, url: str) -> Callable[..., int]:

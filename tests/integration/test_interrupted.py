@@ -2,7 +2,7 @@
 
 import sqlite3
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 import psutil
 import pytest
@@ -27,19 +27,33 @@ SWEEP: dict[str, Any] = {
     },
     "observe": [
         {"quantity": "entropy", "region": "every-cut", "histogram": False},
-        {"name": "i3", "quantity": "tripartite-information", "histogram": True},
+        {"name": "i3", "quantity": "tripartite-information", "histogram": True, "keep_values": True},
         {"quantity": "outcome-randomness"},
     ],
     "stop": {"trajectories": 3000, "at_least": 200, "standard_error": {"of": "i3", "below": 0.016}},
 }
 
 
-def result(url: str, key: str, directory: Path) -> tuple[bytes, list[dict[str, Any]]]:
-    """The table as a file, and what it rests on: keys, ranges of trajectories, digests."""
+class Result(NamedTuple):
+    """The table as a file, what it rests on (keys, ranges of trajectories, digests), and kept values as a file."""
+
+    table: bytes
+    ensembles: list[dict[str, Any]]
+    values: bytes
+
+
+def result(url: str, key: str, directory: Path) -> Result:
     with Client(url) as client:
         remote = client.sweep(key)
         path = remote.download(directory / "table.csv")
-        return path.read_bytes(), remote.table().ensembles
+        values = remote.download_values(directory / "values.arrow", "i3")
+        return Result(path.read_bytes(), remote.table().ensembles, values.read_bytes())
+
+
+def range_of(ensemble: dict[str, Any]) -> int:
+    """Trajectories that an ensemble settled with."""
+    (number,) = {total["trajectories"][1] for total in ensemble["observations"].values()}
+    return int(number)
 
 
 def committed(url: str, key: str) -> int:
@@ -65,7 +79,7 @@ def kill_and_see_every_process_gone(running: Service) -> None:
 
 
 @pytest.fixture(scope="module")
-def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> tuple[bytes, list[dict[str, Any]]]:
+def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> Result:
     """The same sweep on one worker, with batches of another size, never interrupted."""
     directory = tmp_path_factory.mktemp("undisturbed")
     with service(f"sqlite:///{directory / 'a.sqlite'}", workers="1", batch_seconds="1.5") as running:
@@ -75,7 +89,7 @@ def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> tuple[bytes, list[d
         return result(running.url, key, directory)
 
 
-def interrupt(database: str, directory: Path) -> tuple[bytes, list[dict[str, Any]]]:
+def interrupt(database: str, directory: Path) -> Result:
     """Kill the service twice and a worker once; then let the sweep settle."""
     first = Service(database, **SETTINGS)
     with Client(first.url) as client:
@@ -94,11 +108,12 @@ def interrupt(database: str, directory: Path) -> tuple[bytes, list[dict[str, Any
         return result(third.url, key, directory)
 
 
-def test_a_sweep_killed_three_times_gives_the_undisturbed_table_bit_for_bit(
-    undisturbed: tuple[bytes, list[dict[str, Any]]], tmp_path: Path
+def test_a_sweep_killed_three_times_gives_the_undisturbed_table_and_values_bit_for_bit(
+    undisturbed: Result, tmp_path: Path
 ) -> None:
     file = tmp_path / "b.sqlite"
     assert interrupt(f"sqlite:///{file}", tmp_path) == undisturbed
+    assert len(undisturbed.values) > 8 * sum(range_of(one) for one in undisturbed.ensembles)
     with sqlite3.connect(file) as connection:
         (starts,) = connection.execute("SELECT count(*) FROM start").fetchone()
         (commits,) = connection.execute(
@@ -109,8 +124,6 @@ def test_a_sweep_killed_three_times_gives_the_undisturbed_table_bit_for_bit(
     assert 0 <= starts - commits <= window * kills
 
 
-def test_the_same_holds_on_postgres(
-    undisturbed: tuple[bytes, list[dict[str, Any]]], postgres_server: PostgresServer, tmp_path: Path
-) -> None:
+def test_the_same_holds_on_postgres(undisturbed: Result, postgres_server: PostgresServer, tmp_path: Path) -> None:
     with postgres_server.database() as url:
         assert interrupt(url, tmp_path) == undisturbed

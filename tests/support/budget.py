@@ -31,6 +31,7 @@ SHARES: Final[dict[str, float]] = {
     "paid": 2e-6,
     "averaged-state": 5e-7,
     "crossed-percolation": 5e-7,
+    "random-stabilizer-states": 2e-6,
     "analysis": 6e-5,  # spent by the thresholds stated in tests/client/analysis
     "published": 2e-6,  # spent by the thresholds stated in tests/client/analysis/test_published_*.py
 }

@@ -17,6 +17,7 @@ with needing("sweepmill.analysis", "analysis"):
 from sweepmill.analysis.collapse import Collapse, fit_collapse
 from sweepmill.analysis.compare import Candidate, Comparison, fit_growth, fit_laws
 from sweepmill.analysis.crossings import Crossings, fit_crossings
+from sweepmill.analysis.distribution import Distribution, distributions, distributions_of_values
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.free_energy import CentralCharge, fit_central_charge
 from sweepmill.analysis.goodness import Goodness
@@ -25,6 +26,8 @@ from sweepmill.analysis.jackknife import jackknife_covariance, jackknife_error, 
 from sweepmill.analysis.laws import DECAY, ENTANGLEMENT, GROWTH, TIMES, Law, chord_length
 from sweepmill.analysis.model_free import ModelFree, fit_model_free
 from sweepmill.analysis.points import Points
+from sweepmill.analysis.random_states import ExactLaw, random_stabilizer_entropy, stabilizer_law_of
+from sweepmill.analysis.same_law import Agreement, against_law, between
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.shapes import NaturalSpline, Polynomial
 from sweepmill.analysis.steady import Steadiness, steady_yet
@@ -37,13 +40,16 @@ __all__ = [
     "ENTANGLEMENT",
     "GROWTH",
     "TIMES",
+    "Agreement",
     "Average",
     "Candidate",
     "CentralCharge",
     "Collapse",
     "Comparison",
     "Crossings",
+    "Distribution",
     "Estimate",
+    "ExactLaw",
     "Goodness",
     "Law",
     "ModelFree",
@@ -54,8 +60,12 @@ __all__ = [
     "Scaling",
     "Steadiness",
     "SweepSteadiness",
+    "against_law",
     "average_of",
+    "between",
     "chord_length",
+    "distributions",
+    "distributions_of_values",
     "fit_central_charge",
     "fit_collapse",
     "fit_crossings",
@@ -68,8 +78,10 @@ __all__ = [
     "jackknife_error",
     "purification_times",
     "purity",
+    "random_stabilizer_entropy",
     "replicas_from_folds",
     "settling_depths",
+    "stabilizer_law_of",
     "steady_sweep",
     "steady_yet",
     "times_by_size",

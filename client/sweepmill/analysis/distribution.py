@@ -12,6 +12,7 @@ from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.jackknife import jackknife_error, replicas_from_folds
 from sweepmill.table import BY_FOLD, Table
 from sweepmill.text import cell
+from sweepmill.values import Values
 
 FOLDS = 64
 
@@ -68,7 +69,7 @@ class Distribution:
     @property
     def shares(self) -> Vector:
         """Relative frequency [H] of each value."""
-        return self.counts / self.occurrences.sum()
+        return np.asarray(self.counts / self.occurrences.sum())
 
     @property
     def errors(self) -> Vector:
@@ -113,3 +114,18 @@ def distributions(table: Table) -> Iterator[Distribution]:
             folds = [table.values(BY_FOLD)[row] for row in rows]
             place = dict(zip(varying, where, strict=True))
             yield Distribution.of(values, folds, trajectories, key=str(entry["key"]), place=place)
+
+
+def distributions_of_values(values: Values) -> Iterator[Distribution]:
+    """One for every ensemble, layer and position of kept values. Raises ValueError for a ratio."""
+    arrow = values.to_arrow()
+    if "value" not in arrow.column_names:
+        raise ValueError(f"{values.name} is a ratio: its numerators and denominators are in the kept values")
+    for entry in values.ensembles:
+        begin, end = entry["rows"]
+        coordinates = len(values.metadata["scales"][entry["scales"]])
+        for column in range(coordinates if end > begin else 0):
+            here = {name: arrow[name][begin + column].as_py() for name in ("layer", "position")}
+            place = entry["axes"] | {name: number for name, number in here.items() if number is not None}
+            read = arrow["value"].slice(begin, end - begin).to_numpy().reshape(-1, coordinates)[:, column]
+            yield Distribution.of_trajectories(read, key=str(entry["key"]), place=place)

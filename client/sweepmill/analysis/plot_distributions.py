@@ -12,6 +12,10 @@ from sweepmill.analysis.arrays import Vector
 from sweepmill.analysis.distribution import Distribution
 from sweepmill.analysis.plot import GRAY, inks, saved, sheet
 from sweepmill.analysis.random_states import ExactLaw
+from sweepmill.extras import needing
+
+with needing("plot()", "analysis"):
+    from matplotlib.ticker import MaxNLocator
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -41,24 +45,28 @@ def plot_distributions(
         for one, law, color in zip(found, exact, colors, strict=False):
             _shares(shares, one, step, color, bars=len(found) == 1)
             if law is not None:
-                _law(shares, law, color, named=one is found[0])
+                _law(shares, law, named=one is found[0])
         shares.set(xlabel=x_label, ylabel="share of readings", title="distribution")
         shares.set_ylim(bottom=0)
         if len(found) <= MOST_NAMED:
-            shares.legend(frameon=False)
+            handles = shares.get_legend_handles_labels()
+            figure.legend(*handles, loc="outside lower center", ncols=min(4, len(found) + 1), frameon=False)
         if any(law is not None for law in exact):
             for one, law, color in zip(found, exact, colors, strict=False):
                 if law is not None:
                     _difference(beside, one, _at(law.values, law.probabilities, one.values), one.errors, color)
             beside.set(ylabel="(share - law) / error", title="difference from the law")
         elif len(found) == 2:
-            _two(beside, *found, colors[0])
+            _two(beside, found[0], found[1], colors[0])
         else:
             for one, color in zip(found, colors, strict=False):
                 _shares(beside, one, step, color, bars=False)
             beside.set_yscale("log")
             beside.set(ylabel="share of readings", title="the same, logarithmic")
         beside.set(xlabel=x_label)
+        if step == 1:
+            for axes in (shares, beside):
+                axes.xaxis.set_major_locator(MaxNLocator(integer=True))
     return saved(figure, path)
 
 
@@ -85,14 +93,10 @@ def _outline(one: Distribution, step: float) -> tuple[Vector, Vector]:
     return one.values[0] + step * (np.arange(count + 1) - 0.5), heights
 
 
-def _law(axes: Axes, law: ExactLaw, color: str, named: bool) -> None:
+def _law(axes: Axes, law: ExactLaw, named: bool) -> None:
     shown = law.probabilities > law.probabilities.max() * 1e-6
     label = law.name if named else None
-    axes.plot(law.values[shown], law.probabilities[shown], "_", ms=11, mew=1.6, color=_dark(color), label=label)
-
-
-def _dark(color: str) -> str:
-    return "black" if color else GRAY
+    axes.plot(law.values[shown], law.probabilities[shown], "_", ms=11, mew=1.6, color="black", label=label)
 
 
 def _at(values: Vector, numbers: Vector, wanted: Vector) -> Vector:
@@ -108,20 +112,13 @@ def _difference(axes: Axes, one: Distribution, expected: Vector, errors: Vector,
 
 def _two(axes: Axes, first: Distribution, second: Distribution, color: str) -> None:
     values = np.union1d(first.values, second.values)
-    shares, errors = ([_at(one.values, part(one), values) for one in (first, second)] for part in (_share, _error))
-    combined = np.hypot(*errors)
-    able = combined > 0
+    both = (first, second)
+    shares = [_at(one.values, one.shares, values) for one in both]
+    error = np.hypot(*(_at(one.values, one.errors, values) for one in both))
+    able = error > 0
     _band(axes)
-    axes.plot(values[able], (shares[1] - shares[0])[able] / combined[able], "o", ms=3.5, color=color)
+    axes.plot(values[able], (shares[1] - shares[0])[able] / error[able], "o", ms=3.5, color=color)
     axes.set(ylabel="difference / error", title=f"{second.label} minus {first.label}")
-
-
-def _share(one: Distribution) -> Vector:
-    return one.shares
-
-
-def _error(one: Distribution) -> Vector:
-    return one.errors
 
 
 def _band(axes: Axes) -> None:

@@ -1,10 +1,13 @@
 """Entropy of a part of a uniformly random pure stabilizer state: where deep circuits without measurements end."""
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from sweepmill.analysis.arrays import Vector
+from sweepmill.ensemble import Ensemble
+from sweepmill.observation import Entropy, Negativity
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,3 +41,20 @@ def random_stabilizer_entropy(inside: int, outside: int) -> ExactLaw:
     weights = np.exp2(numbers - numbers.max())
     values = np.arange(len(weights), dtype=np.float64)
     return ExactLaw(values, weights / weights.sum(), f"random stabilizer states, {inside} of {inside + outside} qubits")
+
+
+def stabilizer_law_of(ensemble: Ensemble, observation: Any, position: int | None = None) -> ExactLaw:
+    """The law that the entropy of a region, or its negativity, has in a random stabilizer state of the same size.
+
+    `position` is the cut of `every-cut`. Raises ValueError for other quantities and for chains that are not pure.
+    """
+    if not isinstance(observation, Entropy | Negativity) or observation.region == "every-interval":
+        raise ValueError(f"{observation.quantity} has no such law: it is that of the entropy of one region")
+    if ensemble.references or ensemble.initial_state == "mixed":
+        raise ValueError("the law is that of pure states, and the chain is entangled with others from the start")
+    inside = ensemble.sites // 2 if isinstance(observation.region, str) else len(observation.region)
+    if observation.region == "every-cut":
+        if position is None:
+            raise ValueError("every cut has a law of its own: say which position")
+        inside = position
+    return random_stabilizer_entropy(inside, ensemble.sites - inside)

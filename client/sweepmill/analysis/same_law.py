@@ -49,7 +49,7 @@ def against_law(found: Distribution, law: ExactLaw) -> Agreement:
     impossible = round(float(_placed(found.values, found.counts, values)[expected == 0].sum()))
     if impossible:
         return Agreement(math.inf, 1, 0.0, 1, "exact", impossible)
-    groups = _grouped(expected * found.trajectories, _most_bins(found))
+    groups = _groups(expected * found.trajectories, found)
     probabilities = _summed(expected, groups)
     if _independent(found):
         counts = _summed(_placed(found.values, found.counts, values), groups)
@@ -71,7 +71,7 @@ def between(first: Distribution, second: Distribution) -> Agreement:
     placed = [_placed(one.values, one.counts / one.readings, values) for one in both]
     number = sum(one.trajectories for one in both)
     smaller = min(one.trajectories for one in both)
-    groups = _grouped((placed[0] + placed[1]) * smaller / number, min(map(_most_bins, both)))
+    groups = _groups((placed[0] + placed[1]) * smaller / number, *both)
     if all(map(_independent, both)):
         table = np.stack([_summed(counts, groups) for counts in placed])
         wanted = table.sum(axis=1)[:, None] * table.sum(axis=0) / number
@@ -84,10 +84,6 @@ def _independent(one: Distribution) -> bool:
     return one.readings == 1
 
 
-def _most_bins(one: Distribution) -> int:
-    return 10**9 if _independent(one) else max(2, one.occurrences.shape[1] // FOLDS_PER_BIN)
-
-
 def _placed(values: Vector, numbers: Vector, among: Vector) -> Vector:
     """Numbers of some values among all; 0 for the others."""
     placed = np.zeros(len(among))
@@ -95,9 +91,21 @@ def _placed(values: Vector, numbers: Vector, among: Vector) -> Vector:
     return placed
 
 
-def _grouped(expected: Vector, most: int) -> Vector:
-    """Number of the group of each value: neighbors together until every group is frequent, at most so many groups."""
-    threshold = max(RARE, expected.sum() / most)
+def _groups(expected: Vector, *judged: Distribution) -> Vector:
+    """Number of the group of each value: neighbors together until every group is frequent.
+
+    Where covariances come from folds, a group is found in most of them, and there are far fewer groups than folds.
+    """
+    if all(map(_independent, judged)):
+        return _grouped(expected, RARE)
+    folds = min(one.occurrences.shape[1] for one in judged)
+    threshold = max(RARE, float(folds))
+    while (groups := _grouped(expected, threshold)).max() >= max(2, folds // FOLDS_PER_BIN):
+        threshold *= 1.5
+    return groups
+
+
+def _grouped(expected: Vector, threshold: float) -> Vector:
     groups = np.zeros(len(expected))
     group, held = 0, 0.0
     for place, number in enumerate(expected):
@@ -109,7 +117,7 @@ def _grouped(expected: Vector, most: int) -> Vector:
 
 
 def _summed(numbers: Vector, groups: Vector) -> Vector:
-    return np.bincount(groups.astype(np.int64), weights=numbers)
+    return np.asarray(np.bincount(groups.astype(np.int64), weights=numbers), dtype=np.float64)
 
 
 def _in_groups(one: Distribution, values: Vector, groups: Vector) -> tuple[Vector, Matrix]:

@@ -11,6 +11,7 @@ from sweepmill.cli.demo import demo
 from sweepmill.cli.dispatch import dispatch
 from sweepmill.cli.fit import fit
 from sweepmill.cli.folds import folds
+from sweepmill.cli.histogram import histogram
 from sweepmill.cli.listing import list_sweeps
 from sweepmill.cli.pool import pool
 from sweepmill.cli.replay import replay
@@ -53,6 +54,7 @@ app.command()(rounds)
 app.command()(table)
 app.command()(folds)
 app.command()(values)
+app.command()(histogram)
 app.command()(fit)
 app.command()(steady)
 app.command()(cost)
