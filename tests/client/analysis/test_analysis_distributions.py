@@ -207,7 +207,7 @@ def test_figures_show_the_shares_themselves(tmp_path: Path) -> None:
         figure = plot_distributions(found, None, "S")
         steps = [patch for patch in figure.axes[0].patches if isinstance(patch, StepPatch)]
         assert len(steps) == len(found)
-        assert sum(steps[0].get_data().values) == pytest.approx(1)
+        assert sum(steps[0].get_data()[0]) == pytest.approx(1)
         assert figure.axes[1].get_title(loc="left") == title
     with pytest.raises(ValueError, match="nothing to draw"):
         plot_distributions([], None, "S")
