@@ -104,6 +104,14 @@ CASES: dict[str, dict[str, Any]] = {
         },
         observe=[{"quantity": "reference-entropy", "at": "end"}],
     ),
+    "records and signs": small(
+        circuit__engine=["auto", "reference"],
+        circuit__initial_state="mixed",
+        observe=[
+            {"quantity": "cross-entropy", "against": "plus"},
+            {"quantity": "cross-entropy", "against": "zeros", "at": {"every": 4}, "name": "zeros"},
+        ],
+    ),
 }
 
 
