@@ -202,6 +202,9 @@ class Estimate(Message):
     accumulator_bytes: int = Field(description="Size of all totals of the sweep, at most")
     worker_bytes: int = Field(description="Memory that a batch of the largest ensemble adds to an idle worker, at most")
     standard_errors: list[ExpectedError] = Field(default_factory=list, description="One for each observation")
+    rounds: str | None = Field(
+        None, description="With a goal: expectations are those of its first round, all but the core-seconds at most"
+    )
 
 
 class BatchRecord(Message):

@@ -24,6 +24,7 @@ from sweepmill_service.learning.scatter import Scatter, ScatterModel
 from sweepmill_service.memory import largest
 from sweepmill_service.store import Store
 
+ROUNDS = "a goal is sampled in rounds: how many there will be is known once the first is judged"
 OWN_TOTALS = 64  # ensembles whose own totals are read: of more, some spread over all
 
 
@@ -57,6 +58,17 @@ def goal_of(sweep: Sweep) -> Goal:
     return Goal(sweep.stop.first_rung, {rule.of: rule.below for rule in sweep.stop.standard_error})
 
 
+def first_round(sweep: Sweep) -> tuple[Point, ...]:
+    """What is sure to be sampled: all of it, or the places of the first round where a goal decides what follows."""
+    if sweep.goal is None:
+        return sweep.points
+    return tuple(
+        Point(point.ensemble, min(sweep.stop.first_rung, point.cap))
+        for point in sweep.points
+        if point.ensemble.key in sweep.starting
+    )
+
+
 def scatters_of(points: Sequence[Point], named: Sequence[NamedObservation], store: Store) -> dict[str, Scatter]:
     """How much each observation scatters on some points, by its name."""
     ensembles = [point.ensemble for point in points]
@@ -75,13 +87,15 @@ def scatters_of(points: Sequence[Point], named: Sequence[NamedObservation], stor
 
 def estimate(sweep: Sweep, costs: Costs, store: Store, share: Share, idle: str | None) -> Estimate:
     """Cost, time and standard errors of a sweep; ``idle`` says why no pool would sample it, if so."""
-    points, goal, there = sweep.points, goal_of(sweep), sampled(sweep, store)
+    points, goal = first_round(sweep), goal_of(sweep)
+    there = sampled_points(points, sweep.observations, store)
     done = np.array([item.trajectories for item in there], dtype=float)
     scatters = scatters_of(points, sweep.observations, store)
     numbers = np.maximum(expected_numbers(points, goal, scatters), done)
-    at_most = total_seconds(points, np.array([item.missing for item in there], dtype=float), costs)
+    at_most = total_seconds(sweep.points, np.array([item.missing for item in sampled(sweep, store)], float), costs)
     expected = expected_seconds(points, done, goal, scatters, costs)
-    time = None if idle is not None else _time(sweep, expected, there, costs, share)
+    idle = idle or (None if sweep.goal is None else ROUNDS)
+    time = None if idle is not None else _time(points, expected, there, costs, share)
     return Estimate(
         key=sweep.key,
         ensembles=len(points),
@@ -93,7 +107,7 @@ def estimate(sweep: Sweep, costs: Costs, store: Store, share: Share, idle: str |
         core_seconds_range=_range(at_most),
         core_seconds_expected=expected.value,
         core_seconds_expected_range=_range(expected),
-        core_seconds_from=_source(costs, sweep, there),
+        core_seconds_from=_source(costs, points, there),
         cores=share.cores,
         seconds=None if time is None else time.value,
         seconds_range=None if time is None else _range(time),
@@ -101,12 +115,15 @@ def estimate(sweep: Sweep, costs: Costs, store: Store, share: Share, idle: str |
         queued_core_seconds=share.before + sum(share.others),
         accumulator_bytes=sum(_sizes(sweep)),
         worker_bytes=largest(sweep).bytes,
-        standard_errors=_errors(sweep, goal, numbers, scatters),
+        standard_errors=_errors(sweep.observations, points, goal, numbers, scatters),
+        rounds=None if sweep.goal is None else ROUNDS,
     )
 
 
-def _time(sweep: Sweep, expected: Uncertain, there: Sequence[Sampled], costs: Costs, share: Share) -> Uncertain:
-    open_points = [point for item, point in zip(there, sweep.points, strict=True) if item.missing]
+def _time(
+    points: Sequence[Point], expected: Uncertain, there: Sequence[Sampled], costs: Costs, share: Share
+) -> Uncertain:
+    open_points = [point for item, point in zip(there, points, strict=True) if item.missing]
     longest = max((costs[point.ensemble.key].seconds for point in open_points), default=0.0)
     seconds = seconds_to_finish(expected.value, longest, share)
     return Uncertain(seconds, float(np.hypot(expected.deviation, DEVIATION)))
@@ -117,9 +134,15 @@ def _range(value: Uncertain) -> Range:
     return Range(low=low, high=high)
 
 
-def _errors(sweep: Sweep, goal: Goal, numbers: Floats, scatters: Mapping[str, Scatter]) -> list[ExpectedError]:
+def _errors(
+    named: Sequence[NamedObservation],
+    points: Sequence[Point],
+    goal: Goal,
+    numbers: Floats,
+    scatters: Mapping[str, Scatter],
+) -> list[ExpectedError]:
     found = []
-    for item in sweep.observations:
+    for item in named:
         below = goal.below.get(item.name)
         one = expected_error(item.name, numbers, scatters[item.name])
         found.append(
@@ -129,17 +152,17 @@ def _errors(sweep: Sweep, goal: Goal, numbers: Floats, scatters: Mapping[str, Sc
                 largest_range=None if one.largest is None else _range(one.largest),
                 median=one.median,
                 below=below,
-                met=None
-                if below is None or one.largest is None
-                else reachable(sweep.points, scatters[item.name], below),
+                met=None if below is None or one.largest is None else reachable(points, scatters[item.name], below),
                 source="mixed" if len(one.sources) > 1 else next(iter(one.sources)),
             )
         )
     return found
 
 
-def _source(costs: Costs, sweep: Sweep, there: list[Sampled]) -> Literal["measured", "learned", "default", "mixed"]:
-    open_points = (point for item, point in zip(there, sweep.points, strict=True) if item.missing)
+def _source(
+    costs: Costs, points: Sequence[Point], there: list[Sampled]
+) -> Literal["measured", "learned", "default", "mixed"]:
+    open_points = (point for item, point in zip(there, points, strict=True) if item.missing)
     origins = {costs[point.ensemble.key].origin for point in open_points}
     if len(origins) > 1:
         return "mixed"

@@ -83,8 +83,10 @@ class Runtime:
 
     def forecast(self, status: SweepStatus) -> SweepStatus:
         """The status with the time the sweep would still take if the pool were its own."""
-        if self._dispatcher is None or status.goal is not None:  # rounds to come are not known yet
+        if self._dispatcher is None:
             return status
+        if status.goal is not None:
+            return status.model_copy(update={"seconds_left": rounds_left(status, self.cores())})
         try:
             seconds = self._dispatcher.seconds_left(status.key)
         except KeyError:  # it settled at this moment
@@ -112,6 +114,17 @@ class Runtime:
             self._dispatcher.stop(self.settings.stop_seconds)
         if self._engine is not None:
             self._engine.dispose()
+
+
+def rounds_left(status: SweepStatus, cores: int) -> float | None:
+    """Seconds to the goal as the last round predicts them: the work grows as error^-2; None where it cannot tell."""
+    if status.state not in ("waiting", "sampling") or not status.answers:
+        return None
+    errors = [(one.error, one.below) for one in status.answers if not one.met]
+    shrink = [max(0.0, (error / below) ** 2 - 1) for error, below in errors if error is not None]
+    if len(shrink) < len(errors):
+        return None
+    return status.core_seconds * max(shrink, default=0.0) / max(1, cores)
 
 
 def pool_for(settings: Settings) -> Pool:

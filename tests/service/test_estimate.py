@@ -12,7 +12,8 @@ from sweepmill.errors import SpecificationError
 from sweepmill.sweep import Sweep
 from sweepmill_service.cost import Costs
 from sweepmill_service.counting import too_many
-from sweepmill_service.estimate import Sampled, sampled
+from sweepmill_service.estimate import Sampled, estimate, sampled
+from sweepmill_service.finish import Share
 from sweepmill_service.plan.costs import (
     KINDS,
     default_seconds_per_trajectory,
@@ -160,3 +161,23 @@ def test_a_circuit_too_long_to_compile_is_refused_before_it_is(store: Store) -> 
     wave = {"profile": "quasi-periodic", "by": "layer", "mean": 0.5, "amplitude": 0.1, "wavelength": 1.618, "phase": 0}
     slow = Ensemble.of("layered", sites=8, layers=20_000, repeat=[[{"measure": "Z", "on": "sites", "rate": wave}]])
     assert too_many_places([slow], ServerLimits()) is not None
+
+
+def test_a_goal_is_estimated_by_its_first_round_and_its_caps(store: Store) -> None:
+    sweep = Sweep.parse(
+        {
+            "circuit": {"family": "hybrid-clifford", "sites": [8, 16], "measurement_rate": [0.12, 0.2]},
+            "observe": [{"name": "i3", "quantity": "tripartite-information"}],
+            "stop": {
+                "trajectories": 4000,
+                "critical_point": {"of": "i3", "below": 0.01, "within": [0.12, 0.2], "step": 0.02},
+            },
+        }
+    )
+    sweep, costs = accepted(sweep.normalized(), store, ServerLimits())
+    found = estimate(sweep, costs, store, Share(0.0, (), 2), None)
+    assert (found.ensembles, found.trajectories_cap) == (4, 800)
+    assert found.seconds is None
+    assert found.rounds is not None
+    assert found.core_seconds_expected is not None
+    assert found.core_seconds > 10 * found.core_seconds_expected > 0  # ten places to their caps

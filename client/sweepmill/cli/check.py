@@ -50,11 +50,13 @@ def check(
 def _expanded(sweep: Sweep) -> str:
     names = (observation.name for observation in sweep.observations)
     cap = sum(point.cap for point in sweep.points)
+    first = [point for point in sweep.points if point.ensemble.key in sweep.starting]
+    placed = f", of which {count(len(first))} are sampled first" if len(first) < len(sweep.points) else ""
     return "\n".join(
         [
             f"sweep         {sweep.key}",
             f"axes          {' × '.join(sweep.axes) or 'none'}",
-            f"ensembles     {count(len(sweep.points))}",
+            f"ensembles     {count(len(sweep.points))}{placed}",
             f"observations  {', '.join(names)}",
             f"trajectories  {count(cap)} at most",
         ]

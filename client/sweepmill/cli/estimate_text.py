@@ -38,6 +38,9 @@ def estimate_text(estimate: Estimate) -> str:
 def _work(estimate: Estimate) -> list[str]:
     source = SOURCES[estimate.core_seconds_from]
     at_most = f"{_hours(estimate.core_seconds)} core-hours{_hours_range(estimate.core_seconds_range)} at most"
+    if estimate.rounds is not None:
+        first = f"{_hours(estimate.core_seconds_expected or 0.0)} core-hours for the first round"
+        return [f"work left     {first}, {at_most}, {source}"]
     expected, numbers = estimate.core_seconds_expected, estimate.trajectories_expected
     if expected is None or numbers is None or numbers == estimate.trajectories_cap:
         return [f"work left     {at_most}, {source}"]

@@ -18,7 +18,9 @@ def rounds(
     places: Annotated[bool, typer.Option("--places", help="List what every ensemble had and was given.")] = False,
     url: Url = None,
 ) -> None:
-    """Show how a sweep with a goal went: what each round found, and where it sampled next.
+    """Show how the goal of a sweep was approached.
+
+    Each round with what it found, what it had, and what was decided.
 
     Example: sweepmill rounds 3b9f6c1e
     """
