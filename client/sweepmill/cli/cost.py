@@ -60,7 +60,7 @@ def cost(
     ] = None,
     url: Url = None,
 ) -> None:
-    """Report what an experiment would pay for the circuits of a sweep.
+    """Report what an experiment would pay for a sweep.
 
     Repetitions until a record is met again, post-selection, qubits, layers, measurements, on one page. The sweep
     needs an observation of record-bits, best a series of depths with histogram = true. Where it has none,
