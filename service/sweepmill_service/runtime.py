@@ -86,7 +86,9 @@ class Runtime:
         if self._dispatcher is None:
             return status
         if status.goal is not None:
-            return status.model_copy(update={"seconds_left": rounds_left(status, self.pool_status().cores or self.settings.workers)})
+            return status.model_copy(
+                update={"seconds_left": rounds_left(status, self.pool_status().cores or self.settings.workers)}
+            )
         try:
             seconds = self._dispatcher.seconds_left(status.key)
         except KeyError:  # it settled at this moment
