@@ -138,6 +138,10 @@ class Dispatcher:
         """Core-seconds that every request still has to be given."""
         return self._plan.waiting()
 
+    def pace(self) -> float | None:
+        """Core-seconds of sampling per core and second while there was enough work; None if unknown."""
+        return self._meter.pace(self._threads())
+
     # --- the thread
 
     def _begin_run(self) -> None:
@@ -203,6 +207,7 @@ class Dispatcher:
         if self._open:
             self._watch()
             self._refill()
+            self._meter.watch(self._threads(), len(self._plan.under_way) >= self._threads() > 0)
 
     def _lead(self) -> bool:
         """Whether this dispatcher is the active one."""

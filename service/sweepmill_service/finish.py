@@ -6,7 +6,8 @@ from typing import Final, NamedTuple
 from sweepmill_service.plan.sweeps import Waiting
 
 EFFICIENCY: Final = 0.9
-"""Core-seconds of sampling per core and second while there is work; the rest is handing out and storing."""
+"""Core-seconds of sampling per core and second, where a pool was not watched; the rest is handing out and storing."""
+SLOWEST: Final = 0.01
 LATENCY: Final = 1.0
 """Seconds until the first batches are out, and until the last ones are stored."""
 DEVIATION: Final = 0.15
@@ -14,11 +15,15 @@ DEVIATION: Final = 0.15
 
 
 class Share(NamedTuple):
-    """The pool as one owner meets it: core-seconds that come first, those of each other owner, and cores."""
+    """The pool as one owner meets it: core-seconds that come first, those of each other owner, and cores.
+
+    ``pace``: core-seconds of sampling that a core gives in a second.
+    """
 
     before: float
     others: tuple[float, ...]
     cores: int
+    pace: float = EFFICIENCY
 
 
 def share_of(waiting: Sequence[Waiting], sweep: str, owner: str, priority: int, cores: int) -> Share:
@@ -45,4 +50,4 @@ def seconds_to_finish(core_seconds: float, longest: float, share: Share) -> floa
         return 0.0
     until = share.before + core_seconds
     served = until + sum(min(other, until) for other in share.others)
-    return LATENCY + max(served / (EFFICIENCY * share.cores), longest)
+    return LATENCY + max(served / (max(share.pace, SLOWEST) * share.cores), longest)

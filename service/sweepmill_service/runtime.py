@@ -71,6 +71,10 @@ class Runtime:
         """Whether sweeps are taken and sampled."""
         return not self.unready()
 
+    def pace(self) -> float | None:
+        """Core-seconds of sampling per core and second while there was enough work; None if unknown."""
+        return None if self._dispatcher is None else self._dispatcher.pace()
+
     def waiting(self) -> list[Waiting]:
         """Core-seconds that every request still has to be given by the pool of this process."""
         return [] if self._dispatcher is None else self._dispatcher.waiting()

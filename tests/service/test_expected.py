@@ -23,6 +23,7 @@ from sweepmill_service.expected import (
 )
 from sweepmill_service.finish import EFFICIENCY, LATENCY, Share, seconds_to_finish, share_of
 from sweepmill_service.learning.scatter import Scatter, ScatterModel
+from sweepmill_service.meter import Meter
 from sweepmill_service.plan.sweeps import Waiting
 from sweepmill_service.store import Store
 
@@ -131,6 +132,24 @@ def test_own_sweeps_come_first_if_they_are_older_or_more_urgent() -> None:
     assert share_of(queue, "new", "ada", 3, 2) == Share(20.0, (40.0,), 2)
     assert share_of(queue, "old", "ada", 0, 2) == Share(20.0, (40.0,), 2)
     assert share_of(queue, "new", "eve", 0, 2) == Share(0.0, (30.0, 40.0), 2)
+
+
+def test_a_pool_that_gives_its_cores_to_others_as_well_takes_longer() -> None:
+    half = seconds_to_finish(100.0, 0.0, Share(0.0, (), 2, pace=0.5))
+    assert half == LATENCY + 100.0
+
+
+def test_the_pace_is_that_of_the_time_with_enough_work() -> None:
+    now = 0.0
+    meter = Meter(lambda: now)
+    for second in range(100):
+        now = float(second)
+        busy = second < 60
+        meter.watch(2, busy)
+        if busy and second % 5 == 4:
+            meter.note(6.0, 10)  # 12 of them, 72 core-seconds in 60 s of two cores
+    assert meter.pace(2) == pytest.approx(0.6, rel=0.02)
+    assert Meter().pace(2) is None
 
 
 def test_nothing_ends_before_its_longest_trajectory() -> None:

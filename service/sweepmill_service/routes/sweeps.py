@@ -68,6 +68,7 @@ def estimate_sweep(
     sweep, costs = accepted(specification, store, runtime.settings.limits)
     pool = runtime.pool_status()
     share = share_of(runtime.waiting(), sweep.key, owner, sweep.priority, pool.cores)
+    share = share._replace(pace=runtime.pace() or share.pace)
     return estimate(sweep, costs, store, share, None if pool.cores else pool.reason or "the pool has no workers")
 
 
