@@ -19,7 +19,8 @@ def sampled_source(sweep: Sweep, trajectories: int) -> Source:
     for point in sweep.points:
         began = len(rows), len(counts)
         batch = sample(point.ensemble, [item.observation for item in sweep.observations], 0, trajectories)
-        axes = {name: point.ensemble.columns.get(name) for name in sweep.axes}
+        known = {"family": point.ensemble.family, **point.ensemble.columns}
+        axes = {name: known.get(name) for name in sweep.axes}
         for item in sweep.observations:
             total, places = batch.accumulators[item.observation.key], coordinates(point.ensemble, item.observation)
             named = {

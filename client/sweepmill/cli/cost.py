@@ -1,15 +1,19 @@
 """sweepmill cost"""
 
+import json
 import sys
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from sweepmill.cli.options import Url
 from sweepmill.client import Client
 
-FORMATS = (".html", ".md")
+if TYPE_CHECKING:
+    from sweepmill.experiment import Cost
+
+FORMATS = (".html", ".md", ".json")
 ADVICE = "This sweep over the same circuits observes it; --companion FILE writes it:"
 
 
@@ -35,7 +39,7 @@ def cost(
             metavar="FILE",
             callback=_known_format,
             dir_okay=False,
-            help="Write the report; the suffix gives the format: .html .md. Without it, Markdown is printed.",
+            help="Write the report; the suffix gives the format: .html .md .json. Without it, Markdown is printed.",
         ),
     ] = None,
     of: Annotated[
@@ -91,5 +95,13 @@ def cost(
     if output is None:
         print(experiment.markdown(report), end="")
         return
-    output.write_text(experiment.page(report) if output.suffix == ".html" else experiment.markdown(report), "utf-8")
+    output.write_text(_written(report, output.suffix), encoding="utf-8")
     print(output)
+
+
+def _written(report: "Cost", suffix: str) -> str:
+    from sweepmill.experiment import markdown, page
+
+    if suffix == ".json":
+        return json.dumps(report.to_dict(), indent=1, allow_nan=False)
+    return page(report) if suffix == ".html" else markdown(report)

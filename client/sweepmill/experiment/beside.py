@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.ensemble import Ensemble
@@ -14,6 +14,17 @@ from sweepmill.experiment.source import Source
 ROTATED = "rotated-clifford"
 
 
+class Entropy(NamedTuple):
+    """Mean entropy of half the system over so many trajectories."""
+
+    bits: Estimate
+    trajectories: int
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain values."""
+        return self.bits.to_dict() | {"trajectories": self.trajectories}
+
+
 @dataclass(frozen=True)
 class Monitored:
     """A monitored circuit at its last depth: its record, its two-qubit gates, and the entropy of half of it."""
@@ -21,7 +32,7 @@ class Monitored:
     ensemble: Ensemble
     record: Record
     gates: float | None
-    entropy: Estimate | None
+    entropy: Entropy | None
 
     def to_dict(self) -> dict[str, Any]:
         """Plain values."""
@@ -40,11 +51,16 @@ class Monitored:
 
 @dataclass(frozen=True)
 class Beside:
-    """Both circuits; `entropy` is that of the sideways region where it was sampled. Either one may be missing."""
+    """Both circuits; the monitored one may be missing.
+
+    `rotated` is the sampled ensemble that the sideways circuit prepares, `entropy` that of its half; None where only
+    the exact mean purity is known.
+    """
 
     monitored: Monitored | None
     sideways: Sideways
-    entropy: Estimate | None
+    rotated: Ensemble | None
+    entropy: Entropy | None
 
     def to_dict(self) -> dict[str, Any]:
         """Plain values."""
@@ -70,12 +86,12 @@ def beside(source: Source, records: Sequence[Record]) -> Beside | None:
         circuit, entropy = sideways_circuit(max(source.ensembles[one.key].sites for one in measured) // 2), None
     else:
         return None
-    return Beside(_alike(source, measured, circuit, entropy, entropies), circuit, entropy)
+    return Beside(_alike(source, measured, circuit, entropy, entropies), circuit, rotated, entropy)
 
 
-def half_entropies(source: Source) -> dict[str, Estimate]:
+def half_entropies(source: Source) -> dict[str, Entropy]:
     """Entropy of half the system at the last depth, by ensemble key."""
-    found: dict[str, Estimate] = {}
+    found: dict[str, Entropy] = {}
     if source.table is None:
         return found
     for one in source.table.ensembles:
@@ -84,7 +100,8 @@ def half_entropies(source: Source) -> dict[str, Estimate]:
         halves = [row for row in rows if row["quantity"] == "entropy" and row["region"] == "half"]
         if halves:
             last = max(halves, key=lambda row: (row["layer"] is None, row["layer"] or 0))
-            found[str(one["key"])] = Estimate(last["mean"], last["standard_error"] or 0.0)
+            bits = Estimate(last["mean"], last["standard_error"] or 0.0)
+            found[str(one["key"])] = Entropy(bits, last["trajectories"])
     return found
 
 
@@ -96,17 +113,17 @@ def _alike(
     source: Source,
     measured: Sequence[Record],
     circuit: Sideways,
-    entropy: Estimate | None,
-    entropies: Mapping[str, Estimate],
+    entropy: Entropy | None,
+    entropies: Mapping[str, Entropy],
 ) -> Monitored | None:
     """The monitored circuit next in size of its half, and then in entropy."""
     if not measured:
         return None
-    bits = entropy.value if entropy is not None else -(circuit.log2_purity or 0.0)
+    bits = entropy.bits.value if entropy is not None else -(circuit.log2_purity or 0.0)
 
     def distance(one: Record) -> tuple[float, float]:
         size = abs(source.ensembles[one.key].sites / 2 - circuit.window)
-        return size, abs(entropies[one.key].value - bits) if one.key in entropies else float("inf")
+        return size, abs(entropies[one.key].bits.value - bits) if one.key in entropies else float("inf")
 
     nearest = min(measured, key=distance)
     ensemble = source.ensembles[nearest.key]

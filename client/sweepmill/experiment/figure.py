@@ -13,11 +13,11 @@ from sweepmill.experiment.wording import axes_text, rest_of, row_heads, size_of
 
 MOST_PANELS, MOST_CURVES = 3, 6
 LEAST = 1.0  # bits at the lower edge: a record that is met again at once is not worth a place
-WIDTH, HEIGHT = 720.0, 250.0
-LEFT, RIGHT, TOP, BOTTOM, GAP = 44.0, 92.0, 22.0, 34.0, 16.0
+WIDTH, HEIGHT = 560.0, 262.0
+LEFT, RIGHT, TOP, BOTTOM, GAP = 42.0, 80.0, 22.0, 34.0, 12.0
 _INKS = ("#b5651d", "#c8963e", "#5f8a5b", "#2f6f73", "#3d5a80", "#7a4069")
 _TIMES = ((1.0, "1 second"), (3600.0, "1 hour"), (86400.0, "1 day"), (YEAR, "1 year"), (1e3 * YEAR, "1,000 years"))
-_AGE = (1.38e10 * YEAR, "age of the universe")
+_AGE = (1.38e10 * YEAR, "age of universe")
 
 Curve = list[Record]
 Item = TypeVar("Item")

@@ -5,7 +5,9 @@ STYLE = """
 * { box-sizing: border-box; }
 body { margin: 0; background: var(--paper); color: var(--ink);
   font: 13px/1.45 "Helvetica Neue", "DejaVu Sans", Arial, sans-serif; }
-main { max-width: 800px; margin: 0 auto; padding: 28px 24px 36px; }
+main { max-width: 1160px; margin: 0 auto; padding: 26px 24px 30px; }
+.columns { display: grid; grid-template-columns: minmax(0, 1.2fr) minmax(0, 1fr); gap: 0 32px; }
+.column { max-width: 760px; }
 header { border-left: 5px solid var(--accent); padding-left: 16px; margin-bottom: 20px; }
 h1 { font: 600 27px/1.2 Georgia, "DejaVu Serif", serif; margin: 2px 0 6px; letter-spacing: -.01em; }
 h2 { font: 600 15px/1.3 Georgia, "DejaVu Serif", serif; margin: 0 0 7px; color: var(--accent); }
@@ -13,14 +15,16 @@ h2 { font: 600 15px/1.3 Georgia, "DejaVu Serif", serif; margin: 0 0 7px; color: 
 .lead { margin: 0; font-size: 14px; max-width: 62em; }
 section { margin: 0 0 20px; break-inside: avoid; }
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; }
-th, td { text-align: left; vertical-align: top; padding: 4px 10px 4px 0; border-bottom: 1px solid var(--line); }
+th, td { text-align: left; vertical-align: top; padding: 3.5px 8px 3.5px 0; border-bottom: 1px solid var(--line); }
 thead th { font-weight: 600; color: var(--soft); font-size: 11.5px; border-bottom: 1.5px solid var(--ink); }
 tbody th { font-weight: 400; white-space: nowrap; }
 tbody th b { font-weight: 600; }
-small { display: block; color: var(--soft); font-size: 10.5px; font-weight: 400; }
+small { display: block; color: var(--soft); font-size: 10.5px; line-height: 1.35; font-weight: 400; }
 sup { font-size: .72em; line-height: 0; }
-.matrix td strong { font-size: 14px; margin-right: 8px; }
-.roads td { width: 38%; }
+.matrix td, .plain td { white-space: nowrap; }
+.matrix td strong { font-size: 14px; margin-right: 6px; }
+.matrix thead th:first-child, .plain thead th:first-child { width: 6.5em; }
+.roads td { width: 36%; }
 .roads td:nth-child(3) { background: var(--tint); padding-left: 10px; }
 .under { margin: 6px 0 0; color: var(--soft); font-size: 11px; }
 svg { width: 100%; height: auto; display: block; }
@@ -32,19 +36,20 @@ svg .end { text-anchor: end; }
 svg .curve { fill: none; stroke-width: 1.4; stroke-linejoin: round; }
 svg .axis { fill: none; stroke: var(--ink); stroke-width: .7; }
 svg .guide { stroke: var(--soft); stroke-width: .7; stroke-dasharray: 1 3; }
-.assumed ul, footer ul { margin: 0; padding-left: 16px; font-size: 11.5px; }
+.assumed ul { margin: 0; padding-left: 16px; font-size: 11.5px; }
 .caution { border-left: 3px solid var(--accent); background: var(--tint); margin: 8px 0 0; padding: 6px 10px; }
-footer { color: var(--soft); border-top: 1px solid var(--line); padding-top: 10px; }
-footer ul { columns: 2; list-style: none; padding: 0; font-size: 10px; }
+footer { color: var(--soft); }
+footer ul { margin: 0; columns: 4 220px; column-gap: 24px; list-style: none; padding: 0; font-size: 10px; }
 code { font-family: "DejaVu Sans Mono", Menlo, monospace; font-size: .95em; }
+@media (max-width: 900px) { .columns { display: block; } }
 @media (max-width: 560px) {
   main { padding: 16px 12px; }
   table { display: block; overflow-x: auto; }
-  footer ul { columns: 1; }
 }
-@page { size: A4; margin: 11mm; }
+@page { size: A4; margin: 10mm; }
 @media print {
-  body { background: white; font-size: 11px; }
-  main { max-width: none; padding: 0; }
+  body { background: white; }
+  main { max-width: none; padding: 0; zoom: .62; }
+  .columns { display: grid; }
 }
 """

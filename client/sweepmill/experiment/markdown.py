@@ -12,7 +12,9 @@ from sweepmill.experiment.wording import (
     NEW_CIRCUITS,
     TITLE,
     axes_text,
+    band_text,
     headline,
+    largest,
     number,
     provenance,
     rare,
@@ -26,7 +28,9 @@ def markdown(cost: Cost) -> str:
     parts = [f"# {TITLE}", headline(cost), f"One repetition is assumed to take {shot_text(cost.options.shot_time)}."]
     if cost.final:
         parts += ["## One record again", _records(cost), f"{NEW_CIRCUITS} {rare(cost.final)}"]
-        parts += ["## Post-selecting the first k outcomes", _selections(cost)]
+        if series := _depths(cost):
+            parts += ["## Random outcomes r against depth", series]
+        parts += ["## Post-selecting the first k outcomes in time", _selections(cost)]
     if cost.beside is not None:
         rows = [list(road) for road in roads(cost.beside, cost.options.shot_time)]
         parts += ["## Monitored, or unitary and read sideways", _table(["", "monitored", "sideways"], rows)]
@@ -48,31 +52,38 @@ def _record(one: Record, shot_time: float) -> list[str]:
     return [axes_text(one.labels), layer, number(one.again), band_text(one), runs, time, f"{twice} ({twice_time})"]
 
 
-def band_text(one: Record) -> str:
-    """Median and the middle nine tenths."""
-    about = "" if one.band.exact else "≈ "
-    return f"{about}{one.band.median:.0f} ({one.band.low:.0f} to {one.band.high:.0f})"
+def _depths(cost: Cost) -> str:
+    """The means of the largest size, if it was observed at several depths."""
+    chosen = largest(cost.final)
+    found = {(axes_text(one.labels), one.layer): number(one.again) for record in chosen for one in cost.depths(record)}
+    layers = sorted({layer for _, layer in found if layer is not None})
+    if len(layers) < 2:
+        return ""
+    names = [axes_text(one.labels) for one in chosen]
+    rows = [[str(layer), *(found.get((name, layer), "") for name in names)] for layer in layers]
+    return _table(["layers", *names], rows)
 
 
 def _selections(cost: Cost) -> str:
     heads = ["circuit", "random share of outcomes"]
-    heads += [f"k = {k}: runs per kept one; for ±{cost.options.precision:g}" for k in cost.options.selected]
+    heads += [
+        f"first {k}: random ones; runs per kept one; for ±{cost.options.precision:g}" for k in cost.options.selected
+    ]
     return _table(heads, [_selection(one, cost) for one in cost.final])
 
 
 def _selection(one: Record, cost: Cost) -> list[str]:
     share = "not known" if one.random is None else number(one.random)
-    return [axes_text(one.labels), share, *(selection_text(found, cost) for found in cost.selections(one))]
+    return [axes_text(one.labels), share, *(_selected(found, cost) for found in cost.selections(one))]
 
 
-def selection_text(found: Selection | None, cost: Cost) -> str:
-    """Runs for one kept run, and for the wanted precision."""
+def _selected(found: Selection | None, cost: Cost) -> str:
+    """Random ones, runs for one kept run, and for the wanted precision."""
     if found is None:
         return "fewer are measured"
-    kept, observed = (
-        runs_and_time(log2, cost.options.shot_time) for log2 in (found.random.value, found.log2_for_observable)
-    )
-    return f"{kept[0]}; {observed[0]} ({observed[1]})"
+    kept, _ = runs_and_time(found.random.value, cost.options.shot_time)
+    observed, time = runs_and_time(found.log2_for_observable, cost.options.shot_time)
+    return f"{found.random.value:.1f}; {kept}; {observed} ({time})"
 
 
 def _table(heads: Sequence[str], rows: Iterable[Sequence[str]]) -> str:

@@ -25,11 +25,13 @@ def roads(both: Beside, shot_time: float) -> list[Road]:
 
 def caption(both: Beside) -> str:
     """Which circuits stand side by side."""
-    chosen = "" if both.monitored is None else f" Monitored: {axes_text(both.monitored.record.labels)}."
+    chosen = "" if both.monitored is None else f"Monitored: {axes_text(both.monitored.record.labels)}. "
     circuit = both.sideways
+    exact = " Its entropy is at least −log2 of the exact mean purity." if both.entropy is None else ""
     return (
-        f"Sideways: {circuit.held.start} to {circuit.held.stop - 1} are the held time slices of the edge of "
-        f"{circuit.chain} qubits, uniform two-qubit Clifford gates.{chosen}"
+        f"{chosen}Sideways: uniform two-qubit Clifford gates on {circuit.chain} qubits, of whose edge the time slices "
+        f"{circuit.held.start} to {circuit.held.stop - 1} are held; what enters elsewhere is a random basis state, and "
+        f"the qubits left at the end are traced or, for a pure state, projected and post-selected.{exact}"
     )
 
 
@@ -39,7 +41,7 @@ def _monitored(one: Monitored | None, shot_time: float) -> dict[str, str]:
     record = one.record
     runs, time = runs_and_time(record.again.value, shot_time)
     pairs, pairs_time = runs_and_time(record.any_twice.value, shot_time)
-    entropy = "not observed" if one.entropy is None else f"{number(one.entropy)} bits"
+    entropy = "not observed" if one.entropy is None else f"{number(one.entropy.bits)} bits"
     measured = 0.0 if record.measurements is None else record.measurements
     gates = "—" if one.gates is None else f"{one.gates:,.0f}"
     values = [
@@ -48,6 +50,7 @@ def _monitored(one: Monitored | None, shot_time: float) -> dict[str, str]:
         f"{one.ensemble.sites}",
         f"{record.layer}",
         gates,
+        "0",
         f"{measured:,.0f}",
         "0",
         f"{number(record.again)}",
@@ -64,11 +67,12 @@ def _sideways(both: Beside, shot_time: float) -> dict[str, str]:
         _entropy(both),
         f"{circuit.chain} + {circuit.window} held",
         f"{circuit.layers}",
-        f"{circuit.gates:,} + {circuit.taken_out} swaps, {circuit.bell_pairs} pairs",
+        f"{circuit.gates:,} + {circuit.taken_out} swaps",
+        f"{circuit.bell_pairs}",
         "0",
         _projected(circuit),
-        f"0 (at most {circuit.final_legs} if projected)",
-        f"1 ({repetitions(circuit.final_legs)} at most if projected)",
+        f"0, or up to {circuit.final_legs} if projected",
+        f"1, or up to {repetitions(circuit.final_legs)}",
         "2",
     ]
     return dict(zip(_NAMES, values, strict=True))
@@ -80,6 +84,7 @@ _NAMES = (
     "qubits",
     "layers",
     "two-qubit gates",
+    "fresh Bell pairs",
     "measurements in mid-circuit",
     "measurements at the end",
     "post-selected bits",
@@ -89,11 +94,11 @@ _NAMES = (
 
 
 def _projected(circuit: Sideways) -> str:
-    return f"none if the chain is traced, {circuit.final_legs} if projected"
+    return f"none, or {circuit.final_legs} if projected"
 
 
 def _entropy(both: Beside) -> str:
     if both.entropy is not None:
-        return f"{number(both.entropy)} bits"
+        return f"{number(both.entropy.bits)} bits"
     purity = both.sideways.log2_purity
-    return "not known" if purity is None else f"at least {-purity:.3f} bits (exact mean purity)"
+    return "not known" if purity is None else f"at least {-purity:.3f} bits"

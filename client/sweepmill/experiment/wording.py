@@ -67,6 +67,12 @@ def row_heads(records: Sequence[Record]) -> tuple[str, dict[str, str]]:
     return names[0].replace("_", " "), shown
 
 
+def band_text(one: Record) -> str:
+    """Median and the middle nine tenths."""
+    about = "" if one.band.exact else "≈ "
+    return f"{about}{one.band.median:.0f} ({one.band.low:.0f} to {one.band.high:.0f})"
+
+
 def runs_and_time(log2: float, shot_time: float) -> tuple[str, str]:
     """Repetitions and how long they take."""
     return repetitions(log2), wall_clock(log2, shot_time)
@@ -104,7 +110,12 @@ def rare(records: Sequence[Record]) -> str:
 
 def provenance(cost: Cost) -> list[tuple[str, str, str]]:
     """Key, values on the axes, and N behind every number."""
-    return [(short(one.key), axes_text(one.labels), f"{one.trajectories:,}") for one in cost.final]
+    found = [(short(one.key), axes_text(one.labels), f"{one.trajectories:,}") for one in cost.final]
+    both = cost.beside
+    if both is not None and both.rotated is not None and both.entropy is not None:
+        where = f"{both.rotated.family}, sites {both.rotated.sites}, layers {both.rotated.layers}"
+        found.append((short(both.rotated.key), where, f"{both.entropy.trajectories:,}"))
+    return found
 
 
 def shot_text(shot_time: float) -> str:
