@@ -214,7 +214,7 @@ def test_other_observations_are_refused(source: Source) -> None:
     plain = sampled_source(sweep({"quantity": "entropy"}, sites=4, measurement_rate=0.2), 10)
     with pytest.raises(NoRecordBits, match="only entropy"):
         cost_of(plain)
-    empty = {name: [] for name in ("name", "quantity", "layer")}
+    empty: dict[str, list[str]] = {name: [] for name in ("name", "quantity", "layer")}
     with pytest.raises(NoRecordBits, match="nothing yet"):
         cost_of(replace(plain, table=Table(empty)))
 
