@@ -4,7 +4,7 @@ import os
 import signal
 import subprocess
 import sys
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 
@@ -60,14 +60,14 @@ def submit(client: Client, sweep: Sweep) -> RemoteSweep:
     return remote
 
 
+FEW_KERNELS = {"SWEEPMILL_LIMITS__SITES": str(LARGEST), "SWEEPMILL_KERNELS": '["chains"]'}  # few to compile
+
+
 @contextmanager
-def service(database: str) -> Iterator[str]:
-    """A service process on a free port; yields its address and ends the process."""
+def service(database: str, settings: Mapping[str, str] = FEW_KERNELS) -> Iterator[str]:
+    """A service process on a free port, with these environment variables; yields its address, ends the process."""
     command = [sys.executable, "-m", "sweepmill", "serve", "--port", "0", "--database", database]
-    limited = os.environ | {
-        "SWEEPMILL_LIMITS__SITES": str(LARGEST),
-        "SWEEPMILL_KERNELS": '["chains"]',
-    }  # few to compile
+    limited = os.environ | settings
     process = subprocess.Popen(command, stdout=subprocess.PIPE, text=True, env=limited)  # noqa: S603
     try:
         yield _address(process)

@@ -31,7 +31,7 @@ main()
 COMMANDS = [
     *("check", "submit", "list", "watch", "rounds", "table", "folds", "values", "histogram"),
     *("fit", "steady", "cost", "withdraw"),
-    *("replay", "pool", "demo", "serve", "dispatch"),
+    *("replay", "pool", "demo", "reproduce", "serve", "dispatch"),
 ]
 NOWHERE = "http://127.0.0.1:9"  # the discard port: nothing listens there
 

@@ -15,6 +15,7 @@ from sweepmill.cli.histogram import histogram
 from sweepmill.cli.listing import list_sweeps
 from sweepmill.cli.pool import pool
 from sweepmill.cli.replay import replay
+from sweepmill.cli.reproduce import reproduce
 from sweepmill.cli.rounds import rounds
 from sweepmill.cli.serve import serve
 from sweepmill.cli.steady import steady
@@ -62,5 +63,6 @@ app.command()(withdraw)
 app.command()(replay)
 app.command()(pool)
 app.command()(demo)
+app.command()(reproduce)
 app.command()(serve)
 app.command()(dispatch)

@@ -31,6 +31,13 @@ class Known(_Strict):
     standing: Literal["exact", "read", "simulation", "memory"]
     decides: bool = False
 
+    @property
+    def text(self) -> str:
+        """As written in the source, or the value with its error."""
+        if self.written:
+            return self.written
+        return f"{self.value:.10g}" + (f" ± {self.error:g}" if self.error else "")
+
 
 class Near(_Strict):
     """Points with |x - center| sites^power <= reach only, and only these sizes if some are named."""
@@ -43,12 +50,17 @@ class Near(_Strict):
 
 
 class _OnPoints(_Strict):
-    """A fit on points: observation `name` against the column `x`, or the observations of `places` against its x."""
+    """A fit on points: observation `name` against the column `x`, or the observations of `places` against its values.
+
+    `where` chooses rows by other columns; `quantities` gives names to what the fit calls otherwise.
+    """
 
     name: str | None = None
-    x: str | None = None
+    x: str = "sites"
     places: dict[str, float] = Field(default_factory=dict)
+    where: dict[str, float | str] = Field(default_factory=dict)
     near: Near = Near()
+    quantities: dict[str, str] = Field(default_factory=dict)
 
 
 class CollapseFit(_OnPoints):
@@ -89,34 +101,29 @@ class RecordFit(_OnPoints):
     rate: float
 
 
-class Averages(_Strict):
-    """No fit: means of the table, and means over exact histograms of 2^-S or of being one value.
+class Average(_Strict):
+    """One average under the name `quantity`: the mean of a row of the table, or one over its exact histogram.
 
-    `means` names rows of the table by quantity; `purities` and `shares` rows of the histograms. A row is an
-    observation and, where there are several, its layer.
+    `of`: "mean"; "purity", the mean of 2^-S; "share", how often the value is `value`. A row is an observation, its
+    layer and the number of sites where there are several.
     """
 
-    kind: Literal["averages"]
-    means: dict[str, "Row"] = Field(default_factory=dict)
-    purities: dict[str, "Row"] = Field(default_factory=dict)
-    shares: dict[str, "ShareRow"] = Field(default_factory=dict)
-
-
-class Row(_Strict):
-    """One coordinate of one observation."""
-
+    quantity: str
+    of: Literal["mean", "purity", "share"]
     name: str
     layer: int | None = None
     sites: int | None = None
+    value: int = 0
 
 
-class ShareRow(Row):
-    """The trajectories whose value is this one."""
+class AveragesFit(_Strict):
+    """No fit: averages by themselves."""
 
-    value: int
+    kind: Literal["averages"]
+    averages: Annotated[tuple[Average, ...], Field(min_length=1)]
 
 
-Fit = Annotated[CollapseFit | CrossingsFit | LawFit | RecordFit | Averages, Field(discriminator="kind")]
+Fit = Annotated[CollapseFit | CrossingsFit | LawFit | RecordFit | AveragesFit, Field(discriminator="kind")]
 
 
 class Published(_Strict):
@@ -133,3 +140,8 @@ class Published(_Strict):
     seconds: Annotated[float, Field(gt=0)]
     quick: Annotated[int, Field(ge=64)]
     remark: str = ""
+
+    @property
+    def headline(self) -> str:
+        """The first known value, for a list."""
+        return f"{self.known[0].quantity} = {self.known[0].text}"
