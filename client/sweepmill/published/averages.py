@@ -7,6 +7,7 @@ import numpy as np
 
 from sweepmill.analysis import Estimate
 from sweepmill.analysis.arrays import Vector
+from sweepmill.counts import VARIED_FROM
 from sweepmill.published.models import Average
 from sweepmill.table import Table
 
@@ -25,10 +26,16 @@ def average(one: Average, table: Table, histograms: Table) -> Estimate:
 
 
 def weighted(results: Vector, occurrences: Vector) -> Estimate:
-    """Mean of results [H] that occurred so often, and its standard error; nan for fewer than two trajectories."""
+    """Mean of results [H] that occurred so often, and its standard error; nan for fewer than two trajectories.
+
+    A sample that hardly varies has a bound for an error, as in a table: that with one more trajectory that differs by
+    the largest result.
+    """
     count = float(occurrences.sum())
     mean = float(results @ occurrences) / count
     squares = float((results - mean) ** 2 @ occurrences)
+    if count - occurrences.max() < VARIED_FROM:
+        squares += max(float(np.abs(results).max()), 1 / count) ** 2
     return Estimate(mean, math.sqrt(squares / (count - 1) / count) if count > 1 else math.nan)
 
 
