@@ -63,7 +63,7 @@ def fitted(fit: Fit, folds: Folds, histograms: Table) -> Outcome:
 def _on_points(fit: OnPoints, points: Points) -> Outcome:
     match fit:
         case CollapseFit():
-            form = Scaling(Polynomial(fit.degree), corrected=fit.omega is not None, omega=fit.omega or 1.0)
+            form = Scaling(Polynomial(fit.degree), corrected=fit.corrected, omega=fit.omega)
             collapse = fit_collapse(points, form)
             return Outcome(str(collapse), collapse.estimates, lambda path: collapse.plot(path, fit.x, fit.name or ""))
         case CrossingsFit():

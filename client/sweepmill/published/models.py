@@ -64,10 +64,11 @@ class _OnPoints(_Strict):
 
 
 class CollapseFit(_OnPoints):
-    """`fit_collapse` with a polynomial, with a correction L^-omega if one is named."""
+    """`fit_collapse` with a polynomial; `corrected`: with a correction L^-omega, omega free unless it is given."""
 
     kind: Literal["collapse"]
     degree: int = 3
+    corrected: bool = False
     omega: float | None = None
 
 

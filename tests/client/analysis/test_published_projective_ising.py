@@ -66,5 +66,7 @@ def test_crossings_extrapolate_to_one_half() -> None:
 @pytest.mark.parametrize(("row", "fold"), [(0, 5), (21, 63)])
 def test_a_fold_of_the_table_sampled_again_gives_its_sum(row: int, fold: int) -> None:
     table = stored(EXAMPLE)
-    assert table.specification.key == table.sweep
-    assert table.recomputed(table.rows[row], fold) == table.rows[row]["fold_sums"][fold]
+    assert table.specification.key == table.folds.metadata["sweep"]
+    numerator, denominator = table.fold_again(row, fold)
+    assert numerator == table.folds.values("numerators")[row][fold]
+    assert denominator == table.folds.values("denominators")[row][fold]
