@@ -27,6 +27,7 @@ def rounds(
     with Client(url) as client:
         sweep = client.sweep(key)
         found = sweep.rounds()
+        axes = sweep.status().axes
         names = {one.ordinal: one.parameters for one in sweep.ensembles()} if places else {}
     if not found:
         print("no round was judged yet, or the sweep has no goal")
@@ -34,10 +35,10 @@ def rounds(
     print(aligned(HEADERS, [_row(one) for one in found]))
     for one in found if places else ():
         rows = [
-            [", ".join(f"{n} = {v}" for n, v in names.get(place.ordinal, {}).items()), place.judged, place.target]
+            [*(names.get(place.ordinal, {}).get(axis) for axis in axes), place.judged, place.target]
             for place in one.places
         ]
-        print(f"\nround {one.number}\n" + aligned(("ensemble", "trajectories", "next round"), rows))
+        print(f"\nround {one.number}\n" + aligned((*axes, "trajectories", "next round"), rows))
 
 
 def _row(one: Round) -> list[str]:

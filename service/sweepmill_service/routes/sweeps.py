@@ -18,7 +18,7 @@ from sweepmill.messages import (
 )
 from sweepmill.revisions import all_revisions
 from sweepmill_service import examples
-from sweepmill_service.estimate import estimate, sampled
+from sweepmill_service.estimate import estimate, first_round, sampled_points
 from sweepmill_service.finish import share_of
 from sweepmill_service.openapi import described, problems
 from sweepmill_service.problems import Refusal
@@ -46,7 +46,7 @@ def submit_sweep(
     submission = store.submit(sweep, owner)
     if not submission.created:
         response.status_code = HTTPStatus.OK
-    there = sampled(sweep, store)
+    there = sampled_points(first_round(sweep), sweep.observations, store)
     return Submitted(
         key=submission.key,
         created=submission.created,
