@@ -1,11 +1,13 @@
 """Numbers, times and aligned columns as text, the same in the terminal, in `repr` and in a notebook."""
 
 import math
+import textwrap
 from collections.abc import Sequence
 from html import escape
 from typing import Any
 
 SHORT_KEY = 12
+WIDTH = 110
 
 
 def short(key: str) -> str:
@@ -40,6 +42,11 @@ def with_error(value: float, error: float) -> str:
     if places > 0:
         return f"{value:.{places}f}({digits})"
     return f"{round(value * 10.0**places) * 10**-places}({digits * 10**-places})"
+
+
+def wrapped(text: str, hang: str = "") -> str:
+    """Running text in lines of a readable length, `hang` before all but the first."""
+    return textwrap.fill(text, WIDTH, subsequent_indent=hang, break_on_hyphens=False, break_long_words=False)
 
 
 def cell(value: Any) -> str:

@@ -1,6 +1,7 @@
 """`sweepmill folds` and `sweepmill fit` as a user meets them."""
 
 import json
+import re
 import sys
 from collections.abc import Callable
 from pathlib import Path
@@ -139,6 +140,22 @@ def test_growth_is_fitted_along_the_layers_of_one_ensemble(run: Run, key: str, s
     assert "one curve for each size: choose one of 4, 8, 16 with --sizes" in several.err
 
 
+def test_a_law_that_holds_from_some_length_on_is_found(run: Run, tmp_path: Path) -> None:
+    """An invented entropy that grows as a logarithm beyond 5 sites, on a ring of 20 sites."""
+    places = [Coordinate(None, position, 1000) for position in range(1, 21)]
+    length = np.arange(1, 21)
+    curve = 1.5 * np.log(np.maximum(length, 5)) - 3 * np.maximum(5 - length, 0)
+    noise = 0.1 * np.random.default_rng(12).standard_normal((640, 20))
+    folds = folds_of(
+        [Made({}, places, np.rint(1000 * (curve + noise)).astype(np.int64))], sites=20, boundary="periodic"
+    )
+    done = run("fit", "law", written(folds, tmp_path / "f.json"))
+    assert done.code == 0
+    assert "(10 points, 1 <= x <= 10)" in " ".join(done.out.split())
+    assert "note: the chain is a ring: --ring 20 takes chords for lengths" in done.out
+    assert re.search(r"With --window [56] 10:\nThe data", done.out)
+
+
 def test_the_result_and_its_figure_are_written_and_named(run: Run, tmp_path: Path) -> None:
     path, result, figure = written(made(scaling), tmp_path / "f.json"), tmp_path / "r.json", tmp_path / "r.png"
     done = run("fit", "collapse", path, "--json", result, "--figure", figure)
@@ -164,7 +181,8 @@ def test_a_flagged_fit_says_so_names_choices_that_fit_and_is_a_result(run: Run, 
 @pytest.mark.parametrize("what", ["crossings", "model-free"])
 def test_other_ways_to_the_critical_point_have_their_tables_and_figures(run: Run, tmp_path: Path, what: str) -> None:
     folds = made(lambda sites, p: (p - 0.2) * sites ** (1 / 1.3))
-    done = run("fit", what, written(folds, tmp_path / "f.json"), "--figure", tmp_path / "f.pdf")
+    path = written(folds, tmp_path / "f.json")
+    done = run("fit", what, path, "--sizes", "16,32", "--figure", tmp_path / "f.pdf")
     assert done.code == 0
     assert "p_c" in done.out
     assert (tmp_path / "f.pdf").read_bytes().startswith(b"%PDF")

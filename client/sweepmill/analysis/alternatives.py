@@ -1,16 +1,19 @@
 """What else describes data that a scaling form does not: a richer form, fewer sizes, a narrower window."""
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
 
 import numpy as np
 
 from sweepmill.analysis.collapse import Collapse, fit_collapse
+from sweepmill.analysis.law_fit import FittedLaw
+from sweepmill.analysis.laws import Law
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.shapes import Polynomial
 
 _RICHER = 5  # degree of the richer polynomial
+_STARTS, _FEWEST = 8, 5  # windows tried for laws, points in the last of them
 
 
 def alternatives(points: Points, form: Scaling) -> tuple[list[str], list[list[str]]] | tuple[()]:
@@ -22,6 +25,18 @@ def alternatives(points: Points, form: Scaling) -> tuple[list[str], list[list[st
     names = [name for name in ("p_c", "nu", "zeta") if name in good[0][1].estimates]
     rows = [[options, *(str(one[name]) for name in names), _goodness(one)] for options, one in good]
     return ["options", *names, "chi2/dof"], rows
+
+
+def later_start(points: Points, laws: Sequence[Law], ring: float | None) -> float | None:
+    """The smallest x, of a few tried, from which on some law describes the data; None where there is none."""
+    starts: list[float] = sorted(set(points.x.tolist()))[1:]
+    for start in starts[:: max(1, len(starts) // _STARTS)]:
+        part = points.taken(points.x >= start)
+        if len(part) < _FEWEST:
+            return None
+        if any(not FittedLaw.of(part, law, ring).faults() for law in laws if law.parameters < len(part)):
+            return start
+    return None
 
 
 def _goodness(fit: Collapse) -> str:

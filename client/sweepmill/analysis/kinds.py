@@ -1,30 +1,31 @@
 """The fits that `sweepmill fit` knows by name: what each takes for its abscissa, and what it has to say."""
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Protocol
 
 import numpy as np
 
-from sweepmill.analysis.alternatives import alternatives
+from sweepmill.analysis.alternatives import alternatives, later_start
 from sweepmill.analysis.choosing import Choice, Chosen, chosen
 from sweepmill.analysis.collapse import fit_collapse
-from sweepmill.analysis.compare import Candidate, Comparison, fit_growth, fit_laws
+from sweepmill.analysis.compare import Candidate, fit_laws
 from sweepmill.analysis.crossings import fit_crossings
 from sweepmill.analysis.drift import drift_text, first_row
 from sweepmill.analysis.estimate import with_error
 from sweepmill.analysis.free_energy import fit_central_charge
 from sweepmill.analysis.goodness import ACCEPTABLE
+from sweepmill.analysis.laws import DECAY, ENTANGLEMENT, GROWTH, TIMES, Law
 from sweepmill.analysis.model_free import fit_model_free
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.purities import Purities, chosen_purities
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.selecting import NotOneCurve
 from sweepmill.analysis.shapes import Polynomial
-from sweepmill.analysis.times import fit_decay, fit_times, purification_times
+from sweepmill.analysis.times import purification_times
 from sweepmill.table import Table
-from sweepmill.text import aligned
+from sweepmill.text import aligned, wrapped
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -98,20 +99,17 @@ def _model_free(data: Chosen, options: Options) -> Report:
 
 
 def _law(data: Chosen, options: Options) -> Report:
-    points, notes = _few(_one_curve(data, "position"), data.x)
-    if options.ring is not None:
-        points = points.taken(points.x <= options.ring / 2)  # beyond, the same intervals come again
-    return _compared(fit_laws(points, ring=options.ring), notes)
+    points, notes = _half_ring(_one_curve(data, "position"), data, options.ring)
+    return _compared(points, data.x, ENTANGLEMENT, options.ring, notes)
 
 
 def _growth(data: Chosen, _: Options) -> Report:
-    points, notes = _few(_one_curve(data, "layer"), data.x)
-    return _compared(fit_growth(points), notes)
+    return _compared(_one_curve(data, "layer"), data.x, GROWTH)
 
 
 def _decay(data: Chosen, options: Options) -> Report:
-    points, notes = _few(_one_curve(data, "position"), data.x)
-    return _compared(fit_decay(points, options.ring), notes)
+    points, notes = _half_ring(_one_curve(data, "position"), data, options.ring)
+    return _compared(points, data.x, DECAY, options.ring, notes)
 
 
 def _times(data: Chosen, options: Options) -> Report:
@@ -119,7 +117,7 @@ def _times(data: Chosen, options: Options) -> Report:
     rows = [[f"{size:g}", with_error(*one)] for size, *one in zip(times.sizes, times.mean, times.error, strict=True)]
     left = sorted(set(data.points.distinct_sizes()) - set(times.distinct_sizes()))
     notes = tuple(f"L = {size:g} gives no time: its curve does not cross the threshold" for size in left)
-    report = _compared(fit_times(times), notes)
+    report = _compared(times, "L", TIMES, None, notes)
     head = ["L", f"layers until {options.threshold:g} bits are left"]
     return Report(report.result, (aligned(head, rows), *report.tables), report.notes)
 
@@ -144,19 +142,30 @@ KINDS: Mapping[str, Kind] = {
         Kind("law", _law, ("position", "sites")),
         Kind("growth", _growth, ("layer",)),
         Kind("times", _times, ("layer",)),
-        Kind("decay", _decay, ("position",)),
+        Kind("decay", _decay, ("position", "sites")),
         Kind("central-charge", _central_charge, ("sites",)),
         Kind("purity", _purity, ("position",), chosen_purities),
     )
 }
 
 
-def _compared(result: Comparison, notes: tuple[str, ...]) -> Report:
+def _compared(
+    points: Points, x: str, laws: Sequence[Law], ring: float | None = None, notes: tuple[str, ...] = ()
+) -> Report:
+    few, thinned = _few(points, x)
+    result = fit_laws(few, laws, ring)
     best = result.shown
     rows = [[one.name, one.fitted.law.formula, _parameters(one), *_fit(one)] for one in result.candidates]
-    laws = aligned(["law", "formula", "parameters", "chi2/dof", "p", "weight"], rows)
+    table = aligned(["law", "formula", "parameters", "chi2/dof", "p", "weight"], rows)
     scan = f"{best.name} in windows:\n{drift_text(first_row(best.fitted, ACCEPTABLE), best.drift)}"
-    return Report(result, (laws, scan), (*result.notes, *notes))
+    start = later_start(few, laws, ring) if all(one.faults for one in result.candidates) else None
+    more = () if start is None else (_from(start, few, laws, ring),)
+    return Report(result, (table, scan, *more), (*result.notes, *thinned, *notes))
+
+
+def _from(start: float, points: Points, laws: Sequence[Law], ring: float | None) -> str:
+    later = fit_laws(points.taken(points.x >= start), laws, ring)
+    return f"With --window {start:g} {points.x.max():g}:\n{wrapped(str(later))}"
 
 
 def _parameters(candidate: Candidate) -> str:
@@ -177,6 +186,15 @@ def _one_curve(data: Chosen, within: str) -> Points:
         shown = ", ".join(f"{size:g}" for size in sizes)
         raise NotOneCurve(f"there is one curve for each size: choose one of {shown} with --sizes")
     return data.points
+
+
+def _half_ring(points: Points, data: Chosen, ring: float | None) -> tuple[Points, tuple[str, ...]]:
+    """Positions up to half a ring, beyond which the same intervals come again, with a note where they are."""
+    size = ring or float(points.sizes[0])
+    if data.x != "position" or not (ring or data.table.constants.get("boundary") == "periodic"):
+        return points, ()
+    advice = () if ring else (f"the chain is a ring: --ring {size:g} takes chords for lengths",)
+    return points.taken(points.x <= size / 2), advice
 
 
 def _few(points: Points, x: str) -> tuple[Points, tuple[str, ...]]:

@@ -15,7 +15,7 @@ with needing("plot()", "analysis"):
     from matplotlib.axes import Axes
     from matplotlib.colors import LinearSegmentedColormap, to_hex
     from matplotlib.figure import Figure
-    from matplotlib.ticker import ScalarFormatter
+    from matplotlib.ticker import FuncFormatter
 
 _INKS = ("#c8963e", "#5f8a5b", "#3d5a80", "#7a4069")  # ochre to plum, from small sizes to large
 GRAY = "#8a8a8a"
@@ -59,7 +59,7 @@ def dots(axes: Axes, x: Vector, y: Vector, error: Vector, color: str, index: int
 def doublings(axes: Axes) -> None:
     """x in powers of two, written as plain numbers: sizes and lengths are read that way."""
     axes.set_xscale("log", base=2)
-    axes.xaxis.set_major_formatter(ScalarFormatter())
+    axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
 
 
 def residual_panel(axes: Axes, x_label: str) -> None:

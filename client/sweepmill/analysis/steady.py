@@ -49,10 +49,15 @@ class Quarter:
         """What changes are measured by: the larger of the two means."""
         return max(abs(self.third), abs(self.fourth)) or 1.0
 
+    @property
+    def changed(self) -> str:
+        """The change with its error; an error of rounding only is left out."""
+        return with_error(self.change, self.error) if self.error > 2 * math.ulp(1.0) else f"{self.change:g}"
+
     def __str__(self) -> str:
         return (
             f"{self.label or f'L = {self.size:g}'}, {self.layers:g} layers: {self.verdict} (from the third to the "
-            f"fourth quarter the mean changed by {with_error(self.change, self.error)}, "
+            f"fourth quarter the mean changed by {self.changed}, "
             f"{100 * self.change / self.scale:+.2g} %)"
         )
 
@@ -94,10 +99,7 @@ class Steadiness:
     def text(self) -> str:
         """All rows, aligned."""
         head = ["ensemble", "L", "layers", "third", "fourth", "change", "verdict"]
-        rows = [
-            [r.label or short(r.key), r.size, r.layers, r.third, r.fourth, with_error(r.change, r.error), r.verdict]
-            for r in self.rows
-        ]
+        rows = [[r.label or short(r.key), r.size, r.layers, r.third, r.fourth, r.changed, r.verdict] for r in self.rows]
         return aligned(head, rows)
 
     def plot(self, path: str | Path | None = None, x_label: str = "layer", y_label: str = "y") -> "Figure":
@@ -121,8 +123,9 @@ def steady_yet(points: Points, tolerance: float = TOLERANCE) -> Steadiness:
 
     "still changing": the difference of the quarters is beyond noise (all ensembles together raise that alarm falsely
     with probability 0.01). "steady": it is not, and a change by more than the share `tolerance` of the mean is
-    excluded at two standard errors. Errors by jackknife over the folds, for layers of one trajectory are correlated;
-    without folds a bound is used. Raises ValueError for a series without layers in both quarters.
+    excluded at two standard errors, or all readings are 0. Errors by jackknife over the folds, for layers of one
+    trajectory are correlated; without folds a bound is used. Raises ValueError for a series without layers in both
+    quarters.
     """
     return steady_series(tuple(_series(points)), tolerance)
 
@@ -155,7 +158,7 @@ def _judge(series: Points, limit: float, tolerance: float, label: str) -> Quarte
     verdict: Verdict = "steady"
     if abs(change) > limit * error:
         verdict = "still changing"
-    elif abs(change) + 2 * error > tolerance * max(abs(before), abs(after)):
+    elif abs(change) + 2 * error > tolerance * max(abs(before), abs(after)) and (before, after) != (0, 0):
         verdict = "too noisy to tell"
     key, bound = series.keys[0] if series.keys else "", series.replicas is None
     return Quarter(key, float(series.sizes[0]), last, before, after, change, error, bound, verdict, label)

@@ -70,6 +70,8 @@ def settling_depths(points: Points, within: float = 0.05) -> Points:
 
     def time_of(x: Vector, mean: Vector) -> float:
         final = float(mean[x > 0.75 * x[-1]].mean())
+        if final == 0:
+            return math.nan  # no share of nothing
         off = np.abs(mean / final - 1) - within
         outside = np.flatnonzero(off > 0)
         if len(outside) == 0 or x[outside[-1]] > 0.5 * x[-1]:

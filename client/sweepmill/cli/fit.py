@@ -1,6 +1,5 @@
 """sweepmill fit"""
 
-import textwrap
 from enum import StrEnum
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -11,12 +10,11 @@ from sweepmill.cli.options import Url
 from sweepmill.cli.source import FIGURES, Source, figure_path, headline, read_histograms, read_source
 from sweepmill.errors import SweepmillError
 from sweepmill.table import Table
+from sweepmill.text import wrapped
 
 if TYPE_CHECKING:
     from sweepmill.analysis.choosing import Choice, Chosen
     from sweepmill.analysis.kinds import Kind, Options, Report
-
-WIDTH = 110
 
 
 class What(StrEnum):
@@ -141,12 +139,12 @@ def _value(text: str) -> int | float | str:
 
 def _print(head: str, data: "Chosen", report: "Report") -> None:
     print(f"{data.of} against {data.x}: {head}")
-    for block in (textwrap.fill(str(report.result), WIDTH, break_on_hyphens=False), *report.tables):
+    for block in (wrapped(str(report.result)), *report.tables):
         print(f"\n{block}")
     if report.notes:
         print()
     for note in report.notes:
-        print(textwrap.fill(f"note: {note}", WIDTH, subsequent_indent="      ", break_on_hyphens=False))
+        print(wrapped(f"note: {note}", "      "))
 
 
 def _write(data: "Chosen", report: "Report", json: Path | None, figure: Path | None) -> None:

@@ -2,7 +2,6 @@
 
 import json as encoding
 import sys
-import textwrap
 from pathlib import Path
 from typing import Annotated
 
@@ -15,8 +14,9 @@ from sweepmill.errors import SweepmillError
 from sweepmill.remote import RemoteSweep
 from sweepmill.sweep import Sweep
 from sweepmill.table import Table
+from sweepmill.text import wrapped
 
-WIDTH = 110
+MOST = 100  # times the trajectories: more is beyond reach
 NO_SERIES = "no observation was read along the layers, so nothing tells whether the circuits were deep enough"
 
 
@@ -88,11 +88,13 @@ def _judge(source: str, table: Table, of: str | None, tolerance: float, json: Pa
     except ValueError as error:
         raise SweepmillError(str(error)) from error
     print(f"{headline(source, table)}\n")
-    print(textwrap.fill(str(result), WIDTH, break_on_hyphens=False))
+    print(wrapped(str(result)))
     print(f"\n{result.text()}")
     if (factor := result.steadiness.more_needed()) > 1:
-        share = f"a change by {100 * tolerance:g} % of the mean"
-        print(f"\nnote: some {factor:.2g} times the trajectories would show or exclude {share} everywhere")
+        many = (
+            f"some {factor:.2g} times the trajectories" if factor <= MOST else "no number of trajectories within reach"
+        )
+        print(f"\nnote: {many} would show or exclude a change by {100 * tolerance:g} % of the mean everywhere")
     if json is not None:
         json.write_text(result.to_json() + "\n", encoding="utf-8")
         print(f"\n{json}")

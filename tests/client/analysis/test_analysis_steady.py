@@ -75,3 +75,10 @@ def test_every_ensemble_has_a_row_and_the_worst_rules() -> None:
 def test_a_series_without_late_layers_is_refused() -> None:
     with pytest.raises(ValueError, match="quarter"):
         steady_yet(Points.of(16, [1, 2, 100], [1.0, 1.0, 1.0], 0.1))
+
+
+def test_what_has_vanished_is_steady() -> None:
+    nothing = Points.of(16, LAYERS, np.zeros(40), 1e-3, np.zeros((64, 40)), ["e" * 64] * 40)
+    result = steady_yet(nothing)
+    assert result.verdict == "steady"
+    assert result.rows[0].changed == "0"
