@@ -12,6 +12,8 @@ from sweepmill.experiment.sideways import Sideways, sideways_circuit
 from sweepmill.experiment.source import Source
 
 ROTATED = "rotated-clifford"
+OTHERS = (ROTATED, "hybrid-clifford-square")
+"""Families that are no monitored chain."""
 
 
 class Entropy(NamedTuple):
@@ -78,7 +80,7 @@ def beside(source: Source, records: Sequence[Record]) -> Beside | None:
     """
     entropies = half_entropies(source)
     rotated = max(_of(source.ensembles.values(), ROTATED), key=lambda one: one.sites, default=None)
-    measured = [one for one in records if one.measurements and source.ensembles[one.key].family != ROTATED]
+    measured = [one for one in records if one.measurements and source.ensembles[one.key].family not in OTHERS]
     if rotated is not None:
         circuit = Sideways(rotated.layers, rotated.sites - 1, 0, rotated.sites // 2)
         entropy = entropies.get(rotated.key)

@@ -17,10 +17,10 @@ from sweepmill.observation import Observation
 from sweepmill.sweep import Sweep
 
 TRAJECTORIES = 2000
-DEPTHS = 12
+DEPTHS = (12, 8, 6)
+"""Numbers of depths to try, from most to least, until their histograms fit."""
 FITS = 1_048_576
 """Bytes that a total of one ensemble and observation may have where nobody set another limit."""
-_SERIES: dict[str, Any] = {"log_spaced": DEPTHS, "single_layers": True}
 
 
 def companion(ensembles: Iterable[Ensemble]) -> dict[str, Any]:
@@ -54,14 +54,14 @@ def _observed(ensembles: Sequence[Ensemble]) -> list[dict[str, Any]]:
 
 
 def _records(ensembles: Sequence[Ensemble]) -> list[dict[str, Any]]:
-    series = {"quantity": "record-bits", "at": _SERIES}
+    all_series = [{"quantity": "record-bits", "at": {"log_spaced": n, "single_layers": True}} for n in DEPTHS]
     end = {"quantity": "record-bits", "name": "at-the-end", "at": "end", "histogram": True}
     if min(one.layers for one in ensembles) < 2:
         return [{**end, "name": "record-bits"}]
-    whole = {**series, "histogram": True}
-    if _fits(whole, ensembles):
-        return [whole]
-    return [series, end] if _fits(end, ensembles) else [series]
+    for series in all_series:
+        if _fits(whole := {**series, "histogram": True}, ensembles):
+            return [whole]
+    return [all_series[0], end] if _fits(end, ensembles) else [all_series[0]]
 
 
 def _fits(observed: Mapping[str, Any], ensembles: Sequence[Ensemble]) -> bool:

@@ -24,7 +24,8 @@ sup { font-size: .72em; line-height: 0; }
 .matrix td, .plain td { white-space: nowrap; }
 .matrix td strong { font-size: 14px; margin-right: 6px; }
 .matrix thead th:first-child, .plain thead th:first-child { width: 6.5em; }
-.roads td { width: 36%; }
+.roads td { white-space: nowrap; }
+.roads td:nth-child(3) { white-space: normal; width: 30%; }
 .roads td:nth-child(3) { background: var(--tint); padding-left: 10px; }
 .under { margin: 6px 0 0; color: var(--soft); font-size: 11px; }
 svg { width: 100%; height: auto; display: block; }

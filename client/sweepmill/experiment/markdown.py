@@ -4,7 +4,7 @@ from collections.abc import Iterable, Sequence
 
 from sweepmill.experiment.cost import Cost
 from sweepmill.experiment.record import Record
-from sweepmill.experiment.roads import caption, roads
+from sweepmill.experiment.roads import caption, roads, roads_title
 from sweepmill.experiment.selection import Selection
 from sweepmill.experiment.wording import (
     ASSUMPTIONS,
@@ -33,7 +33,7 @@ def markdown(cost: Cost) -> str:
         parts += ["## Post-selecting the first k outcomes in time", _selections(cost)]
     if cost.beside is not None:
         rows = [list(road) for road in roads(cost.beside, cost.options.shot_time)]
-        parts += ["## Monitored, or unitary and read sideways", _table(["", "monitored", "sideways"], rows)]
+        parts += [f"## {roads_title(cost.beside)}", _table(["", "monitored", "sideways"], rows)]
         parts += [caption(cost.beside)]
     parts += ["## What is assumed", "\n".join(f"- {one}" for one in ASSUMPTIONS), f"**{CAUTION}**"]
     parts += ["## What the numbers rest on", _table(["ensemble", "circuit", "trajectories"], provenance(cost))]

@@ -7,7 +7,7 @@ from sweepmill.experiment.figure import depth_figure
 from sweepmill.experiment.look import STYLE
 from sweepmill.experiment.markup import powers, table
 from sweepmill.experiment.matrix import matrix, selections, sizes_of
-from sweepmill.experiment.roads import caption, roads
+from sweepmill.experiment.roads import caption, roads, roads_title
 from sweepmill.experiment.wording import (
     ASSUMPTIONS,
     CAUTION,
@@ -24,6 +24,8 @@ from sweepmill.text import short
 
 MOST_ABREAST = 3
 """Sizes that fit on half of the page."""
+FEW_ROWS = 4
+"""Circuits of one size up to which the left half of the page is the shorter one."""
 
 
 def page(cost: Cost) -> str:
@@ -64,9 +66,9 @@ def _body(cost: Cost) -> list[str]:
     """The tables in two columns; one with many sizes takes the whole width."""
     first = [_section("One record again", matrix(cost), _under_matrix(cost))] if cost.final else []
     left, right = _left(cost), _right(cost)
-    if len(sizes_of(cost)) > MOST_ABREAST:
-        return [*first, _columns(left, right)]
-    return [_columns([*first, *left], right)]
+    wide = len(sizes_of(cost)) > MOST_ABREAST
+    (left if wide or len(largest(cost.final)) <= FEW_ROWS else right).append(_assumed())
+    return [*first, _columns(left, right)] if wide else [_columns([*first, *left], right)]
 
 
 def _left(cost: Cost) -> list[str]:
@@ -79,8 +81,8 @@ def _right(cost: Cost) -> list[str]:
     figure = depth_figure(cost)
     parts = [_section("Repetitions against depth", figure, _UNDER_FIGURE)] if figure else []
     if cost.beside is not None:
-        parts.append(_section("Monitored, or unitary and read sideways", _roads(cost), caption(cost.beside)))
-    return [*parts, _assumed()]
+        parts.append(_section(roads_title(cost.beside), _roads(cost), caption(cost.beside)))
+    return parts
 
 
 def _columns(left: list[str], right: list[str]) -> str:
@@ -117,6 +119,8 @@ def _roads(cost: Cost) -> str:
         [f"<b>{escape(one.what)}</b>", powers(one.monitored), powers(one.sideways)]
         for one in roads(cost.beside, cost.options.shot_time)
     ]
+    if cost.beside.monitored is None:
+        return table(["", "sideways"], [[what, right] for what, _, right in rows], "plain")
     return table(["", "monitored", "sideways"], rows, "roads")
 
 

@@ -32,7 +32,7 @@ class Record:
     `again`: until a given record is met again, typically: log2 of 2^r averaged over trajectories, which is E[r] itself.
     `mean_of_power`: log2 E[2^r] and `from_few`, the share that a hundredth of the trajectories carries; None without a
     histogram. `any_twice`: until any record of a fixed circuit occurs twice. `measurements` made on average, and the
-    `random` share of them (None where the circuit does not tell).
+    `random` share of them (None where the circuit does not tell). `sites` is None where only files were given.
     """
 
     key: str
@@ -46,12 +46,14 @@ class Record:
     from_few: float | None
     measurements: float | None
     random: Estimate | None
+    sites: int | None = None
 
     def to_dict(self) -> dict[str, Any]:
         """Plain values."""
         return {
             "ensemble": self.key,
             **self.labels,
+            "sites": self.sites if self.sites is not None else self.labels.get("sites"),
             "layer": self.layer,
             "trajectories": self.trajectories,
             "random_outcomes": self.again.to_dict(),
@@ -75,7 +77,8 @@ def record_of(spot: Spot) -> Record:
     random = Estimate(spot.bits.value / measured, spot.bits.statistical / measured) if measured else None
     any_twice = _any_twice(spot)
     place = spot.key, spot.labels, spot.layer, spot.trajectories
-    return Record(*place, spot.bits, _band(spot), any_twice, power, few, measured, random)
+    sites = None if spot.ensemble is None else spot.ensemble.sites
+    return Record(*place, spot.bits, _band(spot), any_twice, power, few, measured, random, sites)
 
 
 def _band(spot: Spot) -> Band:

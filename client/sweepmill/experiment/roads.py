@@ -23,16 +23,31 @@ def roads(both: Beside, shot_time: float) -> list[Road]:
     return [Road(what, left[what], right[what]) for what in right]
 
 
+def roads_title(both: Beside) -> str:
+    """What the comparison is called."""
+    return "Monitored, or unitary and read sideways" if both.monitored else "The circuit that the laboratory would run"
+
+
 def caption(both: Beside) -> str:
     """Which circuits stand side by side."""
     chosen = "" if both.monitored is None else f"Monitored: {axes_text(both.monitored.record.labels)}. "
     circuit = both.sideways
-    exact = " Its entropy is at least −log2 of the exact mean purity." if both.entropy is None else ""
+    unlike = "" if alike(both) else "No monitored circuit of this size here is entangled alike. "
+    exact = " Their entropy is at least −log2 of the exact mean purity." if both.entropy is None else ""
     return (
-        f"{chosen}Sideways: uniform two-qubit Clifford gates on {circuit.chain} qubits, of whose edge the time slices "
-        f"{circuit.held.start} to {circuit.held.stop - 1} are held; what enters elsewhere is a random basis state, and "
-        f"the qubits left at the end are traced or, for a pure state, projected and post-selected.{exact}"
+        f"{chosen}{unlike}Sideways: uniform two-qubit Clifford gates on {circuit.chain} qubits, of whose edge the time "
+        f"slices {circuit.held.start} to {circuit.held.stop - 1} are held; what enters elsewhere is a random basis "
+        f"state, and the qubits left at the end are traced or, for a pure state, projected and post-selected.{exact}"
     )
+
+
+def alike(both: Beside) -> bool:
+    """Whether the two regions are entangled by the same number of bits, within a fifth, as far as known."""
+    if both.monitored is None or both.monitored.entropy is None:
+        return True
+    there = both.monitored.entropy.bits.value
+    here = both.entropy.bits.value if both.entropy is not None else -(both.sideways.log2_purity or -there)
+    return abs(here - there) <= 0.2 * here
 
 
 def _monitored(one: Monitored | None, shot_time: float) -> dict[str, str]:

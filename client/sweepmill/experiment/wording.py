@@ -42,8 +42,8 @@ def axes_text(labels: Mapping[str, Any]) -> str:
 
 
 def size_of(record: Record) -> Any:
-    """The value on the axis of sizes, if there is one."""
-    return record.labels.get("sites", record.labels.get("width"))
+    """Number of sites, as far as known."""
+    return record.labels.get("sites", record.sites)
 
 
 def rest_of(record: Record) -> dict[str, Any]:
