@@ -40,15 +40,15 @@ def filled(shape: Vector, cost: Vector, have: Vector, most: Vector, budget: floa
     return trajectories
 
 
-def variance(information: Informations, direction: Vector, trajectories: Vector) -> float:
-    """Variance of the quantity `direction` [m] with so many trajectories [n] at every place."""
-    return float(direction @ _solved(_total(trajectories, information), direction))
+def variance(information: Informations, wanted: int, trajectories: Vector) -> float:
+    """Variance of the parameter with number `wanted` with so many trajectories [n] at every place."""
+    return float(_solved(_total(trajectories, information), wanted)[wanted])
 
 
 def allocated(
-    information: Informations, direction: Vector, cost: Vector, have: Vector, most: Vector, budget: float
+    information: Informations, wanted: int, cost: Vector, have: Vector, most: Vector, budget: float
 ) -> Vector:
-    """Trajectories [n], not whole, that make the variance least after `budget` more core-seconds.
+    """Trajectories [n], not whole, that make the variance of parameter `wanted` least after `budget` more core-seconds.
 
     The variance is the least of sum_i |w_i|^2/T_i over the weights w of linear estimators, convex in w and T together;
     minimizing over one and the other in turn goes down to the minimum.
@@ -57,20 +57,20 @@ def allocated(
     if budget <= 0 or len(room) == 0:
         return have
     fixed = _total(have, information) - _total(have[room], information[room])
-    grown = _grown(information[room], fixed, direction, (cost[room], have[room], most[room]), budget)
+    grown = _grown(information[room], fixed, wanted, (cost[room], have[room], most[room]), budget)
     trajectories = have.copy()
     trajectories[room] = grown
     return trajectories
 
 
 def _grown(
-    information: Informations, fixed: Matrix, direction: Vector, columns: tuple[Vector, Vector, Vector], budget: float
+    information: Informations, fixed: Matrix, wanted: int, columns: tuple[Vector, Vector, Vector], budget: float
 ) -> Vector:
     """As `allocated` where all places have room; `fixed` [m, m] is the information of the others."""
     cost, have, most = columns
     trajectories = np.minimum(have + budget / len(have) / cost, most)
     for _ in range(_STEPS):
-        solved = _solved(fixed + _total(trajectories, information), direction)
+        solved = _solved(fixed + _total(trajectories, information), wanted)
         worth = np.maximum(information @ solved @ solved, 0.0)
         trajectories = filled(trajectories * np.sqrt(worth / cost), cost, have, most, budget)
     return trajectories
@@ -80,7 +80,8 @@ def _total(trajectories: Vector, information: Informations) -> Matrix:
     return np.asarray(np.tensordot(trajectories, information, 1))
 
 
-def _solved(matrix: Matrix, direction: Vector) -> Vector:
+def _solved(matrix: Matrix, wanted: int) -> Vector:
+    """Row `wanted` of the inverse."""
     scale = np.sqrt(np.maximum(np.diag(matrix), 1e-300))
     scaled = matrix / np.outer(scale, scale) + 1e-13 * np.eye(len(matrix))  # singular where the places are too few
-    return np.asarray(np.linalg.solve(scaled, direction / scale) / scale)
+    return np.asarray(np.linalg.solve(scaled, np.eye(len(matrix))[wanted] / scale) / scale)

@@ -6,11 +6,12 @@ from dataclasses import replace
 
 import numpy as np
 
-from sweepmill.analysis.arrays import Matrix, Vector
+from sweepmill.analysis.arrays import Mask, Vector
 from sweepmill.analysis.collapse import Collapse, fit_collapse
+from sweepmill.analysis.design.allocation import Informations
 from sweepmill.analysis.design.form_test import form_places
 from sweepmill.analysis.design.linear import gradients
-from sweepmill.analysis.design.noise import smooth_variance
+from sweepmill.analysis.design.noise import place_variance
 from sweepmill.analysis.design.ordering import Bracket, bracket
 from sweepmill.analysis.design.place import Advice, Candidates, Place
 from sweepmill.analysis.design.rounds import Plan
@@ -20,7 +21,10 @@ from sweepmill.analysis.design.window import Choice, choose
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.separable import Solution
+from sweepmill.analysis.shapes import Polynomial
 
+_RICHER = 2  # degrees: trajectories are placed as if the function could be that much richer than the one fitted
+_INNER = 0.5  # of the window
 _ROUGH = 0.25  # of the range of x: a fit with a larger error does not tell where to look
 
 
@@ -89,26 +93,34 @@ def _plan(candidates: Candidates, points: Points, choice: Choice) -> Plan:
     used = fitted.points.distinct_sizes()
     u = fitted.frame.scaled(fitted.solution.theta, candidates.x, candidates.size)
     usable = (np.abs(u) <= choice.reach * (1 + 1e-9)) & np.isin(candidates.size, used)
-    noise = _noise(candidates, points)
-    slopes = _slopes(choice, candidates)
-    information = slopes[:, :, None] * slopes[:, None, :] / noise[:, None, None]
+    noise = place_variance(candidates, points, u)
     form = form_places(candidates, u, choice.reach, np.array(used)) * np.sqrt(noise / candidates.cost)
-    direction = np.zeros(slopes.shape[1])
-    direction[0] = 1.0
-    return Plan(candidates, information, direction, usable, form)
+    information, cautious = (_information(choice, candidates, noise, richer) for richer in (0, _RICHER))
+    return Plan(candidates, information, cautious, 0, usable, usable & _inner(candidates, u, choice.reach), form)
 
 
-def _slopes(choice: Choice, candidates: Candidates) -> Matrix:
+def _inner(candidates: Candidates, u: Vector, reach: float) -> Mask:
+    """The inner half of the window, and the two places of every size that are nearest to the transition.
+
+    At the edges a polynomial is worst, and a small variance there would draw trajectories to where the form breaks.
+    """
+    inner = np.abs(u) <= _INNER * reach
+    for size in np.unique(candidates.size):
+        of = np.flatnonzero(candidates.size == size)
+        inner[of[np.argsort(np.abs(u[of]), kind="stable")[:2]]] = True
+    return inner
+
+
+def _information(choice: Choice, candidates: Candidates, noise: Vector, richer: int) -> Informations:
+    """Of one trajectory at every place, p_c first; for the form as fitted or with a polynomial of higher degree."""
     frame = choice.fitted.frame
 
     def predicted(solution: Solution) -> Vector:
         design = frame.design_at(solution.theta, candidates.x, candidates.size)
         return np.asarray(design @ solution.coefficients)
 
-    return gradients(choice.fitted.solution, predicted)
-
-
-def _noise(candidates: Candidates, points: Points) -> Vector:
-    placed = candidates.have > 0
-    measured = candidates.have[placed] * points.error**2
-    return smooth_variance(points.sizes, points.x, measured, candidates.size, candidates.x)
+    solution, shape = choice.fitted.solution, frame.form.shape
+    form = replace(frame.form, shape=Polynomial(shape.coefficients - 1 + richer))
+    design = replace(frame, form=form).design_at(solution.theta, candidates.x, candidates.size)
+    slopes = np.hstack([gradients(solution, predicted)[:, : len(solution.theta)], design])
+    return np.asarray(slopes[:, :, None] * slopes[:, None, :] / noise[:, None, None])

@@ -109,7 +109,7 @@ def _plan(points: Points, fitted: FittedLaw, candidates: Candidates, owner: Indi
     noise = _noise(points, candidates, owner)
     information = _information(fitted, candidates, kept, noise, usable)
     form = np.where(usable & (candidates.have > 0), np.sqrt(noise / candidates.cost), 0.0)
-    return Plan(candidates, information, _direction(fitted, coefficient), usable, form)
+    return Plan(candidates, information, information, _number(fitted, coefficient), usable, usable, form)
 
 
 def _information(fitted: FittedLaw, candidates: Candidates, kept: Indices, noise: Vector, usable: Mask) -> Informations:
@@ -130,13 +130,9 @@ def _predicted(fitted: FittedLaw, solution: Solution, x: Vector) -> Vector:
     return FittedLaw(fitted.points, fitted.law, fitted.ring, solution, fitted.goodness).predicted(x)
 
 
-def _direction(fitted: FittedLaw, coefficient: str) -> Vector:
+def _number(fitted: FittedLaw, coefficient: str) -> int:
+    """Which parameter of the fit the coefficient is, the exponent first; that of log2 x goes with that of ln x."""
     free, names = len(fitted.solution.theta), fitted.law.coefficients
-    direction = np.zeros(free + len(names))
     if fitted.law.exponent and coefficient == fitted.law.exponent.name:
-        direction[0] = 1.0
-    elif coefficient in names:
-        direction[free + names.index(coefficient)] = 1.0
-    else:
-        direction[free + names.index(fitted.law.logarithm or "")] = math.log(2)
-    return direction
+        return 0
+    return free + names.index(coefficient if coefficient in names else fitted.law.logarithm or "")

@@ -3,6 +3,8 @@
 import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
+from sweepmill.analysis.design.place import Candidates
+from sweepmill.analysis.points import Points
 
 _FAR = np.log(4.0)  # a measured variance this far from the curve counts as this far: bounds are not measurements
 
@@ -21,6 +23,18 @@ def smooth_variance(size: Vector, x: Vector, variance: Vector, sizes: Vector, pl
         coefficients = np.linalg.lstsq(here, np.clip(target, fit - _FAR, fit + _FAR), rcond=None)[0]
         fit = here @ coefficients
     return np.asarray(np.exp(np.clip(there @ coefficients, fit.min(), fit.max())))
+
+
+def place_variance(candidates: Candidates, points: Points, x: Vector) -> Vector:
+    """Variances of one trajectory at all candidates: as measured where that is near the curve, else by the curve.
+
+    `points` are those of the candidates with trajectories, `x` [n] any abscissa that variances go by.
+    """
+    placed = candidates.have > 0
+    measured = candidates.have[placed] * points.error**2
+    found = smooth_variance(candidates.size[placed], x[placed], measured, candidates.size, x)
+    found[placed] = np.clip(measured, found[placed] / np.exp(_FAR), found[placed] * np.exp(_FAR))
+    return found
 
 
 def _terms(size: Vector, x: Vector, sizes: Vector, places: Vector) -> Matrix:

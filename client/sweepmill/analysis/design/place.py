@@ -73,3 +73,9 @@ class Candidates:
     def spent(self) -> float:
         """Core-seconds so far."""
         return float(self.have @ self.cost)
+
+    def opened(self, trajectories: Vector) -> Vector:
+        """The same, but a new place has at least as many trajectories as the others began with, or none."""
+        opening = np.minimum(self.opening, self.most)
+        started = np.where(trajectories < opening / 2, 0.0, np.maximum(trajectories, opening))
+        return np.where(self.have > 0, trajectories, started)

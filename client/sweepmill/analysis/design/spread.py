@@ -4,7 +4,7 @@ import numpy as np
 
 from sweepmill.analysis.arrays import Vector
 from sweepmill.analysis.design.allocation import filled
-from sweepmill.analysis.design.noise import smooth_variance
+from sweepmill.analysis.design.noise import place_variance
 from sweepmill.analysis.design.ordering import Bracket
 from sweepmill.analysis.design.place import Candidates
 from sweepmill.analysis.points import Points
@@ -13,7 +13,7 @@ _VALUES = 7  # per size across the range that is left
 
 
 def spread_out(candidates: Candidates, points: Points, within: Bracket | None) -> Vector:
-    """Trajectories [n] after a round that doubles the core-seconds, evenly over the bounds or over a bracket.
+    """Trajectories [n] after a round of twice the core-seconds or with new values, over the bounds or a bracket.
 
     Every size gets some values across the range, those it has already where they are near; trajectories go by the
     square root of variance over cost, so that no size takes all.
@@ -25,13 +25,10 @@ def spread_out(candidates: Candidates, points: Points, within: Bracket | None) -
         of = np.flatnonzero(candidates.size == size)
         for value in np.linspace(low - margin, high + margin, _VALUES):
             shape[_nearest(candidates, of, float(value), (high - low + 2 * margin) / (2 * _VALUES))] = 1.0
-    placed = candidates.have > 0
-    measured = candidates.have[placed] * points.error**2
-    noise = smooth_variance(points.sizes, points.x, measured, candidates.size, candidates.x)
-    shape *= np.sqrt(noise / candidates.cost)
-    opened = filled(shape, candidates.cost, candidates.have, candidates.most, candidates.spent)
+    shape *= np.sqrt(place_variance(candidates, points, candidates.x) / candidates.cost)
+    grown = filled(shape, candidates.cost, candidates.have, candidates.most, candidates.spent)
     opening = np.minimum(candidates.opening, candidates.most)
-    return np.where((candidates.have == 0) & (opened > 0), np.maximum(opened, opening), opened)
+    return np.where((candidates.have == 0) & (shape > 0), np.maximum(grown, opening), grown)
 
 
 def _nearest(candidates: Candidates, of: np.ndarray[tuple[int], np.dtype[np.int64]], value: float, near: float) -> int:

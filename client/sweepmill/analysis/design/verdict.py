@@ -22,12 +22,15 @@ def improved(estimate: Estimate, name: str, candidates: Candidates, plan: Plan, 
     """The round after which the error should be what was asked for, or as near to it as one round may come.
 
     All of the error is taken to shrink as that by noise does: the spread between fits is mostly noise while it does
-    not stand out, and where it does, more data are what tells which points have to be left out.
+    not stand out, and where it does, more data are what tells which points have to be left out. Where the error is
+    withheld, the next round is as large as any.
     """
     error = math.hypot(estimate.statistical, estimate.spread)
-    targets = whole(plan.round((AIM * below / error) ** 2), candidates)
+    shrink = (AIM * below / error) ** 2
+    targets = whole(plan.round(min(shrink, 0.5) if estimate.withheld else shrink), candidates)
     predicted = error * math.sqrt(plan.variance(targets) / plan.variance(candidates.have))
-    return told(estimate, targets, predicted, f"{name} = {estimate}, an error of {below:g} is asked", candidates)
+    state = f": {estimate.withheld}" if estimate.withheld else ""
+    return told(estimate, targets, predicted, f"{name} = {estimate}, an error of {below:g} is asked{state}", candidates)
 
 
 def told(estimate: Estimate, targets: Vector, predicted: float, reason: str, candidates: Candidates) -> Advice:

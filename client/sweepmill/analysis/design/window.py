@@ -13,11 +13,14 @@ import numpy as np
 
 from sweepmill.analysis.arrays import Mask
 from sweepmill.analysis.fitted import Fitted
+from sweepmill.analysis.goodness import ACCEPTABLE
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.scaling import Scaling
 from sweepmill.analysis.shapes import Polynomial
 
-DESCRIBES = 0.05  # least p-value: a right fit goes on to a narrower window in one case of twenty
+LEVELS = (0.05, ACCEPTABLE, 1e-4)
+"""Least p-values, the next only where no choice reaches the one before: a right fit goes on to a narrower window in one
+case of twenty; below the second nothing is quoted, but down to the third the fit still tells where to sample."""
 _NARROWER = 0.75
 _SPARE = 2  # degrees of freedom at least
 _PLACES = 3  # per size at least
@@ -33,15 +36,21 @@ class Choice:
     reach: float
 
 
-def choose(points: Points, acceptable: float = DESCRIBES) -> Choice | None:
-    """The first choice whose fit describes its points; None if there is none."""
+def choose(points: Points) -> Choice | None:
+    """The first choice whose fit describes its points at the first level any reaches; None if there is none."""
+    choices: list[Choice] = []
+    for choice in _choices(points):
+        if not choice.fitted.faults(LEVELS[0]):
+            return choice
+        choices.append(choice)
+    return next((one for level in LEVELS[1:] for one in choices if not one.fitted.faults(level)), None)
+
+
+def _choices(points: Points) -> Iterator[Choice]:
     sizes = points.distinct_sizes()
     for index, smallest in enumerate(sizes[:-1]):
         for corrected in (False, True)[: 1 + (len(sizes) - index >= _CORRECTED)]:
-            for choice in _windows(points, points.sizes >= smallest, corrected):
-                if not choice.fitted.faults(acceptable):
-                    return choice
-    return None
+            yield from _windows(points, points.sizes >= smallest, corrected)
 
 
 def _windows(points: Points, keep: Mask, corrected: bool) -> Iterator[Choice]:
