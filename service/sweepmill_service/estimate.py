@@ -14,8 +14,8 @@ from sweepmill_service.expected import (
     Goal,
     Uncertain,
     expected_error,
-    expected_numbers,
     expected_seconds,
+    needed,
     reachable,
     total_seconds,
 )
@@ -91,7 +91,7 @@ def estimate(sweep: Sweep, costs: Costs, store: Store, share: Share, idle: str |
     there = sampled_points(points, sweep.observations, store)
     done = np.array([item.trajectories for item in there], dtype=float)
     scatters = scatters_of(points, sweep.observations, store)
-    numbers = np.maximum(expected_numbers(points, goal, scatters), done)
+    numbers = np.maximum(needed(points, goal, scatters), done)
     at_most = total_seconds(sweep.points, np.array([item.missing for item in sampled(sweep, store)], float), costs)
     expected = expected_seconds(points, done, goal, scatters, costs)
     idle = idle or (None if sweep.goal is None else ROUNDS)

@@ -6,7 +6,7 @@ All of it is a function of a list of points (ensembles with their caps), whichev
 import math
 from bisect import bisect_left
 from collections.abc import Mapping, Sequence
-from typing import Final, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,8 +17,6 @@ from sweepmill_service.learning.scatter import Scatter
 from sweepmill_service.plan.marks import ladder
 
 Floats = NDArray[np.float64]
-NODES: Final = ((-math.sqrt(3.0), 1 / 6), (0.0, 2 / 3), (math.sqrt(3.0), 1 / 6))
-"""Gauss-Hermite quadrature of three nodes: where to take a normal variate, and with which weight."""
 
 
 class Uncertain(NamedTuple):
@@ -58,14 +56,6 @@ def _rung(point: Point, goal: Goal, number: float) -> float:
     return float(steps[min(bisect_left(steps, number), len(steps) - 1)])
 
 
-def expected_numbers(points: Sequence[Point], goal: Goal, scatters: Mapping[str, Scatter]) -> Floats:
-    """Trajectories [points] expected, averaged over what the scatters may be."""
-    if not goal.below:
-        return needed(points, goal, scatters)
-    parts = [weight * needed(points, goal, scatters, node) for node, weight in NODES]
-    return np.asarray(sum(parts))
-
-
 def total_seconds(points: Sequence[Point], missing: Floats, costs: Costs) -> Uncertain:
     """Core-seconds of so many trajectories of each point."""
     seconds = {
@@ -84,7 +74,7 @@ def expected_seconds(
     def missing(numbers: Floats) -> Floats:
         return np.maximum(numbers - there, 0.0)
 
-    middle = total_seconds(points, missing(expected_numbers(points, goal, scatters)), costs)
+    middle = total_seconds(points, missing(needed(points, goal, scatters)), costs)
     if not goal.below or middle.value <= 0:
         return middle
     low, high = (total_seconds(points, missing(needed(points, goal, scatters, shift)), costs) for shift in (-1.0, 1.0))

@@ -2,20 +2,25 @@
 
 Two rounds of varied sweeps, the second with other sizes and rates than the first, are estimated with an empty store
 (cold) and with what the sweeps before them left in one (learned), then sampled in this process as the dispatcher
-would.  Predicted over used core-seconds and standard errors (largest over ensembles and coordinates), and how often the
-quoted range, of one standard deviation to either side, holds what came.  Nothing is asserted, machines differ.
+would.  Predicted over used core-seconds and standard errors (largest over ensembles and coordinates), and how often
+the quoted range, of one standard deviation to either side, holds what came.  With `--pool` a service with two workers
+samples for two owners, and times are compared as well.  Nothing is asserted, machines differ.
 """
 
 import argparse
 import math
+import sys
 import tempfile
+import time
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
+from functools import partial
 from pathlib import Path
 from statistics import median
 from typing import Any, NamedTuple
 
 from sweepmill.accumulate import Accumulator
+from sweepmill.client import Client
 from sweepmill.coordinates import coordinates
 from sweepmill.messages import Estimate, Range
 from sweepmill.statistics import summarize
@@ -32,6 +37,10 @@ from sweepmill_service.store import Store
 from sweepmill_service.store.results import BatchResult
 from sweepmill_worker.sample import sample_plain
 from sweepmill_worker.warm import warm
+
+sys.path.insert(0, str(Path(__file__).parents[1]))
+
+from support.services import service, until
 
 ENTROPY = {"quantity": "entropy"}
 AVERAGED = {"quantity": "entropy", "average_translations": True}
@@ -223,6 +232,41 @@ def summary(what: str, found: Sequence[Compared]) -> None:
     print(f"{what:<44}{math.exp(middle):>8.2f}   x/: {spread:<6.2f}{100 * inside:>6.0f} % of {len(found)} in range")
 
 
+def long_sweep(sites: int, replicate: int, trajectories: int) -> Sweep:
+    """Some core-seconds of work, never sampled before."""
+    circuit = chain([sites], [0.1, 0.16, 0.25], replicate=replicate)
+    return Sweep.parse({"circuit": circuit, "observe": [I3], "stop": {"trajectories": trajectories}})
+
+
+def queued(client: Client, sweep: Sweep) -> bool:
+    """Whether the pool has other work, as far as the service knows."""
+    return client.estimate(sweep).queued_core_seconds > 0
+
+
+def times(scale: float) -> list[Compared]:
+    """Seconds from submission to the end, predicted over actual: alone, then beside another owner's work."""
+    found = []
+    with (
+        tempfile.TemporaryDirectory() as home,
+        service(f"sqlite:///{home}/bench.sqlite", "--workers", "2") as running,
+        Client(running.url, owner="ada") as ada,
+        Client(running.url, owner="ben") as ben,
+    ):
+        ada.submit(long_sweep(64, 0, round(scale * 20_000))).wait(progress=False)
+        for turn in range(1, 7):
+            sweep = long_sweep((32, 64, 96)[turn % 3], turn, round(scale * (40_000, 10_000, 4_000)[turn % 3]))
+            if turn > 2:
+                ben.submit(long_sweep(48, turn, round(scale * (4_000, 40_000)[turn % 2])))
+                until(partial(queued, ada, sweep), "the other owner's work")
+            before, begin = ada.estimate(sweep), time.monotonic()
+            ada.submit(sweep).wait(progress=False)
+            took = time.monotonic() - begin
+            found.append(compared(before.seconds or 0.0, before.seconds_range, took))
+            beside = f"{before.queued_core_seconds:.1f} core-seconds queued"
+            print(f"pool: predicted {before.seconds or 0.0:.1f} s, took {took:.1f} s, {beside}", flush=True)
+    return found
+
+
 def main() -> None:
     """Command line."""
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
@@ -230,6 +274,7 @@ def main() -> None:
         "--seconds", type=float, default=1.0, help="scale of the trajectories: about as many core-seconds a sweep"
     )
     parser.add_argument("--quick", action="store_true", help="a tenth of that")
+    parser.add_argument("--pool", action="store_true", help="compare times on a pool of two workers, too")
     given = parser.parse_args()
     warm(256)
     scale = given.seconds * (0.1 if given.quick else 1.0)
@@ -251,6 +296,8 @@ def main() -> None:
                             kept = groups.setdefault(f"standard errors, {how}, round {variant + 1}", [])
                             kept.append(compared(error.largest, error.largest_range, errors[error.name]))
                 print(f"{case.name + ' ' + str(variant + 1):<28}{used:>9.2f}{row[0]:>8}{row[1]:>9}", flush=True)
+    if given.pool:
+        groups["time on a pool"] = times(scale)
     print()
     for what in sorted(groups):
         summary(what, groups[what])

@@ -18,13 +18,13 @@ from sweepmill_service.store.evidence import Timed
 
 LAW: Final = Law(shared=(0.35, 0.15, 0.2, 0.5), local=0.25, together=1)
 """In logarithms of seconds: the machine, the kind of work, the law of the circuit, what is read (by its share)."""
-DRIFT: Final = 0.1
+DRIFT: Final = 0.12
 """By how much one machine's pace differs from hour to hour: processors heat up, and neighbors share caches."""
 BATCH_NOISE: Final = 0.08
 SHORT: Final = 0.02
 """Seconds that a batch may take beside its trajectories."""
 MOST_CASES: Final = 300
-UNLIKE: Final = 2.0
+UNLIKE: Final = 2.5
 """How much further circuits written as data may be from the default than families are."""
 
 

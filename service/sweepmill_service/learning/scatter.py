@@ -24,7 +24,7 @@ from sweepmill_service.store.evidence import Scattered
 
 LAW: Final = Law(shared=(0.5, 0.4, 0.3), local=0.4, together=1)
 """In logarithms: the quantity, the observation as a whole, the observation on one law of circuits."""
-EXCESS: Final = 6.0
+EXCESS: Final = 9.0
 """Kurtosis of what is averaged, from experience: it says how well few trajectories tell their variance."""
 SURE: Final = 200
 """Trajectories from which on an ensemble's own scatter is taken as it is."""
