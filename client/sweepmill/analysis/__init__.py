@@ -26,6 +26,7 @@ from sweepmill.analysis.jackknife import jackknife_covariance, jackknife_error, 
 from sweepmill.analysis.laws import DECAY, ENTANGLEMENT, GROWTH, TIMES, Law, chord_length
 from sweepmill.analysis.model_free import ModelFree, fit_model_free
 from sweepmill.analysis.points import Points
+from sweepmill.analysis.purities import Purities, mean_purities
 from sweepmill.analysis.random_states import ExactLaw, random_stabilizer_entropy, stabilizer_law_of
 from sweepmill.analysis.same_law import Agreement, against_law, between
 from sweepmill.analysis.scaling import Scaling
@@ -57,6 +58,7 @@ __all__ = [
     "Need",
     "Points",
     "Polynomial",
+    "Purities",
     "Scaling",
     "Steadiness",
     "SweepSteadiness",
@@ -76,6 +78,7 @@ __all__ = [
     "fit_times",
     "jackknife_covariance",
     "jackknife_error",
+    "mean_purities",
     "purification_times",
     "purity",
     "random_stabilizer_entropy",

@@ -60,11 +60,15 @@ class Options:
 
 @dataclass(frozen=True, eq=False)
 class Report:
-    """A result with the tables and notes that belong under its sentence."""
+    """A result with the tables and notes that belong under its sentence.
+
+    `labels` are those of the axes of its figure where it does not show the data themselves.
+    """
 
     result: Result
     tables: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()
+    labels: tuple[str, str] | None = None
 
 
 @dataclass(frozen=True)
@@ -118,8 +122,9 @@ def _times(data: Chosen, options: Options) -> Report:
     left = sorted(set(data.points.distinct_sizes()) - set(times.distinct_sizes()))
     notes = tuple(f"L = {size:g} gives no time: its curve does not cross the threshold" for size in left)
     report = _compared(times, "L", TIMES, None, notes)
-    head = ["L", f"layers until {options.threshold:g} bits are left"]
-    return Report(report.result, (aligned(head, rows), *report.tables), report.notes)
+    left_over = "1 bit is" if options.threshold == 1 else f"{options.threshold:g} bits are"
+    labels = "L", f"layers until {left_over} left"
+    return Report(report.result, (aligned(labels, rows), *report.tables), report.notes, labels)
 
 
 def _central_charge(data: Chosen, options: Options) -> Report:

@@ -88,6 +88,14 @@ class Purities:
         return plot_purities(self, path, x_label, y_label)
 
 
+def mean_purities(histograms: Table, of: str | None = None, x: str | None = None) -> Purities:
+    """Mean purities of an observation, from `RemoteSweep.histograms(folds=True)`, against any axis or position.
+
+    Raises ValueError where no entropy keeps a histogram, or where the rows are not one curve for each size.
+    """
+    return Purities.of(chosen_purities(histograms, Choice(of, x)))
+
+
 def chosen_purities(histograms: Table, choice: Choice, abscissae: tuple[str, ...] = ("position",)) -> Chosen:
     """Points of -log2 of the mean purity, from `RemoteSweep.histograms(folds=True)`; one row for each point.
 

@@ -152,5 +152,5 @@ def _write(data: "Chosen", report: "Report", json: Path | None, figure: Path | N
         json.write_text(report.result.to_json() + "\n", encoding="utf-8")
         print(f"\n{json}")
     if figure is not None:
-        report.result.plot(figure, data.x.replace("_", " "), data.of)
+        report.result.plot(figure, *(report.labels or (data.x.replace("_", " "), data.of)))
         print(f"{'' if json else chr(10)}{figure}")
