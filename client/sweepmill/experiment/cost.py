@@ -1,7 +1,7 @@
 """What an experiment would pay for the circuits of a sweep, as plain values."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import isfinite
 from typing import Any
 
@@ -106,4 +106,8 @@ def _spots(source: Source, options: Options) -> Sequence[Spot]:
 
 
 def _monitored(spots: Sequence[Spot]) -> list[Spot]:
-    return [one for one in spots if one.ensemble is None or one.ensemble.family not in UNITARY]
+    """Those with a record; a family common to all goes without saying."""
+    found = [one for one in spots if one.ensemble is None or one.ensemble.family not in UNITARY]
+    if len({one.labels.get("family") for one in found}) > 1:
+        return found
+    return [replace(one, labels={n: value for n, value in one.labels.items() if n != "family"}) for one in found]

@@ -78,8 +78,9 @@ def _panel(canvas: Canvas, frame: Frame, curves: Sequence[Curve], inks: dict[str
         ink = inks[_name(curve[0])]
         points = [frame.at(one.layer or 1, one.again.value) for one in curve]
         canvas.line(points, ink)
-        for point in points:
-            canvas.dot(point, ink)
+        for one, point in zip(curve, points, strict=True):
+            if one.again.value >= LEAST:
+                canvas.dot(point, ink)
 
 
 def _marks(canvas: Canvas, frame: Frame, shot_time: float, named: bool) -> None:
@@ -91,7 +92,7 @@ def _marks(canvas: Canvas, frame: Frame, shot_time: float, named: bool) -> None:
             continue
         (x, y), (end, _) = frame.at(frame.x_range[0], bits), frame.at(frame.x_range[1], bits)
         canvas.dotted(x, end, y)
-        if named and last - y > 9:
+        if named and last - y > 10:
             canvas.text(end + 5, y + 3, name, "mark")
             last = y
 

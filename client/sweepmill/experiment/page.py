@@ -24,7 +24,7 @@ from sweepmill.text import short
 
 MOST_ABREAST = 3
 """Sizes that fit on half of the page."""
-FEW_ROWS = 4
+FEW_ROWS = 3
 """Circuits of one size up to which the left half of the page is the shorter one."""
 
 

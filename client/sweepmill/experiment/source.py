@@ -7,8 +7,9 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from sweepmill.ensemble import Ensemble
+from sweepmill.ensemble import LAYERED, Ensemble
 from sweepmill.errors import SweepmillError
+from sweepmill.messages import EnsembleProgress
 from sweepmill.sweep import Sweep
 from sweepmill.table import COUNTS, Table
 from sweepmill.table_files import MEDIA_TYPES
@@ -53,15 +54,20 @@ def _needed(client: "Client | None") -> "Client":
 def _fetched(key: str, client: "Client", specification: Sweep | None = None) -> Source:
     remote = client.sweep(key)
     if specification is None:
-        keys = [one.ensemble for one in remote.ensembles()]
-        ensembles = {key: _asked(client, key) for key in keys}
+        families = remote.status().families
+        ensembles = {one.ensemble: _ensemble(client, one, families) for one in remote.ensembles()}
     else:
         ensembles = {point.ensemble.key: point.ensemble for point in specification.points}
     return Source(remote.table(), remote.histograms(), ensembles, remote.key)
 
 
-def _asked(client: "Client", key: str) -> Ensemble:
-    record = client.ensemble(key)
+def _ensemble(client: "Client", progress: EnsembleProgress, families: Sequence[str]) -> Ensemble:
+    """What the progress tells is the whole ensemble, unless there are several families or circuits as data."""
+    if len(families) == 1 and families[0] != LAYERED:
+        ensemble = Ensemble.of(families[0], **progress.parameters)
+        if ensemble.key == progress.ensemble:
+            return ensemble
+    record = client.ensemble(progress.ensemble)
     return Ensemble.from_normal_form({"family": record.family, "revision": record.revision, **record.parameters})
 
 

@@ -10,7 +10,7 @@ from scipy import stats
 from support.budget import chi_square_limit, z_limit
 from sweepmill import Ensemble, Sweep
 from sweepmill.experiment import Sideways, held_sites, laboratory, sideways_circuit, window_purity
-from sweepmill.observation import Entropy
+from sweepmill.observation import Entropy, RecordBits
 from sweepmill.presets import layered_form
 from sweepmill_worker.program import operations as op
 from sweepmill_worker.program.compile import compile_program
@@ -123,3 +123,19 @@ def test_the_smallest_patch_is_the_light_cone_of_its_window() -> None:
 def test_counts_that_do_not_fit_together_are_refused(counts: tuple[int, int, int, int]) -> None:
     with pytest.raises(ValueError, match=r"got|are not among"):
         Sideways(*counts)
+
+
+@pytest.mark.parametrize("mixed", [True, False])
+def test_projecting_the_chain_costs_at_most_a_bit_for_each_of_its_legs(mixed: bool) -> None:
+    """From a mixed start every final outcome is random, for a unital circuit keeps the chain maximally mixed."""
+    circuit = sideways_circuit(6)
+    block = laboratory(circuit)
+    if not mixed:
+        block["before"] = [block["before"][0][1:]]
+    block["after"] = [[{"measure": "Z", "on": {"places": [[site] for site in range(1, circuit.chain)]}}]]
+    observe = [{"quantity": "record-bits", "at": "end", "histogram": True}]
+    projected = Sweep.parse({"circuit": block, "observe": observe, "stop": {"trajectories": 1}}).points[0].ensemble
+    observed = RecordBits(quantity="record-bits", at="end")
+    total = sample(projected, [observed], 0, 300).accumulators[observed.key]
+    assert total.maximum[0, 0] <= circuit.final_legs
+    assert (total.minimum[0, 0] == circuit.final_legs) == mixed
