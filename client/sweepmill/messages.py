@@ -200,6 +200,7 @@ class Estimate(Message):
         0.0, description="Predicted core-seconds queued for other sweeps; owners share the pool evenly"
     )
     accumulator_bytes: int = Field(description="Size of all totals of the sweep, at most")
+    kept_bytes: int = Field(0, description="Size of all kept values if every ensemble runs to its cap, uncompressed")
     worker_bytes: int = Field(description="Memory that a batch of the largest ensemble adds to an idle worker, at most")
     standard_errors: list[ExpectedError] = Field(default_factory=list, description="One for each observation")
     rounds: str | None = Field(

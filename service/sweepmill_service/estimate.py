@@ -6,6 +6,7 @@ from typing import Any, Literal, NamedTuple
 import numpy as np
 
 from sweepmill.coordinates import accumulator_bytes
+from sweepmill.limits import kept_values_bytes
 from sweepmill.messages import Estimate, ExpectedError, Range
 from sweepmill.sweep import NamedObservation, Point, Sweep
 from sweepmill_service.cost import Costs
@@ -114,6 +115,7 @@ def estimate(sweep: Sweep, costs: Costs, store: Store, share: Share, idle: str |
         seconds_unknown=idle,
         queued_core_seconds=share.before + sum(share.others),
         accumulator_bytes=sum(_sizes(sweep)),
+        kept_bytes=kept_values_bytes(sweep),
         worker_bytes=largest(sweep).bytes,
         standard_errors=_errors(sweep.observations, points, goal, numbers, scatters),
         rounds=None if sweep.goal is None else ROUNDS,

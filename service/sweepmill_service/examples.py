@@ -127,6 +127,7 @@ ESTIMATE = Estimate(
     seconds_range=Range(low=5.2, high=7.9),
     queued_core_seconds=41.0,
     accumulator_bytes=6720,
+    kept_bytes=0,
     worker_bytes=48_400_000,
     standard_errors=[
         ExpectedError(

@@ -205,3 +205,10 @@ def test_a_server_says_how_much_it_keeps(database_url: str) -> None:
         assert fault["path"].startswith("observe[")
         assert "this server keeps at most 1000 of a sweep (limits.kept_values)" in fault["message"]
         assert api.http.get("/v1/sweeps").json()["sweeps"] == []
+
+
+def test_an_estimate_says_how_much_would_be_kept(api: Api) -> None:
+    body = api.http.post("/v1/estimate", json=keeping(100).normalized()).json()
+    # a byte for each length at two layers; sums of 24 entropies up to 12 in two bytes, of 16 up to 8 in one; a ratio
+    assert body["kept_bytes"] == 100 * (2 * 12 + 2 + 2 + 2 * 8 + 1 + 2)
+    assert api.http.get("/v1/sweeps").json()["sweeps"] == []

@@ -20,12 +20,13 @@ ERROR_SOURCES = SOURCES | {
 
 def estimate_text(estimate: Estimate) -> str:
     """Aligned lines: what is there, work, time, memory and errors, each with its range of one standard deviation."""
+    kept = f"{estimate.kept_bytes / 1e6:.3g} MB of kept values, " if estimate.kept_bytes else ""
     lines = [
         f"sampled       {count(estimate.sampled_trajectories)} of {count(estimate.trajectories_cap)} trajectories"
         f" already, {count(estimate.sampled_ensembles)} ensembles completely",
         *_work(estimate),
         f"time          {_time(estimate)}",
-        f"memory        {estimate.accumulator_bytes / 1e6:.3g} MB of totals, "
+        f"memory        {estimate.accumulator_bytes / 1e6:.3g} MB of totals, {kept}"
         f"{estimate.worker_bytes / 1e6:.3g} MB per worker, at most",
     ]
     if estimate.standard_errors:
