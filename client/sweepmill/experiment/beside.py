@@ -1,5 +1,6 @@
 """A monitored circuit and a unitary one read sideways, side by side: the same region, about the same entanglement."""
 
+import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, NamedTuple
@@ -102,7 +103,7 @@ def half_entropies(source: Source) -> dict[str, Entropy]:
         halves = [row for row in rows if row["quantity"] == "entropy" and row["region"] == "half"]
         if halves:
             last = max(halves, key=lambda row: (row["layer"] is None, row["layer"] or 0))
-            bits = Estimate(last["mean"], last["standard_error"] or 0.0)
+            bits = Estimate(last["mean"], last["standard_error"] or math.nan)
             found[str(one["key"])] = Entropy(bits, last["trajectories"])
     return found
 

@@ -8,7 +8,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from sweepmill.ensemble import LAYERED, Ensemble
-from sweepmill.errors import SweepmillError
+from sweepmill.errors import SweepmillError, UnknownKey
 from sweepmill.messages import EnsembleProgress
 from sweepmill.sweep import Sweep
 from sweepmill.table import COUNTS, Table
@@ -52,7 +52,12 @@ def _needed(client: "Client | None") -> "Client":
 
 
 def _fetched(key: str, client: "Client", specification: Sweep | None = None) -> Source:
-    remote = client.sweep(key)
+    try:
+        remote = client.sweep(key)
+    except UnknownKey:
+        if specification is None:
+            raise
+        raise SweepmillError("the service does not have this sweep yet: submit its specification first") from None
     if specification is None:
         families = remote.status().families
         ensembles = {one.ensemble: _ensemble(client, one, families) for one in remote.ensembles()}

@@ -68,9 +68,14 @@ def _spots(source: Source, names: Sequence[str], laws: Mapping[Place, Law]) -> I
     for name in names:
         for key, row in _rows(source.table, name):
             place = _place(source.table, name, key, row)
-            bits = Estimate(row["mean"], math.inf if row["standard_error"] is None else row["standard_error"])
-            deviation = (row["variance"] or 0.0) ** 0.5
+            bits = Estimate(row["mean"], _known(row["standard_error"], math.inf))
+            deviation = _known(row["variance"], 0.0) ** 0.5
             yield _spot(source, place, row["trajectories"], bits, deviation, laws.get(place))
+
+
+def _known(value: float | None, otherwise: float) -> float:
+    """A number that a table may leave out, as for a single trajectory."""
+    return otherwise if value is None or math.isnan(value) else value
 
 
 def _spot(source: Source, place: Place, number: int, bits: Estimate, deviation: float, law: Law | None) -> Spot:
@@ -85,11 +90,13 @@ def _names(tables: Sequence[Table], name: str | None) -> list[str]:
     known: dict[str, str] = {}
     for table in tables:
         known |= dict(zip(table.values("name"), table.values("quantity"), strict=True))
+    if not known:
+        raise SweepmillError("nothing is sampled yet: the table has no rows")
     fitting = [one for one, quantity in known.items() if quantity == RECORD_BITS]
     if name is None and not fitting:
-        raise NoRecordBits(f"no observation of {RECORD_BITS} here, only {', '.join(sorted(known)) or 'nothing yet'}")
+        raise NoRecordBits(f"no observation of {RECORD_BITS} here, only {', '.join(sorted(known))}")
     if name is not None and name not in known:
-        raise SweepmillError(f"no observation {name!r}: one of {', '.join(sorted(known)) or 'none'}")
+        raise SweepmillError(f"no observation {name!r}: one of {', '.join(sorted(known))}")
     if name is not None and name not in fitting:
         raise SweepmillError(f"{name!r} observes {known[name]}, and the cost of a record needs {RECORD_BITS}")
     return fitting if name is None else [name]
@@ -116,7 +123,8 @@ def _laws(histograms: Table, names: Sequence[str]) -> Iterator[tuple[Place, Law]
         for key, row in _rows(histograms, name):
             counts.setdefault(_place(histograms, name, key, row), {})[row["value"]] = row["occurrences"]
         numbers = _numbers(histograms, name)
-        for place, found in counts.items():
+        several = ((place, found) for place, found in counts.items() if sum(found.values()) > 1)
+        for place, found in several:
             yield place, Law.of(list(found), list(found.values()), numbers.get(place[1]))
 
 

@@ -104,3 +104,11 @@ def test_what_is_no_source_is_one_line_on_standard_error(run: Run, tmp_path: Pat
     done = run("cost", tmp_path / "nowhere.json")
     assert (done.code, done.out, done.err.count("\n")) == (1, "", 1)
     assert "neither a file nor a key" in done.err
+
+
+def test_a_sweep_that_was_never_submitted_is_one_line_on_standard_error(run: Run, tmp_path: Path) -> None:
+    path = tmp_path / "sweep.json"
+    path.write_text(json.dumps(small(REPLICATE + 2, {"quantity": "record-bits"}).normalized()))
+    done = run("cost", path)
+    assert (done.code, done.out, done.err.count("\n")) == (1, "", 1)
+    assert "submit its specification first" in done.err

@@ -215,8 +215,16 @@ def test_other_observations_are_refused(source: Source) -> None:
     with pytest.raises(NoRecordBits, match="only entropy"):
         cost_of(plain)
     empty: dict[str, list[str]] = {name: [] for name in ("name", "quantity", "layer")}
-    with pytest.raises(NoRecordBits, match="nothing yet"):
+    with pytest.raises(SweepmillError, match="nothing is sampled yet"):
         cost_of(replace(plain, table=Table(empty)))
+
+
+def test_a_single_trajectory_is_reported_without_errors() -> None:
+    cost = cost_of(sampled_source(WHOLE, 1))
+    assert {one.again.error for one in cost.records} == {None}
+    assert not any(one.band.exact for one in cost.records)
+    assert not read_page(page(cost)).loads
+    json.dumps(cost.to_dict(), allow_nan=False)
 
 
 @pytest.mark.parametrize("example", sorted(EXAMPLES.glob("*.toml")), ids=lambda path: path.stem)
