@@ -214,6 +214,7 @@ def test_central_charge_and_law_are_against_sites(run: Run, tmp_path: Path) -> N
         (("--sizes", "8;64"), "sizes are whole numbers with commas between them"),
         (("--window", "0.5", "0.9"), "no row has 0.5 <= p <= 0.9: there are 0.1"),
         (("--zeta", "any"), "a number, or the word free"),
+        (("--ring", "32"), "--ring means nothing to collapse, which takes --zeta, --degree, --corrections"),
         (("--figure", "f.gif"), "the suffix gives the format, one of .png, .svg, .pdf"),
     ],
 )

@@ -1,7 +1,7 @@
 """The fits that `sweepmill fit` knows by name: what each takes for its abscissa, and what it has to say."""
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Protocol
 
@@ -52,6 +52,11 @@ class Options:
     rate: float | None = None
     anisotropy: float = 1.0
 
+    def changed(self) -> list[str]:
+        """Names of those that are not as by default."""
+        plain = Options()
+        return [one.name for one in fields(self) if getattr(self, one.name) != getattr(plain, one.name)]
+
     def form(self) -> Scaling:
         """The scaling form of a collapse."""
         omega = None if self.corrections else 1.0
@@ -73,10 +78,14 @@ class Report:
 
 @dataclass(frozen=True)
 class Kind:
-    """A fit: `abscissae` are the columns it takes for x by default, before the only axis there is."""
+    """A fit: `abscissae` are the columns it takes for x by default, before the only axis there is.
+
+    `settings` are the options that mean something to it.
+    """
 
     what: str
     run: Callable[[Chosen, Options], Report]
+    settings: tuple[str, ...] = ()
     abscissae: tuple[str, ...] = ()
     choose: Callable[[Table, Choice, tuple[str, ...]], Chosen] = chosen
 
@@ -93,7 +102,7 @@ def _crossings(data: Chosen, options: Options) -> Report:
     result = fit_crossings(data.points, options.degree, None if options.corrections else 1.0)
     rows = [[what, str(p_c)] for what, p_c in result.drift]
     drift = (aligned(["fit", "p_c"], rows),) if rows else ()
-    hint = "a window about the crossing helps where a local polynomial does not describe its points"
+    hint = "where a local polynomial does not describe its points, a narrower --window or a higher --degree helps"
     return Report(result, (result.text(), *drift), (hint,) if any(one.fault for one in result.table) else ())
 
 
@@ -141,15 +150,15 @@ def _purity(data: Chosen, _: Options) -> Report:
 KINDS: Mapping[str, Kind] = {
     one.what: one
     for one in (
-        Kind("collapse", _collapse),
-        Kind("crossings", _crossings),
-        Kind("model-free", _model_free),
-        Kind("law", _law, ("position", "sites")),
-        Kind("growth", _growth, ("layer",)),
-        Kind("times", _times, ("layer",)),
-        Kind("decay", _decay, ("position", "sites")),
-        Kind("central-charge", _central_charge, ("sites",)),
-        Kind("purity", _purity, ("position",), chosen_purities),
+        Kind("collapse", _collapse, ("zeta", "degree", "corrections")),
+        Kind("crossings", _crossings, ("degree", "corrections")),
+        Kind("model-free", _model_free, ("zeta",)),
+        Kind("law", _law, ("ring",), ("position", "sites")),
+        Kind("growth", _growth, (), ("layer",)),
+        Kind("times", _times, ("threshold",), ("layer",)),
+        Kind("decay", _decay, ("ring",), ("position", "sites")),
+        Kind("central-charge", _central_charge, ("rate", "anisotropy"), ("sites",)),
+        Kind("purity", _purity, (), ("position",), chosen_purities),
     )
 }
 

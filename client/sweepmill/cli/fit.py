@@ -78,9 +78,13 @@ def fit(
     ring: Annotated[
         float | None, typer.Option(min=2, help="Sites of a ring whose chords stand for lengths (law, decay).")
     ] = None,
-    threshold: Annotated[float, typer.Option(help="Bits that are left at a purification time (times).")] = 1.0,
+    threshold: Annotated[
+        float, typer.Option(min=1e-9, help="Bits that are left at a purification time (times).")
+    ] = 1.0,
     rate: Annotated[float | None, typer.Option(min=0, help="Measurements per site and layer (central-charge).")] = None,
-    anisotropy: Annotated[float, typer.Option(help="Ratio of velocities, space to time (central-charge).")] = 1.0,
+    anisotropy: Annotated[
+        float, typer.Option(min=1e-3, help="Ratio of velocities, space to time (central-charge).")
+    ] = 1.0,
     json: Annotated[
         Path | None, typer.Option(dir_okay=False, metavar="FILE", help="Write the result with its ensemble keys.")
     ] = None,
@@ -109,6 +113,9 @@ def fit(
 
     choice = Choice(of, x, _values(where or []), window, tuple(float(one) for one in (sizes or "").split(",") if one))
     options = Options(_number(zeta), degree, corrections, ring, threshold, rate, anisotropy)
+    if unused := [name for name in options.changed() if name not in KINDS[what].settings]:
+        takes = ", ".join(f"--{name}" for name in KINDS[what].settings) or "none of them"
+        raise typer.BadParameter(f"--{unused[0]} means nothing to {what}, which takes {takes}")
     table = read_histograms(source, url) if what is What.PURITY else read_source(source, of, url)
     try:
         data, report = _fitted(table, choice, KINDS[what], options)

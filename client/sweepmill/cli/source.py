@@ -84,6 +84,8 @@ def headline(source: str, table: Table) -> str:
     parts = [f"sweep {short(str(sweep))}" if sweep else source]
     if table.ensembles:
         parts.append(_counted(len(table.ensembles), "ensemble"))
+    if any(not one.get("frozen", True) for one in table.ensembles):
+        parts[0] += " (still being sampled)"
     if table.ensembles and "trajectories" in table:
         per_ensemble = [table.values("trajectories")[one["rows"][0]] for one in table.ensembles]
         parts.append(_counted(sum(per_ensemble), "trajectory", "trajectories"))
