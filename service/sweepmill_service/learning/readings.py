@@ -74,12 +74,13 @@ class _Shape:
 
     def __init__(self, ensemble: Ensemble) -> None:
         self.ensemble = ensemble
+        self.shape = ensemble.shape
 
     def __eq__(self, other: object) -> bool:
-        return isinstance(other, _Shape) and self.ensemble.shape == other.ensemble.shape
+        return isinstance(other, _Shape) and self.shape == other.shape
 
     def __hash__(self) -> int:
-        return hash(self.ensemble.shape)
+        return hash(self.shape)
 
 
 class _Amount(NamedTuple):

@@ -4,7 +4,7 @@ from collections.abc import Callable
 from typing import Final
 
 from sweepmill.ensemble import Ensemble
-from sweepmill_service.plan.tables import TABLES
+from sweepmill_service.plan.tables import TABLES, nanoseconds
 from sweepmill_service.plan.work import BRICKWORK, Work, work_of
 
 PER_TRAJECTORY: Final = 1.5e-6
@@ -25,11 +25,10 @@ def seconds_of(work: Work) -> float:
 
 def _per_site(work: Work) -> float:
     """Seconds per site and layer: of the gates, and of measurements among so many gates."""
-    table = TABLES[work.kind]
     if work.kind == "clusters":
-        return 1e-9 * table.nanoseconds(work.sites, work.rate)
-    idle, top = 1e-9 * table.nanoseconds(work.sites, 0.0), table.rates[-1]
-    measured = 1e-9 * table.nanoseconds(work.sites, min(work.rate, top)) - idle
+        return 1e-9 * nanoseconds(work.kind, work.sites, work.rate)
+    idle, top = 1e-9 * nanoseconds(work.kind, work.sites, 0.0), TABLES[work.kind].rates[-1]
+    measured = 1e-9 * nanoseconds(work.kind, work.sites, min(work.rate, top)) - idle
     share = min(work.gates / BRICKWORK, 1.0)
     return (
         idle * max(work.gates / BRICKWORK, 1.0)

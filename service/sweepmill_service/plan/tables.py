@@ -3,27 +3,33 @@
 import math
 from bisect import bisect_right
 from collections.abc import Mapping, Sequence
+from functools import lru_cache
 from typing import Final, NamedTuple
 
 
 class Table(NamedTuple):
-    """Rows of times by number of sites, columns by rate; logarithms are interpolated, and continued beyond the ends."""
+    """Rows of times by number of sites, columns by rate."""
 
     rates: tuple[float, ...]
     rows: Mapping[int, tuple[float, ...]]
 
-    def nanoseconds(self, sites: float, rate: float) -> float:
-        """Time per site and layer."""
-        sizes = sorted(self.rows)
-        low, part = _between([math.log(size) for size in sizes], math.log(sites))
-        rates = [math.log(known + SOFT) for known in self.rates]
-        left, share = _between(rates, math.log(min(max(rate, 0.0), self.rates[-1]) + SOFT))
-        corners = [
-            math.log(self.rows[sizes[low + i]][left + j]) * (part if i else 1 - part) * (share if j else 1 - share)
-            for i in (0, 1)
-            for j in (0, 1)
-        ]
-        return math.exp(sum(corners))
+
+def nanoseconds(kind: str, sites: int, rate: float) -> float:
+    """Time per site and layer: logarithms are interpolated, and continued beyond the largest size."""
+    rates, row = _row(kind, sites)
+    left, share = _between(rates, min(math.log(max(rate, 0.0) + SOFT), rates[-1]))
+    return math.exp((1 - share) * row[left] + share * row[left + 1])
+
+
+@lru_cache(maxsize=4096)
+def _row(kind: str, sites: int) -> tuple[tuple[float, ...], tuple[float, ...]]:
+    """Logarithms of the rates of a table, and of its times at so many sites."""
+    table = TABLES[kind]
+    sizes = sorted(table.rows)
+    low, part = _between([math.log(size) for size in sizes], math.log(sites))
+    pairs = zip(table.rows[sizes[low]], table.rows[sizes[low + 1]], strict=True)
+    times = tuple((1 - part) * math.log(one) + part * math.log(other) for one, other in pairs)
+    return tuple(math.log(rate + SOFT) for rate in table.rates), times
 
 
 SOFT: Final = 0.03
