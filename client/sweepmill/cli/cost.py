@@ -9,9 +9,10 @@ import typer
 
 from sweepmill.cli.options import Url
 from sweepmill.client import Client
+from sweepmill.errors import SweepmillError
 
 if TYPE_CHECKING:
-    from sweepmill.experiment import Cost
+    from sweepmill.experiment import Cost, Options, Source
 
 FORMATS = (".html", ".md", ".json")
 ADVICE = "This sweep over the same circuits observes it; --companion FILE writes it:"
@@ -62,6 +63,15 @@ def cost(
             help="Write the specification of a sweep over the same circuits that observes what this needs, and stop.",
         ),
     ] = None,
+    write_laboratory: Annotated[
+        Path | None,
+        typer.Option(
+            "--laboratory",
+            metavar="FILE",
+            dir_okay=False,
+            help="Write the unitary circuit read sideways as the specification of a sweep, too.",
+        ),
+    ] = None,
     url: Url = None,
 ) -> None:
     """Report what an experiment would pay for a sweep.
@@ -85,18 +95,37 @@ def cost(
         write_companion.write_text(as_toml(companion(found.ensembles.values())), encoding="utf-8")
         print(write_companion)
         return
-    try:
-        report = experiment.cost_of(found, options)
-    except experiment.NoRecordBits as error:
-        print(f"sweepmill: {error}", file=sys.stderr)
-        if found.ensembles:
-            print(f"{ADVICE}\n\n{as_toml(companion(found.ensembles.values()))}", file=sys.stderr)
-        raise typer.Exit(1) from None
+    report = _reported(found, options)
+    if write_laboratory is not None:
+        write_laboratory.write_text(_laboratory(report), encoding="utf-8")
     if output is None:
         print(experiment.markdown(report), end="")
         return
     output.write_text(_written(report, output.suffix), encoding="utf-8")
     print(output)
+
+
+def _reported(found: "Source", options: "Options") -> "Cost":
+    """The report; without records, a companion on standard error and exit code 1."""
+    from sweepmill.experiment import NoRecordBits, companion, cost_of
+    from sweepmill.experiment.companion import as_toml
+
+    try:
+        return cost_of(found, options)
+    except NoRecordBits as error:
+        print(f"sweepmill: {error}", file=sys.stderr)
+        if found.ensembles:
+            print(f"{ADVICE}\n\n{as_toml(companion(found.ensembles.values()))}", file=sys.stderr)
+        raise typer.Exit(1) from None
+
+
+def _laboratory(report: "Cost") -> str:
+    from sweepmill.experiment import laboratory_sweep
+    from sweepmill.experiment.companion import as_toml
+
+    if report.beside is None:
+        raise SweepmillError("no circuit is known to put a laboratory beside: give a key or the specification")
+    return as_toml(laboratory_sweep(report.beside.sideways))
 
 
 def _written(report: "Cost", suffix: str) -> str:

@@ -17,7 +17,7 @@ with needing("sweepmill.experiment", "analysis"):
 
 from sweepmill.experiment.companion import companion
 from sweepmill.experiment.cost import Cost, Options, cost_of
-from sweepmill.experiment.laboratory import held_sites, laboratory
+from sweepmill.experiment.laboratory import held_sites, laboratory, laboratory_sweep
 from sweepmill.experiment.law import Law
 from sweepmill.experiment.markdown import markdown
 from sweepmill.experiment.page import page
@@ -38,6 +38,7 @@ __all__ = [
     "cost_of",
     "held_sites",
     "laboratory",
+    "laboratory_sweep",
     "markdown",
     "page",
     "read_source",

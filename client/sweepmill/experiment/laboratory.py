@@ -20,6 +20,12 @@ def laboratory(circuit: Sideways) -> dict[str, Any]:
     }
 
 
+def laboratory_sweep(circuit: Sideways) -> dict[str, Any]:
+    """A specification, as plain data, that samples the entropy of the held slices in the laboratory's circuit."""
+    observed = {"quantity": "entropy", "region": held_sites(circuit), "at": "end", "histogram": True}
+    return {"circuit": [laboratory(circuit)], "observe": [observed], "stop": {"trajectories": 2000}}
+
+
 def held_sites(circuit: Sideways) -> list[int]:
     """Sites of the block that hold the slices."""
     return list(range(circuit.chain, circuit.qubits))

@@ -79,6 +79,10 @@ def test_a_sweep_with_records_is_reported_in_every_format(run: Run, service_url:
         path = tmp_path / f"report{suffix}"
         assert run("cost", key, "-o", path, "--select", 3, "--shot-time", 0.001) == (0, f"{path}\n", "")
         assert path.read_text(encoding="utf-8").startswith(begins)
+    laboratory = tmp_path / "laboratory.toml"
+    assert run("cost", key, "--laboratory", laboratory).out == printed.out
+    (written,) = Sweep.read(laboratory).points
+    assert (written.ensemble.sites, written.ensemble.layers) == (3 + 4, 3)  # four slices of the edge of three qubits
     values = json.loads((tmp_path / "report.json").read_text())
     assert values["shot_time"] == 0.001
     assert {one["quantiles_from"] for one in values["records"]} == {"histogram"}
