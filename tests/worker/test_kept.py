@@ -14,10 +14,10 @@ from support.specs import small
 from sweepmill.accumulate import Accumulator
 from sweepmill.coordinates import coordinates, kept_bytes
 from sweepmill.ensemble import Ensemble
-from sweepmill.observation import Entropy, Observation, OutcomeRandomness
+from sweepmill.observation import Observation
 from sweepmill.sweep import Sweep
-from sweepmill_worker.kept import narrowed, pack, unpack
-from sweepmill_worker.memory import peak_bytes
+from sweepmill_worker.kept import BATCH_BYTES, narrowed, pack, unpack
+from sweepmill_worker.memory import KEPT_COPIES, peak_bytes
 from sweepmill_worker.sample import sample, sample_plain, trajectory_values
 
 LIMITS = [2**7, 2**8, 2**15, 2**16, 2**31, 2**40, 2**62]
@@ -111,17 +111,19 @@ def test_values_take_no_more_than_is_predicted_and_compressed_less() -> None:
             assert 0 < len(batch.values[item.key].data) < predicted
 
 
-def test_a_batch_with_values_allocates_no_more_than_is_said() -> None:
-    ensemble = Ensemble.of("hybrid-clifford", sites=8, measurement_rate=0.2, layers=400)
-    at = {"every": 1, "single_layers": True}
-    kept: list[Observation] = [
-        Entropy(quantity="entropy", at=at, keep_values=True),
-        OutcomeRandomness(quantity="outcome-randomness", cumulative=True, at=at, keep_values=True),
-    ]
-    count = 4_000_000 // sum(kept_bytes(ensemble, item) for item in kept)
-    sample(ensemble, kept, 0, 1)  # compiled kernels and tables stay
+def test_packing_the_values_of_a_batch_allocates_no_more_than_is_said() -> None:
+    draw = np.random.default_rng(3)
+    parts = [narrowed(draw.integers(-100, 100, size=(1000, 500))) for _ in range(BATCH_BYTES // 500_000)]
+    held = sum(part.nbytes for part in parts)
     tracemalloc.start()
-    sample(ensemble, kept, 0, count)
+    pack(np.concatenate(parts))
     _, peak = tracemalloc.get_traced_memory()
     tracemalloc.stop()
-    assert peak <= peak_bytes(ensemble, kept)
+    assert held == BATCH_BYTES
+    assert held + peak <= KEPT_COPIES * BATCH_BYTES
+
+
+def test_what_a_batch_needs_of_a_worker_includes_its_values() -> None:
+    ensemble, observations = observed()
+    plain = [item.model_copy(update={"keep_values": False}) for item in observations]
+    assert peak_bytes(ensemble, observations) == peak_bytes(ensemble, plain) + KEPT_COPIES * BATCH_BYTES
