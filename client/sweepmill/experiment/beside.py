@@ -1,10 +1,12 @@
 """A monitored circuit and a unitary one read sideways, side by side: the same region, about the same entanglement."""
 
 import math
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Container, Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from itertools import product
 from typing import Any, NamedTuple
 
+from sweepmill import observation
 from sweepmill.analysis.estimate import Estimate
 from sweepmill.ensemble import Ensemble
 from sweepmill.experiment.counted import gates_until
@@ -80,7 +82,7 @@ def beside(source: Source, records: Sequence[Record]) -> Beside | None:
     tells of no circuit.
     """
     entropies = half_entropies(source)
-    rotated = max(_of(source.ensembles.values(), ROTATED), key=lambda one: one.sites, default=None)
+    rotated = max(_rotated(source.ensembles.values()), key=lambda one: one.sites, default=None)
     measured = [one for one in records if one.measurements and source.ensembles[one.key].family not in OTHERS]
     if rotated is not None:
         circuit = Sideways(rotated.layers, rotated.sites - 1, 0, rotated.sites // 2)
@@ -93,23 +95,42 @@ def beside(source: Source, records: Sequence[Record]) -> Beside | None:
 
 
 def half_entropies(source: Source) -> dict[str, Entropy]:
-    """Entropy of half the system at the last depth, by ensemble key."""
-    found: dict[str, Entropy] = {}
+    """Entropy of half the system at the last depth, by ensemble key.
+
+    The laboratory of a rotated circuit holds the slices after the last column alone: only what was observed at the
+    end counts there, not the mean over a unit cell. Of the others the mean over the last cell is preferred.
+    """
     if source.table is None:
-        return found
+        return {}
+    at_end = {name for name, key in source.table.metadata.get("observations", {}).items() if key in _AT_THE_END}
+    found: dict[str, Entropy] = {}
     for one in source.table.ensembles:
         began, ended = one["rows"]
         rows = [{name: source.table.values(name)[i] for name in source.table.columns} for i in range(began, ended)]
         halves = [row for row in rows if row["quantity"] == "entropy" and row["region"] == "half"]
+        ensemble = source.ensembles.get(str(one["key"]))
+        if ensemble is not None and ensemble.family == ROTATED:
+            halves = [row for row in halves if row["name"] in at_end]
         if halves:
-            last = max(halves, key=lambda row: (row["layer"] is None, row["layer"] or 0))
-            bits = Estimate(last["mean"], last["standard_error"] or math.nan)
-            found[str(one["key"])] = Entropy(bits, last["trajectories"])
+            found[str(one["key"])] = _last(halves, at_end)
     return found
 
 
-def _of(ensembles: Iterable[Ensemble], family: str) -> list[Ensemble]:
-    return [one for one in ensembles if one.family == family]
+def _last(rows: Sequence[Mapping[str, Any]], at_end: Container[str]) -> Entropy:
+    last = max(rows, key=lambda row: (row["layer"] is None, row["layer"] or 0, row["name"] not in at_end))
+    return Entropy(Estimate(last["mean"], last["standard_error"] or math.nan), last["trajectories"])
+
+
+_AT_THE_END = {
+    observation.Entropy(quantity="entropy", at="end", histogram=histogram, keep_values=keep).key
+    for histogram, keep in product((False, True), repeat=2)
+}
+"""Keys of the observations of half the system after the last layer."""
+
+
+def _rotated(ensembles: Iterable[Ensemble]) -> list[Ensemble]:
+    """Those with open ends: other ends are no circuit of this kind."""
+    return [one for one in ensembles if one.family == ROTATED and one.parameters["ends"] == "open"]
 
 
 def _alike(

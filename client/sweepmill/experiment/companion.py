@@ -50,7 +50,9 @@ def as_toml(specification: Mapping[str, Any]) -> str:
 def _observed(ensembles: Sequence[Ensemble]) -> list[dict[str, Any]]:
     """Laws at all depths if they fit, else at the end, else means alone; and what a region is entangled by."""
     entropy = {"quantity": "entropy", "at": "end" if any(one.layers < one.cell for one in ensembles) else "last-cell"}
-    return [*_records(ensembles), entropy]
+    end = {"quantity": "entropy", "name": "entropy-at-the-end", "at": "end"}
+    rotated = any(one.family == "rotated-clifford" for one in ensembles)  # whose laboratory holds the end alone
+    return [*_records(ensembles), entropy, *([end] if rotated else [])]
 
 
 def _records(ensembles: Sequence[Ensemble]) -> list[dict[str, Any]]:

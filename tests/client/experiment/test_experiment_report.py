@@ -138,9 +138,11 @@ def test_a_rotated_circuit_of_the_sweep_stands_beside_a_monitored_one_of_its_siz
         {"family": "hybrid-clifford", "sites": [8, 16], "measurement_rate": [0.1, 0.3], "layers": 16},
         {"family": "rotated-clifford", "sites": 8, "layers": 4},
     ]
-    observe = [{"quantity": "record-bits", "at": "end"}, {"quantity": "entropy"}]
+    end = {"quantity": "entropy", "name": "end", "at": "end"}
+    observe = [{"quantity": "record-bits", "at": "end"}, {"quantity": "entropy"}, end]
     both_families = Sweep.parse({"circuit": blocks, "observe": observe, "stop": {"trajectories": 200}})
-    cost = cost_of(sampled_source(both_families, 200))
+    source = sampled_source(both_families, 200)
+    cost = cost_of(source)
     assert {tuple(one.labels) for one in cost.final} == {("sites", "measurement_rate")}  # of one family, unsaid
     both = cost.beside
     assert both is not None
@@ -150,6 +152,11 @@ def test_a_rotated_circuit_of_the_sweep_stands_beside_a_monitored_one_of_its_siz
     assert both.monitored.ensemble.sites == 8
     assert both.rotated is not None
     assert both.rotated.key[:12] in markdown(cost)
+    assert source.table is not None
+    ends, cells = ([row["mean"] for row in source.table.where(name=name).rows()] for name in ("end", "entropy"))
+    assert both.entropy.bits.value == ends[-1]  # of the last column alone
+    assert both.monitored.entropy is not None
+    assert both.monitored.entropy.bits.value in cells
     assert "<svg" not in page(cost)
     assert "≈" in page(cost)  # without a histogram the band is one from the variance
 
@@ -160,6 +167,8 @@ def test_rotated_circuits_alone_need_no_record() -> None:
     cost = cost_of(sampled_source(alone, 100))
     assert not cost.records
     assert "no record" in markdown(cost)
+    assert cost.beside is not None
+    assert cost.beside.entropy is None  # a mean over two columns is not what a laboratory holds
     assert not read_page(page(cost)).loads
 
 
