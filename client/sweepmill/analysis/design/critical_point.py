@@ -100,7 +100,7 @@ def _plan(candidates: Candidates, points: Points, choice: Choice) -> Plan:
 
 
 def _inner(candidates: Candidates, u: Vector, reach: float) -> Mask:
-    """The inner half of the window, and the two places of every size that are nearest to the transition.
+    """The inner half of the window, and the two places of every size nearest to p_c; all where those are full.
 
     At the edges a polynomial is worst, and a small variance there would draw trajectories to where the form breaks.
     """
@@ -108,7 +108,8 @@ def _inner(candidates: Candidates, u: Vector, reach: float) -> Mask:
     for size in np.unique(candidates.size):
         of = np.flatnonzero(candidates.size == size)
         inner[of[np.argsort(np.abs(u[of]), kind="stable")[:2]]] = True
-    return inner
+    room = (candidates.most > candidates.have) & (np.abs(u) <= reach)
+    return inner if (room & inner).any() else np.ones_like(inner)
 
 
 def _information(choice: Choice, candidates: Candidates, noise: Vector, richer: int) -> Informations:
