@@ -33,7 +33,7 @@ SHARES: Final[dict[str, float]] = {
     "crossed-percolation": 5e-7,
     "random-stabilizer-states": 2e-6,
     "analysis": 6e-5,  # spent by the thresholds stated in tests/client/analysis
-    "design": 2e-6,  # spent by the thresholds stated in tests/client/analysis/test_design_*.py
+    "design": 1.8e-6,  # spent by the thresholds stated in tests/client/analysis/test_design_*.py
     "published": 2e-6,  # spent by the thresholds stated in tests/client/analysis/test_published_*.py
 }
 
