@@ -10,7 +10,7 @@ from typing import Any, NamedTuple
 import numpy as np
 import pytest
 
-from support.folds import Made, folds_of
+from support.folds import Made, folds_of, scatter
 from sweepmill import Client, Folds, Sweep
 from sweepmill.cli import main
 from sweepmill.coordinates import Coordinate
@@ -67,14 +67,13 @@ def key(service_url: str) -> str:
 
 def made(curve: Callable[[int, float], float]) -> Folds:
     """Folds of an invented observation with a given mean, in thousandths, and noise of one tenth."""
-    generator = np.random.default_rng(11)
     places = (Coordinate(None, None, 1000),)
     return folds_of(
         [
             Made(
                 {"sites": sites, "p": round(p, 3)},
                 places,
-                np.rint(1000 * (curve(sites, p) + 0.1 * generator.standard_normal((640, 1)))).astype(np.int64),
+                np.rint(1000 * (curve(sites, p) + scatter(sites + round(1000 * p), 0.1))).astype(np.int64),
             )
             for sites in (8, 16, 32)
             for p in np.linspace(0.1, 0.3, 9).tolist()
@@ -145,9 +144,10 @@ def test_a_law_that_holds_from_some_length_on_is_found(run: Run, tmp_path: Path)
     places = [Coordinate(None, position, 1000) for position in range(1, 21)]
     length = np.arange(1, 21)
     curve = 1.5 * np.log(np.maximum(length, 5)) - 3 * np.maximum(5 - length, 0)
-    noise = 0.1 * np.random.default_rng(12).standard_normal((640, 20))
     folds = folds_of(
-        [Made({}, places, np.rint(1000 * (curve + noise)).astype(np.int64))], sites=20, boundary="periodic"
+        [Made({}, places, np.rint(1000 * (curve + scatter(12, 0.1, 20))).astype(np.int64))],
+        sites=20,
+        boundary="periodic",
     )
     done = run("fit", "law", written(folds, tmp_path / "f.json"))
     assert done.code == 0

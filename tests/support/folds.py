@@ -20,6 +20,15 @@ class Made(NamedTuple):
     values: NDArray[np.int64]
 
 
+def scatter(seed: int, size: float, coordinates: int = 1, trajectories: int = 640) -> NDArray[np.float64]:
+    """Noise [trajectories, coordinates] that adds up to nothing: means stay what they were made, errors are as large.
+
+    What a test finds does not depend on luck then.
+    """
+    noise = size * np.random.default_rng(seed).standard_normal((trajectories, coordinates))
+    return np.asarray(noise - noise.mean(axis=0))
+
+
 def folds_of(ensembles: Sequence[Made], name: str = "i3", **constants: Any) -> Folds:
     """Folds of the ensembles in order, their keys made up."""
     rows: list[dict[str, Any]] = []

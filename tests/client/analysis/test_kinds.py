@@ -5,7 +5,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from support.folds import Made, folds_of
+from support.folds import Made, folds_of, scatter
 from sweepmill import Folds
 from sweepmill.analysis import mean_purities
 from sweepmill.analysis.choosing import Choice
@@ -24,9 +24,8 @@ def fitted(what: str, folds: Table, choice: Choice | None = None, options: Optio
 
 def one_ensemble(axes: dict[str, float], places: list[tuple[int | None, int | None]], mean: np.ndarray) -> Made:
     """640 trajectories of an invented observation, their noise 0.05."""
-    noise = 0.05 * np.random.default_rng(len(mean)).standard_normal((640, len(mean)))
     where = [Coordinate(layer, position, SCALE) for layer, position in places]
-    return Made(axes, where, np.rint(SCALE * (mean + noise)).astype(np.int64))
+    return Made(axes, where, np.rint(SCALE * (mean + scatter(len(mean), 0.05, len(mean)))).astype(np.int64))
 
 
 def purifying(depth: int = 6) -> Folds:
