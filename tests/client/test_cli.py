@@ -211,7 +211,7 @@ def test_checking_with_a_service_gives_an_estimate(served: Run, tmp_path: Path) 
     done = served("check", written(tmp_path))
     assert done.code == 0
     assert "sampled       0 of 80 trajectories already" in done.out
-    assert re.search(r"work left +\S+ core-hours \(\S+ to \S+\) at most, by default costs", done.out)
+    assert re.search(r"work left +\S+ core-hours \(\S+ to \S+\) at most, (by default costs|learned from)", done.out)
     assert re.search(r"time +.+ on \d+ core|time +not known: ", done.out)
     assert re.search(r"expected standard errors +largest +range +median", done.out)
 
