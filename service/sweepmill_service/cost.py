@@ -48,7 +48,7 @@ class Costs:
 
     @classmethod
     def of(cls, ensembles: Iterable[Ensemble], observations: Sequence[Any], store: Store) -> "Costs":
-        """Costs from what the store has measured. Raises ValueError for an ensemble that no engine takes."""
+        """Costs from what the store has measured."""
         some = list(ensembles)
         measured = list(store.seconds_per_trajectory([ensemble.key for ensemble in some]))
         step = max(1, len(measured) // OWN_BATCHES)

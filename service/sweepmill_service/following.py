@@ -130,7 +130,7 @@ def _ensemble_infos(
     kept = {item.key: item for item in read if getattr(item, "keep_values", False)}
     costs = Costs.of(ensembles.values(), read, store)
     for one in members:
-        cost = costs[one.key]
+        cost = costs[ensembles[one.key].key]
         yield EnsembleInfo(
             key=one.key,
             cap=one.cap,

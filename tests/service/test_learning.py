@@ -105,6 +105,12 @@ def test_readings_count_and_what_is_learned_of_them_carries_over() -> None:
     assert learned > 1.5
 
 
+def test_what_a_worker_will_refuse_has_a_cost_all_the_same() -> None:
+    """A unit cell of two layers does not fit into one: the batch fails, and the plan must get that far."""
+    short = Ensemble.of("hybrid-clifford", sites=8, measurement_rate=0.1, layers=1)
+    assert Costs([short], [ENTROPY])[short.key].seconds > 0
+
+
 def test_a_sum_is_more_certain_than_its_parts_but_no_more_than_what_they_share() -> None:
     wanted = [chain(sites, 0.16) for sites in (8, 32, 128, 512)]
     costs = Costs(wanted, [ENTROPY])

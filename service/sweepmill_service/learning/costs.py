@@ -13,7 +13,7 @@ from sweepmill_service.learning.cases import DIMENSIONS, place, variant
 from sweepmill_service.learning.neighbors import Cases, Floats, Law, Neighbors
 from sweepmill_service.learning.readings import reading_seconds, signature
 from sweepmill_service.plan.costs import seconds_of
-from sweepmill_service.plan.work import work_of
+from sweepmill_service.plan.work import Work, work_of
 from sweepmill_service.store.evidence import Timed
 
 LAW: Final = Law(shared=(0.35, 0.15, 0.2, 0.5), local=0.25, together=1)
@@ -38,9 +38,9 @@ class Load(NamedTuple):
 
 
 def load_of(ensemble: Ensemble, observations: Sequence[Any]) -> Load:
-    """What a trajectory of an ensemble with these observations does. Raises ValueError for what no engine takes."""
+    """What a trajectory of an ensemble with these observations does; what a worker refuses to read costs nothing."""
     work = work_of(ensemble)
-    evolution, reading = seconds_of(work), reading_seconds(ensemble, work, observations)
+    evolution, reading = seconds_of(work), _reading(ensemble, work, observations)
     share = reading / (evolution + reading)
     own = UNLIKE if ensemble.family == LAYERED else 1.0
     return Load(
@@ -49,6 +49,13 @@ def load_of(ensemble: Ensemble, observations: Sequence[Any]) -> Load:
         (1.0, 1.0, own, share),
         (*place(ensemble, work), 2 * share),
     )
+
+
+def _reading(ensemble: Ensemble, work: Work, observations: Sequence[Any]) -> float:
+    try:
+        return reading_seconds(ensemble, work, observations)
+    except ValueError:
+        return 0.0
 
 
 def cases_of(loads: Sequence[Load]) -> Cases:
