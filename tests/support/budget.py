@@ -34,7 +34,7 @@ SHARES: Final[dict[str, float]] = {
     "random-stabilizer-states": 2e-6,
     "analysis": 6e-5,  # spent by the thresholds stated in tests/client/analysis
     "design": 1.8e-6,  # spent by the thresholds stated in tests/client/analysis/test_design_*.py
-    "published": 2e-6,  # spent by the thresholds stated in tests/client/analysis/test_published_*.py
+    "published": 2e-6,  # spent by the thresholds stated in tests/client/**/test_published*.py
 }
 
 
