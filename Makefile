@@ -4,7 +4,7 @@ VENV := .venv
 BIN := $(VENV)/bin
 READY := $(VENV)/.ready
 
-.PHONY: demo test serve lint bench clean
+.PHONY: demo test serve lint bench walkthrough clean
 
 $(READY): pyproject.toml deploy/constraints.txt
 	@$(PYTHON) -c 'import sys; sys.exit(sys.version_info < (3, 11))' || { echo "Sweepmill needs Python 3.11 or later: make PYTHON=python3.12 …"; exit 1; }
@@ -30,6 +30,9 @@ lint: $(READY)
 
 bench: $(READY)
 	@$(BIN)/python tests/benchmarks/run.py
+
+walkthrough: $(READY)
+	@$(BIN)/python docs/make_walkthrough.py
 
 clean:
 	rm -rf $(VENV) .pytest_cache .mypy_cache .ruff_cache .hypothesis demo-output
