@@ -23,7 +23,7 @@ def least(cost: Vector, budget: float) -> float:
 
 @pytest.mark.parametrize("cost", [COST, np.ones(60), np.geomspace(0.01, 100, 60)])
 def test_the_variance_is_the_least_that_a_linear_program_finds(cost: Vector) -> None:
-    found = allocated(INFORMATION, 0, cost, NONE, ENDLESS, 1e6)
+    found = allocated((INFORMATION,), 0, cost, NONE, ENDLESS, 1e6)
     assert found @ cost == pytest.approx(1e6)
     assert 1 - 1e-6 < variance(INFORMATION, 0, found) / least(cost, 1e6) < 1.02
 
@@ -32,7 +32,7 @@ def test_with_trajectories_and_caps_the_last_core_second_is_worth_the_same_every
     # the conditions of the minimum of a convex function between bounds (equivalence theorem, common practice)
     have, most = np.full(60, 50.0), np.full(60, 400.0)
     budget = 0.2 * float((most - have) @ COST)
-    found = allocated(INFORMATION, 0, COST, have, most, budget)
+    found = allocated((INFORMATION,), 0, COST, have, most, budget)
     assert (found - have) @ COST == pytest.approx(budget)
     solved = np.linalg.solve(np.tensordot(found, INFORMATION, 1), np.eye(5)[0])
     worth = (INFORMATION @ solved @ solved) / COST
@@ -48,7 +48,7 @@ def test_two_sizes_share_as_the_square_root_of_variance_over_cost() -> None:
     # a difference of two means: the classical allocation of two samples (common practice)
     slopes, noise, cost = np.array([[1.0, 0.0], [1.0, 1.0]]), np.array([1.0, 4.0]), np.array([1.0, 1e4])
     information = slopes[:, :, None] * slopes[:, None, :] / noise[:, None, None]
-    found = allocated(information, 1, cost, np.zeros(2), np.full(2, 1e9), 1e6)
+    found = allocated((information,), 1, cost, np.zeros(2), np.full(2, 1e9), 1e6)
     assert found[0] / found[1] == pytest.approx(np.sqrt(1.0 / 4.0 * 1e4), rel=1e-3)
 
 

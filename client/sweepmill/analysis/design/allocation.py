@@ -6,6 +6,8 @@ theorem of optimum design of experiments; c-optimality after Optimum allocation 
 Stat. 23, 255 (1952), both from memory).
 """
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -46,32 +48,39 @@ def variance(information: Informations, wanted: int, trajectories: Vector) -> fl
 
 
 def allocated(
-    information: Informations, wanted: int, cost: Vector, have: Vector, most: Vector, budget: float
+    fits: Sequence[Informations], wanted: int, cost: Vector, have: Vector, most: Vector, budget: float
 ) -> Vector:
     """Trajectories [n], not whole, that make the variance of parameter `wanted` least after `budget` more core-seconds.
 
+    With the informations for several fits it is the product of their variances that becomes least.
     The variance is the least of sum_i |w_i|^2/T_i over the weights w of linear estimators, convex in w and T together;
     minimizing over one and the other in turn goes down to the minimum.
     """
     room = np.flatnonzero(most > have)
     if budget <= 0 or len(room) == 0:
         return have
-    fixed = _total(have, information) - _total(have[room], information[room])
-    grown = _grown(information[room], fixed, wanted, (cost[room], have[room], most[room]), budget)
+    fixed = [_total(have, one) - _total(have[room], one[room]) for one in fits]
     trajectories = have.copy()
-    trajectories[room] = grown
+    columns = cost[room], have[room], most[room]
+    trajectories[room] = _grown([one[room] for one in fits], fixed, wanted, columns, budget)
     return trajectories
 
 
 def _grown(
-    information: Informations, fixed: Matrix, wanted: int, columns: tuple[Vector, Vector, Vector], budget: float
+    fits: Sequence[Informations],
+    fixed: Sequence[Matrix],
+    wanted: int,
+    columns: tuple[Vector, Vector, Vector],
+    budget: float,
 ) -> Vector:
-    """As `allocated` where all places have room; `fixed` [m, m] is the information of the others."""
+    """As `allocated` where all places have room; `fixed` [m, m] are the informations of the others."""
     cost, have, most = columns
     trajectories = np.minimum(have + budget / len(have) / cost, most)
     for _ in range(_STEPS):
-        solved = _solved(fixed + _total(trajectories, information), wanted)
-        worth = np.maximum(information @ solved @ solved, 0.0)
+        worth = np.zeros(len(have))
+        for information, others in zip(fits, fixed, strict=True):
+            solved = _solved(others + _total(trajectories, information), wanted)
+            worth += np.maximum(information @ solved @ solved, 0.0) / solved[wanted]
         trajectories = filled(trajectories * np.sqrt(worth / cost), cost, have, most, budget)
     return trajectories
 

@@ -96,7 +96,17 @@ def _plan(candidates: Candidates, points: Points, choice: Choice) -> Plan:
     noise = place_variance(candidates, points, u)
     form = form_places(candidates, u, choice.reach, np.array(used)) * np.sqrt(noise / candidates.cost)
     information, cautious = (_information(choice, candidates, noise, richer) for richer in (0, _RICHER))
-    return Plan(candidates, information, cautious, 0, usable, usable & _inner(candidates, u, choice.reach), form)
+    fits = _with_and_without_smallest(cautious, candidates, used)
+    return Plan(candidates, information, fits, 0, usable, usable & _inner(candidates, u, choice.reach), form)
+
+
+def _with_and_without_smallest(
+    information: Informations, candidates: Candidates, sizes: list[float]
+) -> tuple[Informations, ...]:
+    """With three sizes or more p_c is wanted without the smallest, too: only that shows corrections to scaling."""
+    if len(sizes) < 3:
+        return (information,)
+    return information, np.where((candidates.size > sizes[0])[:, None, None], information, 0.0)
 
 
 def _inner(candidates: Candidates, u: Vector, reach: float) -> Mask:

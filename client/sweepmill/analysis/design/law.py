@@ -109,7 +109,7 @@ def _plan(points: Points, fitted: FittedLaw, candidates: Candidates, owner: Indi
     noise = _noise(points, candidates, owner)
     information = _information(fitted, candidates, kept, noise, usable)
     form = np.where(usable & (candidates.have > 0), np.sqrt(noise / candidates.cost), 0.0)
-    return Plan(candidates, information, information, _number(fitted, coefficient), usable, usable, form)
+    return Plan(candidates, information, (information,), _number(fitted, coefficient), usable, usable, form)
 
 
 def _information(fitted: FittedLaw, candidates: Candidates, kept: Indices, noise: Vector, usable: Mask) -> Informations:

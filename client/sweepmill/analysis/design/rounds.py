@@ -20,14 +20,14 @@ _STEPS = 12
 class Plan:
     """Linearized fit at all candidates: information of one trajectory, which parameter is wanted, places by use.
 
-    `cautious` is the information for a richer function, by which trajectories are placed: an optimum for the function
+    `cautious` are the informations for a richer function, by which trajectories are placed: an optimum for the function
     as fitted would lean on its shape. `usable` are the places within the window, `inner` those that trajectories for
     the value itself may go to, `form` [n] >= 0 the shares by which the form is tested.
     """
 
     candidates: Candidates
     information: Informations
-    cautious: Informations
+    cautious: tuple[Informations, ...]
     wanted: int
     usable: Mask
     inner: Mask
