@@ -180,6 +180,10 @@ def test_the_coefficients_are_those_of_the_analysis() -> None:
             changed(LAW, stop__law__over="position"),
             'stop.law.of: a law in the position needs a quantity of every position at one time, such as "every-cut"',
         ),
+        (
+            changed(LAW, stop__law__of="cuts", stop__law__over="position", circuit__sites=[16, 6]),
+            "stop.law.of: 3 positions up to half the chain are too few for this law",
+        ),
     ],
 )
 def test_a_goal_that_does_not_fit_is_refused_with_what_would_pass(specification: dict[str, Any], fault: str) -> None:

@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 
 from sweepmill.accumulate import Accumulator
+from sweepmill.coordinates import coordinates
 from sweepmill.ensemble import Ensemble
 from sweepmill.ladder import rungs
 from sweepmill.sweep import Sweep
@@ -155,3 +156,37 @@ def test_a_group_that_met_its_goal_gets_no_more_while_the_others_go_on() -> None
     for place in known.places:
         mine = met[0 if place.normal_form["bond_rate"] == 0.5 else 1]
         assert (decision.targets[place.ordinal] == 1600) or not mine
+
+
+def by_position(boundary: str, region: str, slope: float) -> Evidence:
+    """A chain of 16 sites with invented entropies that go by the chord; a length and its complement have the same."""
+    averaged = {"average_translations": True} if boundary == "periodic" else {}
+    sweep = Sweep.parse(
+        {
+            "circuit": ISING | {"sites": 16, "bond_rate": 0.5, "boundary": boundary},
+            "observe": [{"name": "cuts", "quantity": "entropy", "region": region, **averaged}],
+            "stop": {
+                "trajectories": 20000,
+                "law": {"of": "cuts", "law": "logarithm", "coefficient": "a", "over": "position", "below": 0.1},
+            },
+        }
+    )
+    (point,), number = sweep.points, 4000
+    at = coordinates(point.ensemble, sweep.observations[0].observation)
+    means = np.array([0.0, *(slope * np.log(np.sin(np.pi * np.arange(1, 9) / 16)) + 2)])
+    drawn = np.random.default_rng(16).binomial(4, means / 4, (number, 9))
+    values = np.stack([drawn[:, min(int(one.position or 0), 16 - int(one.position or 0))] * one.scale for one in at], 1)
+    total = Accumulator.from_values(values, 0).to_bytes()
+    place = StoredPlace(0, point.ensemble.key, point.ensemble.normal_form(), number, 20000, False, 1e-3, total)
+    return Evidence(sweep.key, {}, sweep.canonical(), 200, 0, 1.0, None, (place,))
+
+
+@pytest.mark.parametrize(
+    ("boundary", "region"), [("open", "every-cut"), ("periodic", "every-cut"), ("periodic", "every-interval")]
+)
+def test_a_law_in_the_position_is_read_up_to_half_the_chain_in_chords(boundary: str, region: str) -> None:
+    # an open chain has (2 L/pi) sin(pi l/L) in place of l, a ring its chord: J. Stat. Mech. P06002 (2004), from memory
+    decision = decide(by_position(boundary, region, 0.8))
+    (answer,) = decision.answers
+    assert set(decision.met_by.values()) == {"error"}
+    assert abs(answer["value"] - 0.8) < 5 * answer["error"]  # chance of failure 6e-7

@@ -69,10 +69,18 @@ class Fitted:
 
     @cached_property
     def variances(self) -> Vector:
-        """Variances of the reported quantities by noise: jackknife, or linear propagation of the errors."""
-        if self.replicas is not None:
-            inflation = self.solution.problem.whitening.inflation(self.frame.form.parameters())
-            return np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
+        """Variances of the reported quantities by noise: jackknife, or linear propagation of the errors.
+
+        The larger of both where the error of a point is a bound: replicas that do not vary tell of no error.
+        """
+        if self.replicas is None:
+            return self._linear
+        inflation = self.solution.problem.whitening.inflation(self.frame.form.parameters())
+        found = np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
+        return np.maximum(found, self._linear) if self.points.bounded else found
+
+    @property
+    def _linear(self) -> Vector:
         gradient = self._gradient()
         return np.asarray(np.maximum(np.einsum("ij,jk,ik->i", gradient, self.solution.covariance, gradient), 0.0))
 

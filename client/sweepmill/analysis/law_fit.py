@@ -76,10 +76,18 @@ class FittedLaw:
 
     @cached_property
     def variances(self) -> Vector:
-        """Variances of the parameters by noise: jackknife, or from the errors of the points."""
-        if self.replicas is not None:
-            inflation = self.solution.problem.whitening.inflation(self.law.parameters)
-            return np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
+        """Variances of the parameters by noise: jackknife, or from the errors of the points.
+
+        The larger of both where the error of a point is a bound: replicas that do not vary tell of no error.
+        """
+        if self.replicas is None:
+            return self._linear
+        inflation = self.solution.problem.whitening.inflation(self.law.parameters)
+        found = np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
+        return np.maximum(found, self._linear) if self.points.bounded else found
+
+    @property
+    def _linear(self) -> Vector:
         free = len(self.solution.theta)
         found = np.diag(self.solution.covariance)
         return self._report(found[:free], found[free:]) * np.where(

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from sweepmill.analysis.arrays import Mask, Matrix, Vector
-from sweepmill.analysis.jackknife import jackknife_covariance, replicas_from_folds
+from sweepmill.analysis.jackknife import jackknife_covariance, jackknife_error, replicas_from_folds
 from sweepmill.analysis.selecting import keys_of, numbers, require_curves, require_finite
 from sweepmill.errors import SharedTrajectories
 from sweepmill.folds import Folds
@@ -113,6 +113,11 @@ class Points:
     def folds(self) -> int:
         """Number of folds; 0 without replicas."""
         return 0 if self.replicas is None else len(self.replicas)
+
+    @property
+    def bounded(self) -> bool:
+        """Whether the error of some point is a bound, larger than its replicas know of: they hardly vary."""
+        return self.replicas is not None and bool((2 * jackknife_error(self.replicas) < self.error).any())
 
     def distinct_sizes(self) -> list[float]:
         """The sizes, each once, ascending."""

@@ -81,7 +81,12 @@ def _place_faults(goal: Goal, ensembles: Sequence[Ensemble], observed: Any) -> I
     if isinstance(goal, LawGoal) and goal.over == "position":
         if len({place.layer for place in places}) > 1 or any(place.position is None for place in places):
             yield "of", 'a law in the position needs a quantity of every position at one time, such as "every-cut"'
-        elif len(places) < len(LAWS[goal.law]) + 2:
-            yield "of", f"{len(places)} positions are too few for this law"
+        elif (number := min(_within_half(ensemble, observed) for ensemble in ensembles)) < len(LAWS[goal.law]) + 2:
+            yield "of", f"{number} positions up to half the chain are too few for this law"
     elif len(places) > 1:
         yield "of", f"needs one number per ensemble, and this observation has {len(places)}: read it at one time"
+
+
+def _within_half(ensemble: Ensemble, observed: Any) -> int:
+    """Positions up to half the chain, beyond which the same cuts come again."""
+    return sum((place.position or 0) <= ensemble.sites / 2 for place in coordinates(ensemble, observed))

@@ -6,7 +6,6 @@ from typing import Any, Literal, NamedTuple
 
 from sweepmill.analysis.design import Advice, Place, advise_critical_point, advise_law
 from sweepmill.analysis.estimate import Estimate, finite
-from sweepmill.ensemble import Ensemble
 from sweepmill.goals import CriticalPointGoal, Goal, Group, LawGoal, groups
 from sweepmill.ladder import rungs
 from sweepmill_service.rounds.costs import weighed_costs
@@ -44,9 +43,7 @@ def _judge(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs:
         for place, size, x in zip(stored, group.sizes, group.x, strict=True)
     ]
     if isinstance(goal, LawGoal) and goal.over == "position":
-        ensemble = Ensemble.from_normal_form(stored[0].normal_form)
-        ring = float(ensemble.sites) if ensemble.periodic else None
-        curve = curve_of(stored[0], observed)
+        curve, ring = curve_of(stored[0], observed)
         return _Judged(group, advise_law(curve, places, goal.law, goal.coefficient, goal.below, ring))
     if not sampled:
         return _Judged(group, _nothing(stored))

@@ -25,12 +25,20 @@ def points_of(places: Sequence[StoredPlace], observed: Any, sizes: Sequence[floa
     return Points.of(sizes, x, means, errors, np.hstack(replicas), [place.ensemble for place in places])
 
 
-def curve_of(place: StoredPlace, observed: Any) -> Points:
-    """The points of one place, x its positions."""
+def curve_of(place: StoredPlace, observed: Any) -> tuple[Points, float | None]:
+    """The points of one place, x its positions, and the ring whose chords stand for lengths, if any.
+
+    Positions go up to half the chain: beyond it the same cuts come again from the other end. On an open chain a cut
+    at l goes by (2 L/pi) sin(pi l/L) (Entanglement entropy and quantum field theory, J. Stat. Mech. P06002 (2004),
+    from memory), the chord on a ring of L sites but for a factor, which a constant takes up; a window inside it has
+    no such length.
+    """
     ensemble, total = Ensemble.from_normal_form(place.normal_form), Accumulator.from_bytes(place.accumulator or b"")
     at = coordinates(ensemble, observed)
     moments = summarize(total, at)
     replicas = replicas_from_folds(*fold_ratios(total, at))
     positions = [float(one.position or 0) for one in at]
     means, errors = [one.mean for one in moments], [one.standard_error for one in moments]
-    return Points.of(ensemble.sites, positions, means, errors, replicas, [place.ensemble] * len(at))
+    points = Points.of(ensemble.sites, positions, means, errors, replicas, [place.ensemble] * len(at))
+    chords = ensemble.periodic or getattr(observed, "region", None) == "every-cut"
+    return points.taken(points.x <= ensemble.sites / 2), float(ensemble.sites) if chords else None

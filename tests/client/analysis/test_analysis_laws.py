@@ -177,3 +177,14 @@ def test_results_are_plain_json_with_the_keys_of_their_ensembles() -> None:
 def test_lengths_must_be_positive() -> None:
     with pytest.raises(ValueError, match="positive"):
         fit_laws(Points.of(8, [0, 1, 2], [0, 1, 2], 0.1))
+
+
+def test_samples_that_do_not_vary_still_have_the_errors_of_their_bounds() -> None:
+    # nothing but zeros in 200 trajectories: the folds know of no noise, the bound of 1/200 is all there is
+    sizes, error = np.array([8, 12, 16, 24, 32.0]), 0.005
+    replicas, keys = np.zeros((64, 5)), [f"{size:064.0f}" for size in sizes]
+    replicas[:3, 2] = 1e-5
+    points = Points.of(sizes, sizes, replicas.mean(axis=0), error, replicas, keys)
+    slope = fit_laws(points)["logarithm"]["a"]
+    spread = np.log(sizes) - np.log(sizes).mean()
+    assert slope.statistical >= 0.999 * error / np.sqrt(np.sum(spread**2))
