@@ -40,7 +40,6 @@ class Page:
     def __init__(self, directory: Path) -> None:
         self.directory = directory
         self.names: dict[str, Any] = {}
-        self.keys: dict[str, str] = {}
 
     def made(self, source: str) -> str:
         """The page."""
@@ -50,24 +49,30 @@ class Page:
         language, what, *options = head
         if what == "include":
             return _fenced(language, (HERE.parent / body.strip()).read_text())
-        body = body.format(**self.keys) if "{" in body else body
         if what.startswith("write="):
-            self._written(what.removeprefix("write="), body)
+            body = body.format()
+            (self.directory / what.removeprefix("write=")).write_text(body)
             return _fenced(language, body)
         if language == "console":
             return _fenced(language, "\n".join(self._ran(line, options) for line in body.splitlines()) + "\n")
+        body = body.format(**self._keys())
         return _fenced(language, body) + "\n" + _fenced("text", self._executed(body))
 
-    def _written(self, name: str, body: str) -> None:
-        path = self.directory / name
-        path.write_text(body)
-        self.keys[path.stem] = short(Sweep.read(path).key)
+    def _keys(self) -> dict[str, str]:
+        """Short keys of the sweeps in the files that are there by now, and of the first ensemble of the example."""
+        files = [*self.directory.glob("*.toml"), *self.directory.glob("*.json")]
+        sweeps = {path.stem: Sweep.read(path) for path in files}
+        ring = Sweep.read(EXAMPLE)
+        first = {"ring": short(ring.key), "ensemble": short(ring.points[0].ensemble.key)}
+        return first | {stem: short(sweep.key) for stem, sweep in sweeps.items()}
 
     def _ran(self, line: str, options: list[str]) -> str:
+        line = line.format(**self._keys())
         command = shlex.split(line.removeprefix("$ "))
-        done = subprocess.run(  # noqa: S603
-            [sys.executable, "-m", *command], cwd=self.directory, capture_output=True, text=True, check=True
-        )
+        arguments = [sys.executable, "-m", *command]
+        done = subprocess.run(arguments, cwd=self.directory, capture_output=True, text=True, check=False)  # noqa: S603
+        if done.returncode:
+            raise SystemExit(f"{line}\n{done.stdout}{done.stderr}")
         shown = (done.stderr + done.stdout).rstrip().splitlines()
         most = next((int(one.removeprefix("lines=")) for one in options if one.startswith("lines=")), len(shown))
         shown = shown[:most] + ["…"] * (len(shown) > most)
@@ -113,10 +118,7 @@ def main() -> None:
         (directory / "figures").mkdir(exist_ok=True)
         with service(f"sqlite:///{directory / 'walkthrough.sqlite'}", SETTINGS) as url, Client(url):
             os.environ |= {"SWEEPMILL_URL": url, "SWEEPMILL_OWNER": "skerry"}
-            page = Page(directory)
-            sweep = Sweep.read(EXAMPLE)
-            page.keys |= {"ring": short(sweep.key), "ensemble": short(sweep.points[0].ensemble.key)}
-            text = page.made((HERE / "walkthrough.in.md").read_text())
+            text = Page(directory).made((HERE / "walkthrough.in.md").read_text())
         (HERE / "walkthrough.md").write_text(text)
         for figure in sorted((directory / "figures").glob("*.png")):
             shutil.copy(figure, HERE / "figures")
