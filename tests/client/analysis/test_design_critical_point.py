@@ -84,3 +84,19 @@ def test_where_every_ensemble_is_at_its_cap_nothing_is_asked_for() -> None:
 
 def test_equal_input_gives_equal_advice() -> None:
     assert str(Synthetic(5, GRID[::4]).advice(0.0005)) == str(Synthetic(5, GRID[::4]).advice(0.0005))
+
+
+def test_a_collapse_of_sizes_that_keep_their_order_has_no_error_bar() -> None:
+    # tripartite information of hybrid Clifford rings as once sampled, all on the side of many measurements: the
+    # transition is at 0.16, and the scaling form has it at 0.240(8)
+    sizes = np.array([16, 16, 16, 32, 32, 32, 48, 48, 48, 48.0])
+    rates = np.array([0.22, 0.26, 0.3, 0.22, 0.26, 0.3, 0.22, 0.25, 0.26, 0.3])
+    means = [-0.0825, -0.0286842, -0.015, -0.049375, -0.0084375, -0.001875, -0.005625, -0.00111607, 0.000416667, 0.0]
+    errors = [0.0150752, 0.00539874, 0.0080922, 0.0138668, 0.00625059, 0.00519088, 0.00566795, 0.00309498]
+    counts = [200, 475, 200, 200, 200, 200, 200, 336, 200, 200]
+    points = Points.of(sizes, rates, means, [*errors, 0.00504335, 0.005])
+    places = [Place(s, x, 1e-4, n, 20000) for s, x, n in zip(sizes, rates, counts, strict=True)]
+    advice = advise_critical_point(points, places, 0.02)
+    assert not advice.met
+    assert advice.estimate.error is None
+    assert "order" in advice.reason

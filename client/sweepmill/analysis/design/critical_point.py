@@ -25,6 +25,7 @@ from sweepmill.analysis.shapes import Polynomial
 
 _RICHER = 2  # degrees: trajectories are placed as if the function could be that much richer than the one fitted
 _INNER = 0.5  # of the window
+_NO_CHANGE = "the sizes are not seen to change their order"  # any smooth data have some collapse beside the transition
 _ROUGH = 0.25  # of the range of x: a fit with a larger error does not tell where to look
 
 
@@ -40,7 +41,7 @@ def advise_critical_point(points: Points, places: Sequence[Place], below: float)
     if choice is None or trouble:
         return _without_fit(candidates, points, order, choice, trouble)
     collapse = fit_collapse(choice.fitted.points, choice.fitted.frame.form)
-    estimate = _judged(collapse)
+    estimate = _judged(collapse) if order else replace(_judged(collapse), withheld=_NO_CHANGE)
     done = met(estimate, "p_c", candidates, below)
     return done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
 
