@@ -110,6 +110,14 @@ def test_a_law_has_one_group_of_sizes_for_every_other_value() -> None:
     assert len(groups(by_cut.goal, [point.ensemble for point in by_cut.points])) == 6
 
 
+def test_the_size_of_a_lattice_is_its_width() -> None:
+    circuit = {"family": "hybrid-clifford-square", "width": [4, 6], "measurement_rate": [0.14, 0.18]}
+    sweep = Sweep.parse(changed(POINT, circuit=circuit, observe=[{"name": "i3", "quantity": "global-entropy"}]))
+    assert sweep.goal is not None
+    (found,) = groups(sweep.goal, [point.ensemble for point in sweep.points])
+    assert set(found.sizes) == {4.0, 6.0}
+
+
 def test_the_coefficients_are_those_of_the_analysis() -> None:
     laws = pytest.importorskip("sweepmill.analysis").ENTANGLEMENT
     names = {law.name: (*law.coefficients, *([law.exponent.name] if law.exponent else [])) for law in laws}

@@ -54,8 +54,13 @@ def _names(shared: list[list[dict[str, Any]]]) -> list[str]:
 
 
 def _group(goal: Goal, ensembles: Sequence[Ensemble], ordinals: list[int], where: dict[str, Any]) -> Group:
-    sizes = tuple(float(ensembles[i].sites) for i in ordinals)
+    sizes = tuple(_size(ensembles[i]) for i in ordinals)
     x = sizes
     if isinstance(goal, CriticalPointGoal):
         x = tuple(float(ensembles[i].columns[goal.axis or ""]) for i in ordinals)
     return Group(where, tuple(ordinals), sizes, x)
+
+
+def _size(ensemble: Ensemble) -> float:
+    """Sites of a chain, the width of a lattice: the length that scales, as fits of tables take it."""
+    return float(ensemble.columns.get("width", ensemble.sites))
