@@ -37,6 +37,8 @@ def sentence(status: SweepStatus) -> str:
     if status.state in ("waiting", "sampling") and status.seconds_left is not None:
         left = duration(status.seconds_left)
         parts.append(f"{left} left" if left.startswith("under") else f"about {left} left")
+    if status.state == "settled" and not all(answer.met for answer in status.answers):
+        parts.append("the goal is not met")
     parts += [answer_text(answer) for answer in status.answers[:ANSWERS]]
     return ", ".join(parts) + (f" ({status.reason})" if status.reason else "")
 
@@ -44,7 +46,7 @@ def sentence(status: SweepStatus) -> str:
 def answer_text(answer: Answer, with_round: bool = True) -> str:
     """What a round found, as in `p_c = 0.1597(6), 0.0005 asked (round 4)`."""
     where = "".join(f"{name} = {value}: " for name, value in answer.where.items())
-    found = "not known yet"
+    found = "no answer"
     if answer.value is not None:
         found = f"{answer.value:.5g} (no error bar)" if answer.error is None else with_error(answer.value, answer.error)
     said = f"{where}{answer.quantity} = {found}, {answer.below:g} asked"

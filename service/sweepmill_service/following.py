@@ -68,8 +68,10 @@ class Follower:
     def stop_stuck(self) -> None:
         """Sweeps that cannot proceed: budget spent, or nothing left but ensembles that are stuck."""
         for key in self._plan.over_budget():
-            budget = self._plan.sweeps[key].info.budget
-            self._store.stick_sweep(key, f"budget of {budget:g} core-seconds spent before the rule was met")
+            info = self._plan.sweeps[key].info
+            spent = f"budget of {info.budget:g} core-seconds spent"
+            if not (info.has_goal and self._store.end_rounds(key, spent)):
+                self._store.stick_sweep(key, f"{spent} before the rule was met")
             self.drop(key)
         if self._plan.stuck:
             for key in self._store.stick_sweeps(self._plan.with_stuck()):

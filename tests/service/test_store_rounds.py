@@ -156,3 +156,20 @@ def test_a_sweep_that_comes_back_is_judged_from_where_it_was(store: Store, first
     store.submit(first_round, "ada")
     assert {one.cap for one in store.open_ensembles(first_round.key)} == {282}
     assert store.evidence(first_round.key).rounds == 1
+
+
+def test_a_spent_budget_settles_at_the_last_round_and_leaves_out_what_was_placed_since(
+    store: Store, first_round: Sweep
+) -> None:
+    assert not store.end_rounds(first_round.key, "spent")
+    store.close_round(store.evidence(first_round.key), decision({1: 282, 3: 200, 6: 200, 8: 200, 2: 200}))
+    keys, observations = keys_of(first_round)
+    store.commit([result(keys[2], observations, 0, 150, first_round.key)])
+    assert store.end_rounds(first_round.key, "spent")
+    status = store.sweep_status(first_round.key)
+    assert (status.state, status.ensembles, status.settled) == ("settled", 4, 4)
+    assert [answer.reason for answer in status.answers] == ["spent"]
+    assert {(entry.ordinal, entry.trajectories) for entry in store.table_entries(first_round.key)} == {
+        (ordinal, 200) for ordinal in STARTING
+    }
+    assert [one.settled for one in store.rounds(first_round.key)] == [False, True]

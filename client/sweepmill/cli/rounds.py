@@ -6,7 +6,7 @@ import typer
 
 from sweepmill.cli.options import Key, Url
 from sweepmill.client import Client
-from sweepmill.messages import Round
+from sweepmill.messages import Answer, Round
 from sweepmill.progress import answer_text
 from sweepmill.text import aligned, count, duration
 
@@ -32,7 +32,7 @@ def rounds(
     if not found:
         print("no round was judged yet, or the sweep has no goal")
         return
-    print(aligned(HEADERS, [_row(one) for one in found]))
+    print(aligned(HEADERS, [row for one in found for row in _rows(one)]))
     for one in found if places else ():
         rows = [
             [*(names.get(place.ordinal, {}).get(axis) for axis in axes), place.judged, place.target]
@@ -41,9 +41,13 @@ def rounds(
         print(f"\nround {one.number}\n" + aligned((*axes, "trajectories", "next round"), rows))
 
 
-def _row(one: Round) -> list[str]:
-    answers = "; ".join(answer_text(answer, with_round=False) for answer in one.answers)
-    reasons = "; ".join(dict.fromkeys(answer.reason for answer in one.answers if answer.reason))
+def _rows(one: Round) -> list[list[str]]:
+    """A line for each answer, the numbers of the round on the first."""
     used = sum(place.judged > 0 for place in one.places)
-    decided = f"settled{f': {reasons}' if reasons else ''}" if one.settled else reasons
-    return [str(one.number), count(used), count(one.trajectories), duration(one.core_seconds), answers, decided]
+    numbers = [str(one.number), count(used), count(one.trajectories), duration(one.core_seconds)]
+    lines = [[answer_text(answer, with_round=False), _decided(one, answer)] for answer in one.answers]
+    return [[*(numbers if index == 0 else [""] * len(numbers)), *line] for index, line in enumerate(lines)]
+
+
+def _decided(one: Round, answer: Answer) -> str:
+    return ": ".join(part for part in ("settled" if one.settled else "", answer.reason or "") if part)

@@ -28,13 +28,29 @@ def decide(known: Evidence) -> Decision:
     judged = [_judge(goal, group, known, sweep, costs) for group in groups(goal, sweep.ensembles)]
     answers = tuple(_answer(goal, one, known.rounds + 1) for one in judged)
     by_ordinal = {place.ordinal: cost for place, cost in zip(known.places, costs, strict=True)}
-    targets = _affordable(known, _targets(known, judged), by_ordinal)
-    if any(targets[place.ordinal] > place.judged for place in known.places):
+    wanted = _targets(known, judged)
+    targets = _affordable(known, wanted, by_ordinal)
+    if _raises(known, targets):
         return Decision(answers, targets, by_ordinal, {})
+    if _raises(known, wanted):
+        spent = f"what is left of the budget of {known.budget:g} core-seconds pays for no further round"
+        answers = tuple(one if one["met"] else {**one, "reason": spent} for one in answers)
     return Decision(answers, {}, by_ordinal, _met_by(judged))
 
 
+def _raises(known: Evidence, targets: dict[int, int]) -> bool:
+    return any(targets[place.ordinal] > place.judged for place in known.places)
+
+
 def _judge(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs: Sequence[float]) -> _Judged:
+    """The group as it stands; data that no fit takes withhold its answer, and are no fault of the sweep."""
+    try:
+        return _advised(goal, group, known, sweep, costs)
+    except ValueError as error:
+        return _Judged(group, _nothing([known.places[ordinal] for ordinal in group.ordinals], str(error)))
+
+
+def _advised(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs: Sequence[float]) -> _Judged:
     observed = next(item.observation for item in sweep.observations if item.name == goal.of)
     stored = [known.places[ordinal] for ordinal in group.ordinals]
     sampled = [index for index, place in enumerate(stored) if place.accumulator is not None]
@@ -46,7 +62,7 @@ def _judge(goal: Goal, group: Group, known: Evidence, sweep: StoredSweep, costs:
         curve, ring = curve_of(stored[0], observed)
         return _Judged(group, advise_law(curve, places, goal.law, goal.coefficient, goal.below, ring))
     if not sampled:
-        return _Judged(group, _nothing(stored))
+        return _Judged(group, _nothing(stored, "none of its ensembles could be sampled"))
     points = points_of(
         [stored[i] for i in sampled], observed, [group.sizes[i] for i in sampled], [group.x[i] for i in sampled]
     )
@@ -59,8 +75,8 @@ def _at_most(place: StoredPlace) -> int:
     return place.judged if place.stuck else max(place.most, place.judged)
 
 
-def _nothing(stored: Sequence[StoredPlace]) -> Advice:
-    estimate = Estimate(math.nan, math.nan, 0.0, "none of its ensembles could be sampled")
+def _nothing(stored: Sequence[StoredPlace], why: str) -> Advice:
+    estimate = Estimate(math.nan, math.nan, 0.0, why)
     return Advice(estimate, False, tuple(place.judged for place in stored), math.inf, estimate.withheld)
 
 

@@ -108,6 +108,24 @@ def close_round(connection: Connection, known: Evidence, decision: Decision) -> 
     return outcome
 
 
+def end_rounds(connection: Connection, key: str, reason: str) -> bool:
+    """Settle a sweep at the N of its last round, what was placed since then left out; False if there is none."""
+    known = evidence(connection, key)
+    if not known.rounds:
+        return False
+    answers = json.loads(str(connection.scalar(select(sweep.c.answers).where(sweep.c.key == key))))
+    lock_ensembles(connection, [place.ensemble for place in known.places if place.judged])
+    members = sweep_ensemble.c
+    able = select(ensemble.c.key).where(ensemble.c.stuck.is_(None))
+    mine = (members.sweep == key, members.met_by.is_(None), members.ensemble.in_(able))
+    connection.execute(update(sweep_ensemble).where(*mine).values(cap=members.judged))
+    by: Literal["error", "cap"] = "error" if all(one["met"] for one in answers) else "cap"
+    met_by = dict.fromkeys((place.ordinal for place in known.places if place.judged), by)
+    noted = tuple({**one, "round": known.rounds + 1, "reason": reason} if not one["met"] else one for one in answers)
+    _count_places(connection, key)
+    return close_round(connection, known, Decision(noted, {}, {}, met_by)) is not None
+
+
 def rounds(connection: Connection, key: str) -> list[Round]:
     """All rounds of a sweep in order, and none where it has no goal."""
     rows = connection.execute(select(round_).where(round_.c.sweep == key).order_by(round_.c.number))
@@ -194,8 +212,14 @@ def _place_anew(connection: Connection, known: Evidence, decision: Decision) -> 
 
 
 def _note_answers(connection: Connection, key: str, decision: Decision) -> None:
+    answers = to_json(list(decision.answers))
+    connection.execute(update(sweep).where(sweep.c.key == key).values(answers=answers))
+    _count_places(connection, key)
+
+
+def _count_places(connection: Connection, key: str) -> None:
     members = sweep_ensemble.c
     mine = (members.sweep == key, or_(members.cap > 0, members.met_by.is_not(None)))
     placed, caps = connection.execute(select(func.count(), func.sum(members.cap)).where(*mine)).one()
-    values = {"answers": to_json(list(decision.answers)), "ensembles": placed, "trajectories_cap": int(caps)}
+    values = {"ensembles": placed, "trajectories_cap": int(caps)}
     connection.execute(update(sweep).where(sweep.c.key == key).values(**values))

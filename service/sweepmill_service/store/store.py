@@ -222,6 +222,11 @@ class Store:
         with self._writer.begin() as connection:
             return rounds.close_round(connection, known, decision)
 
+    def end_rounds(self, key: str, reason: str) -> bool:
+        """Settle a sweep with a goal where its last round left it; False if no round was judged."""
+        with self._writer.begin() as connection:
+            return rounds.end_rounds(connection, key, reason)
+
     def rounds(self, key: str) -> list[Round]:
         """The rounds in which the goal of a sweep was judged."""
         with self.engine.connect() as connection:

@@ -26,6 +26,8 @@ from sweepmill.analysis.shapes import Polynomial
 _RICHER = 2  # degrees: trajectories are placed as if the function could be that much richer than the one fitted
 _INNER = 0.5  # of the window
 _NO_CHANGE = "the sizes are not seen to change their order"  # any smooth data have some collapse beside the transition
+_TWO = "two sizes cannot show whether p_c moves with the size"
+_UNTESTED = "the smaller sizes have no scaling that would show how p_c moves with the size"
 _ROUGH = 0.25  # of the range of x: a fit with a larger error does not tell where to look
 
 
@@ -41,9 +43,27 @@ def advise_critical_point(points: Points, places: Sequence[Place], below: float)
     if choice is None or trouble:
         return _without_fit(candidates, points, order, choice, trouble)
     collapse = fit_collapse(choice.fitted.points, choice.fitted.frame.form)
-    estimate = _judged(collapse) if order else replace(_judged(collapse), withheld=_NO_CHANGE)
+    estimate = _with_drift(_judged(collapse), points, collapse.points.distinct_sizes())
+    if not order:
+        estimate = replace(estimate, withheld=_NO_CHANGE)
     done = met(estimate, "p_c", candidates, below)
-    return done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
+    advice = done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
+    few = len(points.distinct_sizes()) == 2
+    return replace(advice, reason=f"{advice.reason}; {_TWO}") if few else advice
+
+
+def _with_drift(estimate: Estimate, points: Points, used: list[float]) -> Estimate:
+    """Where two of more sizes are left, nothing in their fit shows how p_c moves with the size.
+
+    The pair before them does: the whole way from its p_c counts as spread.
+    """
+    sizes = points.distinct_sizes()
+    if len(used) > 2 or len(sizes) == 2:
+        return estimate
+    before = choose(points.taken(np.isin(points.sizes, sizes[-3:-1])))
+    if before is None:
+        return replace(estimate, withheld=_UNTESTED)
+    return replace(estimate, spread=math.hypot(estimate.spread, estimate.value - float(before.fitted.values[0])))
 
 
 def _judged(collapse: Collapse) -> Estimate:

@@ -75,10 +75,13 @@ def _owner(points: Points, candidates: Candidates) -> Indices:
 
 
 def _choose(points: Points, law: Law, ring: float | None) -> FittedLaw | None:
-    """The fit without the fewest small x that describes its data, with at least one degree of freedom."""
+    """The fit without the fewest small x that describes its data, with at least one degree of freedom.
+
+    Half of the x are kept at least: a law of the few largest is none.
+    """
     x = np.unique(points.x)
     step = max(1, round(len(x) / _CUTS))
-    for cut in x[::step]:
+    for cut in x[: len(x) // 2 + 1 : step]:
         part = points.taken(points.x >= cut)
         if len(part) <= law.parameters:
             return None
