@@ -3,18 +3,20 @@
 from typing import Any
 
 from sweepmill.errors import SpecificationError, SweepmillError
+from sweepmill.series import COUNT, SHARE
 from sweepmill.sweep import Sweep
 
 READINGS = 32  # of the shortest circuit, at least as far as unit cells allow
 TRAJECTORIES = 400
-_COSTLY = ("histogram", "keep_values")
+_LEFT_OUT = ("histogram", "keep_values", "cumulative")  # costly, or never settling
 
 
 def companion(sweep: Sweep, trajectories: int = TRAJECTORIES) -> Sweep:
     """The sweep with `at = { every = n }` in every observation that can be a series, and few trajectories.
 
-    Its ensembles are those of the sweep, so it reads trajectories that are of the same stream. Raises SweepmillError
-    where no observation can be read along the layers.
+    Counts from the first layer on are replaced by the share of random outcomes of single layers. Its ensembles are
+    those of the sweep, so it reads trajectories that are of the same stream. Raises SweepmillError where no observation
+    can be read along the layers.
     """
     layers = min(point.ensemble.layers for point in sweep.points)
     cell = max(point.ensemble.cell for point in sweep.points)
@@ -27,7 +29,9 @@ def companion(sweep: Sweep, trajectories: int = TRAJECTORIES) -> Sweep:
 
 
 def _series(observation: dict[str, Any], every: int) -> dict[str, Any]:
-    kept = {name: value for name, value in observation.items() if name not in _COSTLY}
+    if observation["quantity"] == COUNT:  # grows with every layer: what each of them adds can settle
+        return {"quantity": SHARE, "at": {"every": every}}
+    kept = {name: value for name, value in observation.items() if name not in _LEFT_OUT}
     return {**kept, "at": {"every": every}}
 
 

@@ -14,6 +14,7 @@ from sweepmill.analysis.selecting import NotOneCurve
 from sweepmill.analysis.steady import TOLERANCE, Steadiness, steady_series
 from sweepmill.analysis.times import fit_times, settling_depths
 from sweepmill.folds import Folds
+from sweepmill.series import series_names, why_none
 from sweepmill.table import Table
 from sweepmill.text import aligned
 
@@ -77,29 +78,19 @@ class SweepSteadiness:
         return self.steadiness.plot(path, x_label, y_label or self.name)
 
 
-def series_names(table: Table) -> list[str]:
-    """Observations that were read at several layers."""
-    layers: dict[str, set[Any]] = {}
-    for name, layer in zip(table.values("name"), table.values("layer"), strict=True):
-        layers.setdefault(str(name), set()).add(layer)
-    return sorted(name for name, found in layers.items() if len(found) > 1)
-
-
 def steady_sweep(table: Table, of: str | None = None, tolerance: float = TOLERANCE) -> SweepSteadiness:
     """Judge every ensemble of a sweep, from its folds (or its table, with bounds for errors), as `steady_yet` does.
 
     `of` may be left out where one observation only was read along the layers. Raises NotOneCurve for a choice that
-    is missing, ValueError where nothing was read along the layers.
+    is missing, ValueError where nothing was read along the layers that can settle.
     """
     names = series_names(table)
     if not names:
-        raise ValueError(
-            "no observation was read along the layers, so nothing tells whether the circuits were deep enough"
-        )
+        raise ValueError(why_none(table))
     if of is None and len(names) > 1:
         raise NotOneCurve(f"the observation is to be chosen with --of: {', '.join(names)}")
     if of is not None and of not in names:
-        raise NotOneCurve(f"{of!r} was not read along the layers: {', '.join(names)}")
+        raise NotOneCurve(f"{of!r} is no series along the layers that can settle: {', '.join(names)}")
     rows = observed(table, of or names[0])
     sizes = size_column(rows)
     parts = list(_by_columns(rows, rows.axes))

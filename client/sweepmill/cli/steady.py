@@ -12,12 +12,12 @@ from sweepmill.cli.source import FIGURES, Source, figure_path, headline, is_file
 from sweepmill.companion import TRAJECTORIES, companion
 from sweepmill.errors import SweepmillError
 from sweepmill.remote import RemoteSweep
+from sweepmill.series import series_names, why_none
 from sweepmill.sweep import Sweep
 from sweepmill.table import Table
 from sweepmill.text import wrapped
 
 MOST = 100  # times the trajectories: more is beyond reach
-NO_SERIES = "no observation was read along the layers, so nothing tells whether the circuits were deep enough"
 
 
 def _json_path(path: Path | None) -> Path | None:
@@ -53,28 +53,24 @@ def steady(
     """Say whether the circuits of a sweep were deep enough.
 
     Compares the third with the fourth quarter of the layers of every ensemble, and shows how the depth that is
-    needed grows with size. Where nothing was read along the layers, it prints the specification of a companion
-    sweep (the same circuits and observations, read every few layers, on few trajectories); the exit code is then 1,
-    or 0 where --companion names a file for it.
+    needed grows with size. Counts from the first layer on grow for ever and are left out. Where nothing else was
+    read along the layers, it prints the specification of a companion sweep (the same circuits and observations, read
+    every few layers, on few trajectories); the exit code is then 1, or 0 where --companion names a file for it.
 
     Example: sweepmill steady 3b9f6c1e --figure steady.png
     """
     if is_file(source):
         table = read_file(source)
-        if not _has_series(table):
-            raise SweepmillError(f"{NO_SERIES}; give the key of the sweep to have a companion of it written")
+        if not series_names(table):
+            raise SweepmillError(f"{why_none(table)}; give the key of the sweep to have a companion of it written")
         _judge(source, table, of, tolerance, json, figure)
         return
     with remote(source, url) as sweep:
         table = sweep.folds(of)
-        if _has_series(table):
+        if series_names(table):
             _judge(source, table, of, tolerance, json, figure)
         else:
-            _advise(sweep, written, trajectories)
-
-
-def _has_series(table: Table) -> bool:
-    return any(layer is not None for layer in table.values("layer"))
+            _advise(sweep, why_none(table), written, trajectories)
 
 
 def _judge(source: str, table: Table, of: str | None, tolerance: float, json: Path | None, figure: Path | None) -> None:
@@ -103,11 +99,11 @@ def _judge(source: str, table: Table, of: str | None, tolerance: float, json: Pa
         print(f"{'' if json else chr(10)}{figure}")
 
 
-def _advise(sweep: RemoteSweep, written: Path | None, trajectories: int) -> None:
+def _advise(sweep: RemoteSweep, why: str, written: Path | None, trajectories: int) -> None:
     """Say that there is no series, and write or print a sweep that has one."""
     wanted = companion(sweep.specification(), trajectories)
     text = encoding.dumps(wanted.normalized(), indent=1)
-    print(f"{NO_SERIES}. A companion sweep would tell: {_described(wanted)}.", file=sys.stderr)
+    print(f"{why}. A companion sweep would tell: {_described(wanted)}.", file=sys.stderr)
     if written is None:
         print(text)
         raise typer.Exit(1)
