@@ -16,7 +16,10 @@ if TYPE_CHECKING:
 
 
 def plot_crossings(result: Crossings, path: str | Path | None, x_label: str, y_label: str) -> Figure:
-    """Two panels; crossings with a fault are drawn as crosses, the extrapolation dashed where it is flagged."""
+    """Two panels; crossings with a fault are drawn as crosses, the extrapolation dashed where it is flagged.
+
+    An extrapolation that nothing tests, by as many parameters as crossings, is not drawn.
+    """
     with sheet(str(result), rows=1) as (figure, (data, places)):
         points, sizes = result.points, result.points.distinct_sizes()
         for index, (size, color) in enumerate(zip(sizes, inks(len(sizes)), strict=True)):
@@ -41,7 +44,7 @@ def _places(axes: Axes, result: Crossings) -> None:
         shape, color = ("x", GRAY) if one.fault else ("o", inks(3)[2])
         axes.errorbar([one.small**-power], [one.place], yerr=[one.place_error], marker=shape, ms=4, color=color)
     axes.set_xlabel(f"L^-{power:.3g}")
-    if result.estimates:
+    if result.goodness is not None and result.goodness.dof > 0:
         p_c, amplitude = result["p_c"], result["amplitude"].value
         line = np.linspace(0.0, min(one.small for one in result.table) ** -power, 50)
         axes.plot(line, p_c.value + amplitude * line, "--" if result.flags else "-", color=GRAY, lw=0.9)

@@ -27,6 +27,17 @@ def test_crossings_plot_themselves(tmp_path: Path) -> None:
     assert (tmp_path / "crossings.png").stat().st_size > 10_000
 
 
+def test_an_extrapolation_that_nothing_tests_is_not_drawn() -> None:
+    drawn = []
+    for sizes in ((16, 32, 64), (16, 32, 64, 128)):
+        result = fit_crossings(strips(sizes, 0.15, 1e-4, seed=91), 4, 3.0)
+        assert all(not one.fault for one in result.table)
+        places = result.plot().axes[1]
+        drawn.append(len(places.containers) - len(result.table))
+        assert any(np.array(line.get_xdata()).min() == 0 for line in places.lines) == (drawn[-1] == 1)
+    assert drawn == [0, 1]  # the marker at infinite size
+
+
 def test_a_comparison_of_laws_plots_itself(tmp_path: Path) -> None:
     x = np.array([4, 8, 16, 32, 64, 128.0])
     figure = fit_laws(Points.of(x, x, np.log(x), 0.01)).plot(tmp_path / "laws.svg")
