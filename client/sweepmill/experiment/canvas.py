@@ -9,22 +9,20 @@ Point = tuple[float, float]
 
 @dataclass(frozen=True)
 class Frame:
-    """A panel at (left, y) in pixels with two logarithmic axes; what lies below the lower edge is drawn on it."""
+    """A panel at (left, y) in pixels with a logarithmic axis to the right and a linear one upwards from zero."""
 
     left: float
     y: float
     width: float
     height: float
     x_range: tuple[float, float]
-    y_range: tuple[float, float]
+    y_most: float
 
     def at(self, x: float, y: float) -> Point:
         """Pixels of a point."""
-        return self.left + self.width * _part(x, *self.x_range), self.y + self.height * (1 - _part(y, *self.y_range))
-
-
-def _part(value: float, least: float, most: float) -> float:
-    return math.log(max(value, least) / least) / math.log(most / least)
+        least, most = self.x_range
+        right = math.log(x / least) / math.log(most / least)
+        return self.left + self.width * right, self.y + self.height * (1 - y / self.y_most)
 
 
 class Canvas:
@@ -80,6 +78,13 @@ def ticks(least: float, most: float) -> list[float]:
     powers = range(math.floor(math.log10(least)), math.ceil(math.log10(most)) + 1)
     factors = (1, 2, 5) if most / least < 300 else (1,)
     return [10.0**power * factor for power in powers for factor in factors if least <= 10.0**power * factor <= most]
+
+
+def even_ticks(most: float, about: int = 6) -> list[float]:
+    """Multiples of 1, 2 or 5 times a power of ten from zero on, at most so many steps."""
+    power = 10.0 ** math.floor(math.log10(most / about))
+    step = next(factor * power for factor in (1, 2, 5, 10) if most / (factor * power) <= about)
+    return [index * step for index in range(int(most / step) + 1)]
 
 
 def _joined(points: Sequence[Point]) -> str:

@@ -1,20 +1,21 @@
 """The figure of the report: log2 of the repetitions against depth, a panel for each size, drawn as SVG."""
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from html import escape
 from typing import TypeVar
 
 from sweepmill.experiment.amounts import YEAR
-from sweepmill.experiment.canvas import Canvas, Frame, ticks
+from sweepmill.experiment.canvas import Canvas, Frame, even_ticks, ticks
 from sweepmill.experiment.cost import Cost
 from sweepmill.experiment.record import Record
 from sweepmill.experiment.wording import axes_text, rest_of, row_heads, size_of
 
 MOST_PANELS, MOST_CURVES = 3, 6
-LEAST = 1.0  # bits at the lower edge: a record that is met again at once is not worth a place
+LEAST_TOP = 2.0  # bits at the upper edge, at least
+APART = 10.0  # pixels between durations
 WIDTH, HEIGHT = 560.0, 262.0
-LEFT, RIGHT, TOP, BOTTOM, GAP = 42.0, 80.0, 22.0, 34.0, 12.0
+LEFT, RIGHT, TOP, BOTTOM, GAP = 50.0, 80.0, 22.0, 34.0, 12.0
 _INKS = ("#b5651d", "#c8963e", "#5f8a5b", "#2f6f73", "#3d5a80", "#7a4069")
 _TIMES = ((1.0, "1 second"), (3600.0, "1 hour"), (86400.0, "1 day"), (YEAR, "1 year"), (1e3 * YEAR, "1,000 years"))
 _AGE = (1.38e10 * YEAR, "age of universe")
@@ -37,8 +38,8 @@ def depth_figure(cost: Cost) -> str:
     width = (WIDTH - LEFT - RIGHT - GAP * (len(sizes) - 1)) / len(sizes)
     for index, (size, panel) in enumerate(shown.items()):
         depths = [one.layer or 1 for curve in panel for one in curve]
-        x, y = (min(depths), max(depths)), (LEAST, max(top * 1.1, 2 * LEAST))
-        frame = Frame(LEFT + index * (width + GAP), TOP, width, HEIGHT - TOP - BOTTOM, x, y)
+        x, most = (min(depths), max(depths)), max(top * 1.05, LEAST_TOP)
+        frame = Frame(LEFT + index * (width + GAP), TOP, width, HEIGHT - TOP - BOTTOM, x, most)
         _panel(canvas, frame, panel, inks)
         _marks(canvas, frame, cost.options.shot_time, index == len(sizes) - 1)
         _axes(canvas, frame, "" if size is None else f"{size} sites", index == 0)
@@ -78,31 +79,36 @@ def _panel(canvas: Canvas, frame: Frame, curves: Sequence[Curve], inks: dict[str
         ink = inks[_name(curve[0])]
         points = [frame.at(one.layer or 1, one.again.value) for one in curve]
         canvas.line(points, ink)
-        for one, point in zip(curve, points, strict=True):
-            if one.again.value >= LEAST:
-                canvas.dot(point, ink)
+        for point in points:
+            canvas.dot(point, ink)
 
 
 def _marks(canvas: Canvas, frame: Frame, shot_time: float, named: bool) -> None:
-    """Durations as dotted lines; names stand at the right end, where they do not touch one another."""
-    last = math.inf
-    for seconds, name in (*_TIMES, _AGE):
-        bits = math.log2(seconds / shot_time)
-        if not frame.y_range[0] < bits < frame.y_range[1]:
-            continue
+    """Durations as dotted lines with their names at the right end."""
+    for bits, name in _durations(frame, shot_time):
         (x, y), (end, _) = frame.at(frame.x_range[0], bits), frame.at(frame.x_range[1], bits)
         canvas.dotted(x, end, y)
-        if named and last - y > 10:
+        if named:
             canvas.text(end + 5, y + 3, name, "mark")
-            last = y
+
+
+def _durations(frame: Frame, shot_time: float) -> Iterator[tuple[float, str]]:
+    """log2 of the repetitions in a duration: from the longest one down, those whose names do not touch."""
+    last = math.inf
+    for seconds, name in (_AGE, *reversed(_TIMES)):
+        bits = math.log2(seconds / shot_time)
+        height = frame.height * bits / frame.y_most
+        if 0 < bits < frame.y_most and last - height > APART:
+            yield bits, name
+            last = height
 
 
 def _axes(canvas: Canvas, frame: Frame, title: str, first: bool) -> None:
     canvas.box(frame)
     for value in ticks(*frame.x_range):
-        x, y = frame.at(value, frame.y_range[0])
+        x, y = frame.at(value, 0)
         canvas.text(x, y + 13, f"{value:g}", "tick middle")
-    for value in ticks(*frame.y_range):
+    for value in even_ticks(frame.y_most):
         x, y = frame.at(frame.x_range[0], value)
         canvas.tick(x, y)
         if first:
@@ -110,7 +116,7 @@ def _axes(canvas: Canvas, frame: Frame, title: str, first: bool) -> None:
     canvas.text(frame.left, frame.y - 8, escape(title), "title")
     canvas.text(frame.left + frame.width / 2, frame.y + frame.height + 27, "layers", "label middle")
     if first:
-        canvas.upright(12, frame.y + frame.height / 2, "log2 repetitions")
+        canvas.upright(10, frame.y + frame.height / 2, "log2 repetitions")
 
 
 def _legend(canvas: Canvas, inks: dict[str, str], records: Sequence[Record]) -> None:

@@ -19,7 +19,9 @@ from sweepmill.experiment.wording import (
     provenance,
     rare,
     runs_and_time,
+    selectable,
     shot_text,
+    unselected,
 )
 
 
@@ -31,6 +33,7 @@ def markdown(cost: Cost) -> str:
         if series := _depths(cost):
             parts += ["## Random outcomes r against depth", series]
         parts += ["## Post-selecting the first k outcomes in time", _selections(cost)]
+        parts += [one] if (one := unselected(cost)) else []
     if cost.beside is not None:
         rows = [list(road) for road in roads(cost.beside, cost.options.shot_time)]
         parts += [f"## {roads_title(cost.beside)}", _table(["", "monitored", "sideways"], rows)]
@@ -69,7 +72,7 @@ def _selections(cost: Cost) -> str:
     heads += [
         f"first {k}: random ones; runs per kept one; for ±{cost.options.precision:g}" for k in cost.options.selected
     ]
-    return _table(heads, [_selection(one, cost) for one in cost.final])
+    return _table(heads, [_selection(one, cost) for one in selectable(cost)])
 
 
 def _selection(one: Record, cost: Cost) -> list[str]:

@@ -10,11 +10,11 @@ from sweepmill.experiment.record import Record
 from sweepmill.experiment.selection import Selection
 from sweepmill.experiment.wording import (
     axes_text,
-    largest,
     number,
     rest_of,
     row_heads,
     runs_and_time,
+    selectable,
     size_of,
 )
 
@@ -36,11 +36,15 @@ def matrix(cost: Cost) -> str:
 
 
 def selections(cost: Cost) -> str:
-    """What post-selection costs at the largest size."""
-    chosen = largest(cost.final)
-    title, shown = row_heads(chosen)
+    """What post-selection costs, for the same circuits as in Markdown."""
+    shown = selectable(cost)
+    title, names = row_heads(shown)
     heads = [escape(title), "random share", *(f"first {k}" for k in cost.options.selected)]
-    rows = [[bold(shown[axes_text(rest_of(one))]), *_selection_row(one, cost)] for one in chosen]
+    several = len({size_of(one) for one in shown}) > 1
+    rows = []
+    for one in shown:
+        size = f"<small>{size_of(one)} sites</small>" if several else ""
+        rows.append([bold(names[axes_text(rest_of(one))]) + size, *_selection_row(one, cost)])
     return table(heads, rows, "plain")
 
 

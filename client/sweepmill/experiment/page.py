@@ -17,8 +17,10 @@ from sweepmill.experiment.wording import (
     largest,
     provenance,
     rare,
+    selectable,
     shot_text,
     size_of,
+    unselected,
 )
 from sweepmill.text import short
 
@@ -49,8 +51,8 @@ _DOCUMENT = """<!doctype html>
 </html>
 """
 _UNDER_FIGURE = (
-    "Both axes are logarithmic. Lines: the mean of r, log2 of the typical repetitions. Shades: nine tenths of the "
-    "circuits. Dotted: how long so many repetitions take."
+    "Upwards every unit doubles the repetitions. Lines: the mean of r, log2 of the typical repetitions. Shades: nine "
+    "tenths of the circuits. Dotted: how long so many repetitions take."
 )
 
 
@@ -104,12 +106,12 @@ def _under_matrix(cost: Cost) -> str:
 
 
 def _under_selections(cost: Cost) -> str:
-    size = size_of(largest(cost.final)[0])
-    where = "" if size is None else f"At {size} sites. "
+    sizes = {size_of(one) for one in selectable(cost)} - {None}
+    where = f"At {sizes.pop()} sites. " if len(sizes) == 1 else ""
     return (
         f"{where}Bold: runs for one that is kept. Below: how many of the first k outcomes are random, and the runs "
         f"until the mean of an observable between −1 and 1 is known to ±{cost.options.precision:g}. Any k chosen "
-        "outcomes cost at most 2^k runs."
+        f"outcomes cost at most 2^k runs. {unselected(cost)}"
     )
 
 

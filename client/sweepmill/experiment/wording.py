@@ -24,6 +24,8 @@ CAUTION = (
     "This bounds circuits, not a particular machine: connectivity, parallel readout, loss and drift make it dearer, "
     "and observables that need no post-selection, decoders, or a classical partner simulation can make it cheaper."
 )
+MOST_SELECTED = 8
+"""Circuits whose post-selection fits on a page."""
 NEW_CIRCUITS = "Errors are one standard error over circuits."
 
 
@@ -55,6 +57,18 @@ def largest(records: Sequence[Record]) -> list[Record]:
     """Those of the largest size."""
     sizes = [size_of(one) for one in records if size_of(one) is not None]
     return [one for one in records if not sizes or size_of(one) == max(sizes)]
+
+
+def selectable(cost: Cost) -> list[Record]:
+    """Circuits whose post-selection is shown: all where they are few, otherwise those of the largest size."""
+    return cost.final if len(cost.final) <= MOST_SELECTED else largest(cost.final)
+
+
+def unselected(cost: Cost) -> str:
+    """Which sizes `selectable` leaves out, as a sentence; empty where it is none."""
+    shown = {size_of(one) for one in selectable(cost)}
+    left_out = sorted({size_of(one) for one in cost.final if size_of(one) not in shown} - {None})
+    return f"Left out, but in the report as JSON: {', '.join(map(str, left_out))} sites." if left_out else ""
 
 
 def row_heads(records: Sequence[Record]) -> tuple[str, dict[str, str]]:

@@ -4,16 +4,19 @@ import json
 import re
 from dataclasses import replace
 from html.parser import HTMLParser
+from itertools import pairwise
 from pathlib import Path
 
 import pytest
 
 import sweepmill
+from support.costs import invented_cost
 from support.paid import sampled_source
 from sweepmill import Sweep, Table
 from sweepmill.errors import SweepmillError
 from sweepmill.experiment import NoRecordBits, Options, Source, companion, cost_of, markdown, page, read_source
 from sweepmill.experiment.companion import as_toml
+from sweepmill.experiment.figure import depth_figure
 
 VOID = {"meta", "br"}
 SERIES = {"quantity": "record-bits", "at": {"every": 1, "single_layers": True}, "histogram": True}
@@ -252,3 +255,33 @@ def test_a_companion_is_about_the_same_ensembles(example: Path, tmp_path: Path) 
 def test_a_companion_of_nothing_is_refused() -> None:
     with pytest.raises(SweepmillError, match="no circuits"):
         companion([])
+
+
+@pytest.mark.parametrize("sizes", [(8, 16), (16, 32, 64)])
+def test_both_forms_show_the_same_selections_and_say_what_is_left_out(sizes: tuple[int, ...]) -> None:
+    cost = invented_cost(sizes, (0.05, 0.1, 0.2, 0.3))
+    written, shown = markdown(cost), page(cost)
+    rows = written.split("## Post-selecting")[1].split("## ")[0].splitlines()[4:-1]
+    table = shown.split("<h2>Post-selecting")[1].split("</table>")[0]
+    assert table.count("<tr>") - 1 == sum(row.startswith("| sites") for row in rows) == (8 if len(sizes) == 2 else 4)
+    left_out = "Left out, but in the report as JSON: 16, 32 sites."
+    assert (left_out in written) == (left_out in shown) == (len(sizes) == 3)
+    assert len(cost.to_dict()["selections"]) == 4 * len(sizes)
+
+
+@pytest.mark.parametrize("sizes", [(4, 8), (16, 32), (64, 128, 256)])
+def test_the_figure_is_linear_in_log2_and_names_of_durations_do_not_touch(sizes: tuple[int, ...]) -> None:
+    drawing = depth_figure(invented_cost(sizes, (0.1, 0.2)))
+    numbers = re.findall(r'class="tick end" x="[\d.]+" y="([\d.]+)">(\d+)<', drawing)
+    heights, values = ([float(one[part]) for one in numbers] for part in (0, 1))
+    assert values[0] == 0
+    assert len(values) > 3
+    per_bit = (heights[0] - heights[-1]) / values[-1]
+    assert heights == pytest.approx([heights[0] - per_bit * value for value in values], abs=0.11)
+    marks = [float(y) for y in re.findall(r'class="mark" x="[\d.]+" y="([\d.]+)"', drawing)]
+    assert all(below - above >= 9.9 for above, below in pairwise(marks))
+    assert drawing.count('class="guide"') == len(marks) * len(sizes)
+
+
+def test_the_age_of_the_universe_is_named_before_shorter_times() -> None:
+    assert "age of universe" in depth_figure(invented_cost((64, 128, 256), (0.1, 0.2)))
