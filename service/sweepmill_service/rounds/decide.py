@@ -87,8 +87,8 @@ def _targets(known: Evidence, judged: Sequence[_Judged]) -> dict[int, int]:
         wanted = [known.places[o].judged for o in group.ordinals] if advice.met else list(advice.targets)
         stored = [known.places[ordinal] for ordinal in group.ordinals]
         snapped = [_snap(known, place, number) for place, number in zip(stored, wanted, strict=True)]
-        if not advice.met and all(n <= place.judged for n, place in zip(snapped, stored, strict=True)):
-            snapped = [_snap(known, place, DOUBLING * place.judged) for place in stored]  # never wait for nothing
+        if advice.estimate.withheld and all(n <= place.judged for n, place in zip(snapped, stored, strict=True)):
+            snapped = [_snap(known, place, DOUBLING * place.judged) for place in stored]  # perhaps more data tell
         targets.update(zip(group.ordinals, snapped, strict=True))
     return targets
 

@@ -96,3 +96,22 @@ def test_points_must_be_the_places_with_trajectories() -> None:
     points = Points.of([16, 32], [0.13, 0.13], [0.1, 0.2], [0.1, 0.1])
     with pytest.raises(ValueError, match="in their order"):
         advise_critical_point(points, [Place(16, 0.13, 1, 10, 10), Place(32, 0.14, 1, 10, 10)], 1e-3)
+
+
+def moving(size: Vector, x: Vector) -> Vector:
+    """The same curve with a place of crossing that moves with the size."""
+    return curve(size, x - 0.8 * size**-1.5)
+
+
+def test_where_two_sizes_are_left_the_way_from_the_pair_before_counts_and_may_end_the_search() -> None:
+    places = candidates([8, 16, 24], GRID, [1, 4, 9])
+    placed = [Place(one.size, one.x, one.cost, 400_000, one.at_most) for one in places]
+    size, x = np.array([one.size for one in placed]), np.array([one.x for one in placed])
+    folds = moving(size, x) + 0.6 * np.sqrt(8 / 400_000) * np.random.default_rng(1).standard_normal((8, len(placed)))
+    replicas, keys = (folds.sum(axis=0) - folds) / 7, [f"{index:064d}" for index in range(len(placed))]
+    points = Points.of(size, x, folds.mean(axis=0), 0.6 / np.sqrt(400_000), replicas, keys)
+    advice = advise_critical_point(points, placed, 1e-3)
+    assert not advice.met
+    assert advice.estimate.spread > 2e-3
+    assert advice.targets == tuple(one.trajectories for one in placed)
+    assert "larger sizes would help" in advice.reason

@@ -43,13 +43,23 @@ def advise_critical_point(points: Points, places: Sequence[Place], below: float)
     if choice is None or trouble:
         return _without_fit(candidates, points, order, choice, trouble)
     collapse = fit_collapse(choice.fitted.points, choice.fitted.frame.form)
-    estimate = _with_drift(_judged(collapse), points, collapse.points.distinct_sizes())
+    judged = _judged(collapse)
+    estimate = _with_drift(judged, points, collapse.points.distinct_sizes())
     if not order:
         estimate = replace(estimate, withheld=_NO_CHANGE)
-    done = met(estimate, "p_c", candidates, below)
+    done = met(estimate, "p_c", candidates, below) or _limited(estimate, judged, candidates, below)
     advice = done or improved(estimate, "p_c", candidates, _plan(candidates, points, choice), below)
     few = len(points.distinct_sizes()) == 2
     return replace(advice, reason=f"{advice.reason}; {_TWO}") if few else advice
+
+
+def _limited(estimate: Estimate, judged: Estimate, candidates: Candidates, below: float) -> Advice | None:
+    """The end where p_c moves with the size by more than is asked: trajectories do not cure that."""
+    drift = math.sqrt(max(0.0, estimate.spread**2 - judged.spread**2))
+    if estimate.error is None or drift <= 2 * below or estimate.statistical > below / 2:
+        return None
+    why = f"p_c = {estimate}: it moves with the size by more than {below:g}; larger sizes would help, not trajectories"
+    return Advice(estimate, False, tuple(int(number) for number in candidates.have), estimate.error, why)
 
 
 def _with_drift(estimate: Estimate, points: Points, used: list[float]) -> Estimate:
