@@ -105,11 +105,11 @@ def moving(size: Vector, x: Vector) -> Vector:
 
 def test_where_two_sizes_are_left_the_way_from_the_pair_before_counts_and_may_end_the_search() -> None:
     places = candidates([8, 16, 24], GRID, [1, 4, 9])
-    placed = [Place(one.size, one.x, one.cost, 400_000, one.at_most) for one in places]
+    placed = [Place(one.size, one.x, one.cost, 100_000, one.at_most) for one in places]
     size, x = np.array([one.size for one in placed]), np.array([one.x for one in placed])
-    folds = moving(size, x) + 0.6 * np.sqrt(8 / 400_000) * np.random.default_rng(1).standard_normal((8, len(placed)))
+    folds = moving(size, x) + 0.6 * np.sqrt(8 / 100_000) * np.random.default_rng(1).standard_normal((8, len(placed)))
     replicas, keys = (folds.sum(axis=0) - folds) / 7, [f"{index:064d}" for index in range(len(placed))]
-    points = Points.of(size, x, folds.mean(axis=0), 0.6 / np.sqrt(400_000), replicas, keys)
+    points = Points.of(size, x, folds.mean(axis=0), 0.6 / np.sqrt(100_000), replicas, keys)
     advice = advise_critical_point(points, placed, 1e-3)
     assert not advice.met
     assert advice.estimate.spread > 2e-3
