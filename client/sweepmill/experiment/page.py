@@ -14,7 +14,6 @@ from sweepmill.experiment.wording import (
     NEW_CIRCUITS,
     TITLE,
     headline,
-    largest,
     provenance,
     rare,
     selectable,
@@ -27,7 +26,7 @@ from sweepmill.text import short
 MOST_ABREAST = 3
 """Sizes that fit on half of the page."""
 FEW_ROWS = 3
-"""Circuits of one size up to which the left half of the page is the shorter one."""
+"""Circuits with post-selection up to which the left half of the page is the shorter one."""
 
 
 def page(cost: Cost) -> str:
@@ -69,7 +68,7 @@ def _body(cost: Cost) -> list[str]:
     first = [_section("One record again", matrix(cost), _under_matrix(cost))] if cost.final else []
     left, right = _left(cost), _right(cost)
     wide = len(sizes_of(cost)) > MOST_ABREAST
-    (left if wide or len(largest(cost.final)) <= FEW_ROWS else right).append(_assumed())
+    (left if wide or len(selectable(cost)) <= FEW_ROWS else right).append(_assumed())
     return [*first, _columns(left, right)] if wide else [_columns([*first, *left], right)]
 
 
