@@ -151,7 +151,7 @@ def test_faults_between_fields_name_what_would_pass() -> None:
         (
             {"observe": [{"quantity": "entropi"}]},
             "observe[0]",
-            "unknown quantity 'entropi': one of cluster-order, entropy",
+            "unknown quantity 'entropi': one of cluster-order, cross-entropy",
         ),
         (
             {"observe": [{"quantity": "entropy", "region": "third"}]},
