@@ -7,7 +7,7 @@ import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
 from sweepmill.analysis.goodness import ACCEPTABLE, Goodness, judge
-from sweepmill.analysis.jackknife import jackknife_covariance
+from sweepmill.analysis.jackknife import noise_variances
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.scaling import Frame, Scaling
 from sweepmill.analysis.separable import STEP, Problem, Solution
@@ -69,15 +69,9 @@ class Fitted:
 
     @cached_property
     def variances(self) -> Vector:
-        """Variances of the reported quantities by noise: jackknife, or linear propagation of the errors.
-
-        The larger of both where the error of a point is a bound: replicas that do not vary tell of no error.
-        """
-        if self.replicas is None:
-            return self._linear
+        """Variances of the reported quantities by noise."""
         inflation = self.solution.problem.whitening.inflation(self.frame.form.parameters())
-        found = np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
-        return np.maximum(found, self._linear) if self.points.bounded else found
+        return noise_variances(self.replicas, inflation, lambda: self._linear, self.points.bounded)
 
     @property
     def _linear(self) -> Vector:

@@ -4,6 +4,8 @@ With F folds of independent trajectories, replica r leaves fold r out everywhere
 replicas is (F - 1)/F times its sum of squared deviations (An Introduction to the Bootstrap (1993), chapter 11).
 """
 
+from collections.abc import Callable
+
 import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
@@ -25,6 +27,17 @@ def jackknife_covariance(replicas: Matrix) -> Matrix:
     folds = len(replicas)
     deviations = replicas - replicas.mean(axis=0)
     return np.asarray((folds - 1) / folds * deviations.T @ deviations, dtype=np.float64)
+
+
+def noise_variances(replicas: Matrix | None, inflation: float, linear: Callable[[], Vector], bounded: bool) -> Vector:
+    """Variances [n] of fitted quantities by noise: jackknife times `inflation` squared, `linear` without replicas.
+
+    The larger of both where the error of a point is a bound (`bounded`): replicas that do not vary tell of no error.
+    """
+    if replicas is None:
+        return linear()
+    found = np.asarray(np.diag(jackknife_covariance(replicas)) * inflation**2)
+    return np.maximum(found, linear()) if bounded else found
 
 
 def jackknife_error(replicas: Matrix) -> Vector:

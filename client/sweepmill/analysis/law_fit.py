@@ -9,7 +9,7 @@ import numpy as np
 
 from sweepmill.analysis.arrays import Matrix, Vector
 from sweepmill.analysis.goodness import ACCEPTABLE, Goodness, information, judge
-from sweepmill.analysis.jackknife import jackknife_covariance
+from sweepmill.analysis.jackknife import noise_variances
 from sweepmill.analysis.laws import Law, chord_length
 from sweepmill.analysis.points import Points
 from sweepmill.analysis.separable import Problem, Solution
@@ -76,15 +76,9 @@ class FittedLaw:
 
     @cached_property
     def variances(self) -> Vector:
-        """Variances of the parameters by noise: jackknife, or from the errors of the points.
-
-        The larger of both where the error of a point is a bound: replicas that do not vary tell of no error.
-        """
-        if self.replicas is None:
-            return self._linear
+        """Variances of the parameters by noise."""
         inflation = self.solution.problem.whitening.inflation(self.law.parameters)
-        found = np.asarray(np.diag(jackknife_covariance(self.replicas)) * inflation**2)
-        return np.maximum(found, self._linear) if self.points.bounded else found
+        return noise_variances(self.replicas, inflation, lambda: self._linear, self.points.bounded)
 
     @property
     def _linear(self) -> Vector:
